@@ -1,0 +1,89 @@
+"""Constants: each once, with its unit, its source and whether it is defining or measured.
+
+Defining rates are held as exact rationals, because a float64 `L_B` times a century of seconds
+is already wrong by femtoseconds; `exact.Factor` carries them into array arithmetic.
+
+Sources
+-------
+TN36
+    IERS Conventions (2010), IERS Technical Note 36, Table 1.1 and Table 1.2.
+DE440
+    Park et al. 2021, AJ 161, 105; the mass parameters are those in the comment area of de440.bsp.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from fractions import Fraction
+from types import MappingProxyType
+from typing import Final
+
+C_M_S: Final = 299792458.0
+"""Speed of light, m/s. Defining (SI)."""
+
+AU_M: Final = 149597870700.0
+"""Astronomical unit, m. Defining (IAU 2012 Resolution B2)."""
+
+PARSEC_M: Final = AU_M * 648000.0 / 3.141592653589793
+"""Parsec, m. Derived (IAU 2015 Resolution B2, note 4)."""
+
+DAY_S: Final = 86400
+"""Seconds in a day of a uniform scale. Defining."""
+
+JULIAN_YEAR_S: Final = 31557600.0
+"""Julian year, s. Defining (365.25 d)."""
+
+MJD_J2000: Final = 51544
+"""Modified Julian Date of 2000-01-01, the day that holds the origin of all counts (at 12h)."""
+
+L_G: Final = Fraction(6969290134, 10**19)
+"""1 - dTT/dTCG. Defining (IAU 2000 Resolution B1.9; TN36 Table 1.1)."""
+
+L_B: Final = Fraction(1550519768, 10**17)
+"""1 - dTDB/dTCB. Defining (IAU 2006 Resolution B3; TN36 Table 1.1)."""
+
+L_C: Final = 1.48082686741e-8
+"""Average of 1 - dTCG/dTCB. Measured, +-2e-17 (TN36 Table 1.1)."""
+
+TDB0_S: Final = -6.55e-5
+"""TDB - TCB at T0, s. Defining (IAU 2006 Resolution B3)."""
+
+T0_COUNT: Final = (-725803168, 0.184)
+"""T0 = 1977-01-01T00:00:32.184 of TT, TCG and TCB as a count (whole s, fraction) from
+2000-01-01T12:00:00 of the same scale. Defining (IAU 1991 Resolution A4)."""
+
+TT_MINUS_TAI: Final = (32, 0.184)
+"""TT - TAI (whole s, fraction). Defining (IAU 1991 Resolution A4)."""
+
+W0_M2_S2: Final = 62636856.0
+"""Geoid potential behind L_G, m2/s2. Measured, +-0.5 (TN36 Table 1.1)."""
+
+WGS84_A_M: Final = 6378137.0
+"""Equatorial radius of the WGS84 and GRS80 ellipsoids, m. Defining."""
+
+WGS84_INVERSE_FLATTENING: Final = 298.257223563
+"""1/f of WGS84. Defining (NIMA TR8350.2)."""
+
+EARTH_ANGULAR_VELOCITY_RAD_S: Final = 2 * 3.141592653589793 * 1.00273781191135448 / 86400.0
+"""Rate of the Earth rotation angle per UT1 second, rad/s. Defining (IAU 2000 B1.8)."""
+
+SUN_RADIUS_M: Final = 6.957e8
+"""Nominal solar radius, m. Defining (IAU 2015 Resolution B3)."""
+
+GM_M3_S2: Final[Mapping[int, float]] = MappingProxyType(
+    {
+        1: 22031.868551e9,
+        2: 324858.592000e9,
+        4: 42828.375816e9,
+        5: 126712764.100000e9,
+        6: 37940584.841800e9,
+        7: 5794556.400000e9,
+        8: 6836527.100580e9,
+        9: 975.500000e9,
+        10: 132712440041.279419e9,
+        301: 4902.800118e9,
+        399: 398600.435507e9,
+    }
+)
+"""TDB-compatible mass parameters by NAIF body number, m3/s2. Measured (DE440). 1 to 9 are planetary systems
+(3, the Earth-Moon system, is the sum of 399 and 301), 10 is the Sun."""

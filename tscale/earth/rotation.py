@@ -1,0 +1,193 @@
+"""The rotation of the Earth: between the ITRS and the GCRS, by the IERS Conventions (2010).
+
+CIO-based form (IERS Technical Note 36, 5.4 and 5.5):
+
+    r_GCRS = Q(X, Y, s) . R3(-ERA) . R3(-s') R2(xp) R1(yp) . r_ITRS
+
+with X, Y, s of IAU 2006/2000A plus the observed offsets dX, dY; the Earth rotation angle of UT1 (eq. 5.15);
+the pole xp, yp of the Earth orientation in use, and s' = -47 uas per century (eq. 5.13). The rotations are applied
+in closed form (`orientation.py`).
+
+Velocities include the rotation about the pole at the defining rate of the Earth rotation angle, and precession and
+nutation. Left out: the excess length of day (below 4 ms of 86400 s: 2e-5 m/s at the surface) and the drift of
+the pole within the Earth (1e-6 m/s).
+
+The sub-daily tidal terms of chapters 5 and 8 are not part of this module.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+import numpy.typing as npt
+
+from .. import exact
+from ..constants import EARTH_ANGULAR_VELOCITY_RAD_S
+from ..errors import InvalidInput
+from ..exact import FloatArray, Pair
+from ..scales import Scale
+from .cip_table import cip
+from .orientation import Orientation
+
+if TYPE_CHECKING:
+    from ..tables.reference import ReferenceData
+
+__all__ = [
+    "era_rad",
+    "gcrs_from_itrs",
+    "gcrs_state_from_itrs",
+    "itrs_from_gcrs",
+    "itrs_state_from_gcrs",
+    "orientation",
+    "ut1_from_tt",
+]
+
+_TWO_PI: Final = 2.0 * np.pi
+_CENTURY_S: Final = 36525.0 * 86400.0
+_S_PRIME_RAD_S: Final = -47.0e-6 * (np.pi / 648000.0) / _CENTURY_S
+# (minus whole, fraction) that takes a TT count to a TAI count: -32.184 s.
+_TAI_MINUS_TT: Final = Scale.parse("TT").tai_minus_count
+
+
+def era_rad(ut1: Pair) -> FloatArray:
+    """Earth rotation angle in [0, 2 pi) of a UT1 count (IAU 2000 B1.8; TN36 eq. 5.15), good to 1e-13 rad.
+
+    Parameters
+    ----------
+    ut1 : Pair
+        Seconds since 2000-01-01T12:00:00 UT1, any shape.
+    """
+    whole = np.asarray(ut1[0], dtype=np.int64)
+    # The whole turn a day is taken out in integers; what is left to multiply is 0.0027 turns a day.
+    turn = (whole % 86400 + ut1[1]) / 86400.0
+    day = (whole + ut1[1]) / 86400.0
+    turn = turn + (0.7790572732640 + 0.00273781191135448 * day)
+    return np.asarray(_TWO_PI * (turn - np.floor(turn)), dtype=np.float64)
+
+
+def ut1_from_tt(tt: Pair, ut1_minus_tai_s: FloatArray) -> Pair:
+    """UT1 count of a TT count, given UT1 - TAI (s)."""
+    return exact.add_seconds(_tai(tt), ut1_minus_tai_s)
+
+
+def _tai(tt: Pair) -> Pair:
+    assert _TAI_MINUS_TT is not None
+    offset = (np.asarray(_TAI_MINUS_TT[0]), np.asarray(_TAI_MINUS_TT[1]))
+    return exact.add((np.asarray(tt[0], dtype=np.int64), np.asarray(tt[1], dtype=np.float64)), offset)
+
+
+def orientation(tt: Pair, reference: ReferenceData) -> Orientation:
+    """Give the orientation of the Earth at TT counts.
+
+    Parameters
+    ----------
+    tt : Pair
+        TT count, any shape.
+    reference : ReferenceData
+        Its Earth orientation gives UT1, the pole and dX, dY.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the Earth orientation table does not reach.
+    """
+    tt = (np.asarray(tt[0], dtype=np.int64), np.asarray(tt[1], dtype=np.float64))
+    tai = _tai(tt)
+    eop = reference.earth_orientation.at(tai)
+    xys, rate = cip(tt)
+    era = era_rad(exact.add_seconds(tai, eop.ut1_minus_tai_s))
+    s_prime = _S_PRIME_RAD_S * (tt[0] + tt[1])
+    return Orientation(
+        xys[..., 0] + eop.dx_rad,
+        xys[..., 1] + eop.dy_rad,
+        rate[..., 0],
+        rate[..., 1],
+        era - xys[..., 2] + s_prime,
+        EARTH_ANGULAR_VELOCITY_RAD_S + _S_PRIME_RAD_S - rate[..., 2],
+        eop.x_rad,
+        eop.y_rad,
+    )
+
+
+def gcrs_from_itrs(r_itrs_m: npt.ArrayLike, tt: Pair, reference: ReferenceData) -> FloatArray:
+    """Rotate ITRS positions to the GCRS axes.
+
+    Parameters
+    ----------
+    r_itrs_m : float array (..., 3)
+        Position, m; its leading axes broadcast with `tt`.
+    tt : Pair
+        TT count.
+    reference : ReferenceData
+        Tables in use.
+
+    Returns
+    -------
+    float array, broadcast shape + (3,)
+        Position on the GCRS axes, m; within 1 um of pyerfa's own chain of matrices at the Earth's surface.
+
+    Raises
+    ------
+    InvalidInput
+        A last axis other than 3, or values that are not finite.
+    OutOfSpan
+        Where the Earth orientation table does not reach.
+    """
+    return orientation(tt, reference).celestial(_vectors(r_itrs_m, "position"))
+
+
+def itrs_from_gcrs(r_gcrs_m: npt.ArrayLike, tt: Pair, reference: ReferenceData) -> FloatArray:
+    """Rotate GCRS positions to the ITRS axes; the inverse of `gcrs_from_itrs`."""
+    return orientation(tt, reference).terrestrial(_vectors(r_gcrs_m, "position"))
+
+
+def gcrs_state_from_itrs(
+    r_itrs_m: npt.ArrayLike, v_itrs_m_s: npt.ArrayLike | None, tt: Pair, reference: ReferenceData
+) -> tuple[FloatArray, FloatArray]:
+    """Position and velocity in the GCRS of something at `r_itrs_m` that moves at `v_itrs_m_s` relative to the ITRS.
+
+    Parameters
+    ----------
+    r_itrs_m : float array (..., 3)
+        Position, m.
+    v_itrs_m_s : float array (..., 3) or None
+        Velocity relative to the turning Earth, m/s; None for something at rest on it.
+    tt : Pair
+        TT count.
+    reference : ReferenceData
+        Tables in use.
+
+    Returns
+    -------
+    r_m, v_m_s : float array, broadcast shape + (3,)
+        See the module's notes for what the velocity leaves out (2e-5 m/s at the surface).
+
+    Raises
+    ------
+    InvalidInput, OutOfSpan
+        As `gcrs_from_itrs`.
+    """
+    velocity = None if v_itrs_m_s is None else _vectors(v_itrs_m_s, "velocity")
+    return orientation(tt, reference).celestial_state(_vectors(r_itrs_m, "position"), velocity)
+
+
+def itrs_state_from_gcrs(
+    r_gcrs_m: npt.ArrayLike, v_gcrs_m_s: npt.ArrayLike, tt: Pair, reference: ReferenceData
+) -> tuple[FloatArray, FloatArray]:
+    """Position and velocity relative to the ITRS; the inverse of `gcrs_state_from_itrs`."""
+    return orientation(tt, reference).terrestrial_state(
+        _vectors(r_gcrs_m, "position"), _vectors(v_gcrs_m_s, "velocity")
+    )
+
+
+def _vectors(value: npt.ArrayLike, what: str) -> FloatArray:
+    vectors = np.asarray(value, dtype=np.float64)
+    if vectors.ndim == 0 or vectors.shape[-1] != 3:
+        raise InvalidInput(f"a {what} has x, y, z on its last axis, got shape {vectors.shape}")
+    bad = ~np.isfinite(vectors).all(axis=-1)
+    if np.any(bad):
+        raise InvalidInput(
+            f"{int(np.count_nonzero(bad))} {what} vectors are not finite; drop them", mask=np.asarray(bad)
+        )
+    return vectors

@@ -1,0 +1,294 @@
+"""Positions and velocities of bodies from an SPK kernel."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from functools import lru_cache
+from pathlib import Path
+from types import MappingProxyType
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from ..constants import GM_M3_S2
+from ..errors import InvalidInput, MissingPiece, OutOfSpan
+from ..exact import FloatArray, Pair
+from .bodies import body_id, body_name
+from .chebyshev import CHUNK, broadcast_pair, span_text
+from .daf import check_sha256, file_sha256, mass_parameters, read_container
+from .paths import Leg, Part, Paths
+from .segments import Located, Segment, read_segments
+from .shipped import DEFAULT_KERNEL, shipped_path
+
+__all__ = ["Ephemeris"]
+
+_KM_M = 1e3
+_Motion = tuple[FloatArray, FloatArray | None]
+
+
+class Ephemeris:
+    """One SPK kernel: immutable, safe between threads, picklable by path and checksum.
+
+    Vectors have ICRF axes and TDB-compatible SI units, as the kernel gives them. Where several segments cover a date,
+    the last in the file counts (NAIF SPK Required Reading). Use `open` or `default`.
+
+    Attributes
+    ----------
+    path : pathlib.Path
+    name : str
+        File name.
+    comment : str
+        Comment text of the file.
+    given_gm_m3_s2 : mapping
+        Mass parameters given to `open`.
+    """
+
+    def __init__(self, path: Path, gm_m3_s2: Mapping[int, float]) -> None:
+        container = read_container(path)
+        self.path = path
+        self.name = path.name
+        self.comment = container.comment
+        self.given_gm_m3_s2: Mapping[int, float] = MappingProxyType(dict(gm_m3_s2))
+        self._gm: Mapping[int, float] = MappingProxyType({**GM_M3_S2, **mass_parameters(container.comment), **gm_m3_s2})
+        self._paths = Paths(read_segments(container))
+        self._sha256: str | None = None
+
+    @classmethod
+    def open(cls, path: str | Path, *, gm_m3_s2: Mapping[int, float] | None = None) -> Ephemeris:
+        """Open a kernel.
+
+        Parameters
+        ----------
+        path : str or Path
+            A binary SPK file.
+        gm_m3_s2 : mapping, optional
+            Mass parameters by NAIF number that overrule those in the file's comments and `constants.GM_M3_S2`.
+
+        Raises
+        ------
+        DataFileError
+            For a file that is missing, damaged, truncated, not an SPK kernel or of a foreign data type.
+        """
+        given = dict(gm_m3_s2 or {})
+        for body, value in given.items():
+            if not (np.isfinite(value) and value >= 0):
+                raise InvalidInput(
+                    f"mass parameter of {body_name(body)} is {value} m3/s2: give a finite one, not negative"
+                )
+        return cls(Path(path).expanduser().resolve(), given)
+
+    @classmethod
+    def default(cls) -> Ephemeris:
+        """Return the shipped excerpt of DE440, 1960 to 2060 (one shared value)."""
+        return _default()
+
+    def __repr__(self) -> str:
+        return f"Ephemeris({self.name!r}, {span_text(self.span)} TDB)"
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        return _reopen, (str(self.path), self.sha256, tuple(sorted(self.given_gm_m3_s2.items())))
+
+    @property
+    def sha256(self) -> str:
+        """SHA-256 of the file, computed when first asked for."""
+        if self._sha256 is None:
+            self._sha256 = file_sha256(self.path)
+        return self._sha256
+
+    @property
+    def bodies(self) -> tuple[int, ...]:
+        """NAIF numbers of every body in the kernel."""
+        return tuple(sorted(self._paths.bodies))
+
+    @property
+    def span(self) -> tuple[float, float]:
+        """First and last TDB count (s) between which every body of the kernel is covered."""
+        return self._paths.span
+
+    def span_of(self, bodies: Iterable[str | int]) -> tuple[float, float]:
+        """First and last TDB count (s) between which all the given bodies are covered."""
+        spans = [self._paths.covered(leg) for leg in self._legs(bodies)]
+        return max(first for first, _ in spans), min(last for _, last in spans)
+
+    def record_grid(self, body: str | int) -> tuple[float, float]:
+        """Start and length (s) of the shortest records on the path from the barycentre to a body.
+
+        An integrator whose panels keep to these edges meets only smooth functions.
+        """
+        grids = [segment.grid for leg in self._legs((body,)) for segment in self._paths.segments(leg)]
+        return min((grid for grid in grids if grid is not None), key=lambda grid: grid[1])
+
+    def _legs(self, bodies: Iterable[str | int]) -> tuple[Leg, ...]:
+        numbers = [body_id(body) for body in bodies]
+        self._need(numbers)
+        nothing = np.empty(0)
+        return tuple({leg: None for number in numbers for leg in self._paths.plan(number, 0, nothing)[2]})
+
+    def _need(self, numbers: Iterable[int]) -> None:
+        for number in numbers:
+            if number not in self._paths.bodies:
+                raise MissingPiece(
+                    f"{self.name} does not hold {body_name(number)}; it holds "
+                    f"{', '.join(body_name(n) for n in self.bodies)}: open a kernel that does",
+                    path=self.path,
+                )
+
+    def gm_m3_s2(self, body: str | int) -> float:
+        """TDB-compatible mass parameter, m3/s2: as given to `open`, else from the kernel's comments, else DE440's.
+
+        Raises
+        ------
+        InvalidInput
+            For a body without a known mass parameter.
+        """
+        number = body_id(body)
+        if number in self._gm:
+            return self._gm[number]
+        if number == 3:
+            return self._gm[399] + self._gm[301]
+        if number in (199, 299):  # planets without moons
+            return self._gm[number // 100]
+        raise InvalidInput(
+            f"no mass parameter known for {body_name(number)}; known are those of "
+            f"{', '.join(body_name(n) for n in sorted(self._gm))}: give it to Ephemeris.open(gm_m3_s2=...)"
+        )
+
+    def position(self, target: str | int, tdb: Pair, center: str | int = 0) -> FloatArray:
+        """Position of `target` with respect to `center`.
+
+        Parameters
+        ----------
+        target, center : str or int
+            Body name or NAIF number.
+        tdb : (int64 array, float64 array)
+            TDB counts, any shape.
+
+        Returns
+        -------
+        float array (..., 3)
+            m, ICRF axes, TDB-compatible.
+
+        Raises
+        ------
+        OutOfSpan
+            For dates that the kernel does not cover; the mask marks them.
+        MissingPiece
+            For a body that the kernel does not hold.
+        """
+        position: FloatArray = self._states((target,), tdb, center, rate=False)[0][0]
+        return position
+
+    def state(self, target: str | int, tdb: Pair, center: str | int = 0) -> tuple[FloatArray, FloatArray]:
+        """Position (m) and velocity (m/s), each (..., 3); see `position`."""
+        positions, velocities = self._states((target,), tdb, center, rate=True)
+        return positions[0], velocities[0]
+
+    def positions(self, targets: Sequence[str | int], tdb: Pair, center: str | int = 0) -> FloatArray:
+        """Positions (targets, ..., 3) of several bodies in m; common parts of their paths are evaluated once."""
+        return self._states(tuple(targets), tdb, center, rate=False)[0]
+
+    def states(self, targets: Sequence[str | int], tdb: Pair, center: str | int = 0) -> tuple[FloatArray, FloatArray]:
+        """Positions (m) and velocities (m/s), each (targets, ..., 3), of several bodies; see `positions`."""
+        return self._states(tuple(targets), tdb, center, rate=True)
+
+    def _states(
+        self, targets: tuple[str | int, ...], tdb: Pair, center: str | int, rate: bool
+    ) -> tuple[FloatArray, FloatArray]:
+        numbers, origin = [body_id(t) for t in targets], body_id(center)
+        self._need((*numbers, origin))
+        whole, fraction = broadcast_pair(tdb)
+        shape = (len(numbers), *whole.shape, 3)
+        plans = self._plans(numbers, origin, whole + fraction)
+        whole, fraction = whole.reshape(-1), fraction.reshape(-1)
+        positions = np.empty((len(numbers), whole.size, 3))
+        velocities = np.empty((len(numbers) if rate else 0, whole.size, 3))
+        for i in range(0, whole.size, CHUNK):
+            chunk = slice(i, i + CHUNK)
+            every = _Chunk(whole[chunk], fraction[chunk], rate)
+            for k, parts in enumerate(plans):
+                for mask, legs in parts:
+                    picked: slice | npt.NDArray[np.intp] = chunk
+                    some = every
+                    if mask is not None:
+                        picked = i + np.flatnonzero(mask[chunk])
+                        some = _Chunk(whole[picked], fraction[picked], rate)
+                    position, velocity = some.sum(self._paths, legs)
+                    positions[k, picked] = position.T
+                    if velocity is not None:
+                        velocities[k, picked] = velocity.T
+        return positions.reshape(shape), velocities.reshape((len(velocities), *shape[1:]))
+
+    def _plans(self, numbers: Sequence[int], origin: int, count_s: FloatArray) -> list[list[Part]]:
+        """Find the path of each target and check that it covers every date (`count_s` is only compared)."""
+        plans = []
+        for number in numbers:
+            parts, outside, legs = self._paths.plan(number, origin, count_s.reshape(-1))
+            if outside.any():
+                covered = "; ".join(
+                    f"{body_name(leg.target)} from {body_name(leg.center)} over {span_text(self._paths.covered(leg))}"
+                    for leg in legs
+                )
+                raise OutOfSpan(
+                    f"{int(outside.sum())} of {outside.size} dates lie outside {self.name}, which covers {covered} "
+                    "TDB: leave them out or open a kernel that reaches them",
+                    mask=outside.reshape(count_s.shape),
+                    path=self.path,
+                )
+            plans.append(parts)
+        return plans
+
+
+class _Chunk:
+    """A few thousand instants and what has been evaluated at them so far."""
+
+    def __init__(self, whole: npt.NDArray[np.int64], fraction: FloatArray, rate: bool) -> None:
+        self._whole, self._fraction, self._rate = whole, fraction, rate
+        self._located: Located = {}
+        self._done: dict[tuple[int, int], _Motion] = {}
+
+    def sum(self, paths: Paths, legs: tuple[Leg, ...]) -> _Motion:
+        """Position in m and velocity in m/s along a path, (3, n)."""
+        shape = (3, self._whole.size)
+        position, velocity = np.zeros(shape), np.zeros(shape) if self._rate else None
+        for leg in legs:
+            pair = leg.target, leg.center
+            if pair not in self._done:
+                self._done[pair] = self._leg(paths.segments(leg))
+            step, speed = self._done[pair]
+            position += leg.sign * step
+            if velocity is not None and speed is not None:
+                velocity += leg.sign * speed
+        position *= _KM_M
+        if velocity is not None:
+            velocity *= _KM_M
+        return position, velocity
+
+    def _leg(self, segments: list[Segment]) -> _Motion:
+        if len(segments) == 1:
+            return segments[0].evaluate(self._whole, self._fraction, self._rate, self._located)
+        count = self._whole + self._fraction
+        position = np.empty((3, count.size))
+        velocity = np.empty_like(position) if self._rate else None
+        left = np.ones(count.size, dtype=np.bool_)
+        for segment in segments:
+            mine = left & (count >= segment.start_s) & (count <= segment.end_s)
+            if mine.any():
+                step, speed = segment.evaluate(self._whole[mine], self._fraction[mine], self._rate, {})
+                position[:, mine] = step
+                if velocity is not None and speed is not None:
+                    velocity[:, mine] = speed
+                left &= ~mine
+        return position, velocity
+
+
+@lru_cache(maxsize=1)
+def _default() -> Ephemeris:
+    return Ephemeris.open(shipped_path(DEFAULT_KERNEL))
+
+
+@lru_cache(maxsize=8)
+def _reopen(path: str, sha256: str, gm_m3_s2: tuple[tuple[int, float], ...]) -> Ephemeris:
+    """Rebuild from a pickle; the value is immutable, so one per process is shared."""
+    check_sha256(Path(path), sha256)
+    return Ephemeris.open(path, gm_m3_s2=dict(gm_m3_s2))

@@ -1,0 +1,196 @@
+"""Delimited text (RFC 4180) read in blocks, with the line of every row and its text as it stood.
+
+Lines that begin with `#`, and blank lines, are no rows: they are kept at their place and handed on.
+"""
+
+from __future__ import annotations
+
+import csv
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass, field
+from typing import Final
+
+from ..errors import DataFileError, InvalidInput
+
+__all__ = ["DelimitedReader", "RowBlock", "delimiter_of", "encode_row"]
+
+_NAMED_DELIMITERS: Final = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "\\t": "\t"}
+
+
+def delimiter_of(text: str) -> str:
+    """A delimiter by its name or as the character itself."""
+    found = _NAMED_DELIMITERS.get(text, text)
+    if len(found) != 1 or found in "\r\n\"#" or found.isalnum():
+        raise InvalidInput(f"a delimiter is one character or one of {', '.join(_NAMED_DELIMITERS)}; got {text!r}")
+    return found
+
+
+def encode_row(fields: Iterable[str], delimiter: str = ",") -> str:
+    """Join fields to one line without its end, quoted where they must be."""
+    return delimiter.join(
+        '"' + text.replace('"', '""') + '"' if delimiter in text or '"' in text or "\n" in text or "\r" in text else text
+        for text in fields
+    )
+
+
+@dataclass
+class RowBlock:
+    """Some rows that follow each other.
+
+    Attributes
+    ----------
+    column : list of str
+        The field asked for, by row.
+    texts : list of str
+        Each row as it stood, without its line end (a quoted field may span lines).
+    lines : list of int
+        Line of the file on which each row begins, from 1.
+    aside : list of (int, str)
+        Comments and blank lines, with the number of rows of this block before them.
+    """
+
+    column: list[str] = field(default_factory=list)
+    texts: list[str] = field(default_factory=list)
+    lines: list[int] = field(default_factory=list)
+    aside: list[tuple[int, str]] = field(default_factory=list)
+
+    def __len__(self) -> int:
+        return len(self.texts)
+
+    def merged(self, endings: Sequence[str], newline: str) -> str:
+        """Text of the block with an ending put behind each row, comments at their place."""
+        out: list[str] = []
+        done = 0
+        for before, text in self.aside:
+            out.extend(row + end for row, end in zip(self.texts[done:before], endings[done:before], strict=True))
+            out.append(text)
+            done = before
+        out.extend(row + end for row, end in zip(self.texts[done:], endings[done:], strict=True))
+        return "".join(line + newline for line in out)
+
+
+class DelimitedReader:
+    """Rows of a stream of delimited text; the header is read at once.
+
+    Parameters
+    ----------
+    stream : iterable of str
+        Lines with their ends, as from a file opened with `newline=""`.
+    name : str
+        For messages.
+    column : str or None
+        Name of the column wanted; None takes the first.
+    delimiter : str
+        One character.
+
+    Attributes
+    ----------
+    header : list of str
+        Names of the columns.
+    header_text : str
+        The header as it stood.
+    preamble : list of str
+        Comments and blank lines above it.
+    column : str
+        Name of the column that is read.
+    newline : str
+        The line end in use.
+
+    Raises
+    ------
+    DataFileError
+        With the path and line: no header, a column that is missing or named twice, a row of another width, broken quotes.
+    """
+
+    def __init__(self, stream: Iterable[str], name: str, *, column: str | None = None, delimiter: str = ",") -> None:
+        self.name = name
+        self.newline = "\n"
+        self._line = 0
+        self._start = 0
+        self._fresh = True
+        self._raw: list[str] = []
+        self._aside: list[str] = []
+        self._rows = csv.reader(self._feed(stream), delimiter=delimiter, strict=True)
+        header = self._next()
+        if header is None:
+            raise DataFileError(f"{name} is empty; it needs a header line and rows below it", path=name)
+        self.header = [text.strip() for text in header]
+        self.header_text = self._text()
+        self.preamble = self._aside
+        self._aside = []
+        self._index = self._find(column)
+        self.column = self.header[self._index]
+
+    def blocks(self, rows: int) -> Iterator[RowBlock]:
+        """Blocks of at most `rows` rows; the last one may hold comments alone."""
+        width, index = len(self.header), self._index
+        block = RowBlock()
+        while (fields := self._next()) is not None:
+            if len(fields) != width:
+                raise DataFileError(
+                    f"this row has {len(fields)} fields, the header has {width}: {', '.join(self.header)}",
+                    path=self.name,
+                    row=self._start,
+                )
+            if self._aside:
+                self._hand_over(block)
+            block.column.append(fields[index])
+            block.texts.append(self._text())
+            block.lines.append(self._start)
+            if len(block) == rows:
+                yield block
+                block = RowBlock()
+        self._hand_over(block)
+        if len(block) or block.aside:
+            yield block
+
+    def _hand_over(self, block: RowBlock) -> None:
+        block.aside.extend((len(block), text) for text in self._aside)
+        self._aside = []
+
+    def _feed(self, stream: Iterable[str]) -> Iterator[str]:
+        """Lines for the parser; comments and blank lines between rows are set aside."""
+        for line in stream:
+            self._line += 1
+            if self._line == 1:
+                line = line.removeprefix("\ufeff")
+                if line.endswith("\r\n"):
+                    self.newline = "\r\n"
+            if self._fresh:
+                if line.startswith("#") or not line.strip():
+                    self._aside.append(line.rstrip("\r\n"))
+                    continue
+                self._start = self._line
+                self._fresh = False
+                self._raw = [line]
+            else:
+                self._raw.append(line)
+            yield line
+
+    def _next(self) -> list[str] | None:
+        """Fields of the next row, or None at the end."""
+        self._fresh = True
+        try:
+            return next(self._rows, None)
+        except csv.Error as error:
+            raise DataFileError(f"this row cannot be read: {error}", path=self.name, row=self._start) from error
+        except UnicodeDecodeError as error:
+            raise DataFileError(
+                f"this is no UTF-8 text ({error.reason} near here); save the file as UTF-8",
+                path=self.name,
+                row=self._line + 1,
+            ) from error
+
+    def _text(self) -> str:
+        return "".join(self._raw).rstrip("\r\n")
+
+    def _find(self, column: str | None) -> int:
+        if column is None:
+            return 0
+        places = [i for i, name in enumerate(self.header) if name == column]
+        if len(places) != 1:
+            how = "no column" if not places else f"{len(places)} columns"
+            raise DataFileError(
+                f"there is {how} called {column!r}; the header has {', '.join(self.header)}", path=self.name, row=self._start
+            )
+        return places[0]

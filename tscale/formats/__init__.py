@@ -1,0 +1,1 @@
+"""Labels of instants: calendar texts, Julian dates, leap seconds. Array functions without state."""

@@ -1,0 +1,150 @@
+"""Leap seconds since 1972 from the two open file layouts that list them."""
+
+from __future__ import annotations
+
+import hashlib
+import re
+from fractions import Fraction
+from pathlib import Path
+from typing import Final, NamedTuple
+
+import numpy as np
+
+from ..errors import DataFileError
+from .leap_second_rows import FIRST_STEP, LeapRow, nanoseconds
+
+__all__ = ["LeapFile", "read_leap_file"]
+
+_NTP_TO_MJD: Final = 15020  # MJD of 1900-01-01, the origin of NTP seconds (RFC 5905, section 6)
+_MONTHS: Final = ("january", "february", "march", "april", "may", "june", "july", "august",
+    "september", "october", "november", "december")  # fmt: skip
+
+
+class LeapFile(NamedTuple):
+    """What a leap-second file says."""
+
+    rows: tuple[LeapRow, ...]
+    expires_mjd: int | None
+    issued: str | None
+    sha256: str
+
+
+def read_leap_file(path: Path) -> LeapFile:
+    """Read `Leap_Second.dat` (IERS) or `leap-seconds.list` (IETF/IANA), told apart by the `#@` line of the latter.
+
+    Raises
+    ------
+    DataFileError
+        With path and row: for a file that cannot be read, a row that is not understood, a date that
+        contradicts its MJD, a checksum that does not fit, or a table that does not begin on 1972-01-01 with
+        TAI - UTC = 10 s.
+    """
+    try:
+        content = path.read_bytes()
+        lines = content.decode().splitlines()
+    except (OSError, UnicodeDecodeError) as error:
+        raise DataFileError(f"cannot read the leap-second table {path}: {error}", path=path) from error
+    is_list = any(line.startswith("#@") for line in lines)
+    expires, issued = _list_header(lines, path) if is_list else _dat_header(lines, path)
+    rows: list[LeapRow] = []
+    for number, line in enumerate(lines, start=1):
+        fields = line.partition("#")[0].split()
+        if not fields:
+            continue
+        try:
+            row = _list_row(fields) if is_list else _dat_row(fields)
+        except ValueError as error:
+            raise DataFileError(
+                f"{path}, row {number}: {line.strip()!r} is not a row of a leap-second table ({error})",
+                row=number,
+                path=path,
+            ) from error
+        if not rows and row != FIRST_STEP:
+            raise DataFileError(
+                f"{path}, row {number}: the table must begin on 1972-01-01 (MJD 41317) with TAI - UTC = 10 s, "
+                f"got MJD {row.mjd} with {row.tai_minus_utc_ns / 1e9} s; the file may be cut short",
+                row=number,
+                path=path,
+            )
+        if rows and row.mjd <= rows[-1].mjd:
+            raise DataFileError(
+                f"{path}, row {number}: MJD {row.mjd} does not follow {rows[-1].mjd}", row=number, path=path
+            )
+        rows.append(row)
+    if not rows:
+        raise DataFileError(
+            f"{path} holds no leap-second rows; expected the layout of Leap_Second.dat (IERS) or "
+            "leap-seconds.list (IANA)",
+            path=path,
+        )
+    return LeapFile(tuple(rows), expires, issued, hashlib.sha256(content).hexdigest())
+
+
+def _mjd_of(year: int, month: int, day: int) -> int:
+    """MJD of a Gregorian date; `ValueError` where there is no such date."""
+    return int(np.datetime64(f"{year:04d}-{month:02d}-{day:02d}", "D").astype(np.int64)) + 40587
+
+
+def _dat_header(lines: list[str], path: str | Path) -> tuple[int | None, str | None]:
+    expires: int | None = None
+    issued: str | None = None
+    for number, line in enumerate(lines, start=1):
+        found = re.search(r"^#.*expires on\s+(\d{1,2})\s+([A-Za-z]+)\s+(\d{4})", line)
+        if found:
+            try:
+                expires = _mjd_of(int(found[3]), _MONTHS.index(found[2].lower()) + 1, int(found[1]))
+            except ValueError as error:
+                raise DataFileError(f"{path}, row {number}: no such date: {line!r}", row=number, path=path) from error
+        found = re.search(r"^#.*Bulletin\s+(?:C\s*)?(\d+)\s+issued in\s+([A-Za-z]+\s+\d{4})", line)
+        if found:
+            issued = f"Bulletin C {found[1]}, {found[2]}"
+    return expires, issued
+
+
+def _dat_row(content: list[str]) -> LeapRow:
+    if len(content) != 5:
+        raise ValueError("expected MJD, day, month, year, TAI-UTC")
+    mjd = Fraction(content[0])
+    day, month, year = (int(part) for part in content[1:4])
+    if mjd != _mjd_of(year, month, day):
+        raise ValueError(f"MJD and date disagree: {year:04d}-{month:02d}-{day:02d} is MJD {_mjd_of(year, month, day)}")
+    return LeapRow(int(mjd), nanoseconds(content[4], "TAI - UTC"), int(mjd))
+
+
+def _list_header(lines: list[str], path: str | Path) -> tuple[int | None, str | None]:
+    values: dict[str, tuple[int, str]] = {}
+    for number, line in enumerate(lines, start=1):
+        if line[:2] in ("#@", "#$", "#h"):
+            values[line[:2]] = (number, line[2:].strip())
+    for mark in ("#@", "#$"):
+        number, value = values.get(mark, (0, "0"))
+        if not value.isdecimal():
+            raise DataFileError(
+                f"{path}, row {number}: {mark} must be followed by NTP seconds, got {value!r}", row=number, path=path
+            )
+    if "#h" in values and "#$" in values:
+        digits = values["#$"][1] + values["#@"][1]
+        digits += "".join("".join(line.partition("#")[0].split()) for line in lines)
+        expected = hashlib.sha1(digits.encode(), usedforsecurity=False).hexdigest()
+        number, words = values["#h"]
+        # Leading zeros of a word may be left out.
+        if "".join(word.zfill(8) for word in words.split()) != expected:
+            raise DataFileError(
+                f"{path}, row {number}: the checksum is not that of the rows; "
+                "the file is damaged or was edited: get a fresh copy",
+                row=number,
+                path=path,
+            )
+    issued = None
+    if "#$" in values:
+        issued = str(np.datetime64("1900-01-01", "s") + np.timedelta64(int(values["#$"][1]), "s"))[:10]
+    return int(values["#@"][1]) // 86400 + _NTP_TO_MJD, issued
+
+
+def _list_row(content: list[str]) -> LeapRow:
+    if len(content) != 2:
+        raise ValueError("expected NTP seconds and TAI-UTC")
+    day, rest = divmod(int(content[0]), 86400)
+    if rest:
+        raise ValueError("the NTP seconds are not those of 0h")
+    return LeapRow(day + _NTP_TO_MJD, nanoseconds(content[1], "TAI - UTC"), day + _NTP_TO_MJD)

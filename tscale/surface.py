@@ -1,0 +1,178 @@
+"""A place on the surface of another body: the Moon, Mars, Venus or Mercury."""
+
+from __future__ import annotations
+
+import math
+import tomllib
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Final
+
+import numpy as np
+
+from .body_shape import FIGURES, ROTATIONS, Rotation, own_body
+from .constants import C_M_S, DAY_S
+from .earth.frames import dot
+from .ephemeris.bodies import body_id, body_name
+from .errors import DataFileError, InvalidInput
+from .exact import FloatArray, Pair
+
+if TYPE_CHECKING:
+    from .tables.reference import ReferenceData
+
+__all__ = ["SurfaceSite"]
+
+_KEYS: Final = ("name", "body", "lon_deg", "lat_deg", "height_m")
+
+
+@dataclass(frozen=True)
+class SurfaceSite:
+    """A named point that turns with the Moon, Mars, Venus or Mercury.
+
+    Coordinates refer to the body's reference ellipsoid and rotation elements of the IAU (WGCCRE 2015): the rotation
+    is good to 100-200 m on the Moon (main libration terms of the mean Earth/polar axis frame), some metres on Mars.
+
+    Parameters
+    ----------
+    name : str
+        Name, printable.
+    body : str or int
+        `moon`, `mars`, `venus`, `mercury`, or the NAIF number; kept as the number.
+    lon_deg : float
+        East longitude within +-360, degrees.
+    lat_deg : float
+        Latitude of the ellipsoid's normal within +-90, degrees.
+    height_m : float
+        Height above the ellipsoid, m, within +-100 km.
+
+    Raises
+    ------
+    InvalidInput
+        Values that are not finite or out of range, or a body without rotation elements.
+    """
+
+    name: str
+    body: str | int
+    lon_deg: float
+    lat_deg: float
+    height_m: float = 0.0
+    _fixed_m: FloatArray = field(init=False, repr=False, compare=False)
+    _up: FloatArray = field(init=False, repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        if not isinstance(self.name, str) or not self.name.strip() or not self.name.isprintable():
+            raise InvalidInput(f"the name of a surface site is a printable text, got {self.name!r}")
+        number = body_id(self.body)
+        if own_body(number) not in ROTATIONS:
+            known = ", ".join(body_name(n) for n in sorted(ROTATIONS))
+            hint = "; for the Earth use Site" if number == 399 else ""
+            raise InvalidInput(
+                f"surface site {self.name!r}: no rotation elements for {body_name(number)}; known are {known}{hint}"
+            )
+        object.__setattr__(self, "body", number)
+        for what, limit in (("lon_deg", 360.0), ("lat_deg", 90.0), ("height_m", 1e5)):
+            value = getattr(self, what)
+            if isinstance(value, (bool, str)) or not np.isscalar(value) or not math.isfinite(float(value)):  # type: ignore[arg-type]
+                raise InvalidInput(f"surface site {self.name!r}: {what} must be a finite number, got {value!r}")
+            if abs(value) > limit:
+                raise InvalidInput(
+                    f"surface site {self.name!r}: {what} must lie within +-{limit:g}, got {value!r}; check order and units"
+                )
+            object.__setattr__(self, what, float(value))
+        figure = FIGURES[own_body(number)]
+        lon, lat = math.radians(self.lon_deg), math.radians(self.lat_deg)
+        up = np.array([math.cos(lat) * math.cos(lon), math.cos(lat) * math.sin(lon), math.sin(lat)])
+        squash = (figure.polar_m / figure.equatorial_m) ** 2
+        normal = figure.equatorial_m / math.sqrt(math.cos(lat) ** 2 + squash * math.sin(lat) ** 2)
+        fixed = up * (np.array([normal, normal, normal * squash]) + self.height_m)
+        for key, value in (("_fixed_m", fixed), ("_up", up)):
+            value.flags.writeable = False
+            object.__setattr__(self, key, value)
+
+    @classmethod
+    def load(cls, path: str | Path) -> SurfaceSite:
+        """Read a TOML file with a `[surface]` table whose keys are the parameters of this class.
+
+        Raises
+        ------
+        DataFileError
+            Missing or damaged file, unknown or missing keys, values out of range; with the path.
+        """
+        path = Path(path)
+        try:
+            document = tomllib.loads(path.read_text(encoding="utf-8"))
+        except OSError as error:
+            raise DataFileError(f"cannot read the surface site {path}: {error.strerror or error}", path=path) from error
+        except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
+            raise DataFileError(f"{path} is not a TOML file: {error}", path=path) from error
+        table: Any = document.get("surface")
+        if not isinstance(table, dict) or not set(_KEYS[:4]) <= table.keys():
+            raise DataFileError(f"{path} needs a [surface] table with {', '.join(_KEYS[:4])}", path=path)
+        unknown = sorted(set(table) - set(_KEYS))
+        if unknown:
+            raise DataFileError(f"{path}: unknown keys {unknown} in [surface]; allowed are {list(_KEYS)}", path=path)
+        try:
+            return cls(**table)
+        except InvalidInput as error:
+            raise DataFileError(f"{path}: {error}", path=path) from error
+
+    def offset(self, tdb: Pair) -> tuple[FloatArray, FloatArray]:
+        """Position (m) and velocity (m/s) from the body's centre on the ICRF axes, each (..., 3), at TDB counts."""
+        return _turned(_rotation(self), self._fixed_m, tdb)
+
+    def up(self, tdb: Pair) -> FloatArray:
+        """Unit normal of the ellipsoid on the ICRF axes, (..., 3), at TDB counts."""
+        return _turned(_rotation(self), self._up, tdb)[0]
+
+    def state_bcrs(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
+        """Barycentric position (m) and velocity (m/s), TDB-compatible, each (..., 3), at TDB counts.
+
+        The Lorentz contraction of the body is included (1 cm on Mars); the scale between the body's own
+        coordinates and TDB-compatible ones (a few cm) is left out, below the accuracy of the rotation elements.
+        """
+        centre, velocity = reference.ephemeris.state(self.body, tdb)
+        r, v = self.offset(tdb)
+        return centre + contracted(r, velocity), velocity + v
+
+
+def contracted(r_m: FloatArray, velocity_m_s: FloatArray) -> FloatArray:
+    """`r_m` as seen in the frame in which its body moves at `velocity_m_s`: r - (V.r) V / (2 c^2)."""
+    return np.asarray(r_m - velocity_m_s * (dot(velocity_m_s, r_m) * (0.5 / C_M_S**2))[..., np.newaxis])
+
+
+def _rotation(site: SurfaceSite) -> Rotation:
+    assert isinstance(site.body, int)
+    return ROTATIONS[own_body(site.body)]
+
+
+def _turned(rotation: Rotation, fixed: FloatArray, tdb: Pair) -> tuple[FloatArray, FloatArray]:
+    """Turn a body-fixed vector to the ICRF axes: about z by W, about x by 90 deg - dec, about z by 90 deg + ra."""
+    whole, fraction = np.broadcast_arrays(np.asarray(tdb[0]), np.asarray(tdb[1]))
+    days = np.asarray((whole + fraction) / DAY_S)
+    w, w_rate = rotation.w.at(days)
+    dec, dec_rate = rotation.dec.at(days / rotation.pole_unit_days)
+    ra, ra_rate = rotation.ra.at(days / rotation.pole_unit_days)
+    pole_s = DAY_S * rotation.pole_unit_days
+    r = np.broadcast_to(fixed, (*days.shape, 3))
+    v = np.zeros_like(r)
+    for axes, angle, rate in (
+        ((0, 1), w, w_rate / DAY_S),
+        ((1, 2), np.pi / 2.0 - dec, -dec_rate / pole_s),
+        ((0, 1), np.pi / 2.0 + ra, ra_rate / pole_s),
+    ):
+        r, v = _turn(axes, angle, rate, r, v)
+    return r, v
+
+
+def _turn(
+    axes: tuple[int, int], angle: FloatArray, rate: FloatArray, r: FloatArray, v: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Rotate position and velocity by an angle in the plane of two axes, itself changing at `rate` (rad/s)."""
+    first, second = axes
+    cosine, sine = np.cos(angle), np.sin(angle)
+    turned, moving = r.copy(), v.copy()
+    turned[..., first] = cosine * r[..., first] - sine * r[..., second]
+    turned[..., second] = sine * r[..., first] + cosine * r[..., second]
+    moving[..., first] = cosine * v[..., first] - sine * v[..., second] - rate * turned[..., second]
+    moving[..., second] = sine * v[..., first] + cosine * v[..., second] + rate * turned[..., first]
+    return turned, moving

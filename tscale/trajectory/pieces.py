@@ -1,0 +1,84 @@
+"""The parts that a trajectory is made of: a motion about one centre, over one span of dates."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Literal, Protocol, TypeAlias
+
+import numpy as np
+
+from ..errors import DataFileError
+from ..exact import FloatArray, Pair
+
+if TYPE_CHECKING:
+    from ..ephemeris import Ephemeris
+    from ..ephemeris.segments import Segment
+
+__all__ = ["Axes", "Motion", "Piece", "SegmentMotion", "segment_pieces"]
+
+Axes: TypeAlias = Literal["ICRF", "ITRS"]
+
+_KM_M = 1e3
+# Bodies that planetary ephemerides hold: the barycentre, the planets (systems), the Sun, the Moon and the Earth.
+_PLANETARY = frozenset((*range(11), 301, 399))
+
+
+class Motion(Protocol):
+    """Where something is with respect to its centre."""
+
+    def state(self, count: Pair) -> tuple[FloatArray, FloatArray]:
+        """Position (m) and velocity (m/s), (n, 3) each, at 1-d counts inside the span of the piece."""
+        ...
+
+
+@dataclass(frozen=True)
+class Piece:
+    """A motion, its centre (NAIF number), its axes, and the first and last count it may be asked for (None: no end)."""
+
+    motion: Motion
+    center: int
+    axes: Axes
+    first: Pair | None
+    last: Pair | None
+
+
+class SegmentMotion:
+    """One segment of an SPK kernel, and the bodies of the same kernel between its centre and a planetary one."""
+
+    def __init__(self, segment: Segment, kernel: Ephemeris, top: int) -> None:
+        self._segment = segment
+        self._kernel = kernel
+        self._top = top
+
+    def state(self, count: Pair) -> tuple[FloatArray, FloatArray]:
+        """See `Motion.state`."""
+        position, velocity = self._segment.evaluate(count[0], count[1], True, {})
+        if velocity is None:
+            raise DataFileError(f"{self._kernel.name} gives no velocities", path=self._kernel.path)
+        r, v = position.T * _KM_M, velocity.T * _KM_M
+        if self._top != self._segment.center:
+            up_r, up_v = self._kernel.state(self._segment.center, count, self._top)
+            r, v = r + up_r, v + up_v
+        return r, v
+
+
+def segment_pieces(kernel: Ephemeris, segments: tuple[Segment, ...], target: int) -> tuple[Piece, ...]:
+    """Make one piece of each segment of `target`, in the order of the file (where two cover a date, the last counts)."""
+    centers = {s.target: s.center for s in segments}
+    pieces = []
+    for segment in segments:
+        if segment.target != target:
+            continue
+        top, seen = segment.center, {target}
+        while top not in _PLANETARY and top in centers and top not in seen:
+            seen.add(top)
+            top = centers[top]
+        pieces.append(
+            Piece(SegmentMotion(segment, kernel, top), top, "ICRF", _pair(segment.start_s), _pair(segment.end_s))
+        )
+    return tuple(pieces)
+
+
+def _pair(count_s: float) -> Pair:
+    whole = np.floor(count_s)
+    return np.asarray(int(whole)), np.asarray(count_s - whole)
