@@ -26,6 +26,7 @@ FLOORS = {
     "earth": 4,
     "trajectory": 4,
     "surface": 4,
+    "body_shape": 4,
     "source": 4,
     "transforms": 5,
     "link": 5,

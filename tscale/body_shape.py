@@ -15,7 +15,7 @@ from typing import Final, NamedTuple
 import numpy as np
 
 from .constants import SUN_RADIUS_M
-from .exact import FloatArray
+from .exact import FloatArray, two_product
 
 __all__ = ["FIGURES", "MEAN_RADIUS_M", "ROTATIONS", "Angle", "Figure", "Rotation", "own_body"]
 
@@ -64,10 +64,15 @@ class Angle(NamedTuple):
     sines_deg: tuple[tuple[float, float, float], ...] = ()
     cosines_deg: tuple[tuple[float, float, float], ...] = ()
 
-    def at(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Value (rad) and derivative by x (rad per unit of x)."""
+    def at(self, whole: FloatArray, part: FloatArray | float = 0.0) -> tuple[FloatArray, FloatArray]:
+        """Value (rad) and derivative (rad per unit) at x = whole + part.
+
+        Whole turns are taken out of c1 x before anything is added, so that millions of degrees keep 1e-15 rad.
+        """
         c0, c1, c2 = self.polynomial_deg
-        value = c0 + x * (c1 + x * c2)
+        x = whole + part
+        product, error = two_product(np.asarray(whole, dtype=np.float64), c1)
+        value = c0 + np.fmod(product, 360.0) + (error + c1 * part + c2 * x * x)
         rate = c1 + 2.0 * c2 * x
         for amplitude, phase, frequency in self.sines_deg:
             argument = np.radians(phase + frequency * x)

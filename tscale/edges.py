@@ -10,7 +10,7 @@ from typing import Final
 import numpy as np
 
 from . import exact
-from .constants import C_M_S, L_B, L_G
+from .constants import C_M_S, L_B, L_G, TT_MINUS_TAI
 from .earth.observer import Observer
 from .exact import FloatArray, Pair
 from .instants import Instants
@@ -34,6 +34,8 @@ __all__ = [
     "wavefront_step",
 ]
 
+_TT_MINUS_TAI: Final = exact.normalise(*TT_MINUS_TAI)
+
 TIME_EPHEMERIS_SIGMA_S: Final = 2e-10
 """Standard uncertainty of TT - TDB at the geocentre, s: rms difference from an independently integrated
 planetary ephemeris (type B)."""
@@ -50,9 +52,9 @@ def _count_difference(before: Instants, after: Instants) -> Pair:
 def _label_minus_tai(scale: Scale, count: Pair, reference: ReferenceData) -> Pair:
     """Label of a fixed-distance scale minus the TAI label, in seconds."""
     if not scale.utc_labels:
-        offset = scale.tai_minus_count
+        offset = scale.count_minus_tai
         assert offset is not None
-        return exact.normalise(-offset[0], -offset[1])
+        return exact.normalise(*offset)
     utc = exact.add(count, exact.normalise(-scale.label_offset_s, 0.0))
     tai_minus_utc = exact.from_seconds(reference.leap_seconds.tai_minus_utc(utc))
     return exact.subtract(exact.normalise(scale.label_offset_s, 0.0), tai_minus_utc)
@@ -204,7 +206,7 @@ def tt_tdb_step(place: str, observer: Observer | None, reference: ReferenceData)
 
 def orientation_notes(tt: Pair, reference: ReferenceData) -> tuple[str, ...]:
     """What a reader should know of the Earth orientation used: how much is predicted or held."""
-    tai = exact.subtract(tt, exact.normalise(32, 0.184))
+    tai = exact.subtract(tt, _TT_MINUS_TAI)
     status = reference.earth_orientation.status(tai)
     names = {1: "use predicted Earth orientation", 2: "are past the end of the Earth orientation, which is held"}
     counts = {code: int(np.count_nonzero(status == code)) for code in names}
@@ -280,7 +282,7 @@ def wavefront_step(
         if observer is None:
             return {}
         event = barycentric.observer_event(before.pair, reference, observer)
-        values = reference.earth_orientation.at(exact.subtract(event.tt, exact.normalise(32, 0.184)))
+        values = reference.earth_orientation.at(exact.subtract(event.tt, _TT_MINUS_TAI))
         speed, radius = np.linalg.norm(event.v_gcrs_m_s, axis=-1), np.linalg.norm(event.r_gcrs_m, axis=-1)
         pole = np.hypot(values.x_sigma_rad, values.y_sigma_rad)
         return {

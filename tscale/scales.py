@@ -32,17 +32,17 @@ PLACES: Final = ("TOPOCENTER", "GEOCENTER", "BARYCENTER", *BODY_PLACES)
 
 _FAMILY: Final = re.compile(r"(TT|UTC|CLOCK|PROPER)\(([^()\s@]+)\)\Z")
 
-# TAI count minus the scale's own count, as (whole s, fraction): both counts start at the label
+# The scale's own count minus the TAI count, as (whole s, fraction): both counts start at the label
 # 2000-01-01T12:00:00, where TAI - UTC was 32 s. GPS and Galileo time keep the 19 s of 1980 and BeiDou
 # time the 33 s of 2006 (IS-GPS-200; Galileo OS-SIS-ICD; BDS-SIS-ICD); GLONASS time is UTC + 3 h.
-_TAI_MINUS_COUNT: Final[dict[str, tuple[int, float]]] = {
-    "UTC": (32, 0.0),
+_COUNT_MINUS_TAI: Final[dict[str, tuple[int, float]]] = {
+    "UTC": (-32, 0.0),
     "TAI": (0, 0.0),
-    "TT": (-TT_MINUS_TAI[0] - 1, 1.0 - TT_MINUS_TAI[1]),
-    "GPS": (19, 0.0),
-    "GST": (19, 0.0),
-    "BDT": (33, 0.0),
-    "GLONASS": (32 - 10800, 0.0),
+    "TT": TT_MINUS_TAI,
+    "GPS": (-19, 0.0),
+    "GST": (-19, 0.0),
+    "BDT": (-33, 0.0),
+    "GLONASS": (10800 - 32, 0.0),
 }
 _OTHERS: Final = ("UT1", "TCG", "TCB", "TDB", "TCL")
 
@@ -63,8 +63,8 @@ class Scale:
         True where labels carry leap seconds (UTC, UTC(k), clocks, GLONASS).
     label_offset_s : int
         Label minus UTC label, s (10800 for GLONASS, else 0).
-    tai_minus_count : (int, float) or None
-        TAI count minus this scale's count where that is a constant, else None.
+    count_minus_tai : (int, float) or None
+        This scale's count minus the TAI count where that is a constant, else None.
     """
 
     name: str
@@ -72,7 +72,7 @@ class Scale:
     realisation: str | None
     utc_labels: bool
     label_offset_s: int
-    tai_minus_count: tuple[int, float] | None
+    count_minus_tai: tuple[int, float] | None
 
     @classmethod
     def parse(cls, name: str) -> Scale:
@@ -93,13 +93,13 @@ def _parse_scale(name: str) -> Scale:
         if family in ("UTC", "CLOCK"):
             return Scale(name, family, realisation, True, 0, None)
         return Scale(name, family, realisation, False, 0, None)
-    if name in _TAI_MINUS_COUNT:
+    if name in _COUNT_MINUS_TAI:
         labels = name in ("UTC", "GLONASS")
         offset = 10800 if name == "GLONASS" else 0
-        return Scale(name, name, None, labels, offset, _TAI_MINUS_COUNT[name])
+        return Scale(name, name, None, labels, offset, _COUNT_MINUS_TAI[name])
     if name in _OTHERS:
         return Scale(name, name, None, False, 0, None)
-    known = ", ".join((*_TAI_MINUS_COUNT, *_OTHERS))
+    known = ", ".join((*_COUNT_MINUS_TAI, *_OTHERS))
     raise InvalidInput(
         f"unknown scale {name!r}; known are {known}, and TT(realisation), UTC(laboratory), CLOCK(name), PROPER(name), "
         "in capitals"

@@ -148,8 +148,10 @@ def _rotation(site: SurfaceSite) -> Rotation:
 def _turned(rotation: Rotation, fixed: FloatArray, tdb: Pair) -> tuple[FloatArray, FloatArray]:
     """Turn a body-fixed vector to the ICRF axes: about z by W, about x by 90 deg - dec, about z by 90 deg + ra."""
     whole, fraction = np.broadcast_arrays(np.asarray(tdb[0]), np.asarray(tdb[1]))
-    days = np.asarray((whole + fraction) / DAY_S)
-    w, w_rate = rotation.w.at(days)
+    day, second = np.divmod(whole, DAY_S)
+    part = (second + fraction) / DAY_S
+    days = np.asarray(day + part)
+    w, w_rate = rotation.w.at(day.astype(np.float64), part)
     dec, dec_rate = rotation.dec.at(days / rotation.pole_unit_days)
     ra, ra_rate = rotation.ra.at(days / rotation.pole_unit_days)
     pole_s = DAY_S * rotation.pole_unit_days

@@ -23,10 +23,9 @@ import numpy as np
 import numpy.typing as npt
 
 from .. import exact
-from ..constants import EARTH_ANGULAR_VELOCITY_RAD_S
+from ..constants import EARTH_ANGULAR_VELOCITY_RAD_S, TT_MINUS_TAI
 from ..errors import InvalidInput
 from ..exact import FloatArray, Pair
-from ..scales import Scale
 from .cip_table import cip
 from .orientation import Orientation
 
@@ -46,8 +45,7 @@ __all__ = [
 _TWO_PI: Final = 2.0 * np.pi
 _CENTURY_S: Final = 36525.0 * 86400.0
 _S_PRIME_RAD_S: Final = -47.0e-6 * (np.pi / 648000.0) / _CENTURY_S
-# (minus whole, fraction) that takes a TT count to a TAI count: -32.184 s.
-_TAI_MINUS_TT: Final = Scale.parse("TT").tai_minus_count
+_TT_MINUS_TAI: Final = exact.normalise(*TT_MINUS_TAI)
 
 
 def era_rad(ut1: Pair) -> FloatArray:
@@ -72,9 +70,7 @@ def ut1_from_tt(tt: Pair, ut1_minus_tai_s: FloatArray) -> Pair:
 
 
 def _tai(tt: Pair) -> Pair:
-    assert _TAI_MINUS_TT is not None
-    offset = (np.asarray(_TAI_MINUS_TT[0]), np.asarray(_TAI_MINUS_TT[1]))
-    return exact.add((np.asarray(tt[0], dtype=np.int64), np.asarray(tt[1], dtype=np.float64)), offset)
+    return exact.subtract((np.asarray(tt[0], dtype=np.int64), np.asarray(tt[1], dtype=np.float64)), _TT_MINUS_TAI)
 
 
 def orientation(tt: Pair, reference: ReferenceData) -> Orientation:

@@ -19,7 +19,7 @@ from typing import Any, Final
 import numpy as np
 
 from ..errors import InvalidInput, TextError
-from ..exact import FloatArray, IntArray, Pair, normalise
+from ..exact import FloatArray, IntArray, Pair
 from ..formats import decimals, labels
 from ..formats.labels import DayLength
 from ..formats.leap_seconds import LeapSeconds

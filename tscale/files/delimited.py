@@ -20,7 +20,7 @@ _NAMED_DELIMITERS: Final = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe":
 def delimiter_of(text: str) -> str:
     """A delimiter by its name or as the character itself."""
     found = _NAMED_DELIMITERS.get(text, text)
-    if len(found) != 1 or found in "\r\n\"#" or found.isalnum():
+    if len(found) != 1 or found in '\r\n"#' or found.isalnum():
         raise InvalidInput(f"a delimiter is one character or one of {', '.join(_NAMED_DELIMITERS)}; got {text!r}")
     return found
 
@@ -28,7 +28,9 @@ def delimiter_of(text: str) -> str:
 def encode_row(fields: Iterable[str], delimiter: str = ",") -> str:
     """Join fields to one line without its end, quoted where they must be."""
     return delimiter.join(
-        '"' + text.replace('"', '""') + '"' if delimiter in text or '"' in text or "\n" in text or "\r" in text else text
+        '"' + text.replace('"', '""') + '"'
+        if delimiter in text or '"' in text or "\n" in text or "\r" in text
+        else text
         for text in fields
     )
 
@@ -99,11 +101,12 @@ class DelimitedReader:
     Raises
     ------
     DataFileError
-        With the path and line: no header, a column that is missing or named twice, a row of another width, broken quotes.
+        With the path and line: no header, a column missing or named twice, a row of another width, broken quotes.
     """
 
     def __init__(self, stream: Iterable[str], name: str, *, column: str | None = None, delimiter: str = ",") -> None:
         self.name = name
+        self.delimiter = delimiter
         self.newline = "\n"
         self._line = 0
         self._start = 0
@@ -113,7 +116,7 @@ class DelimitedReader:
         self._rows = csv.reader(self._feed(stream), delimiter=delimiter, strict=True)
         header = self._next()
         if header is None:
-            raise DataFileError(f"{name} is empty; it needs a header line and rows below it", path=name)
+            raise DataFileError("the input is empty; it needs a header line and rows below it", path=name)
         self.header = [text.strip() for text in header]
         self.header_text = self._text()
         self.preamble = self._aside
@@ -191,6 +194,8 @@ class DelimitedReader:
         if len(places) != 1:
             how = "no column" if not places else f"{len(places)} columns"
             raise DataFileError(
-                f"there is {how} called {column!r}; the header has {', '.join(self.header)}", path=self.name, row=self._start
+                f"there is {how} called {column!r}; the header has {', '.join(self.header)}",
+                path=self.name,
+                row=self._start,
             )
         return places[0]

@@ -138,7 +138,7 @@ def _log_of(scale: str, clocks: Sequence[ClockLog]) -> ClockLog | None:
 
 def _require_fixed(scale: str) -> None:
     kind = Scale.parse(scale)
-    if kind.tai_minus_count is not None:
+    if kind.count_minus_tai is not None:
         return
     if kind.family == "TT":
         raise MissingPiece(f"no table for {scale}: give it with ReferenceData.load(tt_bipm=path)")

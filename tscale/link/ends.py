@@ -15,6 +15,7 @@ import numpy as np
 from .. import exact
 from ..constants import C_M_S
 from ..earth.frames import bcrs_offset, bcrs_offset_velocity, dot
+from ..earth.moving import tt_from_tdb_at_geocentre
 from ..earth.observer import Observer
 from ..earth.rotation import gcrs_from_itrs
 from ..earth.site import Site
@@ -183,7 +184,7 @@ class SurfaceEnd(End):
 
 @dataclass(frozen=True)
 class MovingEnd(End):
-    """Anything with a barycentric state of its own."""
+    """Anything with a barycentric state of its own; a trajectory about one centre keeps to that."""
 
     moving: Moving
 
@@ -192,6 +193,11 @@ class MovingEnd(End):
         return _span_of(self.moving)
 
     def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:  # noqa: D102
+        if self.anchor != 0 and isinstance(self.moving, Trajectory):
+            orbit = self.moving
+            own = tdb if orbit.scale == "TDB" else tt_from_tdb_at_geocentre(tdb, reference)
+            # The vector from the trajectory's own centre, before the centre's place is added and rounds it.
+            return orbit._assemble(own, lambda piece, index, r, v: (r, v))
         position, velocity = self.moving.state_bcrs(tdb, reference)
         return np.asarray(position, dtype=np.float64), np.asarray(velocity, dtype=np.float64)
 
@@ -210,7 +216,8 @@ def as_end(participant: Any, role: str) -> End:
     if isinstance(participant, Trajectory):
         if participant.geocentric:
             return ObserverEnd(name, _EARTH, participant)
-        return MovingEnd(name, 0, participant)
+        centres = {piece.center for piece in participant.pieces}
+        return MovingEnd(name, centres.pop() if len(centres) == 1 else 0, participant)
     if isinstance(participant, Moving):
         return MovingEnd(name, 0, participant)
     if isinstance(participant, Observer):

@@ -16,7 +16,6 @@ from typing import Final
 import numpy as np
 
 from ..errors import DataFileError, InvalidInput
-from ..exact import from_seconds
 from ..formats.leap_seconds import LeapSeconds
 from ..instants import Instants
 from .clock_rows import ClockRows, clock_scale, reference_scale
@@ -77,7 +76,10 @@ def _cells(content: bytes, path: Path) -> tuple[list[int], list[dict[str, str]]]
     for number, line in enumerate(text.splitlines(), 1):
         if not line.strip() or line.lstrip().startswith("#"):
             continue
-        cells = [cell.strip() for cell in next(csv.reader([line]))]
+        try:
+            cells = [cell.strip() for cell in next(csv.reader([line], skipinitialspace=True))]
+        except csv.Error as error:
+            raise DataFileError(f"{path}, line {number}: not a CSV row, {error}", row=number, path=path) from error
         if header is None:
             header = cells
             lacking = [column for column in _NEEDED if column not in header]
@@ -137,5 +139,5 @@ def _exact_number(text: str, column: str, row: int, path: Path) -> tuple[int, fl
     """Decimal text as whole seconds and a fraction that is rounded once."""
     value = _number(text, column, row, path)
     whole = int(value.to_integral_value(rounding="ROUND_FLOOR"))
-    carry, fraction = from_seconds(float(value - whole))
-    return whole + int(carry), float(fraction)
+    fraction = float(value - whole)
+    return (whole, fraction) if fraction < 1.0 else (whole + 1, 0.0)

@@ -20,7 +20,7 @@ from ..instants import Instants
 from .clock_curve import ClockCurve, Found
 from .clock_files import parse_clock_file
 from .clock_rows import ClockRows, Interpolation, check_forwards, checked_curve, clock_scale, reference_scale
-from .common import FrozenArrays, as_pair, rows_hash
+from .common import FrozenArrays, as_pair, rows_hash, utc_text
 
 __all__ = ["ClockLog"]
 
@@ -261,8 +261,8 @@ class ClockLog(FrozenArrays):
         return at, found.interval
 
     def _ends(self) -> tuple[str, str]:
-        start, end = (str(text) for text in self.span.to_iso(0))
-        return start, end
+        whole, fraction = self.span.pair
+        return utc_text((whole[0], fraction[0])), utc_text((whole[1], fraction[1]))
 
     def _check(self, found: Found, what: str) -> None:
         bad = found.bad

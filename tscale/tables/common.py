@@ -24,6 +24,7 @@ __all__ = [
     "rows_hash",
     "since",
     "tai_of_days",
+    "utc_text",
 ]
 
 _TAI_MINUS_UTC_COUNT: Final = 32
@@ -70,6 +71,13 @@ def rows_hash(*arrays: npt.NDArray[Any]) -> str:
 def mjd_date(mjd: float) -> str:
     """Calendar date of a Modified Julian Date, for messages."""
     return str(np.datetime64("2000-01-01", "D") + np.timedelta64(int(np.floor(mjd)) - MJD_J2000, "D"))
+
+
+def utc_text(utc: Pair) -> str:
+    """Label of one UTC count, to the second, for messages; by the default table, without a warning past its expiry."""
+    day, second, _ = LeapSeconds.default().label_from_count(as_pair(utc))
+    minute = min(int(second) // 60, 1439)  # a leap second belongs to the last minute of its day
+    return f"{mjd_date(int(day))}T{minute // 60:02d}:{minute % 60:02d}:{int(second) - 60 * minute:02d}"
 
 
 def as_pair(pair: Pair) -> Pair:

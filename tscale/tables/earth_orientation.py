@@ -156,7 +156,7 @@ class EarthOrientation(FrozenArrays):
         dx_mas: float = 0.0,
         dy_mas: float = 0.0,
         start_mjd: int = 41317,
-        end_mjd: int = 73050,
+        end_mjd: int = 73093,
         leap_seconds: LeapSeconds | None = None,
         name: str = "constant",
     ) -> EarthOrientation:

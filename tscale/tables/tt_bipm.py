@@ -24,8 +24,8 @@ __all__ = ["TTBIPM", "Extension"]
 _STEP_DAYS: Final = 10
 # Early rows lack the point after the MJD, and columns may touch; then three or four decimals tell where one ends.
 _ROW: Final = re.compile(
-    rb"\s*(\d{5})\.?(?:\s+([-+]?\d*\.\d+)\s+([-+]?\d*\.\d+)|"
-    rb"\s*([-+]?\d*\.\d{3})([-+]?\d*\.\d{3})|\s*([-+]?\d*\.\d{4})([-+]?\d*\.\d{4}))\s*"
+    rb"\s*(\d{5})(?:\.\s*|\s+|(?=[-+]))(?:([-+]?\d*\.\d+)\s+([-+]?\d*\.\d+)|"
+    rb"([-+]?\d*\.\d{3})([-+]?\d*\.\d{3})|([-+]?\d*\.\d{4})([-+]?\d*\.\d{4}))\s*"
 )
 _LIKE_A_ROW: Final = re.compile(rb"\s*\d{5}(?:\.\s|\.$|\s|$|\.?\s*[-+]?\d*\.\d)")
 _NAME: Final = re.compile(r"TTBIPM\.?(\d{2,4})", re.IGNORECASE)

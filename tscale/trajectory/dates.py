@@ -47,7 +47,7 @@ def counts_of(t: Instants) -> Counts:
     InvalidInput
         For any other scale: it needs more than constants to be carried.
     """
-    offset = Scale.parse(t.scale).tai_minus_count
+    offset = Scale.parse(t.scale).count_minus_tai
     if t.scale == "TT":
         return Counts("TT", t.pair, 1.0)
     if t.scale == "TDB":
@@ -60,7 +60,7 @@ def counts_of(t: Instants) -> Counts:
         tdb = exact.add(exact.add(_TDB_AT_T0, since_t0), exact.multiply(since_t0, Factor.of(-L_B)))
         return Counts("TDB", tdb, float(1 - L_B))
     if offset is not None:
-        tai = exact.add(t.pair, (np.asarray(offset[0]), np.asarray(offset[1])))
+        tai = exact.subtract(t.pair, (np.asarray(offset[0]), np.asarray(offset[1])))
         return Counts("TT", exact.add(tai, _TT_MINUS_TAI), 1.0)
     raise InvalidInput(
         f"the dates of a trajectory cannot be {t.scale}: allowed are UTC, TAI, TT, TCG, GPS, GST, BDT, GLONASS, TDB "

@@ -85,7 +85,7 @@ def _check(residual: FloatArray, size: FloatArray) -> None:
         )
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class KeplerOrbit:
     """A two-body orbit on fixed axes.
 

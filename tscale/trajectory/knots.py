@@ -120,7 +120,7 @@ def _checked_states(whole: IntArray, position_m: FloatArray, velocity_m_s: Float
             f"{name}: n dates go with positions and velocities of shape (n, 3); got {whole.shape}, {position.shape} "
             f"and {velocity.shape}"
         )
-    bad = ~(np.isfinite(position).all(axis=1) & np.isfinite(velocity).all(axis=1))
+    bad = np.asarray(~(np.isfinite(position).all(axis=1) & np.isfinite(velocity).all(axis=1)))
     if np.any(bad):
         raise InvalidInput(f"{name}: {int(bad.sum())} of {bad.size} states are not finite; drop them", mask=bad)
     return np.concatenate((position, velocity), axis=1)
@@ -138,7 +138,9 @@ def _knots_used(method: Method, degree: int, available: int, name: str) -> int:
     if available < count:
         lower = 2 * available - 1 if method == "hermite" else available - 1
         hint = (
-            f"give degree={lower} or more states" if lower >= 3 or method == "lagrange" and lower >= 1 else "give more"
+            f"give degree={lower} or more states"
+            if lower >= 3 or (method == "lagrange" and lower >= 1)
+            else "give more"
         )
         raise InvalidInput(f"{name}: degree {degree} ({method}) needs {count} states, got {available}: {hint}")
     return count

@@ -7,14 +7,16 @@ from typing import TYPE_CHECKING, Literal, Protocol, TypeAlias
 
 import numpy as np
 
+from ..ephemeris.chebyshev import date_text
 from ..errors import DataFileError
-from ..exact import FloatArray, Pair
+from ..exact import FloatArray, IntArray, Pair
+from .dates import since
 
 if TYPE_CHECKING:
     from ..ephemeris import Ephemeris
     from ..ephemeris.segments import Segment
 
-__all__ = ["Axes", "Motion", "Piece", "SegmentMotion", "segment_pieces"]
+__all__ = ["Axes", "Motion", "Piece", "SegmentMotion", "cover_words", "piece_numbers", "segment_pieces"]
 
 Axes: TypeAlias = Literal["ICRF", "ITRS"]
 
@@ -31,7 +33,7 @@ class Motion(Protocol):
         ...
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Piece:
     """A motion, its centre (NAIF number), its axes, and the first and last count it may be asked for (None: no end)."""
 
@@ -40,6 +42,37 @@ class Piece:
     axes: Axes
     first: Pair | None
     last: Pair | None
+
+    @property
+    def span(self) -> tuple[float, float]:
+        """First and last count, s; infinite where there is no end."""
+        first = -np.inf if self.first is None else float(self.first[0] + self.first[1])
+        return first, np.inf if self.last is None else float(self.last[0] + self.last[1])
+
+
+def piece_numbers(pieces: tuple[Piece, ...], count: Pair) -> IntArray:
+    """Which piece answers for each 1-d count: the last that covers it, -1 for none. Ends are compared exactly."""
+    which = np.full(count[0].shape, -1, dtype=np.int64)
+    for number, piece in enumerate(pieces):
+        inside = np.ones(which.shape, dtype=np.bool_)
+        if piece.first is not None:
+            inside &= since(count, piece.first) >= 0
+        if piece.last is not None:
+            inside &= since(count, piece.last) <= 0
+        which[inside] = number
+    return which
+
+
+def cover_words(pieces: tuple[Piece, ...]) -> str:
+    """Spell out the spans of pieces, neighbours joined."""
+    spans: list[tuple[float, float]] = []
+    for first, last in sorted(piece.span for piece in pieces):
+        if spans and first <= spans[-1][1]:
+            spans[-1] = (spans[-1][0], max(last, spans[-1][1]))
+        else:
+            spans.append((first, last))
+    texts = [" to ".join(date_text(x) if np.isfinite(x) else "any date" for x in span) for span in spans[:5]]
+    return ", ".join(texts) + (f" and {len(spans) - 5} more spans" if len(spans) > 5 else "")
 
 
 class SegmentMotion:
@@ -63,7 +96,7 @@ class SegmentMotion:
 
 
 def segment_pieces(kernel: Ephemeris, segments: tuple[Segment, ...], target: int) -> tuple[Piece, ...]:
-    """Make one piece of each segment of `target`, in the order of the file (where two cover a date, the last counts)."""
+    """Make one piece of each segment of `target`, in the order of the file: where two cover a date the last counts."""
     centers = {s.target: s.center for s in segments}
     pieces = []
     for segment in segments:

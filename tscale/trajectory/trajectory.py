@@ -6,32 +6,27 @@ import os
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
-from typing import TYPE_CHECKING, Final, Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 import numpy.typing as npt
 
-from ..constants import GM_M3_S2, L_B, L_G
 from ..earth.moving import bcrs_state, gcrs_state, tt_from_tdb_at_geocentre
 from ..earth.rotation import gcrs_state_from_itrs
-from ..ephemeris import body_id, body_name
-from ..ephemeris.chebyshev import broadcast_pair, date_text, span_text
-from ..errors import InvalidInput, MissingPiece, OutOfSpan
+from ..ephemeris.chebyshev import broadcast_pair
+from ..errors import OutOfSpan
 from ..exact import FloatArray, IntArray, Pair
 from ..instants import Instants
-from .dates import NativeScale, counts_of, since
-from .kepler import KeplerOrbit
-from .knots import Knots, Method
-from .pieces import Piece, segment_pieces
+from .dates import NativeScale
+from .knots import Method
+from .makers import kepler_parts, spk_parts, states_parts
+from .pieces import Piece, cover_words, piece_numbers
 
 if TYPE_CHECKING:
     from ..formats.leap_seconds import LeapSeconds
     from ..tables.reference import ReferenceData
 
 __all__ = ["Trajectory"]
-
-_EARTH: Final = 399
-_GM_TT_PER_TDB: Final = float((1 - L_G) / (1 - L_B))
 
 _State = tuple[FloatArray, FloatArray]
 
@@ -84,8 +79,8 @@ class Trajectory:
         Parameters
         ----------
         t : Instants (n,)
-            Dates, increasing. GCRS and ITRS: TT, TCG, TAI, UTC or a GNSS scale; BCRS: TDB or TCB. Lengths are compatible
-            with the scale (those of TCG and TCB are rescaled).
+            Dates, increasing. GCRS and ITRS: TT, TCG, TAI, UTC or a GNSS scale; BCRS: TDB or TCB. Lengths are
+            compatible with the scale (those of TCG and TCB are rescaled).
         position_m, velocity_m_s : float array (n, 3)
             m and m/s; with ITRS the velocity is relative to the turning Earth.
         frame : {"GCRS", "ITRS", "BCRS"}
@@ -99,22 +94,9 @@ class Trajectory:
         Raises
         ------
         InvalidInput
-            Shapes that do not fit, too few states, dates that do not increase, a scale that does not go with the frame.
+            Shapes that do not fit, too few states, dates that do not increase, a scale that does not go with `frame`.
         """
-        if frame not in ("GCRS", "ITRS", "BCRS"):
-            raise InvalidInput(f"unknown frame {frame!r}; known are GCRS, ITRS and BCRS")
-        counts = counts_of(t)
-        geocentric = frame != "BCRS"
-        if geocentric != (counts.scale == "TT"):
-            allowed = "TT, TCG, TAI, UTC, GPS ..." if geocentric else "TDB or TCB"
-            raise InvalidInput(
-                f"the dates of {frame} states are {t.scale}; allowed are {allowed}: convert them with tscale.chain first"
-            )
-        position = np.asarray(position_m, dtype=np.float64) * counts.length
-        knots = Knots(counts.pair, position, np.asarray(velocity_m_s, dtype=np.float64), method, degree, name)
-        origin = _EARTH if geocentric else body_id(center)
-        piece = Piece(knots, origin, "ITRS" if frame == "ITRS" else "ICRF", knots.first, knots.last)
-        return cls(name, counts.scale, geocentric, (piece,))
+        return cls(name, *states_parts(t, position_m, velocity_m_s, frame, center, method, degree, name))
 
     @classmethod
     def from_kepler(
@@ -156,23 +138,8 @@ class Trajectory:
         InvalidInput
             Elements out of range, an epoch on another scale, a body without a known mass.
         """
-        if epoch.size != 1:
-            raise InvalidInput(f"an orbit has one epoch, got {epoch.size} instants")
-        body = body_id(center)
-        geocentric = body == _EARTH
-        counts = counts_of(epoch)
-        if geocentric != (counts.scale == "TT"):
-            allowed = "TT, TCG, TAI, UTC, GPS ..." if geocentric else "TDB or TCB"
-            raise InvalidInput(f"the epoch of an orbit about {body_name(body)} is {allowed}; got {epoch.scale}")
-        if gm_m3_s2 is None:
-            known = {3: GM_M3_S2[399] + GM_M3_S2[301], **GM_M3_S2}
-            if body not in known:
-                raise InvalidInput(f"no mass parameter known for {body_name(body)}; give gm_m3_s2")
-            gm_m3_s2 = known[body] * (_GM_TT_PER_TDB if geocentric else 1.0)
-        angles = (float(np.radians(x)) for x in (i_deg, node_deg, periapsis_deg, mean_anomaly_deg))
-        at = (counts.pair[0].reshape(()), counts.pair[1].reshape(()))
-        orbit = KeplerOrbit(at, float(gm_m3_s2), float(a_m) * counts.length, float(e), *angles)
-        return cls(name, counts.scale, geocentric, (Piece(orbit, body, "ICRF", None, None),))
+        elements = (a_m, e, i_deg, node_deg, periapsis_deg, mean_anomaly_deg)
+        return cls(name, *kepler_parts(epoch, elements, center, gm_m3_s2))
 
     @classmethod
     def from_oem(
@@ -191,9 +158,9 @@ class Trajectory:
         degree : int, optional
             Overrides INTERPOLATION_DEGREE of the message.
         eme2000 : {"icrf", "mean_equator"}
-            What REF_FRAME = EME2000 stands for: the ICRF axes under their older name, as makers of planetary ephemerides
-            write it, or the mean equator and equinox of J2000.0, which differs from them by 23 mas (0.8 m in a low
-            orbit).
+            What REF_FRAME = EME2000 stands for: the ICRF axes under their older name, as makers of planetary
+            ephemerides write it, or the mean equator and equinox of J2000.0, which differs from them by 23 mas (0.8 m
+            in a low orbit).
         leap_seconds : LeapSeconds, optional
             For dates in UTC.
 
@@ -219,33 +186,19 @@ class Trajectory:
         MissingPiece
             If the kernel does not hold the target; the message lists what it holds.
         """
-        from ..ephemeris import Ephemeris
-        from ..ephemeris.daf import read_container
-        from ..ephemeris.segments import read_segments
-
-        kernel = Ephemeris.open(Path(path))
-        number = body_id(target)
-        pieces = segment_pieces(kernel, read_segments(read_container(kernel.path)), number)
-        if not pieces:
-            raise MissingPiece(
-                f"{kernel.name} has no segment of {body_name(number)}; it holds "
-                f"{', '.join(body_name(b) for b in kernel.bodies)}",
-                path=kernel.path,
-            )
-        return cls(f"{body_name(number)} of {kernel.name}", "TDB", False, pieces, kernel.path)
+        return cls(*spk_parts(Path(path), target))
 
     # ---- facts -----------------------------------------------------------------------------------
 
     @property
     def span(self) -> tuple[float, float]:
-        """First and last count on `scale`, s (infinite for an orbit from elements). There may be gaps between pieces."""
-        firsts = [-np.inf if p.first is None else float(p.first[0] + p.first[1]) for p in self.pieces]
-        lasts = [np.inf if p.last is None else float(p.last[0] + p.last[1]) for p in self.pieces]
-        return min(firsts), max(lasts)
+        """First and last count on `scale`, s (infinite for an orbit from elements); pieces may leave gaps between."""
+        spans = [piece.span for piece in self.pieces]
+        return min(first for first, _ in spans), max(last for _, last in spans)
 
     def __repr__(self) -> str:
         kind = "geocentric" if self.geocentric else "barycentric"
-        return f"<Trajectory {self.name!r} {kind}, {self.scale} {_span_words(self.span)}>"
+        return f"<Trajectory {self.name!r} {kind}, {cover_words(self.pieces)} {self.scale}>"
 
     # ---- states ----------------------------------------------------------------------------------
 
@@ -300,7 +253,16 @@ class Trajectory:
     def _assemble(self, count: Pair, finish: Callable[[Piece, IntArray, FloatArray, FloatArray], _State]) -> _State:
         """Evaluate each piece at the counts that are its own; `finish` carries them to the frame asked for."""
         flat = (count[0].reshape(-1), count[1].reshape(-1))
-        which = self._which(flat, count[0].shape)
+        which = piece_numbers(self.pieces, flat)
+        outside = which < 0
+        if outside.any():
+            raise OutOfSpan(
+                f"{int(outside.sum())} of {outside.size} dates lie outside the trajectory {self.name!r}, which covers "
+                f"{cover_words(self.pieces)} {self.scale}: leave them out (see the mask) or give a trajectory that "
+                "reaches them",
+                mask=outside.reshape(count[0].shape),
+                path=self.path,
+            )
         r, v = np.empty((which.size, 3)), np.empty((which.size, 3))
         for number, piece in enumerate(self.pieces):
             index = np.flatnonzero(which == number)
@@ -308,42 +270,3 @@ class Trajectory:
                 r[index], v[index] = finish(piece, index, *piece.motion.state((flat[0][index], flat[1][index])))
         shape = (*count[0].shape, 3)
         return r.reshape(shape), v.reshape(shape)
-
-    def _which(self, count: Pair, shape: tuple[int, ...]) -> IntArray:
-        """Piece of each count: the last that covers it."""
-        which = np.full(count[0].shape, -1, dtype=np.int64)
-        for number, piece in enumerate(self.pieces):
-            inside = np.ones(which.shape, dtype=np.bool_)
-            if piece.first is not None:
-                inside &= since(count, piece.first) >= 0
-            if piece.last is not None:
-                inside &= since(count, piece.last) <= 0
-            which[inside] = number
-        outside = which < 0
-        if outside.any():
-            raise OutOfSpan(
-                f"{int(outside.sum())} of {outside.size} dates lie outside the trajectory {self.name!r}, which covers "
-                f"{self._cover()} {self.scale}: leave them out (see the mask) or give a trajectory that reaches them",
-                mask=outside.reshape(shape),
-                path=self.path,
-            )
-        return which
-
-    def _cover(self) -> str:
-        """Spans of the pieces in words, neighbours joined."""
-        spans: list[tuple[float, float]] = []
-        for piece in sorted(self.pieces, key=lambda p: -np.inf if p.first is None else float(p.first[0] + p.first[1])):
-            first = -np.inf if piece.first is None else float(piece.first[0] + piece.first[1])
-            last = np.inf if piece.last is None else float(piece.last[0] + piece.last[1])
-            if spans and first <= spans[-1][1]:
-                spans[-1] = (spans[-1][0], max(last, spans[-1][1]))
-            else:
-                spans.append((first, last))
-        shown = [_span_words(span) for span in spans[:5]]
-        return ", ".join(shown) + (f" and {len(spans) - 5} more" if len(spans) > 5 else "")
-
-
-def _span_words(span: tuple[float, float]) -> str:
-    if np.isfinite(span).all():
-        return span_text(span)
-    return " to ".join(date_text(x) if np.isfinite(x) else "any date" for x in span)

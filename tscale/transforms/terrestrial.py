@@ -37,16 +37,13 @@ def require_scale(t: Instants, *scales: str) -> None:
         )
 
 
-def _fixed_offset(scale: Scale) -> tuple[int, float]:
-    if scale.tai_minus_count is None:
+def _count_minus_tai(scale: Scale) -> Pair:
+    offset = scale.count_minus_tai
+    if offset is None:
         raise ScaleMismatch(
             f"{scale.name} is not at a fixed distance from TAI; UTC, TAI, TT, GPS, GST, BDT and GLONASS are"
         )
-    return scale.tai_minus_count
-
-
-def _as_pair(value: tuple[int, float]) -> Pair:
-    return np.asarray(value[0], dtype=np.int64), np.asarray(value[1], dtype=np.float64)
+    return np.asarray(offset[0], dtype=np.int64), np.asarray(offset[1], dtype=np.float64)
 
 
 def to_fixed_scale(t: Instants, scale: str) -> Instants:
@@ -58,14 +55,16 @@ def to_fixed_scale(t: Instants, scale: str) -> Instants:
     Sources: ITU-R TF.460-6; IAU 1991 A4; IS-GPS-200; Galileo OS-SIS-ICD; BDS-SIS-ICD; GLONASS ICD.
     """
     target = Scale.parse(scale)
-    here, there = _fixed_offset(Scale.parse(t.scale)), _fixed_offset(target)
-    offset = exact.subtract(_as_pair(here), _as_pair(there))
-    return Instants._of(exact.add(t.pair, offset), target, t.place)
+    here, there = _count_minus_tai(Scale.parse(t.scale)), _count_minus_tai(target)
+    if here[1] == there[1]:
+        return Instants._of((t.whole + (there[0] - here[0]), t.fraction), target, t.place)
+    # By way of TAI, so that 32.184 s is taken off as it was put on: the double nearest 0.816 is not 1 - 0.184.
+    return Instants._of(exact.add(exact.subtract(t.pair, here), there), target, t.place)
 
 
 def tai_count(t: Instants) -> Pair:
     """TAI count (whole, fraction) of instants on a fixed-distance scale."""
-    return exact.add(t.pair, _as_pair(_fixed_offset(Scale.parse(t.scale))))
+    return to_fixed_scale(t, "TAI").pair
 
 
 def tt_count(t: Instants) -> Pair:

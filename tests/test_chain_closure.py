@@ -1,0 +1,93 @@
+"""There and back: every ordered pair of scales closes to 1 fs, a wavefront to 0.1 ps."""
+
+from __future__ import annotations
+
+import itertools
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+import tscale
+from tscale import exact
+
+from .strategies import END_2059, START_1962, dates, fractions, wholes
+
+SITE = tscale.Site.from_itrf("test site", 4_033_463.0, 23_662.0, 4_924_305.0)
+SCALES = ("UTC", "TAI", "TT", "TCG", "TCB", "TDB", "GPS", "GST", "BDT", "GLONASS")
+PAIRS = list(itertools.permutations(SCALES, 2))
+UT1_END = 870_000_000  # 2027-07, inside the Earth orientation table
+
+pytestmark = pytest.mark.filterwarnings("ignore::tscale.errors.ExtrapolationWarning")
+
+
+def misclosure_s(chain: tscale.Chain, t: tscale.Instants) -> float:
+    back = chain.inverse(chain(t))
+    return float(np.max(np.abs(exact.seconds(exact.subtract(back.pair, t.pair)))))
+
+
+@pytest.mark.parametrize("pair", PAIRS, ids="-".join)
+@pytest.mark.parametrize("place", ["TOPOCENTER", "GEOCENTER"])
+def test_every_ordered_pair_closes(pair: tuple[str, str], place: str) -> None:
+    # 400 dates per pair at the hazards, in one array; 1 fs is nine roundings of a fraction near 1.
+    @given(whole=st.lists(wholes(), min_size=40, max_size=40), fraction=st.lists(fractions, min_size=40, max_size=40))
+    @settings(max_examples=10)
+    def run(whole: list[int], fraction: list[float]) -> None:
+        t = tscale.Instants.from_seconds(whole, fraction, scale=pair[0])
+        assert misclosure_s(chain, t) <= 1e-15
+
+    site = SITE if place == "TOPOCENTER" else None
+    chain = tscale.chain(f"{pair[0]}@{place}", f"{pair[1]}@{place}", site=site)
+    run()
+
+
+@pytest.mark.parametrize("other", SCALES)
+def test_ut1_closes(other: str) -> None:
+    @given(dates("UT1", end=UT1_END))
+    def run(t: tscale.Instants) -> None:
+        assert misclosure_s(chain, t) <= 1e-15
+
+    chain = tscale.chain("UT1", other, site=SITE)
+    run()
+
+
+@given(t=dates("UTC"), ra=st.floats(0.0, 360.0), dec=st.floats(-90.0, 90.0), parallax=st.sampled_from([0.0, 1.0, 768.0]))
+@settings(max_examples=200)
+@pytest.mark.parametrize("end", ["TDB@BARYCENTER", "TCB@BARYCENTER", "TDB@GEOCENTER", "UTC@GEOCENTER"])
+def test_a_wavefront_closes(end: str, t: tscale.Instants, ra: float, dec: float, parallax: float) -> None:
+    # 0.1 ps: positions at 1.5e11 m have an ulp of 0.1 ps, but the same dates give the same roundings.
+    source = tscale.Source(ra, dec, pm_ra_cosdec_mas_yr=-800.0, pm_dec_mas_yr=10300.0, parallax_mas=parallax)
+    chain = tscale.chain("UTC@TOPOCENTER", end, site=SITE, source=source)
+    assert misclosure_s(chain, t) <= 1e-13
+
+
+def test_a_wavefront_closes_over_the_whole_span() -> None:
+    rng = np.random.default_rng(2)
+    n = 20_000
+    t = tscale.Instants.from_seconds(rng.integers(START_1962, END_2059, n), rng.random(n), scale="UTC")
+    source = tscale.Source(266.4, -29.0, parallax_mas=0.12, name="near the ecliptic")
+    assert misclosure_s(tscale.chain("UTC", "TDB@BARYCENTER", site=SITE, source=source), t) <= 1e-13
+
+
+@given(dates("UTC", end=UT1_END))
+def test_the_ledger_adds_up(t: tscale.Instants) -> None:
+    # Label of the end minus label of the start, both as exact pairs: what the terms must add up to, to 1 fs.
+    chain = tscale.chain("UTC", "TDB", site=SITE)
+    out = chain(t)
+    ledger = chain.ledger(t)
+    tai_minus_utc = tscale.LeapSeconds.default().tai_minus_utc(t.pair)
+    labels = exact.add_seconds(exact.subtract(out.pair, exact.add(t.pair, exact.normalise(32, 0.0))), tai_minus_utc)
+    assert abs(exact.seconds(exact.subtract(ledger.total_exact, labels))) <= 1e-15
+    assert np.sum(list(ledger.values())) == pytest.approx(float(ledger.total), abs=3e-14)  # float64 sum of 70 s
+
+
+def test_a_reversed_chain_is_the_inverse() -> None:
+    t = tscale.Instants.from_iso("1995-06-30T12:00:00.125", scale="UTC")
+    onward, backward = tscale.chain("UTC", "TCB", site=SITE), tscale.chain("TCB", "UTC", site=SITE)
+    out = onward(t)
+    assert (backward(out) == onward.inverse(out)).all()
+    forth, back = onward.ledger(t), backward.ledger(out)
+    assert float(forth.total) == pytest.approx(-float(back.total), abs=1e-14)
+    assert set(forth) == {"TAI - UTC", "TT - TAI", "TCG - TT", *list(forth)[3:]}
+    assert "UTC - TAI" in back

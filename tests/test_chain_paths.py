@@ -1,0 +1,152 @@
+"""Path finding: what a chain does with places, and how it says which piece is missing."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+import tscale
+from tscale.errors import InvalidInput, MissingPiece, OutOfSpan, ScaleMismatch
+
+SITE = tscale.Site.from_itrf("test site", 4_033_463.0, 23_662.0, 4_924_305.0)
+SOURCE = tscale.Source(83.6, 22.0, name="test source")
+T = tscale.Instants.from_iso(["2024-05-01T00:00:00", "2024-05-02T00:00:00.5"], scale="UTC")
+
+
+@pytest.fixture(scope="module")
+def clocks() -> list[tscale.ClockLog]:
+    epoch = tscale.Instants.from_iso(["2024-04-20T00:00:00", "2024-05-10T00:00:00"], scale="UTC(KST)")
+    maser = tscale.ClockLog.from_rows("maser", epoch, [1e-6, 2e-6], [1e-9, 1e-9])
+    epoch = tscale.Instants.from_iso(["2024-04-20T00:00:00", "2024-05-10T00:00:00"], scale="UTC")
+    laboratory = tscale.ClockLog.from_rows("UTC(KST)", epoch, [5e-9, -3e-9], [2e-9, 2e-9])
+    return [maser, laboratory]
+
+
+def test_the_whole_path_from_a_clock(clocks: list[tscale.ClockLog]) -> None:
+    chain = tscale.chain("CLOCK(maser)", "TDB@BARYCENTER", site=SITE, clocks=clocks, source=SOURCE)
+    scales = [part.split("@")[0] for part in str(chain).split(" -> ")]
+    assert scales == ["CLOCK(maser)", "UTC(KST)", "UTC", "TAI", "TT", "TCG", "TCB", "TDB", "TDB"]
+    readings = tscale.Instants.from_iso(["2024-05-01T00:00:00"], scale="CLOCK(maser)")
+    out = chain(readings)
+    assert (out.scale, out.place) == ("TDB", "BARYCENTER")
+    back = chain.inverse(out)
+    assert (back.scale, back.place) == ("CLOCK(maser)", "TOPOCENTER")
+    assert abs(back.minus(readings.at("TOPOCENTER"))) < 1e-13
+    ledger = chain.ledger(readings)
+    # Half-way between the comparisons of 04-20 and 05-10 the maser is 1.55 us and the laboratory 0.6 ns ahead.
+    assert ledger["UTC(KST) - CLOCK(maser)"] == pytest.approx(-1.55e-6, abs=1e-9)
+    assert ledger["UTC - UTC(KST)"] == pytest.approx(-0.6e-9, abs=1e-11)
+    assert "CLOCK(maser)" in ledger.table()
+    sigma = chain.uncertainty_s(readings)
+    assert sigma["CLOCK(maser)"] == pytest.approx(1e-9)
+    assert chain.sigma_s(readings) == pytest.approx(np.sqrt(sum(v**2 for v in sigma.values())))
+
+
+def test_places_are_stamped_and_checked() -> None:
+    chain = tscale.chain("UTC", "TDB", site=SITE)
+    assert chain(T).place == "TOPOCENTER"
+    assert tscale.chain("UTC", "TDB@GEOCENTER")(T).place == "GEOCENTER"
+    assert tscale.chain("UTC", "TT")(T).place is None
+    assert tscale.chain("UTC", "TT")(T.at("GEOCENTER")).place == "GEOCENTER"
+    with pytest.raises(ScaleMismatch, match="GEOCENTER"):
+        chain(T.at("GEOCENTER"))
+    with pytest.raises(ScaleMismatch, match="TAI"):
+        chain(tscale.chain("UTC", "TAI")(T))
+    with pytest.raises(ScaleMismatch):
+        chain.inverse(T)
+    with pytest.raises(InvalidInput):
+        chain("2024-05-01")  # type: ignore[arg-type]
+
+
+@pytest.mark.parametrize(
+    ("start", "end", "given", "words"),
+    [
+        ("UTC", "TDB", {}, "site="),
+        ("UTC@TOPOCENTER", "TDB", {}, "site="),
+        ("UTC", "TDB@BARYCENTER", {"site": SITE}, "source="),
+        ("UTC", "TDB@GEOCENTER", {"site": SITE}, "source="),
+        ("UTC@TOPOCENTER", "TDB@BARYCENTER", {"source": SOURCE}, "site="),
+        ("CLOCK(maser)", "UTC", {}, "clocks="),
+        ("UTC", "UTC(KST)", {}, "UTC(KST)"),
+        ("TAI", "TT(BIPM23)", {}, "tt_bipm"),
+        ("UTC@BARYCENTER", "TDB@BARYCENTER", {}, "barycentre"),
+        ("PROPER(quartz)", "TT", {}, "PROPER(quartz)"),
+        ("TCL", "TT", {}, "TCL"),
+    ],
+)
+def test_a_missing_piece_is_named(start: str, end: str, given: dict[str, object], words: str) -> None:
+    with pytest.raises(MissingPiece) as caught:
+        tscale.chain(start, end, **given)  # type: ignore[arg-type]
+    assert words in str(caught.value)
+
+
+@pytest.mark.parametrize("node", ["utc", "TT@MOONBASE", "TT@", "UTC()", "", 5])
+def test_unknown_nodes(node: str) -> None:
+    with pytest.raises(InvalidInput):
+        tscale.chain(node, "TT")
+
+
+def test_a_wavefront_on_to_the_geocentre_keeps_its_terms_apart() -> None:
+    chain = tscale.chain("UTC", "UTC@GEOCENTER", site=SITE, source=SOURCE)
+    ledger = chain.ledger(T)
+    assert len([name for name in ledger if name.startswith("Roemer delay [")]) == 2
+    assert np.max(np.abs(ledger.total)) < 0.022  # the Earth's radius over c
+    assert np.max(np.abs(chain(T).minus(T.at("GEOCENTER")) - ledger.total)) < 1e-12
+
+
+def test_shapes_and_scalars_pass_through() -> None:
+    chain = tscale.chain("UTC", "TDB@BARYCENTER", site=SITE, source=SOURCE)
+    grid = tscale.Instants.from_seconds(np.arange(6).reshape(2, 3) * 10**6, 0.5, scale="UTC")
+    out, ledger = chain(grid), chain.ledger(grid)
+    assert out.shape == (2, 3)
+    assert all(value.shape == (2, 3) for value in ledger.values())
+    assert chain.rate(grid).shape == (2, 3)
+    one = chain(grid[1, 2])
+    assert one.shape == ()
+    assert one.minus(out[1, 2]) == 0.0
+    assert chain.ledger(grid[1, 2]).table().count("\n") > 10
+    assert chain(grid[:, :0]).shape == (2, 0)
+    with pytest.raises(InvalidInput):
+        ledger.table(6)
+    with pytest.raises(InvalidInput):
+        ledger.exact("no such term")
+
+
+def test_out_of_span_names_the_table_and_carries_the_mask(clocks: list[tscale.ClockLog]) -> None:
+    late = tscale.Instants.from_seconds([0, 3_000_000_000], 0.0, scale="TT")
+    for end in ("UT1", "TDB@GEOCENTER"):
+        with pytest.raises(OutOfSpan) as caught:
+            tscale.chain("TT", end)(late)
+        assert caught.value.mask is not None
+        assert caught.value.mask.tolist() == [False, True]
+    readings = tscale.Instants.from_iso(["2024-05-01T00:00:00", "2025-05-01T00:00:00"], scale="CLOCK(maser)")
+    with pytest.raises(OutOfSpan) as caught:
+        tscale.chain("CLOCK(maser)", "UTC", clocks=clocks)(readings)
+    assert caught.value.mask is not None
+    assert caught.value.mask.tolist() == [False, True]
+
+
+def test_past_the_end_of_earth_orientation_is_said() -> None:
+    chain = tscale.chain("UTC", "TDB@BARYCENTER", site=SITE, source=SOURCE)
+    t = tscale.Instants.from_seconds([0, 1_000_000_000], 0.5, scale="UTC")
+    with pytest.warns(tscale.ExtrapolationWarning, match="held"):
+        chain(t)
+    with pytest.warns(tscale.ExtrapolationWarning):
+        notes = chain.notes(t)
+        sigma = chain.uncertainty_s(t)["Earth orientation, UT1"]
+    assert any("past the end of the Earth orientation" in note for note in notes)
+    assert any("leap-second table" in note for note in notes)
+    assert sigma[0] < 1e-9 < sigma[1]
+    with pytest.raises(OutOfSpan):
+        tscale.chain("UTC", "UT1")(t)
+
+
+def test_another_tt_realisation(tmp_path: object) -> None:
+    table = tscale.TTBIPM.from_rows("TT(BIPM25)", [58479, 58489], [27.6740e-6, 27.6745e-6])
+    reference = tscale.ReferenceData.load(tt_bipm=table)
+    t = tscale.Instants.from_mjd(58484, 0.0, scale="UTC")
+    chain = tscale.chain("UTC", "TT(BIPM25)", reference=reference)
+    out = chain(t)
+    assert out.scale == "TT(BIPM25)"
+    assert float(chain.ledger(t)["TT(BIPM25) - TAI"]) == pytest.approx(32.184 + 27.67425e-6, abs=1e-11)
+    assert chain.inverse(out).minus(t) == pytest.approx(0.0, abs=3e-16)

@@ -1,0 +1,177 @@
+"""The bundle of tables: lazy, immutable, replaceable, the same from every thread."""
+
+from __future__ import annotations
+
+import pickle
+import subprocess
+import sys
+import threading
+from datetime import date
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import pytest
+from astropy_iers_data import IERS_A_FILE, IERS_LEAP_SECOND_FILE
+
+from tscale.errors import DataFileError, InvalidInput, MissingPiece
+from tscale.formats.leap_seconds import LeapSeconds
+from tscale.tables import TTBIPM, EarthOrientation, ReferenceData
+
+
+def bipm(name: str = "BIPM08") -> TTBIPM:
+    return TTBIPM.from_rows(name, [54289, 54299], [26.9755e-6, 26.9783e-6])
+
+
+def test_default_is_one_value_with_the_default_tables() -> None:
+    reference = ReferenceData.default()
+    assert reference is ReferenceData.default()
+    assert reference.leap_seconds is LeapSeconds.default()
+    assert reference.earth_orientation is EarthOrientation.default()
+    assert reference.tt_bipm == ()
+    assert reference.time_ephemeris is reference.time_ephemeris
+
+
+def test_making_one_opens_nothing() -> None:
+    """In a fresh interpreter, so that no other test has read the tables before."""
+    code = (
+        "import io, sys\n"
+        "seen = []\n"
+        "sys.addaudithook(lambda event, args: seen.append(str(args[0])) if event == 'open' else None)\n"
+        "from tscale.tables import ReferenceData\n"
+        "ReferenceData.default().replace(tt_bipm=None)\n"
+        "bad = [name for name in seen if name.endswith(('.bsp', '.all', '-now', 'Leap_Second.dat'))]\n"
+        "assert not bad, bad\n"
+    )
+    subprocess.run([sys.executable, "-c", code], check=True, timeout=60)
+
+
+def test_load_takes_paths_and_objects(tmp_path: Path) -> None:
+    path = tmp_path / "TTBIPM.23"
+    path.write_text("54289. 1.0000 26.9755\n54299. 1.0000 26.9783\n")
+    reference = ReferenceData.load(
+        leap_seconds=IERS_LEAP_SECOND_FILE,
+        earth_orientation=Path(IERS_A_FILE),
+        tt_bipm=[path, bipm()],
+        ephemeris=ReferenceData.default().ephemeris.path,
+    )
+    assert [table.scale for table in reference.tt_bipm] == ["TT(BIPM23)", "TT(BIPM08)"]
+    assert reference.realisation("TT(BIPM23)").path == path
+    assert reference.earth_orientation.name == "finals2000A.all"
+    assert reference.ephemeris.sha256 == ReferenceData.default().ephemeris.sha256
+    assert ReferenceData.load(tt_bipm=path).tt_bipm[0].scale == "TT(BIPM23)"
+    with pytest.raises(DataFileError):
+        ReferenceData.load(earth_orientation=tmp_path / "none")
+
+
+def test_earth_orientation_follows_the_leap_seconds() -> None:
+    """A made-up second at the start of 2020: rows from that day on stand one second later in TAI, UT1-TAI one lower."""
+    plain = LeapSeconds.default()
+    made_up = plain.with_step(58849, 38)
+    changed = ReferenceData(leap_seconds=made_up).earth_orientation
+    default = EarthOrientation.default()
+    assert changed is not default
+    tai = (np.array([600_000_000, 700_000_000]), np.zeros(2))
+    shift = changed.ut1_minus_tai_s((tai[0] + [0, 1], tai[1])) - default.ut1_minus_tai_s(tai)
+    np.testing.assert_allclose(shift, [0.0, -1.0], rtol=0, atol=1e-13)
+
+
+def test_replace() -> None:
+    first = ReferenceData.default()
+    second = first.replace(tt_bipm=bipm())
+    assert first.tt_bipm == ()
+    assert second.tt_bipm[0].scale == "TT(BIPM08)"
+    assert second.replace(tt_bipm=None).tt_bipm == ()
+    assert second.replace(leap_seconds=LeapSeconds.default().with_expiry(None)).tt_bipm == second.tt_bipm
+    with pytest.raises(InvalidInput, match="no table is called leapseconds"):
+        first.replace(leapseconds=None)
+
+
+def test_fingerprint_tells_bundles_apart() -> None:
+    default = ReferenceData.default()
+    prints = {
+        default.fingerprint,
+        default.replace(tt_bipm=bipm()).fingerprint,
+        default.replace(tt_bipm=bipm("BIPM09")).fingerprint,
+        default.replace(leap_seconds=LeapSeconds.default().with_step(63000, 36)).fingerprint,
+        default.replace(earth_orientation=EarthOrientation.constant()).fingerprint,
+    }
+    assert len(prints) == 5
+    assert ReferenceData().fingerprint == default.fingerprint
+
+
+def test_describe() -> None:
+    rows = ReferenceData.default().replace(tt_bipm=bipm()).describe(date(2027, 1, 1))
+    assert [row.table for row in rows] == [
+        "leap seconds",
+        "Earth orientation",
+        "TT(BIPM08)",
+        "ephemeris",
+        "time ephemeris",
+    ]
+    for row in rows:
+        date.fromisoformat(row.start)
+        assert row.end is None or row.start < date.fromisoformat(row.end).isoformat()
+        assert len(row.sha256) == 64
+    assert rows[1].start == "1962-01-01"
+    assert rows[1].issued is not None
+    assert rows[1].age_days == (date(2027, 1, 1) - date.fromisoformat(rows[1].issued)).days
+    assert rows[2][2:4] == ("2007-07-08", "2007-07-18")
+    assert ReferenceData.default().describe()[1].age_days is not None
+
+
+@pytest.mark.parametrize(
+    "members",
+    [
+        {"leap_seconds": "Leap_Second.dat"},
+        {"earth_orientation": 3},
+        {"tt_bipm": ["TTBIPM.08"]},
+        {"ephemeris": "de440.bsp"},
+    ],
+)
+def test_members_of_another_type(members: Any) -> None:
+    with pytest.raises(InvalidInput, match=r"ReferenceData\.load"):
+        ReferenceData(**members)
+
+
+def test_two_tables_of_one_realisation() -> None:
+    with pytest.raises(InvalidInput, match="each realisation"):
+        ReferenceData(tt_bipm=[bipm(), bipm()])
+    with pytest.raises(MissingPiece, match=r"TT\(BIPM23\).*TT\(BIPM08\)"):
+        ReferenceData(tt_bipm=[bipm()]).realisation("TT(BIPM23)")
+
+
+def test_immutable_and_picklable() -> None:
+    reference = ReferenceData.default()
+    with pytest.raises(AttributeError, match=r"use|Use"):
+        reference.leap_seconds = LeapSeconds.default()  # type: ignore[misc]
+    assert pickle.loads(pickle.dumps(reference)) is reference
+    other = pickle.loads(pickle.dumps(reference.replace(tt_bipm=bipm())))
+    assert other.fingerprint == reference.replace(tt_bipm=bipm()).fingerprint
+
+
+def test_threads_share_one_time_ephemeris(monkeypatch: pytest.MonkeyPatch) -> None:
+    reference = ReferenceData(leap_seconds=LeapSeconds.default().with_expiry(None))
+    made: list[str] = []
+    whole = ReferenceData._make
+
+    def counted(self: ReferenceData, part: str) -> Any:
+        made.append(part)
+        return whole(self, part)
+
+    monkeypatch.setattr(ReferenceData, "_make", counted)
+    found: list[int] = []
+    gate = threading.Barrier(8)
+
+    def work() -> None:
+        gate.wait()
+        found.append(id(reference.time_ephemeris))
+
+    threads = [threading.Thread(target=work) for _ in range(8)]
+    for thread in threads:
+        thread.start()
+    for thread in threads:
+        thread.join()
+    assert len(set(found)) == 1
+    assert len(found) == 8
+    assert sorted(made) == ["ephemeris", "time_ephemeris"]

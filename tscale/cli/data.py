@@ -1,0 +1,95 @@
+"""`tscale data`: which tables are in use, how far they reach, how old they are."""
+
+from __future__ import annotations
+
+import argparse
+from typing import TYPE_CHECKING, Any, Final
+
+from .options import add_tables, reference_of
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from ..tables.reference import TableFacts
+
+__all__ = ["add_parser", "run"]
+
+_HEADS: Final = ("table", "name", "from", "to", "issued", "expires", "age (d)", "SHA-256")
+_SHORT_HASH: Final = 12
+
+
+def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
+    """Add the subcommand."""
+    parser = subparsers.add_parser(
+        "data",
+        help="list the tables in use",
+        description="List the tables in use with span, date of issue, expiry, age and checksum. "
+        "Nothing is fetched: leap seconds and Earth orientation come with the package astropy-iers-data "
+        "(`pip install --upgrade astropy-iers-data` brings newer ones).",
+        allow_abbrev=False,
+    )
+    look = parser.add_mutually_exclusive_group()
+    look.add_argument("--full", action="store_true", help="whole checksums, and the path of every file")
+    look.add_argument("--json", action="store_true", help="the same as JSON")
+    parser.add_argument("--verify", action="store_true", help="check the shipped files against their checksums")
+    add_tables(parser)
+    parser.set_defaults(run=run)
+
+
+def run(args: argparse.Namespace) -> int:
+    """Print the list."""
+    if args.verify:
+        checked = _verify()
+    facts = reference_of(args).describe()
+    if args.json:
+        import json
+
+        print(json.dumps([{**fact._asdict(), "path": fact.path and str(fact.path)} for fact in facts], indent=2))
+        return 0
+    rows = [_row(fact, full=args.full) for fact in facts]
+    print(_aligned([_HEADS, *rows]))
+    if args.full:
+        print()
+        for fact in facts:
+            print(f"{fact.table}: {fact.path or 'not from a file'}")
+    if args.verify:
+        print()
+        for name in checked:
+            print(f"verified: {name}")
+    return 0
+
+
+def _row(fact: TableFacts, *, full: bool) -> tuple[str, ...]:
+    age = "" if fact.age_days is None else str(fact.age_days)
+    sha256 = fact.sha256 if full else fact.sha256[:_SHORT_HASH]
+    return (fact.table, fact.name, fact.start, fact.end or "", fact.issued or "", fact.expires or "", age, sha256)
+
+
+def _aligned(rows: Sequence[Sequence[str]]) -> str:
+    widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
+    return "\n".join(
+        "  ".join(f"{cell:<{width}}" for cell, width in zip(row, widths, strict=True)).rstrip() for row in rows
+    )
+
+
+def _verify() -> list[str]:
+    """Names of the shipped files, each found whole; else `DataFileError`."""
+    import hashlib
+    import tomllib
+
+    from ..ephemeris.shipped import shipped_path
+    from ..errors import DataFileError
+
+    with shipped_path("MANIFEST.toml").open("rb") as file:
+        entries = tomllib.load(file)["file"]
+    for name, entry in entries.items():
+        path = shipped_path(name)
+        with path.open("rb") as file:
+            found = hashlib.file_digest(file, "sha256").hexdigest()
+        if found != entry["sha256"]:
+            raise DataFileError(
+                f"this file is damaged: its SHA-256 is {found}, the manifest says {entry['sha256']}; "
+                f"install the package again, or remake it with `{entry['command']}`",
+                path=path,
+            )
+    return list(entries)

@@ -1,0 +1,261 @@
+"""`tscale link`: when a signal sent from one end reaches the other, for one date or a table of dates."""
+
+from __future__ import annotations
+
+import argparse
+import contextlib
+import sys
+import warnings
+from fractions import Fraction
+from typing import TYPE_CHECKING, Any, Final, TextIO
+
+from .link_ends import FORMS, end_of
+from .options import add_tables, reference_of
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+    from ..exact import FloatArray
+    from ..instants import Instants
+    from ..link import LinkSolution, TwoWaySolution
+    from ..tables.clock_log import ClockLog
+    from ..tables.reference import ReferenceData
+
+    Solution = LinkSolution | TwoWaySolution
+
+__all__ = ["add_parser", "run"]
+
+_BLOCK_ROWS: Final = 8192
+_MOST_ROWS: Final = 10_000_000
+_TERM_DIGITS: Final = 15
+
+_EPILOG: Final = (
+    FORMS
+    + """
+Dates given are those of the event at --from (--transmit) or --to (--receive); with --two-way both are events at --from,
+the station. UTC and its kin date events on and near the Earth, out to the Moon; elsewhere give --scale TDB. A table
+has one row per date, with `blocked` where a body or the ground stands in the way.
+
+examples:
+  tscale link --from site.toml --to mars --transmit 2031-03-01T00:00:00
+  tscale link --from orbiter.toml --to site.toml --receive 2031-03-01 --until 2031-03-02 --step 600 --output pass.csv
+  tscale link --from site.toml --to moon --two-way --transmit 2031-03-01 --until 2031-03-31 --step 3600 --plot moon.png
+"""
+)
+
+
+def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
+    """Add the subcommand."""
+    parser = subparsers.add_parser(
+        "link",
+        help="light time between sites, spacecraft and bodies",
+        description="Find when a signal sent from one end reaches the other, with every term of its light time.",
+        epilog=_EPILOG,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
+        allow_abbrev=False,
+    )
+    parser.add_argument("--from", dest="start", metavar="END", required=True, help="where the signal is sent")
+    parser.add_argument("--to", dest="end", metavar="END", required=True, help="where it is received (or turned round)")
+    when = parser.add_mutually_exclusive_group(required=True)
+    when.add_argument("--transmit", metavar="DATE", help="ISO 8601 date of transmission")
+    when.add_argument("--receive", metavar="DATE", help="ISO 8601 date of reception")
+    parser.add_argument("--until", metavar="DATE", help="last date of a table; needs --step")
+    parser.add_argument("--step", metavar="S", help="seconds between the dates of a table")
+    parser.add_argument("--scale", metavar="SCALE", default="UTC", help="scale of the dates given (%(default)s)")
+    parser.add_argument("--other-scale", metavar="SCALE", default="TDB", help="scale of the other event (%(default)s)")
+    parser.add_argument("--two-way", action="store_true", help="to the other end and back")
+    parser.add_argument("--turnaround", metavar="S", type=float, default=0.0, help="TDB seconds spent at the other end")
+    parser.add_argument("--no-second-order", action="store_true", help="first-order gravitational delays only")
+    parser.add_argument(
+        "--occultation",
+        choices=("error", "mark"),
+        help="where a body or the ground stands in the way: stop, or mark it (default: error for one date, mark for a table)",
+    )
+    parser.add_argument("--ledger", action="store_true", help="add a column for every term to a table, in seconds")
+    parser.add_argument("--output", metavar="FILE", default="-", help="CSV file of the table (default: standard output)")
+    parser.add_argument("--plot", metavar="FILE", help="picture of the table: PNG, PDF or SVG (needs matplotlib)")
+    parser.add_argument(
+        "--clock", metavar="FILE", action="append", default=[], help="comparison log, for dates on its scale; repeatable"
+    )
+    parser.add_argument("--digits", metavar="N", type=int, default=12, help="decimals of the dates (%(default)s)")
+    add_tables(parser)
+    parser.set_defaults(run=run, interpolation="linear", max_gap_s=None)
+
+
+def run(args: argparse.Namespace) -> int:
+    """Solve one link, or a table of links."""
+    from ..errors import ExtrapolationWarning, InvalidInput
+    from ..formats.decimals import check_digits
+    from .options import clocks_of
+
+    check_digits(args.digits)
+    if (args.until is None) != (args.step is None):
+        raise InvalidInput("a table needs both --until and --step; one date needs neither")
+    if args.turnaround and not args.two_way:
+        raise InvalidInput("--turnaround is part of --two-way; add it or leave both")
+    if args.until is None and (args.output != "-" or args.plot or args.ledger):
+        raise InvalidInput("--output, --plot and --ledger belong to a table: give --until and --step")
+    reference = reference_of(args)
+    work = _Work(args, reference, clocks_of(args, reference))
+    with warnings.catch_warnings(record=True) as caught:
+        warnings.simplefilter("ignore")
+        warnings.simplefilter("default", ExtrapolationWarning)
+        if args.until is None:
+            print(work.account(work.solve(work.first)))
+        else:
+            work.table()
+    for text in dict.fromkeys(str(w.message) for w in caught if issubclass(w.category, ExtrapolationWarning)):
+        print(f"tscale: note: {text}", file=sys.stderr)
+    return 0
+
+
+class _Work:
+    """One run of the command."""
+
+    def __init__(self, args: argparse.Namespace, reference: ReferenceData, clocks: Sequence[ClockLog]) -> None:
+        from ..instants import Instants
+
+        self.args = args
+        self.reference = reference
+        self.clocks = clocks
+        self.ends = end_of(args.start, reference), end_of(args.end, reference)
+        self.given = "transmit" if args.transmit is not None else "receive"
+        self.first = Instants.from_iso(getattr(args, self.given), args.scale, leap_seconds=reference.leap_seconds)
+
+    def solve(self, t: Instants) -> Solution:
+        """Solve links at dates given."""
+        from ..link import one_way, two_way
+
+        args = self.args
+        common: dict[str, Any] = {
+            self.given: t,
+            "reference": self.reference,
+            "clocks": self.clocks,
+            "second_order": not args.no_second_order,
+            "occultation": args.occultation or ("error" if args.until is None else "mark"),
+        }
+        if args.two_way:
+            return two_way(station=self.ends[0], target=self.ends[1], turnaround_s=args.turnaround, **common)
+        return one_way(transmitter=self.ends[0], receiver=self.ends[1], **common)
+
+    def _events(self, solution: Solution) -> dict[str, Instants]:
+        """Dates of every event by the head of their column."""
+        args = self.args
+        if args.two_way:
+            scales = {"transmit": args.scale, "bounce": args.other_scale, "receive": args.scale}
+        else:
+            other = "receive" if self.given == "transmit" else "transmit"
+            order = ("transmit", "receive")
+            scales = {event: {self.given: args.scale, other: args.other_scale}[event] for event in order}
+        return {f"{event} ({scale})": getattr(solution, f"{event}_on")(scale) for event, scale in scales.items()}
+
+    def _iso(self, t: Instants) -> list[str]:
+        texts: list[str] = t.to_iso(self.args.digits, leap_seconds=self.reference.leap_seconds).reshape(-1).tolist()
+        return texts
+
+    def account(self, solution: Solution) -> str:
+        """One link in words."""
+        lines = [(head, self._iso(t)[0]) for head, t in self._events(solution).items()]
+        legs = _legs(solution)
+        for name, leg in legs.items():
+            lines.append((f"{name}range", f"{float(leg.range_m) / 1e3:.9f} km"))
+            lines.append((f"{name}range rate", f"{float(leg.range_rate_m_s):.6f} m/s"))
+            for event, height in (("transmit", leg.transmit_elevation_deg), ("receive", leg.receive_elevation_deg)):
+                if height is not None:
+                    lines.append((f"{name}elevation at {event}", f"{float(height):.4f} deg"))
+            if bool(leg.occulted):
+                lines.append((f"{name}path", "blocked by a body or the ground"))
+        width = max(len(name) for name, _ in lines)
+        total = _total(solution)
+        terms = [(name, _decimals(value)[0]) for name, value in solution.ledger.items()]
+        terms.append(("round trip" if len(legs) == 2 else "light time", _decimals(total)[0]))
+        left, right = max(len(name) for name, _ in terms), max(len(text) for _, text in terms)
+        rule = f"{'-' * left}  {'-' * right}"
+        table = [f"{name:<{left}}  {text:>{right}}" for name, text in terms]
+        head = [f"{name:<{width}}  {text}" for name, text in lines]
+        return "\n".join(
+            [*head, "", f"{'term':<{left}}  {'TDB seconds':>{right}}", rule, *table[:-1], rule, table[-1]]
+        )
+
+    def table(self) -> None:
+        """Write the table, and the picture if one is asked for."""
+        from ..files import replaced
+
+        if self.args.plot:
+            from ..plots import check_picture
+
+            check_picture(self.args.plot)
+        solutions = []
+        with contextlib.nullcontext(sys.stdout) if self.args.output == "-" else replaced(self.args.output) as target:
+            for number, t in enumerate(self._blocks()):
+                solution = self.solve(t)
+                self._write(target, solution, head=number == 0)
+                if self.args.plot:
+                    solutions.append(solution)
+            if self.args.plot:
+                from ..plots import save_link_picture
+
+                # Inside the block: when the picture fails there is no table either.
+                save_link_picture(solutions, self.args.plot, title=f"{self.args.start} to {self.args.end}")
+
+    def _write(self, target: TextIO, solution: Solution, head: bool) -> None:
+        columns = {name: self._iso(t) for name, t in self._events(solution).items()}
+        columns["round trip (TDB s)" if self.args.two_way else "light time (TDB s)"] = _decimals(_total(solution))
+        for name, leg in _legs(solution).items():
+            columns[f"{name}range (m)"] = [f"{x:.6f}" for x in leg.range_m.reshape(-1).tolist()]
+            columns[f"{name}range rate (m/s)"] = [f"{x:.9f}" for x in leg.range_rate_m_s.reshape(-1).tolist()]
+            for event, height in (("transmit", leg.transmit_elevation_deg), ("receive", leg.receive_elevation_deg)):
+                if height is not None:
+                    columns[f"{name}elevation at {event} (deg)"] = [f"{x:.5f}" for x in height.reshape(-1).tolist()]
+        columns["path"] = ["blocked" if x else "clear" for x in solution.occulted.reshape(-1).tolist()]
+        if self.args.ledger:
+            for name, value in solution.ledger.items():
+                # Names of the terms hold commas, which would need quotes in every reader.
+                columns[f"{name.replace(',', '')} (s)"] = _decimals(value)
+        if head:
+            target.write(",".join(columns) + "\n")
+        target.writelines(",".join(row) + "\n" for row in zip(*columns.values(), strict=True))
+
+    def _blocks(self) -> Iterator[Instants]:
+        """Dates of the table, each the exact sum of the first date and so many steps."""
+        import numpy as np
+
+        from .. import exact
+        from ..errors import InvalidInput
+        from ..instants import Instants
+
+        try:
+            step = Fraction(self.args.step)
+        except (ValueError, ZeroDivisionError) as error:
+            raise InvalidInput(f"--step is a decimal number of seconds, got {self.args.step!r}") from error
+        last = Instants.from_iso(self.args.until, self.args.scale, leap_seconds=self.reference.leap_seconds)
+        whole, fraction = last.minus_exact(self.first)
+        span = Fraction(int(whole)) + Fraction(float(fraction))
+        if step <= 0 or span < 0:
+            raise InvalidInput(f"a table runs forward: --until {self.args.until} by --step {self.args.step} does not")
+        # A step such as 0.1 s may miss the last date by the rounding of its text.
+        count = int((span + Fraction(1, 10**15)) / step) + 1
+        if count > _MOST_ROWS:
+            raise InvalidInput(f"{count} rows are more than {_MOST_ROWS}; take a longer --step or several tables")
+        for start in range(0, count, _BLOCK_ROWS):
+            rows = np.arange(start, min(start + _BLOCK_ROWS, count), dtype=np.int64)
+            yield self.first.shifted(exact.multiply((rows, np.zeros(rows.shape)), exact.Factor.of(step)))
+
+
+def _legs(solution: Solution) -> dict[str, LinkSolution]:
+    """Legs by the start of their column names."""
+    from ..link import TwoWaySolution
+
+    if isinstance(solution, TwoWaySolution):
+        return {"up ": solution.up, "down ": solution.down}
+    return {"": solution}
+
+
+def _total(solution: Solution) -> FloatArray:
+    from ..link import TwoWaySolution
+
+    return solution.round_trip_s if isinstance(solution, TwoWaySolution) else solution.light_time_s
+
+
+def _decimals(value: FloatArray) -> list[str]:
+    return [f"{x:.{_TERM_DIGITS}f}" for x in value.reshape(-1).tolist()]

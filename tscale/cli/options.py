@@ -1,0 +1,105 @@
+"""Options that several subcommands share, and what is made of them."""
+
+from __future__ import annotations
+
+import argparse
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from ..earth.site import Site
+    from ..source import Source
+    from ..tables.clock_log import ClockLog
+    from ..tables.reference import ReferenceData
+
+__all__ = ["add_observer", "add_tables", "clocks_of", "reference_of", "site_of", "source_of"]
+
+
+def add_tables(parser: argparse.ArgumentParser) -> None:
+    """Add the options that replace a default table by a file."""
+    group = parser.add_argument_group("tables", "each in place of the default one (see `tscale data`)")
+    group.add_argument("--ephemeris", metavar="FILE", help="SPK kernel; its time ephemeris is built once and kept")
+    group.add_argument("--leap-seconds", metavar="FILE", help="IERS Leap_Second.dat or the leap-seconds.list layout")
+    group.add_argument("--earth-orientation", metavar="FILE", help="IERS finals2000A or C04 file")
+    group.add_argument(
+        "--tt-bipm", metavar="FILE", action="append", default=[], help="BIPM table of TT(BIPMyy); repeatable"
+    )
+
+
+def add_observer(parser: argparse.ArgumentParser) -> None:
+    """Add the options that say where the clock is, how it was compared, and where the signal comes from."""
+    group = parser.add_argument_group("observer, clock and source")
+    group.add_argument("--site", metavar="FILE", help="TOML file with a [site] table; needed for TCB and TDB there")
+    group.add_argument(
+        "--clock",
+        metavar="FILE",
+        action="append",
+        default=[],
+        help="comparison log, CSV with epoch, offset_s (clock minus reference), uncertainty_s, reference, clock; "
+        "repeatable: CLOCK(x) by UTC(k), UTC(k) by UTC. Logs of one clock are joined",
+    )
+    group.add_argument(
+        "--interpolation",
+        choices=("linear", "step"),
+        default="linear",
+        help="between comparisons of a log (default: %(default)s)",
+    )
+    group.add_argument(
+        "--max-gap-s", metavar="S", type=float, help="no interpolation between comparisons further apart than this"
+    )
+    group.add_argument("--source", metavar="FILE", help="TOML file with a [source] table; needed for another place")
+    group.add_argument("--ra", metavar="DEG", type=float, help="ICRS right ascension of the source, degrees")
+    group.add_argument("--dec", metavar="DEG", type=float, help="ICRS declination of the source, degrees")
+
+
+def reference_of(args: argparse.Namespace) -> ReferenceData:
+    """Build the tables that `add_tables` asked for."""
+    from ..tables.reference import ReferenceData
+
+    return ReferenceData.load(
+        leap_seconds=args.leap_seconds,
+        earth_orientation=args.earth_orientation,
+        tt_bipm=args.tt_bipm,
+        ephemeris=args.ephemeris,
+    )
+
+
+def site_of(args: argparse.Namespace) -> Site | None:
+    """Read the site, if one is given."""
+    if args.site is None:
+        return None
+    from ..earth.site import Site
+
+    return Site.load(args.site)
+
+
+def source_of(args: argparse.Namespace) -> Source | None:
+    """Make the source of `--source`, or of `--ra` and `--dec`."""
+    from ..errors import InvalidInput
+    from ..source import Source
+
+    direction = (args.ra, args.dec)
+    if args.source is not None:
+        if direction != (None, None):
+            raise InvalidInput("give the source by --source FILE, or by --ra and --dec, not by both")
+        return Source.load(args.source)
+    if direction == (None, None):
+        return None
+    if None in direction:
+        raise InvalidInput("--ra and --dec belong together: give both, in degrees")
+    return Source(ra_deg=args.ra, dec_deg=args.dec)
+
+
+def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockLog]:
+    """Read the logs in the order given; those of one clock against one reference are joined."""
+    from ..tables.clock_log import ClockLog
+
+    found: dict[tuple[str, str], list[ClockLog]] = {}
+    for path in args.clock:
+        log = ClockLog.load(
+            path,
+            interpolation=args.interpolation,
+            max_gap_s=args.max_gap_s,
+            leap_seconds=reference.leap_seconds,
+        )
+        found.setdefault((log.scale, log.reference), []).append(log)
+    return [logs[0] if len(logs) == 1 else ClockLog.joined(logs) for logs in found.values()]

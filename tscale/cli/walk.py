@@ -1,0 +1,95 @@
+"""Several chains from one start, walked together: what they share is done once."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from typing import Final, NamedTuple
+
+import numpy as np
+
+from ..chains import Chain
+from ..exact import FloatArray, Pair
+from ..instants import Instants
+from ..step import Step
+
+__all__ = ["Passed", "Walk", "add_notes"]
+
+_COUNTED: Final = re.compile(r"(\d+) of (\d+) (.*)", re.DOTALL)
+
+
+class Passed(NamedTuple):
+    """A step with the instants before and after it."""
+
+    step: Step
+    before: Instants
+    after: Instants
+
+
+class Walk:
+    """Instants taken along every chain.
+
+    Parameters
+    ----------
+    chains : sequence of Chain
+        With one start scale.
+    t : Instants
+
+    Attributes
+    ----------
+    passed : dict
+        Path from the start (names of the nodes) to the step that ends it, in order, each once.
+    """
+
+    def __init__(self, chains: Sequence[Chain], t: Instants) -> None:
+        self.passed: dict[tuple[str, ...], Passed] = {}
+        self._paths: list[list[tuple[str, ...]]] = []
+        self._start = t
+        for chain in chains:
+            at = t if chain.start.place is None else t.at(chain.start.place)
+            path: tuple[str, ...] = (str(chain.start),)
+            taken = []
+            for step in chain.steps:
+                path = (*path, str(step.end))
+                if path not in self.passed:
+                    self.passed[path] = Passed(step, at, step.forward(at))
+                at = self.passed[path].after
+                taken.append(path)
+            self._paths.append(taken)
+
+    def results(self) -> list[Instants]:
+        """Instants at the end of each chain."""
+        return [self.passed[taken[-1]].after if taken else self._start for taken in self._paths]
+
+    def terms(self) -> dict[str, Pair]:
+        """Terms of all steps by name, seconds; names met in two steps carry the step."""
+        found: list[tuple[str, str, Pair]] = []
+        for step, before, after in self.passed.values():
+            where = f"{step.start} -> {step.end}"
+            for name, (whole, fraction) in step.terms(before, after).items():
+                value = np.broadcast_to(whole, before.shape), np.broadcast_to(fraction, before.shape)
+                found.append((name, where, value))
+        names = [name for name, _, _ in found]
+        return {name if names.count(name) == 1 else f"{name} [{where}]": value for name, where, value in found}
+
+    def sigma_s(self) -> list[FloatArray]:
+        """Combined standard uncertainty of each chain, seconds."""
+        squares = {
+            path: sum((np.square(value) for value in step.uncertainty_s(before).values()), np.zeros(before.shape))
+            for path, (step, before, _) in self.passed.items()
+        }
+        none = np.zeros(self._start.shape)
+        return [np.sqrt(sum((squares[path] for path in taken), none)) for taken in self._paths]
+
+    def notes(self) -> list[str]:
+        """Notes of all steps, each once."""
+        return list(dict.fromkeys(note for step, before, _ in self.passed.values() for note in step.notes(before)))
+
+
+def add_notes(known: dict[str, list[int]], block: Sequence[str]) -> None:
+    """Add the notes of a block of rows to those known: counts, as in "3 of 50 instants ...", are summed."""
+    for note in block:
+        found = _COUNTED.fullmatch(note)
+        counts = known.setdefault(found.group(3) if found else note, [0])
+        if found:
+            counts[0] += int(found.group(1))

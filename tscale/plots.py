@@ -1,0 +1,191 @@
+"""Pictures of links: light time, range rate and gravitational delays over a span (needs matplotlib)."""
+
+from __future__ import annotations
+
+import os
+import secrets
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Final
+
+import numpy as np
+import numpy.typing as npt
+
+from .errors import InvalidInput, MissingPiece
+from .exact import FloatArray
+from .link import LinkSolution, TwoWaySolution
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+    from .instants import Instants
+
+__all__ = ["check_picture", "link_figure", "save_link_picture"]
+
+_KINDS: Final = (".png", ".pdf", ".svg")
+_PULL: Final = "gravitational delay, "
+_SHOWN_FROM_S: Final = 1e-14  # a line that never rises above this tells nothing
+# Okabe and Ito's colours, told apart with any colour vision.
+_COLOURS: Final = ("#D55E00", "#0072B2", "#009E73", "#CC79A7", "#E69F00", "#56B4E9", "#000000", "#8C6D31")
+_LENGTHS: Final = ((1e-9, "ns"), (1e-6, "\u00b5s"), (1e-3, "ms"), (1.0, "s"))
+
+
+def check_picture(path: str | os.PathLike[str]) -> Path:
+    """Say early what would stop a picture: no matplotlib, or an ending that is not .png, .pdf or .svg."""
+    target = Path(path)
+    if target.suffix.lower() not in _KINDS:
+        raise InvalidInput(f"{path} cannot be a picture: the name must end in {', '.join(_KINDS)}")
+    try:
+        import matplotlib  # noqa: F401
+    except ImportError as error:
+        raise MissingPiece("pictures need matplotlib: pip install 'tscale[plot]'") from error
+    return target
+
+
+def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: str = "") -> Figure:
+    """Draw light time, range rate and gravitational delays against the date of transmission.
+
+    Parameters
+    ----------
+    solution : LinkSolution, TwoWaySolution, or a sequence of one kind
+        At least two dates in all; a sequence is drawn as one. Of a round trip the upper two panels show the whole
+        and the up leg, the lowest the sum of both legs.
+    title : str
+
+    Returns
+    -------
+    matplotlib.figure.Figure
+        Not tied to any window: save it with `savefig`.
+
+    Raises
+    ------
+    InvalidInput
+        Fewer than two dates.
+    MissingPiece
+        matplotlib is not installed.
+    """
+    check_picture("figure.png")
+    from matplotlib.dates import AutoDateLocator, ConciseDateFormatter
+    from matplotlib.figure import Figure
+
+    parts = list(solution) if isinstance(solution, Sequence) else [solution]
+    if not parts or sum(part.occulted.size for part in parts) < 2:
+        raise InvalidInput("a picture of a link needs two dates or more")
+    both = isinstance(parts[0], TwoWaySolution)
+    dates = np.concatenate([_dates(part.transmit) for part in parts])
+    order = np.argsort(dates)
+    dates = dates[order]
+
+    def joined(pick: Any) -> FloatArray:
+        return np.concatenate([np.asarray(pick(part)).reshape(-1) for part in parts])[order]
+
+    figure = Figure(figsize=(9.0, 8.2), layout="constrained", dpi=120)
+    top, middle, bottom = figure.subplots(3, 1, sharex=True, height_ratios=(1.0, 1.0, 1.7))
+    total = joined(lambda part: part.round_trip_s if both else part.light_time_s)
+    _line(top, dates, *_scaled(total), "round trip" if both else "light time")
+    rate = joined(lambda part: part.up.range_rate_m_s if both else part.range_rate_m_s)
+    _line(middle, dates, rate / 1e3, "km/s", "range rate (up)" if both else "range rate")
+    middle.axhline(0.0, color="0.6", linewidth=0.8, zorder=0)
+    _delays(bottom, dates, _pulls(parts, joined))
+    blocked = joined(lambda part: part.occulted).astype(np.bool_)
+    if blocked.any():
+        for axes in (top, middle, bottom):
+            axes.fill_between(
+                dates,
+                0.0,
+                1.0,
+                where=_widened(blocked),
+                step="mid",
+                transform=axes.get_xaxis_transform(),
+                color="0.85",
+                linewidth=0.0,
+                zorder=-1,
+            )
+        top.plot([], [], color="0.8", linewidth=8.0, label="path blocked by a body or the ground")
+        top.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize="small", borderaxespad=0.2)
+    locator = AutoDateLocator(minticks=4, maxticks=8)
+    bottom.xaxis.set_major_locator(locator)
+    bottom.xaxis.set_major_formatter(ConciseDateFormatter(locator))
+    bottom.set_xlim(dates[0], dates[-1])
+    bottom.set_xlabel("date of transmission (TDB)")
+    if title:
+        top.set_title(title, loc="left", fontsize="medium", fontweight="bold")
+    figure.align_ylabels([top, middle, bottom])
+    return figure
+
+
+def save_link_picture(
+    solution: LinkSolution | TwoWaySolution | Sequence[Any], path: str | os.PathLike[str], title: str = ""
+) -> None:
+    """Write `link_figure` to a file (.png, .pdf or .svg) that takes its name only when it is whole."""
+    target = check_picture(path)
+    if not target.parent.is_dir():
+        raise InvalidInput(f"{path} cannot be written: there is no folder {target.parent}; make it first")
+    figure = link_figure(solution, title)
+    temporary = target.with_name(f".{target.name}.{os.getpid()}.{secrets.token_hex(4)}.part")
+    try:
+        figure.savefig(temporary, format=target.suffix.lower()[1:])
+        os.replace(temporary, target)
+    finally:
+        temporary.unlink(missing_ok=True)
+
+
+def _dates(t: Instants) -> npt.NDArray[Any]:
+    """Counts as numpy dates to 1 ms, which a picture does not resolve."""
+    millis = t.whole * 1000 + np.rint(t.fraction * 1e3).astype(np.int64)
+    dates: npt.NDArray[Any] = np.datetime64("2000-01-01T12:00:00", "ms") + millis.reshape(-1)
+    return dates
+
+
+def _scaled(value_s: FloatArray) -> tuple[FloatArray, str]:
+    """Seconds in the unit that suits them."""
+    largest = float(np.max(np.abs(value_s)))
+    unit, name = next(((unit, name) for unit, name in _LENGTHS if largest < 1e3 * unit), (60.0, "min"))
+    if unit == 60.0 and largest > 7200.0:
+        unit, name = 3600.0, "h"
+    return value_s / unit, name
+
+
+def _line(axes: Axes, dates: npt.NDArray[Any], value: FloatArray, unit: str, label: str) -> None:
+    axes.plot(dates, value, color="#0072B2", linewidth=1.6)
+    axes.set_ylabel(f"{label} ({unit})")
+    axes.grid(color="0.92")
+    axes.ticklabel_format(axis="y", useOffset=False)
+    axes.margins(y=0.08)
+
+
+def _pulls(parts: Sequence[Any], joined: Any) -> dict[str, FloatArray]:
+    """Size of each gravitational delay by body; both legs of a round trip together."""
+    legs = ("up: ", "down: ") if isinstance(parts[0], TwoWaySolution) else ("",)
+    names = [name.removeprefix(legs[0]) for name in parts[0].ledger if name.startswith(legs[0] + _PULL)]
+    found = {}
+    for name in names:
+        value = joined(lambda part, name=name: sum(part.ledger[leg + name] for leg in legs))
+        found[name.removeprefix(_PULL)] = np.abs(value)
+    return found
+
+
+def _delays(axes: Axes, dates: npt.NDArray[Any], pulls: dict[str, FloatArray]) -> None:
+    shown = {name: value for name, value in pulls.items() if np.max(value) >= _SHOWN_FROM_S}
+    ranked = sorted(shown, key=lambda name: -float(np.median(shown[name])))
+    for number, name in enumerate(ranked):
+        style = "-" if number < len(_COLOURS) else "--"
+        # Below the floor of the panel a line would only stretch the scale.
+        value = np.where(shown[name] > 0.0, shown[name], np.nan)
+        axes.plot(dates, value, style, color=_COLOURS[number % len(_COLOURS)], linewidth=1.4, label=name)
+    axes.set_yscale("log")
+    if ranked:
+        low = min(float(np.min(shown[name])) for name in ranked)
+        axes.set_ylim(bottom=max(low * 0.5, 0.1 * _SHOWN_FROM_S))
+        axes.legend(loc="upper left", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize="small", title="by body")
+    axes.set_ylabel("gravitational delay, size (s)")
+    axes.grid(color="0.92")
+
+
+def _widened(mask: npt.NDArray[np.bool_]) -> npt.NDArray[np.bool_]:
+    """The mask with one more date on each side, so that a lone date is seen."""
+    wide = mask.copy()
+    wide[1:] |= mask[:-1]
+    wide[:-1] |= mask[1:]
+    return wide
