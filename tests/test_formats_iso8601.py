@@ -14,7 +14,6 @@ from hypothesis import strategies as st
 
 from tscale.errors import InvalidInput, TextError
 from tscale.formats import gregorian, iso8601, labels
-from tscale.formats.leap_seconds import LeapSeconds
 from tscale.scales import Scale
 
 UTC = labels.day_length(Scale.parse("UTC"), None)
@@ -191,43 +190,6 @@ def test_rounding_carries_over_every_edge(text: str, digits: int, expected: str)
     assert str(iso8601.format(*parse_utc(text), digits, day_length=UTC)) == expected
 
 
-def test_drift_era_noon_survives_counting() -> None:
-    # Label seconds of 1965 are not SI seconds: a count that forgot it would print 12:00:00.0007 or so.
-    kind = Scale.parse("UTC")
-    count = labels.count(kind, parse_utc("1965-06-30T12:00:00"))
-    assert str(iso8601.format(*labels.label(kind, count), 15, day_length=UTC)) == "1965-06-30T12:00:00.000000000000000"
-
-
-def test_negative_leap_second() -> None:
-    table = LeapSeconds.default().with_step(63000, 36)
-    length = labels.DayLength(table)
-    label = parse_utc(["2031-05-13T23:59:58.25", "2031-05-13T23:59:58.75"])
-    texts = iso8601.format(*label, 0, day_length=length)
-    assert texts.tolist() == ["2031-05-13T23:59:58", "2031-05-14T00:00:00"]
-
-
-def test_glonass_leap_second() -> None:
-    # GLONASS ICD 5.1 (2008), 3.3.3 (from memory): GLONASS time is UTC(SU) + 3 h and takes leap seconds with UTC.
-    kind = Scale.parse("GLONASS")
-    texts = ["2017-01-01T02:59:59.6", "2017-01-01T02:59:60.6", "2017-01-01T03:00:00.6", "2016-12-31T23:59:59.6"]
-    count = labels.count(kind, parse_glonass(texts))
-    utc = labels.count(
-        Scale.parse("UTC"), parse_utc([t.replace("2017-01-01T02:59", "2016-12-31T23:59") for t in texts[:2]])
-    )
-    assert (count[0][:2] - utc[0]).tolist() == [10800, 10800]
-    assert (count[0] - count[0][0]).tolist() == [0, 1, 2, -10800]
-    label = labels.label(kind, count)
-    assert iso8601.format(*label, 1, day_length=GLONASS).tolist() == texts
-    assert iso8601.format(*label, 0, day_length=GLONASS).tolist() == [
-        "2017-01-01T02:59:60",
-        "2017-01-01T03:00:00",
-        "2017-01-01T03:00:01",
-        "2017-01-01T00:00:00",
-    ]
-    with pytest.raises(TextError, match="do not exist"):
-        labels.count(kind, parse_glonass("2016-01-01T02:59:60"))
-
-
 def test_erfa_prints_the_same() -> None:
     # t_erfa_c: d2dtf("UTC", 5, 2400000.5, 49533.99999) = 1994-06-30 23:59:60.13599, and dtf2d undoes it.
     text = "1994-06-30T23:59:60.13599"
@@ -267,19 +229,6 @@ def test_shapes_and_mixed_layouts() -> None:
     assert (parse_utc(iso8601.format(*parse_utc(long), 1))[1] == parse_utc(long)[1]).all()
 
 
-def test_leap_minute_label() -> None:
-    table = LeapSeconds.default().with_step(63000, 137)
-    length = labels.DayLength(table)
-    label = parse_utc(["2031-05-13T23:59:60", "2031-05-13T23:59:159.9", "2031-05-13T12:00:00"])
-    assert table.count_from_label(*label)[0].tolist()[1] - table.count_from_label(*label)[0].tolist()[0] == 99
-    assert iso8601.format(*label, 1, day_length=length).tolist() == [
-        "2031-05-13T23:59:60.0",
-        "2031-05-13T23:59:159.9",
-        "2031-05-13T12:00:00.0",
-    ]
-    assert str(iso8601.format(62999, 86499, 0.99, 1, day_length=length)) == "2031-05-14T00:00:00.0"
-
-
 @pytest.mark.parametrize("digits", [-1, 19, 3.0, True, "3"])
 def test_digits_are_checked(digits: Any) -> None:
     with pytest.raises(InvalidInput, match="0 to 18"):
@@ -291,17 +240,3 @@ def test_labels_beyond_their_day_are_not_written() -> None:
         iso8601.format(51544, 86400, 0.0, 3)
     with pytest.raises(InvalidInput, match="end of their day"):
         iso8601.format(51544, 86400, 0.0, 3, day_length=UTC)
-
-
-@pytest.mark.parametrize("scale", ["UTC", "TT"])
-def test_far_counts(scale: str) -> None:
-    kind = Scale.parse(scale)
-    far = 8 * 10**18  # s: 253 Gyr
-    label = labels.label(kind, (np.array(far), np.array(0.25)))
-    text = str(iso8601.format(*label, 2, day_length=labels.day_length(kind, None)))
-    assert text.startswith("+25350")
-    assert int(labels.count(kind, iso8601.parse(text))[0]) == far
-    with pytest.raises(InvalidInput, match="270 Gyr") as caught:
-        labels.label(kind, (np.array([0, 2**63 - 1]), np.zeros(2)))
-    assert caught.value.mask is not None
-    assert caught.value.mask.tolist() == [False, True]

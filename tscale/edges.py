@@ -11,6 +11,7 @@ import numpy as np
 
 from . import exact
 from .constants import C_M_S, L_B, L_G, TT_MINUS_TAI
+from .earth.moving import observer_event
 from .earth.observer import Observer
 from .exact import FloatArray, Pair
 from .instants import Instants
@@ -281,7 +282,7 @@ def wavefront_step(
     def uncertainty_s(before: Instants) -> dict[str, FloatArray]:
         if observer is None:
             return {}
-        event = barycentric.observer_event(before.pair, reference, observer)
+        event = observer_event(before.pair, reference, observer)
         values = reference.earth_orientation.at(exact.subtract(event.tt, _TT_MINUS_TAI))
         speed, radius = np.linalg.norm(event.v_gcrs_m_s, axis=-1), np.linalg.norm(event.r_gcrs_m, axis=-1)
         pole = np.hypot(values.x_sigma_rad, values.y_sigma_rad)

@@ -12,6 +12,7 @@ from . import exact
 from .errors import InvalidInput, OutOfSpan, ScaleMismatch
 from .exact import BoolArray, FloatArray, IntArray, Pair
 from .formats import iso8601, julian, labels
+from .formats.checks import Label
 from .scales import Node, Scale, check_place
 
 if TYPE_CHECKING:
@@ -152,12 +153,12 @@ class Instants:
         return cls._read(kind, label, leap_seconds, place)
 
     @classmethod
-    def _read(cls, kind: Scale, label: labels.Label, table: LeapSeconds | None, place: str | None) -> Instants:
+    def _read(cls, kind: Scale, label: Label, table: LeapSeconds | None, place: str | None) -> Instants:
         pair = labels.count(kind, label, table)
         labels.warn_if_expired(kind, pair, table)
         return cls._of(pair, kind, check_place(place))
 
-    def _label(self, table: LeapSeconds | None) -> labels.Label:
+    def _label(self, table: LeapSeconds | None) -> Label:
         labels.warn_if_expired(self._scale, self.pair, table)
         return labels.label(self._scale, self.pair, table)
 

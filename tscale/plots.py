@@ -26,8 +26,21 @@ __all__ = ["check_picture", "link_figure", "save_link_picture"]
 _KINDS: Final = (".png", ".pdf", ".svg")
 _PULL: Final = "gravitational delay, "
 _SHOWN_FROM_S: Final = 1e-14  # a line that never rises above this tells nothing
-# Okabe and Ito's colours, told apart with any colour vision.
-_COLOURS: Final = ("#D55E00", "#0072B2", "#009E73", "#CC79A7", "#E69F00", "#56B4E9", "#000000", "#8C6D31")
+# After Okabe and Ito, whose colours are told apart with any colour vision; one for each body.
+_COLOURS: Final = {
+    "sun": "#D55E00",
+    "jupiter": "#0072B2",
+    "saturn": "#CC79A7",
+    "earth": "#009E73",
+    "moon": "#7F7F7F",
+    "venus": "#E69F00",
+    "mars": "#A52A2A",
+    "mercury": "#000000",
+    "uranus": "#56B4E9",
+    "neptune": "#4B3F9E",
+    "pluto": "#8C6D31",
+}
+_STYLES: Final = {"second order": "--", "third order": ":"}
 _LENGTHS: Final = ((1e-9, "ns"), (1e-6, "\u00b5s"), (1e-3, "ms"), (1.0, "s"))
 
 
@@ -52,6 +65,7 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
         At least two dates in all; a sequence is drawn as one. Of a round trip the upper two panels show the whole
         and the up leg, the lowest the sum of both legs.
     title : str
+        Default: the names of both ends.
 
     Returns
     -------
@@ -66,10 +80,10 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
         matplotlib is not installed.
     """
     check_picture("figure.png")
-    from matplotlib.dates import AutoDateLocator, ConciseDateFormatter
+    from matplotlib import dates as ticks
     from matplotlib.figure import Figure
 
-    parts = list(solution) if isinstance(solution, Sequence) else [solution]
+    parts: list[Any] = list(solution) if isinstance(solution, Sequence) else [solution]
     if not parts or sum(part.occulted.size for part in parts) < 2:
         raise InvalidInput("a picture of a link needs two dates or more")
     both = isinstance(parts[0], TwoWaySolution)
@@ -85,9 +99,9 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
     total = joined(lambda part: part.round_trip_s if both else part.light_time_s)
     _line(top, dates, *_scaled(total), "round trip" if both else "light time")
     rate = joined(lambda part: part.up.range_rate_m_s if both else part.range_rate_m_s)
-    _line(middle, dates, rate / 1e3, "km/s", "range rate (up)" if both else "range rate")
+    _line(middle, dates, rate / 1e3, "km/s", "range rate, up" if both else "range rate")
     middle.axhline(0.0, color="0.6", linewidth=0.8, zorder=0)
-    _delays(bottom, dates, _pulls(parts, joined))
+    _delays(bottom, dates, _pulls(parts, joined), "both legs, by body" if both else "by body")
     blocked = joined(lambda part: part.occulted).astype(np.bool_)
     if blocked.any():
         for axes in (top, middle, bottom):
@@ -104,13 +118,15 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
             )
         top.plot([], [], color="0.8", linewidth=8.0, label="path blocked by a body or the ground")
         top.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize="small", borderaxespad=0.2)
-    locator = AutoDateLocator(minticks=4, maxticks=8)
+    untyped: Any = ticks
+    locator = untyped.AutoDateLocator(minticks=4, maxticks=8)
     bottom.xaxis.set_major_locator(locator)
-    bottom.xaxis.set_major_formatter(ConciseDateFormatter(locator))
+    bottom.xaxis.set_major_formatter(untyped.ConciseDateFormatter(locator, show_offset=False))
     bottom.set_xlim(dates[0], dates[-1])
-    bottom.set_xlabel("date of transmission (TDB)")
-    if title:
-        top.set_title(title, loc="left", fontsize="medium", fontweight="bold")
+    bottom.set_xlabel(f"date of transmission (TDB), from {str(dates[0])[:10]}")
+    near, far = (parts[0].up if both else parts[0]).ends
+    title = title or f"{near} to {far}{' and back' if both else ''}"
+    top.set_title(title, loc="left", fontsize="medium", fontweight="bold")
     figure.align_ylabels([top, middle, bottom])
     return figure
 
@@ -166,20 +182,23 @@ def _pulls(parts: Sequence[Any], joined: Any) -> dict[str, FloatArray]:
     return found
 
 
-def _delays(axes: Axes, dates: npt.NDArray[Any], pulls: dict[str, FloatArray]) -> None:
+def _delays(axes: Axes, dates: npt.NDArray[Any], pulls: dict[str, FloatArray], label: str) -> None:
     shown = {name: value for name, value in pulls.items() if np.max(value) >= _SHOWN_FROM_S}
     ranked = sorted(shown, key=lambda name: -float(np.median(shown[name])))
-    for number, name in enumerate(ranked):
-        style = "-" if number < len(_COLOURS) else "--"
+    for name in ranked:
+        body, _, order = name.partition(", ")
         # Below the floor of the panel a line would only stretch the scale.
         value = np.where(shown[name] > 0.0, shown[name], np.nan)
-        axes.plot(dates, value, style, color=_COLOURS[number % len(_COLOURS)], linewidth=1.4, label=name)
+        axes.plot(dates, value, _STYLES.get(order, "-"), color=_COLOURS.get(body, "#404040"), linewidth=1.4, label=name)
     axes.set_yscale("log")
     if ranked:
         low = min(float(np.min(shown[name])) for name in ranked)
         axes.set_ylim(bottom=max(low * 0.5, 0.1 * _SHOWN_FROM_S))
-        axes.legend(loc="upper left", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize="small", title="by body")
-    axes.set_ylabel("gravitational delay, size (s)")
+        legend = axes.legend(
+            loc="upper left", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize="small", title=label, alignment="left"
+        )
+        legend.get_title().set_fontsize("small")
+    axes.set_ylabel("size of gravitational delay (s)")
     axes.grid(color="0.92")
 
 

@@ -71,12 +71,17 @@ class SurfaceSite:
             )
         object.__setattr__(self, "body", number)
         for what, limit in (("lon_deg", 360.0), ("lat_deg", 90.0), ("height_m", 1e5)):
-            value = getattr(self, what)
-            if isinstance(value, (bool, str)) or not np.isscalar(value) or not math.isfinite(float(value)):  # type: ignore[arg-type]
+            value: Any = getattr(self, what)
+            if (
+                isinstance(value, bool)
+                or not isinstance(value, int | float | np.integer | np.floating)
+                or not math.isfinite(value)
+            ):
                 raise InvalidInput(f"surface site {self.name!r}: {what} must be a finite number, got {value!r}")
-            if abs(value) > limit:
+            if abs(float(value)) > limit:
                 raise InvalidInput(
-                    f"surface site {self.name!r}: {what} must lie within +-{limit:g}, got {value!r}; check order and units"
+                    f"surface site {self.name!r}: {what} must lie within +-{limit:g}, got {value!r}; "
+                    "check order and units"
                 )
             object.__setattr__(self, what, float(value))
         figure = FIGURES[own_body(number)]

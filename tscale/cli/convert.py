@@ -195,8 +195,8 @@ class _Conversion:
             # The notes say the same, once for the whole file.
             warnings.simplefilter("ignore", ExtrapolationWarning)
             t = read_dates(block.column, args.input_format, self.chains[0].start.scale.name, leap_seconds=leap_seconds)
+            results = [chain(t) for chain in self.chains]
             walk = Walk(self.chains, t)
-            results = walk.results()
             columns = {
                 name: write_dates(result, args.output_format, self.digits, leap_seconds=leap_seconds)
                 for name, result in zip(self.names, results, strict=True)

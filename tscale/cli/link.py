@@ -69,13 +69,19 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     parser.add_argument(
         "--occultation",
         choices=("error", "mark"),
-        help="where a body or the ground stands in the way: stop, or mark it (default: error for one date, mark for a table)",
+        help="where a body or the ground is in the way: stop, or mark it (default: stop for one date, not for a table)",
     )
     parser.add_argument("--ledger", action="store_true", help="add a column for every term to a table, in seconds")
-    parser.add_argument("--output", metavar="FILE", default="-", help="CSV file of the table (default: standard output)")
+    parser.add_argument(
+        "--output", metavar="FILE", default="-", help="CSV file of the table (default: standard output)"
+    )
     parser.add_argument("--plot", metavar="FILE", help="picture of the table: PNG, PDF or SVG (needs matplotlib)")
     parser.add_argument(
-        "--clock", metavar="FILE", action="append", default=[], help="comparison log, for dates on its scale; repeatable"
+        "--clock",
+        metavar="FILE",
+        action="append",
+        default=[],
+        help="comparison log, for dates on its scale; repeatable",
     )
     parser.add_argument("--digits", metavar="N", type=int, default=12, help="decimals of the dates (%(default)s)")
     add_tables(parser)
@@ -173,9 +179,7 @@ class _Work:
         rule = f"{'-' * left}  {'-' * right}"
         table = [f"{name:<{left}}  {text:>{right}}" for name, text in terms]
         head = [f"{name:<{width}}  {text}" for name, text in lines]
-        return "\n".join(
-            [*head, "", f"{'term':<{left}}  {'TDB seconds':>{right}}", rule, *table[:-1], rule, table[-1]]
-        )
+        return "\n".join([*head, "", f"{'term':<{left}}  {'TDB seconds':>{right}}", rule, *table[:-1], rule, table[-1]])
 
     def table(self) -> None:
         """Write the table, and the picture if one is asked for."""
@@ -196,7 +200,7 @@ class _Work:
                 from ..plots import save_link_picture
 
                 # Inside the block: when the picture fails there is no table either.
-                save_link_picture(solutions, self.args.plot, title=f"{self.args.start} to {self.args.end}")
+                save_link_picture(solutions, self.args.plot)
 
     def _write(self, target: TextIO, solution: Solution, head: bool) -> None:
         columns = {name: self._iso(t) for name, t in self._events(solution).items()}

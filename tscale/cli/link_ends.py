@@ -21,7 +21,18 @@ An end of a link is one of
   FILE.bsp:NUMBER      a body or spacecraft of an SPK kernel, by its NAIF number
 """
 
-_ORBIT: Final = ("name", "epoch", "scale", "a_m", "e", "i_deg", "node_deg", "periapsis_deg", "mean_anomaly_deg", "center")
+_ORBIT: Final = (
+    "name",
+    "epoch",
+    "scale",
+    "a_m",
+    "e",
+    "i_deg",
+    "node_deg",
+    "periapsis_deg",
+    "mean_anomaly_deg",
+    "center",
+)
 
 
 def end_of(text: str, reference: ReferenceData) -> Participant:
@@ -43,8 +54,8 @@ def end_of(text: str, reference: ReferenceData) -> Participant:
     if path.is_file():
         return Trajectory.from_oem(path, leap_seconds=reference.leap_seconds)
     raise InvalidInput(
-        f"{text!r} is neither a body nor a file; bodies are {', '.join(BODY_IDS)} or a NAIF number, files are a TOML file "
-        "with [site], [surface] or [orbit], an Orbit Ephemeris Message, or KERNEL.bsp:NUMBER"
+        f"{text!r} is neither a body nor a file; bodies are {', '.join(BODY_IDS)} or a NAIF number, files are a TOML "
+        "file with [site], [surface] or [orbit], an Orbit Ephemeris Message, or KERNEL.bsp:NUMBER"
     )
 
 
@@ -61,7 +72,9 @@ def _from_toml(path: Path, reference: ReferenceData) -> Participant:
         raise DataFileError(f"not a TOML file: {error}", path=path) from error
     kinds = [kind for kind in ("site", "surface", "orbit") if kind in document]
     if len(kinds) != 1:
-        raise DataFileError(f"an end of a link needs one table of [site], [surface] and [orbit], got {kinds}", path=path)
+        raise DataFileError(
+            f"an end of a link needs one table of [site], [surface] and [orbit], got {kinds}", path=path
+        )
     if kinds == ["site"]:
         return Site.load(path)
     if kinds == ["surface"]:

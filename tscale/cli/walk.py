@@ -1,4 +1,4 @@
-"""Several chains from one start, walked together: what they share is done once."""
+"""Several chains from one start, looked at step by step together: what they share is done once."""
 
 from __future__ import annotations
 
@@ -56,10 +56,6 @@ class Walk:
                 at = self.passed[path].after
                 taken.append(path)
             self._paths.append(taken)
-
-    def results(self) -> list[Instants]:
-        """Instants at the end of each chain."""
-        return [self.passed[taken[-1]].after if taken else self._start for taken in self._paths]
 
     def terms(self) -> dict[str, Pair]:
         """Terms of all steps by name, seconds; names met in two steps carry the step."""

@@ -8,41 +8,133 @@ the vectors with the scale and Lorentz terms of `frames`; each is the other's in
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S, L_C
+from ..constants import C_M_S, L_C, L_G
+from ..ephemeris import Ephemeris
 from ..exact import FloatArray, Pair
 from .frames import bcrs_offset, bcrs_offset_velocity, dot
-from .observer import Observer
+from .observer import Observer, nearest_inside, require_inside
 
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
 
-__all__ = ["bcrs_state", "gcrs_state", "tdb_from_tt_at_geocentre", "tt_from_tdb_at_geocentre"]
+__all__ = [
+    "TT_PER_TCG",
+    "EarthAndSun",
+    "Event",
+    "TopocentricTerms",
+    "bcrs_state",
+    "gcrs_state",
+    "observer_event",
+    "tdb_from_tt_at_geocentre",
+    "topocentric_rate",
+    "topocentric_terms",
+    "tt_from_tdb_at_geocentre",
+]
 
-_C2 = C_M_S**2
+TT_PER_TCG: Final = float(1 - L_G)
+_TCG_METRE: Final = float(1 / (1 - L_G))
+_C2: Final = C_M_S**2
 
 
-class _Earth(NamedTuple):
-    """What the change of frame needs of the geocentre at TDB dates."""
+class TopocentricTerms(NamedTuple):
+    """TCB - TCG of an observer minus that of the geocentre, seconds."""
 
-    position_m: FloatArray
-    velocity_m_s: FloatArray
-    acceleration_m_s2: FloatArray
+    first_s: FloatArray
+    """v_E.r_E / c^2, up to 2.1e-6 s on the ground."""
+    second_s: FloatArray
+    """(3 w_ext + v_E^2/2) v_E.r_E / c^4, up to 7e-14 s on the ground."""
+
+    @property
+    def total_s(self) -> FloatArray:
+        """Both terms."""
+        return self.first_s + self.second_s
+
+
+class EarthAndSun(NamedTuple):
+    """What the topocentric terms need of the ephemeris at some TDB dates."""
+
+    earth_m: FloatArray
+    earth_v_m_s: FloatArray
+    sun_m: FloatArray
+    sun_v_m_s: FloatArray
     potential_m2_s2: FloatArray
+    """The Sun's potential at the geocentre."""
+
+    @classmethod
+    def at(cls, ephemeris: Ephemeris, tdb: Pair) -> EarthAndSun:
+        """Look both bodies up."""
+        (earth, sun), (earth_v, sun_v) = ephemeris.states(("earth", "sun"), tdb)
+        away = sun - earth
+        return cls(earth, earth_v, sun, sun_v, np.asarray(ephemeris.gm_m3_s2("sun") / np.sqrt(dot(away, away))))
+
+    @property
+    def acceleration_m_s2(self) -> FloatArray:
+        """Acceleration of the geocentre by the Sun, m/s2; the Moon's 1 % is left out, for it enters divided by c^2."""
+        away = self.sun_m - self.earth_m
+        return np.asarray(away * (self.potential_m2_s2 / dot(away, away))[..., np.newaxis])
+
+    def topocentric_rate(self, r_gcrs_m: FloatArray, v_gcrs_m_s: FloatArray) -> FloatArray:
+        """Derivative of the topocentric terms, (A_E.r + v_E.v)/c^2, to 2e-15 on the ground."""
+        return np.asarray((dot(self.acceleration_m_s2, r_gcrs_m) + dot(self.earth_v_m_s, v_gcrs_m_s)) / C_M_S**2)
+
+    def terms(self, r_gcrs_m: FloatArray) -> TopocentricTerms:
+        """Topocentric terms of TCB - TCG for a geocentric vector; see `topocentric_terms`."""
+        first = dot(self.earth_v_m_s, r_gcrs_m) * (_TCG_METRE / C_M_S**2)
+        speed2 = dot(self.earth_v_m_s, self.earth_v_m_s)
+        return TopocentricTerms(first, first * ((3.0 * self.potential_m2_s2 + 0.5 * speed2) / C_M_S**2))
 
 
-def _earth(tdb: Pair, reference: ReferenceData) -> _Earth:
-    ephemeris = reference.ephemeris
-    position, velocity = ephemeris.state("earth", tdb)
-    to_sun = ephemeris.position("sun", tdb) - position
-    distance = np.sqrt(dot(to_sun, to_sun))
-    potential = np.asarray(ephemeris.gm_m3_s2("sun") / distance)
-    # The Sun's pull stands for the whole acceleration (1 % for the Moon's): it only enters divided by c^2.
-    return _Earth(position, velocity, to_sun * (potential / distance**2)[..., np.newaxis], potential)
+class Event(NamedTuple):
+    """An event at an observer, dated in TDB, with all that its place is made of."""
+
+    tt: Pair
+    r_gcrs_m: FloatArray
+    v_gcrs_m_s: FloatArray
+    bodies: EarthAndSun
+
+    def bcrs_state(self, tt_rate: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Barycentric position (m) and velocity (m/s) by TDB; `tt_rate` is dTT/dTDB at the geocentre."""
+        earth, earth_v, _, _, potential = self.bodies
+        r, v, acceleration = self.r_gcrs_m, self.v_gcrs_m_s, self.bodies.acceleration_m_s2
+        tt_rate = tt_rate - self.bodies.topocentric_rate(r, v)
+        offset = bcrs_offset(r, earth_v, potential)
+        return earth + offset, earth_v + bcrs_offset_velocity(r, v, earth_v, acceleration, potential, tt_rate)
+
+
+def topocentric_terms(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray) -> TopocentricTerms:
+    """Terms of IAU 2000 B1.5 that depend on the observer's place.
+
+    Parameters
+    ----------
+    ephemeris : Ephemeris
+        For the Earth's velocity and the Sun's potential.
+    tdb : Pair
+        TDB count of the event; an error of 1 ms changes the terms by 1e-15 s.
+    r_gcrs_m : (..., 3) array
+        Geocentric GCRS vector of the observer, m (TT-compatible, as IERS products are).
+
+    Notes
+    -----
+    Of the external potential the Sun's alone is taken: the planets' would change the second term
+    by 2e-17 s.
+    """
+    return EarthAndSun.at(ephemeris, tdb).terms(r_gcrs_m)
+
+
+def topocentric_rate(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray, v_gcrs_m_s: FloatArray) -> FloatArray:
+    """Derivative of the topocentric terms by TDB for dr/dTT = `v_gcrs_m_s`, with the Moon's pull on the Earth (2e-15).
+
+    What is left out, the planets' pull and order c^-4, is below 1e-17 on the ground.
+    """
+    bodies = EarthAndSun.at(ephemeris, tdb)
+    to_moon = ephemeris.position("moon", tdb, "earth")
+    pull = to_moon * (ephemeris.gm_m3_s2("moon") / dot(to_moon, to_moon) ** 1.5)[..., np.newaxis]
+    return np.asarray(bodies.topocentric_rate(r_gcrs_m, v_gcrs_m_s) + dot(pull, r_gcrs_m) / _C2)
 
 
 def tt_from_tdb_at_geocentre(tdb: Pair, reference: ReferenceData) -> Pair:
@@ -54,6 +146,44 @@ def tdb_from_tt_at_geocentre(tt: Pair, reference: ReferenceData) -> Pair:
     """TDB count at the geocentre of a TT count: one Newton step from TDB = TT leaves 1e-21 s."""
     table = reference.time_ephemeris
     return exact.add_seconds(tt, -table.tt_minus_tdb_s(tt) / (1.0 + table.rate(tt)))
+
+
+def observer_event(tdb: Pair, reference: ReferenceData, observer: Observer, *, loose: bool = False) -> Event:
+    """Date an event at an observer in TT and find the observer's geocentric state, from its TDB.
+
+    Parameters
+    ----------
+    tdb : Pair
+        TDB count of the event, any shape.
+    reference : ReferenceData
+        Ephemeris, time ephemeris, and what the observer needs.
+    observer : Observer
+        A site or a trajectory.
+    loose : bool
+        Past the span of a trajectory go on in a straight line from its end, as an iteration on its way to a date
+        inside may need. Without it the date must lie inside.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the ephemeris or the observer does not reach.
+    """
+    geocentric = tt_from_tdb_at_geocentre(tdb, reference)
+    bodies = EarthAndSun.at(reference.ephemeris, tdb)
+    r_m, v_m_s = observer.gcrs(nearest_inside(observer, geocentric), reference)
+    tt = exact.add_seconds(geocentric, -TT_PER_TCG * bodies.terms(r_m).total_s)
+    asked = nearest_inside(observer, tt)
+    if asked is tt:
+        # On the ground the vector taken 2 us late is carried back in a straight line: 1 mm, 0.3 fs of the term.
+        r_m = r_m - v_m_s * bodies.terms(r_m).total_s[..., np.newaxis]
+        tt = exact.add_seconds(geocentric, -TT_PER_TCG * bodies.terms(r_m).total_s)
+    else:
+        # In orbit the velocity turns by 2e-5 m/s in that time, so the trajectory is asked again.
+        if not loose:
+            require_inside(observer, tt, reference)
+        r_m, v_m_s = observer.gcrs(asked, reference)
+        r_m = r_m + v_m_s * exact.seconds(exact.subtract(tt, asked))[..., np.newaxis]
+    return Event(tt, r_m, v_m_s, bodies)
 
 
 def bcrs_state(observer: Observer, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
@@ -77,17 +207,8 @@ def bcrs_state(observer: Observer, tdb: Pair, reference: ReferenceData) -> tuple
     OutOfSpan
         Where the ephemeris or the observer does not reach.
     """
-    earth = _earth(tdb, reference)
-    tt = tt_from_tdb_at_geocentre(tdb, reference)
-    # The term is taken from the vector at TT of the geocentre: its change over 2 us is of order c^-4.
-    r_m, _ = observer.gcrs(tt, reference)
-    r_m, v_m_s = observer.gcrs(exact.add_seconds(tt, -dot(earth.velocity_m_s, r_m) / _C2), reference)
-    tt_rate = 1.0 + reference.time_ephemeris.rate(tdb) - _topocentric_rate(earth, r_m, v_m_s)
-    offset = bcrs_offset(r_m, earth.velocity_m_s, earth.potential_m2_s2)
-    velocity = bcrs_offset_velocity(
-        r_m, v_m_s, earth.velocity_m_s, earth.acceleration_m_s2, earth.potential_m2_s2, tt_rate
-    )
-    return earth.position_m + offset, earth.velocity_m_s + velocity
+    event = observer_event(tdb, reference, observer)
+    return event.bcrs_state(1.0 + reference.time_ephemeris.rate(tdb))
 
 
 def gcrs_state(
@@ -114,19 +235,15 @@ def gcrs_state(
     x_m, _ = state(near)
     position, velocity = reference.ephemeris.state("earth", near)
     tdb = exact.add_seconds(near, dot(velocity, x_m - position) / _C2)
-    earth = _earth(tdb, reference)
+    bodies = EarthAndSun.at(reference.ephemeris, tdb)
+    earth_v, acceleration = bodies.earth_v_m_s, bodies.acceleration_m_s2
     x_m, v_m_s = state(tdb)
-    d, d_rate = x_m - earth.position_m, v_m_s - earth.velocity_m_s
-    scale = (1.0 + earth.potential_m2_s2 / _C2 + L_C)[..., np.newaxis]
-    along = (dot(earth.velocity_m_s, d) / (2.0 * _C2))[..., np.newaxis]
-    rate = _topocentric_rate(earth, d, d_rate)
+    d, d_rate = x_m - bodies.earth_m, v_m_s - earth_v
+    scale = (1.0 + bodies.potential_m2_s2 / _C2 + L_C)[..., np.newaxis]
+    along = (dot(earth_v, d) / (2.0 * _C2))[..., np.newaxis]
+    rate = bodies.topocentric_rate(d, d_rate)
     along_rate = (0.5 * rate)[..., np.newaxis]
-    r = d * scale + earth.velocity_m_s * along
-    r_rate = d_rate * scale + earth.velocity_m_s * along_rate + earth.acceleration_m_s2 * along
+    r = d * scale + earth_v * along
+    r_rate = d_rate * scale + earth_v * along_rate + acceleration * along
     tt_rate = 1.0 + reference.time_ephemeris.rate(tdb) - rate
     return np.asarray(r), np.asarray(r_rate / tt_rate[..., np.newaxis])
-
-
-def _topocentric_rate(earth: _Earth, r_m: FloatArray, v_m_s: FloatArray) -> FloatArray:
-    """Rate of V.r/c^2."""
-    return np.asarray((dot(earth.acceleration_m_s2, r_m) + dot(earth.velocity_m_s, v_m_s)) / _C2)

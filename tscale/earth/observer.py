@@ -4,20 +4,23 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Protocol, runtime_checkable
 
+import numpy as np
+
+from .. import exact
 from ..exact import FloatArray, Pair
 
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
 
-__all__ = ["Observer"]
+__all__ = ["Observer", "nearest_inside", "require_inside"]
 
 
 @runtime_checkable
 class Observer(Protocol):
     """Something with a name and a geocentric position at every instant.
 
-    `Site` and Earth-centred trajectories are observers. The geocentre is not one: it has no topocentric
-    terms, and the chain treats it as a place.
+    `Site` and trajectories are observers; those with a span offer `clip` too (see `nearest_inside`). The
+    geocentre is not one: it has no topocentric terms, and the chain treats it as a place.
     """
 
     @property
@@ -40,3 +43,19 @@ class Observer(Protocol):
         r_m, v_m_s : float array, shape of `tt` + (3,)
         """
         ...
+
+
+def nearest_inside(observer: Observer, tt: Pair) -> Pair:
+    """TT counts moved to the nearest ones at which the observer can be asked.
+
+    An observer with a span says so by a method `clip(tt) -> Pair`; the same object comes back for one without.
+    """
+    clip = getattr(observer, "clip", None)
+    return tt if clip is None else clip(tt)
+
+
+def require_inside(observer: Observer, tt: Pair, reference: ReferenceData) -> None:
+    """Raise the observer's own `OutOfSpan` for TT counts more than 1 ns (a rounding, 8 um) outside its span."""
+    outside_s = np.abs(exact.seconds(exact.subtract(tt, nearest_inside(observer, tt))))
+    if np.any(outside_s > 1e-9):
+        observer.gcrs(tt, reference)

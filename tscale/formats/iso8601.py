@@ -245,7 +245,9 @@ def _as_texts(texts: Any) -> npt.NDArray[np.str_]:
         return array.astype(np.str_)
     if array.dtype.kind not in "UT" and array.size:
         raise InvalidInput(f"dates must be texts, got {array.dtype}; for numbers use from_mjd, from_jd or from_seconds")
-    return array if array.dtype.kind == "U" and array.dtype.isnative else array.astype(np.str_)
+    if array.dtype.kind != "U":
+        return array.astype(np.str_)
+    return array.astype(array.dtype.newbyteorder("="), copy=False)
 
 
 def _width(value: IntArray) -> IntArray:

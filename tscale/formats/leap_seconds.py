@@ -279,7 +279,7 @@ class LeapSeconds:
             second_s, length_s = whole.flat[at] + fraction.flat[at], length.flat[at] + rest.flat[at]
             raise TextError(
                 f"{int(np.count_nonzero(bad))} of {bad.size} labels do not exist in the UTC table {self.name!r}: "
-                f"first, item {at} is second {second_s:.9f} of {year}-{month:02d}-{date:02d}, a day of {length_s:.9f} s",
+                f"first, item {at}: second {second_s:.9f} of {year}-{month:02d}-{date:02d}, a day of {length_s:.9f} s",
                 mask=bad,
             )
 

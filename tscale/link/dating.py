@@ -60,8 +60,8 @@ class _Seen:
         far = dot(r, r) > GEOCENTRIC_REGION_M**2
         if np.any(far):
             raise ScaleMismatch(
-                f"events at {self.end.name} are up to {np.sqrt(np.max(dot(r, r))):.3g} m from the geocentre; UTC, TT and "
-                f"their kin date events within {GEOCENTRIC_REGION_M:g} m of it: use TDB or TCB there",
+                f"events at {self.end.name} are up to {np.sqrt(np.max(dot(r, r))):.3g} m from the geocentre; UTC, TT "
+                f"and their kin date events within {GEOCENTRIC_REGION_M:g} m of it: use TDB or TCB there",
                 mask=np.asarray(far),
             )
         return r, v
@@ -145,6 +145,6 @@ def _require_fixed(scale: str) -> None:
     if kind.family in ("UTC", "CLOCK"):
         raise MissingPiece(f"no comparison log for {scale}: give one with clocks=[ClockLog.load(path)]")
     raise ScaleMismatch(
-        f"the events of a link are not dated on {scale}; UTC, TAI, TT, GPS, GST, BDT, GLONASS, UT1, TCG, TCB, TDB and, with "
-        "their tables or logs, TT(...), UTC(...) and CLOCK(...) are understood"
+        f"the events of a link are not dated on {scale}; UTC, TAI, TT, GPS, GST, BDT, GLONASS, UT1, TCG, TCB, TDB and, "
+        "with their tables or logs, TT(...), UTC(...) and CLOCK(...) are understood"
     )

@@ -108,14 +108,14 @@ class BodyEnd(End):
     """The centre of a body of the ephemeris."""
 
     @property
-    def place(self) -> str | None:  # noqa: D102
+    def place(self) -> str | None:
         return _PLACES.get(self.anchor)
 
     @property
-    def centre_of(self) -> int | None:  # noqa: D102
+    def centre_of(self) -> int | None:
         return self.anchor
 
-    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:  # noqa: D102
+    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         shape = (*np.shape(tdb[0]), 3)
         return np.zeros(shape), np.zeros(shape)
 
@@ -127,18 +127,18 @@ class ObserverEnd(End):
     observer: Observer
 
     @property
-    def place(self) -> str | None:  # noqa: D102
+    def place(self) -> str | None:
         return "TOPOCENTER"
 
     @property
-    def ground(self) -> int | None:  # noqa: D102
+    def ground(self) -> int | None:
         return _EARTH if isinstance(self.observer, Site) else None
 
     @property
-    def span(self) -> tuple[float, float] | None:  # noqa: D102
+    def span(self) -> tuple[float, float] | None:
         return _span_of(self.observer)
 
-    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:  # noqa: D102
+    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         ephemeris = reference.ephemeris
         earth, velocity = ephemeris.state("earth", tdb)
         to_sun = ephemeris.position("sun", tdb) - earth
@@ -151,11 +151,9 @@ class ObserverEnd(End):
         r, v = self.observer.gcrs(tt, reference)
         r = r - v * topocentric_terms(ephemeris, tdb, r).total_s[..., np.newaxis]
         rate = 1.0 + table.rate(tdb) - topocentric_rate(ephemeris, tdb, r, v)
-        return bcrs_offset(r, velocity, potential), bcrs_offset_velocity(
-            r, v, velocity, acceleration, potential, rate
-        )
+        return bcrs_offset(r, velocity, potential), bcrs_offset_velocity(r, v, velocity, acceleration, potential, rate)
 
-    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:  # noqa: D102
+    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
         if not isinstance(self.observer, Site):
             return None
         lon, lat = np.radians(self.observer.lon_deg), np.radians(self.observer.lat_deg)
@@ -171,14 +169,14 @@ class SurfaceEnd(End):
     site: SurfaceSite
 
     @property
-    def ground(self) -> int | None:  # noqa: D102
+    def ground(self) -> int | None:
         return self.anchor
 
-    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:  # noqa: D102
+    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         r, v = self.site.offset(tdb)
         return contracted(r, reference.ephemeris.state(self.anchor, tdb)[1]), v
 
-    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:  # noqa: D102
+    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
         return self.site.up(tdb)
 
 
@@ -189,10 +187,10 @@ class MovingEnd(End):
     moving: Moving
 
     @property
-    def span(self) -> tuple[float, float] | None:  # noqa: D102
+    def span(self) -> tuple[float, float] | None:
         return _span_of(self.moving)
 
-    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:  # noqa: D102
+    def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         if self.anchor != 0 and isinstance(self.moving, Trajectory):
             orbit = self.moving
             own = tdb if orbit.scale == "TDB" else tt_from_tdb_at_geocentre(tdb, reference)
@@ -205,7 +203,7 @@ class MovingEnd(End):
 def as_end(participant: Any, role: str) -> End:
     """Bring a participant to its form; `role` is its argument's name, for messages."""
     if isinstance(participant, (str, int, np.integer)) and not isinstance(participant, bool):
-        number = body_id(participant)
+        number = body_id(participant if isinstance(participant, str) else int(participant))
         return BodyEnd(body_name(number).split(" (")[0], number)
     if isinstance(participant, SurfaceSite):
         assert isinstance(participant.body, int)

@@ -160,7 +160,9 @@ def _reference(reference: ReferenceData | None) -> ReferenceData:
 
 def _instants(t: Any) -> Instants:
     if not isinstance(t, Instants):
-        raise InvalidInput(f"the dates of a link are Instants, got {type(t).__name__}; make them with Instants.from_iso")
+        raise InvalidInput(
+            f"the dates of a link are Instants, got {type(t).__name__}; make them with Instants.from_iso"
+        )
     return t
 
 
@@ -172,7 +174,9 @@ def _broadcast(known: Pair, turnaround_s: npt.ArrayLike) -> tuple[Pair, FloatArr
     try:
         whole, fraction, turnaround = np.broadcast_arrays(known[0], known[1], turnaround)
     except ValueError as error:
-        raise InvalidInput(f"turnaround_s of shape {turnaround.shape} does not go with dates of {known[0].shape}") from error
+        raise InvalidInput(
+            f"turnaround_s of shape {turnaround.shape} does not go with dates of {known[0].shape}"
+        ) from error
     return (whole, fraction), turnaround
 
 

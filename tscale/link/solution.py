@@ -63,6 +63,11 @@ class LinkSolution:
     _clocks: tuple[ClockLog, ...] = field(repr=False)
 
     @property
+    def ends(self) -> tuple[str, str]:
+        """Names of the transmitter and the receiver."""
+        return self._ends[0].name, self._ends[1].name
+
+    @property
     def light_time_exact(self) -> Pair:
         """Light time, s of TDB, as (int64 seconds, float64 fraction in [0, 1)): the exact sum of the ledger."""
         total: Pair = (np.zeros(self.range_m.shape, dtype=np.int64), np.zeros(self.range_m.shape))
@@ -109,7 +114,9 @@ class LinkSolution:
         head += [f"receive   {self.receive.ravel()[row].to_iso(12)}  TDB  {self._ends[1].name}"]
         head += ["", f"{'term':<{width}}  {'seconds':>{digits}}", f"{'-' * width}  {'-' * digits}"]
         body = [f"{name:<{width}}  {text:>{digits}}" for name, text in lines]
-        return "\n".join([*head, *body, f"{'-' * width}  {'-' * digits}", f"{'light time':<{width}}  {total:>{digits}}"])
+        return "\n".join(
+            [*head, *body, f"{'-' * width}  {'-' * digits}", f"{'light time':<{width}}  {total:>{digits}}"]
+        )
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,6 +1,6 @@
 """Light time between two moving ends, by Newton's method in the barycentric frame (TDB).
 
-    t_r - t_t = |x_r(t_r) - x_t(t_t)| / c + (gravitational delays)
+t_r - t_t = |x_r(t_r) - x_t(t_t)| / c + (gravitational delays)
 """
 
 from __future__ import annotations
@@ -121,11 +121,14 @@ def solve(
         target = held - (held - leg.rho / C_M_S - delay) / slope
         step, tau = target - tau, target
         if iteration > 2 and pull is not None and np.all(np.abs(step) <= _content(leg, options)):
-            return _finish(leg, pull, known, when, known_is_receive, transmitter, receiver, reference, options, iteration)
+            return _finish(
+                leg, pull, known, when, known_is_receive, transmitter, receiver, reference, options, iteration
+            )
     late = np.abs(step) > _content(leg, options)
     raise NotConverged(
         f"{int(late.sum())} of {late.size} light times still move by up to {np.max(np.abs(step)):.3g} s after "
-        f"{options.max_iterations} Newton steps; allowed is {options.tolerance_s:g} s: raise tolerance_s or max_iterations",
+        f"{options.max_iterations} Newton steps; allowed is {options.tolerance_s:g} s: "
+        "raise tolerance_s or max_iterations",
         mask=np.asarray(late),
     )
 
@@ -137,7 +140,7 @@ def _content(leg: _Leg, options: Options) -> FloatArray:
 
 
 def _sought(known: Pair, tau: FloatArray, known_is_receive: bool, held: End | None) -> Pair:
-    """Date of the event sought; the first two are held within the span of a trajectory, which they may well overshoot."""
+    """Date of the event sought; the first two, which may overshoot, are held within the span of a trajectory."""
     when = exact.add_seconds(known, -tau if known_is_receive else tau)
     if held is None or held.span is None:
         return when
@@ -198,7 +201,7 @@ def _between_anchors(
 def _pull(
     leg: _Leg, sent: Pair, transmitter: End, receiver: End, reference: ReferenceData, options: Options
 ) -> Gravity:
-    """Delays along the leg as it stands. A body has none where it is itself an end: its field has no finite delay there."""
+    """Delays along the leg as it stands. A body that is itself an end has none: there it would not be finite."""
     at_ends = set()
     for end in (transmitter, receiver):
         if end.centre_of is not None:
@@ -265,8 +268,8 @@ def _occulted(
     if np.any(any_way) and not options.mark:
         reasons = "; ".join(f"{words} ({int(mask.sum())})" for words, mask in ways if np.any(mask))
         raise GeometryError(
-            f"{int(any_way.sum())} of {any_way.size} links from {transmitter.name} to {receiver.name} have no clear path: "
-            f'{reasons}. Leave them out (see the mask), or give occultation="mark" to get them marked',
+            f"{int(any_way.sum())} of {any_way.size} links from {transmitter.name} to {receiver.name} have no clear "
+            f'path: {reasons}. Leave them out (see the mask), or give occultation="mark" to get them marked',
             mask=np.asarray(any_way),
         )
     return np.asarray(any_way)

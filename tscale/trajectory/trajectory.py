@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 import numpy.typing as npt
 
+from .. import exact
 from ..earth.moving import bcrs_state, gcrs_state, tt_from_tdb_at_geocentre
 from ..earth.rotation import gcrs_state_from_itrs
 from ..ephemeris.chebyshev import broadcast_pair
@@ -249,6 +250,31 @@ class Trajectory:
             return gcrs_state_from_itrs(r, v, at, reference)
 
         return self._assemble(tt, from_geocentre)
+
+    def clip(self, tt: Pair) -> Pair:
+        """TT counts moved into the span from the first to the last date, for iterations that start outside it.
+
+        Trajectories dated in TDB are clipped 3 ms inside their ends, more than TT and TDB ever differ by.
+        """
+        whole, fraction = broadcast_pair(tt)
+        whole, fraction = np.array(whole), np.array(fraction)
+        margin_s = 0.0 if self.scale == "TT" else 0.003
+        for end, sign in ((self._end(0), 1), (self._end(1), -1)):
+            if end is None:
+                continue
+            limit = exact.add_seconds(end, sign * margin_s)
+            # Part by part: a difference of less than half an ulp of 1 s would round to nothing.
+            outside = (sign * (whole - limit[0]) < 0) | ((whole == limit[0]) & (sign * (fraction - limit[1]) < 0.0))
+            whole[outside], fraction[outside] = limit
+        return whole, fraction
+
+    def _end(self, which: int) -> Pair | None:
+        """The first (0) or last (1) date of all pieces; None if there is no end."""
+        ends = [piece.first if which == 0 else piece.last for piece in self.pieces]
+        known = [end for end in ends if end is not None]
+        if len(known) < len(ends):
+            return None
+        return (min if which == 0 else max)(known, key=lambda end: (int(end[0]), float(end[1])))
 
     def _assemble(self, count: Pair, finish: Callable[[Piece, IntArray, FloatArray, FloatArray], _State]) -> _State:
         """Evaluate each piece at the counts that are its own; `finish` carries them to the frame asked for."""

@@ -25,14 +25,14 @@ import numpy as np
 
 from .. import exact
 from ..constants import AU_M, C_M_S
-from ..earth.frames import bcrs_offset, bcrs_offset_velocity, dot
+from ..earth.frames import dot
+from ..earth.moving import observer_event
 from ..earth.observer import Observer
 from ..errors import NotConverged
 from ..exact import FloatArray, Pair
 from ..instants import Instants
 from ..source import Source
 from ..tables.reference import ReferenceData
-from .barycentric import observer_event
 from .terrestrial import require_scale
 
 __all__ = ["DELAYING_BODIES", "WavefrontTerms", "barycenter_to_observer", "observer_to_barycenter", "wavefront_terms"]
@@ -57,7 +57,7 @@ class WavefrontTerms(NamedTuple):
 
 
 def observer_state(
-    tdb: Pair, reference: ReferenceData, observer: Observer | None
+    tdb: Pair, reference: ReferenceData, observer: Observer | None, *, loose: bool = False
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
     """Barycentric place and velocity of the observer (None: the geocentre), and the Sun's state.
 
@@ -69,14 +69,9 @@ def observer_state(
     if observer is None:
         (earth, sun), (velocity, sun_velocity) = reference.ephemeris.states(("earth", "sun"), tdb)
         return earth, velocity, sun, sun_velocity
-    event = observer_event(tdb, reference, observer)
-    earth, velocity, sun, sun_velocity, potential = event.bodies
-    to_sun = sun - earth
-    acceleration = to_sun * (potential / dot(to_sun, to_sun))[..., np.newaxis]
-    tt_rate = 1.0 + reference.time_ephemeris.rate(tdb)
-    x = earth + bcrs_offset(event.r_gcrs_m, velocity, potential)
-    v = velocity + bcrs_offset_velocity(event.r_gcrs_m, event.v_gcrs_m_s, velocity, acceleration, potential, tt_rate)
-    return x, v, sun, sun_velocity
+    event = observer_event(tdb, reference, observer, loose=loose)
+    x, v = event.bcrs_state(1.0 + reference.time_ephemeris.rate(tdb))
+    return x, v, event.bodies.sun_m, event.bodies.sun_v_m_s
 
 
 def wavefront_terms(
@@ -87,6 +82,7 @@ def wavefront_terms(
     *,
     bodies: tuple[str, ...] = DELAYING_BODIES,
     second_order: bool = False,
+    loose: bool = False,
 ) -> WavefrontTerms:
     """Every term of t_bary - t_obs for a wavefront met by an observer at TDB dates `tdb`.
 
@@ -104,8 +100,10 @@ def wavefront_terms(
         Bodies whose gravity delays the light.
     second_order : bool
         Add the Sun's delay of second order in GM/c^2 (18 ns at the limb, below 0.1 ns beyond 4 degrees).
+    loose : bool
+        See `earth.moving.observer_event`; for dates that are still being sought.
     """
-    x, v, sun, sun_velocity = observer_state(tdb, reference, observer)
+    x, v, sun, sun_velocity = observer_state(tdb, reference, observer, loose=loose)
     # The direction is the one at the barycentric date; the first guess of that date is good to 4e-7 s
     # even for the largest proper motion known, and a microsecond moves no direction by 1e-17 rad.
     guess = source.direction(tdb)
@@ -213,11 +211,12 @@ def barycenter_to_observer(
     require_scale(t, "TDB")
     guess = t.pair
     for _ in range(6):
-        terms = wavefront_terms(guess, reference, source, observer, second_order=second_order)
+        terms = wavefront_terms(guess, reference, source, observer, second_order=second_order, loose=True)
         missing = exact.seconds(exact.subtract(terms.later(guess), t.pair))
         step = missing / (1.0 + terms.rate)
         guess = exact.add_seconds(guess, -step)
         if np.max(np.abs(step), initial=0.0) < 1e-8:  # quadratic: the next step would be below 1e-20 s
-            place = "GEOCENTER" if observer is None else "TOPOCENTER"
-            return Instants._of(guess, "TDB", place)
+            if observer is not None and hasattr(observer, "clip"):
+                observer_event(guess, reference, observer)  # raises where the date found lies outside its span
+            return Instants._of(guess, "TDB", "GEOCENTER" if observer is None else "TOPOCENTER")
     raise NotConverged(f"a wavefront date still moves by {np.max(np.abs(step)):.3g} s after 6 Newton steps")
