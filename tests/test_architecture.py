@@ -96,7 +96,7 @@ def test_no_import_cycles() -> None:
     done: set[str] = set()
 
     def visit(name: str, trail: tuple[str, ...]) -> None:
-        assert name not in trail, f"import cycle: {' -> '.join((*trail[trail.index(name):], name))}"
+        assert name not in trail, f"import cycle: {' -> '.join((*trail[trail.index(name) :], name))}"
         if name not in done:
             for target in graph[name]:
                 visit(target, (*trail, name))

@@ -52,7 +52,9 @@ def test_ut1_closes(other: str) -> None:
     run()
 
 
-@given(t=dates("UTC"), ra=st.floats(0.0, 360.0), dec=st.floats(-90.0, 90.0), parallax=st.sampled_from([0.0, 1.0, 768.0]))
+@given(
+    t=dates("UTC"), ra=st.floats(0.0, 360.0), dec=st.floats(-90.0, 90.0), parallax=st.sampled_from([0.0, 1.0, 768.0])
+)
 @settings(max_examples=200)
 @pytest.mark.parametrize("end", ["TDB@BARYCENTER", "TCB@BARYCENTER", "TDB@GEOCENTER", "UTC@GEOCENTER"])
 def test_a_wavefront_closes(end: str, t: tscale.Instants, ra: float, dec: float, parallax: float) -> None:

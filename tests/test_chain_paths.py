@@ -133,6 +133,7 @@ def test_past_the_end_of_earth_orientation_is_said() -> None:
         chain(t)
     with pytest.warns(tscale.ExtrapolationWarning):
         notes = chain.notes(t)
+    with pytest.warns(tscale.ExtrapolationWarning):
         sigma = chain.uncertainty_s(t)["Earth orientation, UT1"]
     assert any("past the end of the Earth orientation" in note for note in notes)
     assert any("leap-second table" in note for note in notes)

@@ -63,7 +63,7 @@ def test_tcg_and_tcb_rates_against_rationals() -> None:
 
 
 def test_tdb_is_synchronous_to_definition_at_t0() -> None:
-    # IAU 2006 Resolution B3: at T0 = 1977-01-01T00:00:32.184 TT at the geocentre TCB = TCG = TT and TDB is 65.5 us less.
+    # IAU 2006 B3: at T0 = 1977-01-01T00:00:32.184 TT at the geocentre TCB = TCG = TT and TDB is 65.5 us less.
     t = tscale.Instants.from_iso("1977-01-01T00:00:32.184", scale="TT")
     tdb = tscale.chain("TT", "TDB@GEOCENTER")(t)
     difference = exact.seconds(exact.subtract(t.pair, tdb.pair))
@@ -144,7 +144,8 @@ def test_satellite_navigation_scales() -> None:
 
 def test_leap_second_of_2016_through_the_chain() -> None:
     # IERS Bulletin C 52: 2016-12-31T23:59:60 UTC. Labels go on through it, GPS and TAI tick once a second.
-    t = tscale.Instants.from_iso(["2016-12-31T23:59:59.5", "2016-12-31T23:59:60.5", "2017-01-01T00:00:00.5"], scale="UTC")
+    texts = ["2016-12-31T23:59:59.5", "2016-12-31T23:59:60.5", "2017-01-01T00:00:00.5"]
+    t = tscale.Instants.from_iso(texts, scale="UTC")
     tai = tscale.chain("UTC", "TAI")(t)
     assert tai.to_iso(1).tolist() == ["2017-01-01T00:00:35.5", "2017-01-01T00:00:36.5", "2017-01-01T00:00:37.5"]
     assert tscale.chain("TAI", "UTC")(tai).to_iso(1).tolist() == t.to_iso(1).tolist()

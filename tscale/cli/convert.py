@@ -35,7 +35,7 @@ where the signal of the source is dated, and needs the source.
 
 INPUT is comma-separated text (UTF-8) with a header line. Its columns are copied as they stand and new ones are put
 behind them. Lines that begin with # and blank lines are copied. OUTPUT is renamed into place when all went well, so it
-may be INPUT itself.
+may be INPUT itself. On the standard output rows appear as they are done; the exit status tells whether all were.
 
 Layouts of dates: iso is ISO 8601 with up to 18 decimals; mjd and jd are decimal numbers, read and written digit by
 digit, with a UTC day that ends with a leap second 86401 s long; seconds counts from 2000-01-01T12:00:00 of the scale.
@@ -166,6 +166,9 @@ class _Conversion:
         # The bar appears only when the work takes longer than a second.
         with tqdm(total=size, unit="B", unit_scale=True, delay=1.0, disable=silent, leave=False) as bar:
             for block in self.reader.blocks(_BLOCK_ROWS):
+                if not len(block):  # comments at the end
+                    target.write(block.merged([], self.reader.newline) if self.rows else "")
+                    continue
                 try:
                     columns = self._columns(block)
                 except TscaleError as error:
@@ -208,7 +211,7 @@ class _Conversion:
                 for name, value in walk.terms().items():
                     columns[f"{name} (s)"] = fixed_decimals(value, _TERM_DIGITS)
             add_notes(self.notes, walk.notes())
-        if not self.rows and len(block):
+        if not self.rows:
             self.first = {
                 "first": t[:1],
                 "first_text": block.column[0].strip(),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from datetime import date
 from typing import TYPE_CHECKING, Any, Final
 
 from .options import add_tables, reference_of
@@ -48,6 +49,8 @@ def run(args: argparse.Namespace) -> int:
         return 0
     rows = [_row(fact, full=args.full) for fact in facts]
     print(_aligned([_HEADS, *rows]))
+    for note in _overdue(facts, date.today()):
+        print(f"note: {note}")
     if args.full:
         print()
         for fact in facts:
@@ -57,6 +60,16 @@ def run(args: argparse.Namespace) -> int:
         for name in checked:
             print(f"verified: {name}")
     return 0
+
+
+def _overdue(facts: Sequence[TableFacts], today: date) -> list[str]:
+    """What to say of tables that do not reach today."""
+    return [
+        f"{fact.table}: {fact.name} ended on {fact.end}; load a newer one "
+        "(pip install --upgrade astropy-iers-data brings those of the IERS)"
+        for fact in facts
+        if fact.end is not None and fact.end < today.isoformat()
+    ]
 
 
 def _row(fact: TableFacts, *, full: bool) -> tuple[str, ...]:

@@ -10,11 +10,11 @@ from pathlib import Path
 from typing import Final
 
 from .. import __version__
-from . import convert, data
+from . import convert, data, link
 
 __all__ = ["main"]
 
-COMMANDS: Final = (convert, data)
+COMMANDS: Final = (convert, data, link)
 
 _DONE: Final = 0
 _WRONG: Final = 2  # as argparse does for arguments it refuses

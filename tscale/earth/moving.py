@@ -97,13 +97,16 @@ class Event(NamedTuple):
     v_gcrs_m_s: FloatArray
     bodies: EarthAndSun
 
+    def bcrs_position(self) -> FloatArray:
+        """Barycentric position, m, TDB-compatible."""
+        return self.bodies.earth_m + bcrs_offset(self.r_gcrs_m, self.bodies.earth_v_m_s, self.bodies.potential_m2_s2)
+
     def bcrs_state(self, tt_rate: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Barycentric position (m) and velocity (m/s) by TDB; `tt_rate` is dTT/dTDB at the geocentre."""
-        earth, earth_v, _, _, potential = self.bodies
+        _, earth_v, _, _, potential = self.bodies
         r, v, acceleration = self.r_gcrs_m, self.v_gcrs_m_s, self.bodies.acceleration_m_s2
         tt_rate = tt_rate - self.bodies.topocentric_rate(r, v)
-        offset = bcrs_offset(r, earth_v, potential)
-        return earth + offset, earth_v + bcrs_offset_velocity(r, v, earth_v, acceleration, potential, tt_rate)
+        return self.bcrs_position(), earth_v + bcrs_offset_velocity(r, v, earth_v, acceleration, potential, tt_rate)
 
 
 def topocentric_terms(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray) -> TopocentricTerms:

@@ -47,7 +47,7 @@ class WavefrontTerms(NamedTuple):
     terms_s: dict[str, FloatArray]
     """Each term by name; t_bary = t_obs + their sum."""
     rate: FloatArray
-    """d(t_bary - t_obs)/dt_obs."""
+    """d(t_bary - t_obs)/dt_obs; zeros if it was not asked for."""
 
     def later(self, t: Pair) -> Pair:
         """`t` plus the terms, each added exactly to the pair."""
@@ -57,20 +57,28 @@ class WavefrontTerms(NamedTuple):
 
 
 def observer_state(
-    tdb: Pair, reference: ReferenceData, observer: Observer | None, *, loose: bool = False
+    tdb: Pair,
+    reference: ReferenceData,
+    observer: Observer | None,
+    *,
+    with_velocity: bool = True,
+    loose: bool = False,
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
     """Barycentric place and velocity of the observer (None: the geocentre), and the Sun's state.
 
     Returns
     -------
     x_m, v_m_s, sun_m, sun_v_m_s : (..., 3) arrays
-        TDB-compatible BCRS, m and m/s.
+        TDB-compatible BCRS, m and m/s; `v_m_s` has no meaning without `with_velocity`.
     """
     if observer is None:
         (earth, sun), (velocity, sun_velocity) = reference.ephemeris.states(("earth", "sun"), tdb)
         return earth, velocity, sun, sun_velocity
     event = observer_event(tdb, reference, observer, loose=loose)
-    x, v = event.bcrs_state(1.0 + reference.time_ephemeris.rate(tdb))
+    if with_velocity:
+        x, v = event.bcrs_state(1.0 + reference.time_ephemeris.rate(tdb))
+    else:
+        x = v = event.bcrs_position()
     return x, v, event.bodies.sun_m, event.bodies.sun_v_m_s
 
 
@@ -82,6 +90,7 @@ def wavefront_terms(
     *,
     bodies: tuple[str, ...] = DELAYING_BODIES,
     second_order: bool = False,
+    with_rate: bool = True,
     loose: bool = False,
 ) -> WavefrontTerms:
     """Every term of t_bary - t_obs for a wavefront met by an observer at TDB dates `tdb`.
@@ -100,10 +109,12 @@ def wavefront_terms(
         Bodies whose gravity delays the light.
     second_order : bool
         Add the Sun's delay of second order in GM/c^2 (18 ns at the limb, below 0.1 ns beyond 4 degrees).
+    with_rate : bool
+        Whether the rate is wanted: it costs a fifth of the whole.
     loose : bool
         See `earth.moving.observer_event`; for dates that are still being sought.
     """
-    x, v, sun, sun_velocity = observer_state(tdb, reference, observer, loose=loose)
+    x, v, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=with_rate, loose=loose)
     # The direction is the one at the barycentric date; the first guess of that date is good to 4e-7 s
     # even for the largest proper motion known, and a microsecond moves no direction by 1e-17 rad.
     guess = source.direction(tdb)
@@ -111,10 +122,13 @@ def wavefront_terms(
     place, place_rate = source.motion(at_bary)
     length = np.sqrt(dot(place, place))[..., np.newaxis]
     k = place / length
-    k_rate = (place_rate - k * dot(k, np.broadcast_to(place_rate, k.shape))[..., np.newaxis]) / length
-    along, along_v = dot(k, x), dot(k, v)
+    along = dot(k, x)
+    along_v = dot(k, v) if with_rate else along
     terms: dict[str, FloatArray] = {"Roemer delay": along / C_M_S}
-    rate = along_v / C_M_S + dot(k_rate, x) * ((1.0 + along_v / C_M_S) / C_M_S)
+    rate = np.zeros_like(along)
+    if with_rate:
+        k_rate = (place_rate - k * dot(k, np.broadcast_to(place_rate, k.shape))[..., np.newaxis]) / length
+        rate = along_v / C_M_S + dot(k_rate, x) * ((1.0 + along_v / C_M_S) / C_M_S)
     seen = k
     if source.parallax_mas:
         distance = source.distance_m * length[..., 0]
@@ -123,16 +137,20 @@ def wavefront_terms(
         path = np.sqrt(distance**2 - 2.0 * distance * along + square)
         closer = (square - 2.0 * distance * along) / (path + distance)
         terms["parallax (curvature)"] = (square + along * closer) / ((path + distance) * -C_M_S)
-        rate = rate - (dot(x, v) + along_v * closer) / (path * C_M_S)
+        if with_rate:
+            rate = rate - (dot(x, v) + along_v * closer) / (path * C_M_S)
         seen = (k * distance[..., np.newaxis] - x) / path[..., np.newaxis]
     others = tuple(body for body in bodies if body != "sun")
     places, speeds = reference.ephemeris.states(others, tdb)
     for body in bodies:
         at = None if body == "sun" else others.index(body)
         body_m, body_v = (sun, sun_velocity) if at is None else (places[at], speeds[at])
-        value, change = _delay_of_body(x, v, seen, body_m, body_v, reference.ephemeris.gm_m3_s2(body))
-        terms[f"gravitational delay, {body}"] = value
-        rate = rate + change
+        r, distance, depth = _passage(x, seen, body_m, body_v)
+        factor = 2.0 * reference.ephemeris.gm_m3_s2(body) / C_M_S**3
+        terms[f"gravitational delay, {body}"] = factor * np.log(depth / AU_M)
+        if with_rate:
+            w = v - body_v
+            rate = rate + factor * (dot(r, w) / distance + dot(seen, w)) / depth
     if second_order:
         terms["gravitational delay, sun, second order"] = _second_order(
             x, seen, sun, reference.ephemeris.gm_m3_s2("sun")
@@ -140,25 +158,21 @@ def wavefront_terms(
     return WavefrontTerms(terms, np.asarray(rate))
 
 
-def _delay_of_body(
-    x: FloatArray, v: FloatArray, seen: FloatArray, body_m: FloatArray, body_v: FloatArray, gm: float
-) -> tuple[FloatArray, FloatArray]:
-    """Minus the gravitational delay of one body, and its rate.
+def _passage(
+    x: FloatArray, seen: FloatArray, body_m: FloatArray, body_v: FloatArray
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Vector r from a body to the observer when the light passed it, its length, and r + n.r.
 
     The body is moved back in a straight line by its light time: its acceleration would move it by
     less than 1 km, 0.1 ps at the limb of Jupiter.
     """
     r = x - body_m
     light_s = np.sqrt(dot(r, r)) / C_M_S
-    r = r + body_v * light_s[..., np.newaxis]
+    r += body_v * light_s[..., np.newaxis]
     distance = np.sqrt(dot(r, r))
     # r + n.r = r (1 - cos angle): at the limb of Jupiter cancellation leaves 8 digits, 1e-16 s of 9 ns. The floor
     # only keeps the logarithm finite for a source exactly behind the centre of a body.
-    depth = np.maximum(distance + dot(seen, r), 1e-15 * distance)
-    w = v - body_v
-    change = (dot(r, w) / distance + dot(seen, w)) / depth
-    factor = 2.0 * gm / C_M_S**3
-    return factor * np.log(depth / AU_M), factor * change
+    return r, distance, np.maximum(distance + dot(seen, r), 1e-15 * distance)
 
 
 def _second_order(x: FloatArray, seen: FloatArray, sun: FloatArray, gm: float) -> FloatArray:
@@ -191,7 +205,7 @@ def observer_to_barycenter(
 ) -> Instants:
     """TDB at which a wavefront meets an observer (None: the geocentre) -> TDB at the barycentre."""
     require_scale(t, "TDB")
-    terms = wavefront_terms(t.pair, reference, source, observer, second_order=second_order)
+    terms = wavefront_terms(t.pair, reference, source, observer, second_order=second_order, with_rate=False)
     return Instants._of(terms.later(t.pair), "TDB", "BARYCENTER")
 
 
