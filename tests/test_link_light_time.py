@@ -79,9 +79,8 @@ def test_circular_orbit_seen_from_its_axis(reference: tscale.ReferenceData) -> N
 
 @pytest.mark.parametrize("target", ["mercury", "venus", "mars", "jupiter", "saturn", "neptune", "moon"])
 def test_planets_against_skyfield(target: str, reference: tscale.ReferenceData) -> None:
-    # Skyfield iterates the geometric light time from the same kernel until it moves by less than 1e-12 day (its
-    # documented tolerance), 86 ns, on a TDB kept as one float64 of days: 40 us at most times the speed, so 5 ns more.
-    # Its own remaining error at that tolerance is that times v/c, below 1e-4.
+    # Skyfield iterates the geometric light time from the same kernel until it moves by less than 1e-12 day, 86 ns; what
+    # is left then is v/c of that, 1e-11 s. Rounding of positions of 4.5e12 m adds 5e-12 s on both sides.
     skyfield = pytest.importorskip("skyfield.api", reason="skyfield is part of the test extra")
     timescale = skyfield.load.timescale(builtin=True)
     names = {"mars": "MARS BARYCENTER", "jupiter": "JUPITER BARYCENTER", "saturn": "SATURN BARYCENTER"}
@@ -96,8 +95,10 @@ def test_planets_against_skyfield(target: str, reference: tscale.ReferenceData) 
         kernel.close()
     whole = np.floor(days - 2451545.0)
     t = Instants.from_seconds((whole * 86400).astype(np.int64), (days - 2451545.0 - whole) * 86400.0, scale="TDB")
-    ours = one_way(receive=t, transmitter=target, receiver="earth", reference=reference, bodies=(), occultation="mark")
-    assert np.max(np.abs(ours.light_time_s - light_days * 86400.0)) < 1e-8
+    ours = one_way(
+        receive=t, transmitter=target, receiver="earth", reference=reference, bodies=(), occultation="ignore"
+    )
+    assert np.max(np.abs(ours.light_time_s - light_days * 86400.0)) < 2e-11
 
 
 def test_gauss_path_agrees_with_plain_difference(reference: tscale.ReferenceData) -> None:
@@ -115,7 +116,7 @@ def test_low_orbit_is_smooth_to_femtoseconds(reference: tscale.ReferenceData) ->
     # Over steps of 1 ms the light time of a low orbiter is a parabola to 1e-19 s; what differs from it is rounding.
     # The difference of barycentric positions would show 1e-13 s here.
     t = Instants.from_seconds(770500000, 0.3 + 1e-3 * np.arange(40), scale="TDB")
-    found = one_way(receive=t, transmitter=LOW, receiver=SITE, reference=reference, occultation="mark")
+    found = one_way(receive=t, transmitter=LOW, receiver=SITE, reference=reference, occultation="ignore")
     x = np.arange(40) - 19.5
     value = found.light_time_s
     residual = value - np.polyval(np.polyfit(x, value - value[0], 3), x) - value[0]
@@ -126,7 +127,7 @@ def test_few_iterations_for_a_low_orbiter(reference: tscale.ReferenceData) -> No
     t = Instants.from_seconds(770500000 + np.arange(300) * 20, 0.0, scale="TDB")
     for kind in ("receive", "transmit"):
         found = one_way(
-            **{kind: t}, transmitter=LOW, receiver=SITE, reference=reference, occultation="mark", tolerance_s=1e-15
+            **{kind: t}, transmitter=LOW, receiver=SITE, reference=reference, occultation="ignore", tolerance_s=1e-15
         )
         assert found.iterations <= 5
 
@@ -135,7 +136,7 @@ def test_few_iterations_for_a_low_orbiter(reference: tscale.ReferenceData) -> No
 def test_light_time_equation_holds(ends: tuple[Any, Any], reference: tscale.ReferenceData) -> None:
     # The dates of both events, put back into positions found in another way, give the ledger's own range.
     t = EPOCH.shifted(np.array([0.0, 1.0e6, 5.5e7]))
-    found = one_way(transmit=t, transmitter=ends[0], receiver=ends[1], reference=reference, occultation="mark")
+    found = one_way(transmit=t, transmitter=ends[0], receiver=ends[1], reference=reference, occultation="ignore")
     places = [_position(end, when, reference) for end, when in zip(ends, (found.transmit, found.receive), strict=True)]
     line = places[1] - places[0]
     rho = np.sqrt(np.sum(line**2, axis=-1))
@@ -157,8 +158,8 @@ def _position(end: Any, when: Instants, reference: tscale.ReferenceData) -> Any:
 @given(st.integers(-(10**9), 10**9), st.floats(0.0, 0.999), st.sampled_from(["venus", "moon", "jupiter", "sun"]))
 def test_transmit_and_receive_are_inverse(whole: int, fraction: float, target: str) -> None:
     t = Instants.from_seconds(whole, fraction, scale="TDB")
-    there = one_way(transmit=t, transmitter="earth", receiver=target, occultation="mark")
-    back = one_way(receive=there.receive, transmitter="earth", receiver=target, occultation="mark")
+    there = one_way(transmit=t, transmitter="earth", receiver=target, occultation="ignore")
+    back = one_way(receive=there.receive, transmitter="earth", receiver=target, occultation="ignore")
     # 1 ps: the rounding of positions of 7e11 m, met on both ways.
     assert abs(float(exact.seconds(exact.subtract(back.transmit.pair, t.pair)))) < 1e-12
 
@@ -166,7 +167,7 @@ def test_transmit_and_receive_are_inverse(whole: int, fraction: float, target: s
 def test_uplink_and_downlink_meet(reference: tscale.ReferenceData) -> None:
     t = EPOCH.shifted(np.array([0.0, 3.0e5]))
     forward = two_way(
-        transmit=t, station=SITE, target="mars", turnaround_s=[2.5, 0.0], reference=reference, occultation="mark"
+        transmit=t, station=SITE, target="mars", turnaround_s=[2.5, 0.0], reference=reference, occultation="ignore"
     )
     backward = two_way(
         receive=forward.receive,
@@ -174,7 +175,7 @@ def test_uplink_and_downlink_meet(reference: tscale.ReferenceData) -> None:
         target="mars",
         turnaround_s=[2.5, 0.0],
         reference=reference,
-        occultation="mark",
+        occultation="ignore",
     )
     assert np.max(np.abs(backward.transmit.minus(t.at("TOPOCENTER")))) < 1e-12
     assert np.max(np.abs(backward.bounce.minus(forward.bounce))) < 1e-12
@@ -192,7 +193,7 @@ def test_rates_against_differences(ends: tuple[Any, Any], reference: tscale.Refe
 
     def at(shift: float) -> Any:
         t = EPOCH.shifted(np.array([0.0, 4.0e6]) + shift)
-        return one_way(receive=t, transmitter=ends[0], receiver=ends[1], reference=reference, occultation="mark")
+        return one_way(receive=t, transmitter=ends[0], receiver=ends[1], reference=reference, occultation="ignore")
 
     middle, parts = at(0.0), {k: at(k * step) for k in (-2, -1, 1, 2)}
 
@@ -235,8 +236,8 @@ def test_shapes_and_chunks(reference: tscale.ReferenceData) -> None:
     none = one_way(receive=grid[:0], transmitter="mars", receiver="earth", reference=reference)
     assert none.light_time_s.shape == (0, 4)
     big = EPOCH.shifted(np.arange(9000.0) * 3600.0)
-    chunked = one_way(receive=big, transmitter="venus", receiver="earth", reference=reference, occultation="mark")
-    last = one_way(receive=big[-1], transmitter="venus", receiver="earth", reference=reference, occultation="mark")
+    chunked = one_way(receive=big, transmitter="venus", receiver="earth", reference=reference, occultation="ignore")
+    last = one_way(receive=big[-1], transmitter="venus", receiver="earth", reference=reference, occultation="ignore")
     assert float(chunked.light_time_s[-1]) == pytest.approx(float(last.light_time_s), abs=1e-13)
 
 
@@ -260,7 +261,7 @@ def test_orbiter_about_mars_keeps_its_small_numbers(reference: tscale.ReferenceD
     orbiter = tscale.Trajectory.from_kepler(EPOCH, 7.2e6, 0.1, 63.0, 40.0, 120.0, 10.0, center="mars", name="Lantern")
     ground = tscale.link.SurfaceSite("Ochre Camp", "mars", 137.4, -4.6, -4500.0)
     t = EPOCH.shifted(1e-3 * np.arange(40))
-    found = one_way(receive=t, transmitter=orbiter, receiver=ground, reference=reference, occultation="mark")
+    found = one_way(receive=t, transmitter=orbiter, receiver=ground, reference=reference, occultation="ignore")
     x = np.arange(40) - 19.5
     value = found.light_time_s
     residual = value - np.polyval(np.polyfit(x, value - value[0], 3), x) - value[0]

@@ -52,7 +52,7 @@ def test_annual_amplitude_of_the_roemer_delay(
 
 def test_roemer_delay_against_astropy(reference: tscale.ReferenceData) -> None:
     # astropy's barycentric light travel time from the same kernel. Three things are left out or added there:
-    # * the scale and Lorentz terms of the site vector (0.16 and 0.1 m at most, IERS Conventions 2010 eq. 11.19), 0.6 ns;
+    # * scale and Lorentz terms of the site vector (0.16 and 0.1 m at most, IERS Conventions 2010 eq. 11.19): 0.6 ns;
     # * Earth orientation is interpolated in a straight line: 20 us of UT1, 1 cm, 0.1 ns;
     # * the site vector is turned by the aberration, since the transformation from GCRS to ICRS takes it for a direction
     #   of light: 20.5 arcsec x 6378 km, 2.1 us.
@@ -132,7 +132,7 @@ def grazing(reference: tscale.ReferenceData, t: tscale.exact.Pair, body: str, ra
     across = np.cross(toward, [0.0, 0.0, 1.0])
     across /= np.linalg.norm(across)
     limb = toward / distance + np.tan(radius_m / distance) * across
-    name = f"gravitational delay, {body}"
+    name = f"minus Shapiro delay, {body}"
     at_limb = wavefront_terms(t, reference, source_toward(limb)).terms_s[name]
     opposite = wavefront_terms(t, reference, source_toward(-toward)).terms_s[name]
     return float(opposite - at_limb), distance
@@ -180,7 +180,7 @@ def test_bodies_are_taken_where_the_light_passed_them(reference: tscale.Referenc
     n, r = source.direction(t), earth - place
     expected = 2 * reference.ephemeris.gm_m3_s2("jupiter") / C_M_S**3
     expected *= np.log((np.linalg.norm(r) + n @ r) / AU_M)
-    found = wavefront_terms(t, reference, source).terms_s["gravitational delay, jupiter"]
+    found = wavefront_terms(t, reference, source).terms_s["minus Shapiro delay, jupiter"]
     assert float(found) == pytest.approx(expected, abs=2e-13)
     now = earth - reference.ephemeris.position("jupiter", t)
     unretarded = 2 * reference.ephemeris.gm_m3_s2("jupiter") / C_M_S**3 * np.log((np.linalg.norm(now) + n @ now) / AU_M)
@@ -199,10 +199,18 @@ def test_second_order_at_the_limb(reference: tscale.ReferenceData) -> None:
     terms = wavefront_terms(t, reference, source, second_order=True).terms_s
     m = reference.ephemeris.gm_m3_s2("sun") / C_M_S**2
     d = np.linalg.norm(earth - sun) + source.direction(t) @ (earth - sun)
-    assert float(terms["gravitational delay, sun, second order"]) == pytest.approx(
+    assert float(terms["minus Shapiro delay, sun, second order"]) == pytest.approx(
         2 * m / C_M_S * np.log1p(2 * m / d), rel=0.02
     )
-    assert 10e-9 < float(terms["gravitational delay, sun, second order"]) < 25e-9
+    assert 10e-9 < float(terms["minus Shapiro delay, sun, second order"]) < 25e-9
+
+
+def test_a_line_of_sight_through_the_sun_is_noted(reference: tscale.ReferenceData) -> None:
+    t = tscale.Instants.from_iso(["2024-04-04T00:00:00", "2024-06-04T00:00:00"], scale="TDB", place="GEOCENTER")
+    earth, sun = reference.ephemeris.positions(("earth", "sun"), t[0].pair)
+    chain = tscale.chain("TDB@GEOCENTER", "TDB@BARYCENTER", source=source_toward(sun - earth))
+    assert chain.notes(t) == ("1 of 2 lines of sight pass through the Sun",)
+    assert np.all(np.isfinite(chain.ledger(t).total))
 
 
 def test_proper_motion_is_counted_at_the_barycentre(reference: tscale.ReferenceData) -> None:

@@ -82,7 +82,9 @@ class Chain:
         """Standard uncertainties by source, seconds, in the order of the chain.
 
         Sources: the comparison logs, UT1 and pole of the Earth orientation, TT(BIPM), the time ephemeris.
-        The ephemeris and the direction of a source are taken as given.
+        The ephemeris and the direction of a source are taken as given. So is the mean rate of the time
+        ephemeris, which is uncertain by 2e-17 (IERS Conventions 2010, Table 1.1: 0.6 ns a year from 1977), because
+        all who use one ephemeris share it.
         """
         found: dict[str, FloatArray] = {}
         for step, before in zip(self.steps, self._walk(t, self.steps), strict=False):

@@ -292,9 +292,13 @@ def wavefront_step(
         }
 
     def notes(before: Instants) -> tuple[str, ...]:
-        if observer is None:
-            return ()
-        return orientation_notes(barycentric.tt_from_tdb(before.pair, reference, observer), reference)
+        found: tuple[str, ...] = ()
+        if observer is not None:
+            found = orientation_notes(barycentric.tt_from_tdb(before.pair, reference, observer), reference)
+        hidden = int(np.count_nonzero(wavefront.behind_the_sun(before.pair, reference, source, observer)))
+        if hidden:
+            found += (f"{hidden} of {before.size} lines of sight pass through the Sun",)
+        return found
 
     tdb = Scale.parse("TDB")
     return Step(

@@ -100,7 +100,8 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
     _line(top, dates, *_scaled(total), "round trip" if both else "light time")
     rate = joined(lambda part: part.up.range_rate_m_s if both else part.range_rate_m_s)
     _line(middle, dates, rate / 1e3, "km/s", "range rate, up" if both else "range rate")
-    middle.axhline(0.0, color="0.6", linewidth=0.8, zorder=0)
+    if np.min(rate) <= 0.0 <= np.max(rate):
+        middle.axhline(0.0, color="0.6", linewidth=0.8, zorder=0)
     _delays(bottom, dates, _pulls(parts, joined), "both legs, by body" if both else "by body")
     blocked = joined(lambda part: part.occulted).astype(np.bool_)
     if blocked.any():

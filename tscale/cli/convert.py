@@ -12,7 +12,7 @@ import warnings
 from collections.abc import Iterator, Sequence
 from typing import TYPE_CHECKING, Any, Final, TextIO
 
-from .options import add_observer, add_tables, clocks_of, reference_of, site_of, source_of
+from .options import add_observer, add_tables, clocks_of, observer_of, reference_of, source_of
 
 if TYPE_CHECKING:
     from ..chains import Chain
@@ -47,7 +47,7 @@ examples:
 """
 
 _OPTION_FOR: Final = {
-    "site=": "--site FILE",
+    "site=": "--site FILE (or --orbit FILE)",
     "source=": "--source FILE (or --ra and --dec)",
     "clocks=": "--clock FILE",
     "tt_bipm=": "--tt-bipm FILE",
@@ -74,6 +74,11 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     )
     parser.add_argument("--ledger", action="store_true", help="add a column for every term, in seconds")
     parser.add_argument("--sigma", action="store_true", help="add the standard uncertainty of every result, in seconds")
+    parser.add_argument(
+        "--rate",
+        action="store_true",
+        help="add d(result)/d(reading) - 1: for a signal, a frequency at the start is 1 + rate times that at the end",
+    )
     add_observer(parser)
     text = parser.add_argument_group("text")
     text.add_argument("--column", metavar="NAME", help="column with the dates (default: the first)")
@@ -103,10 +108,21 @@ def run(args: argparse.Namespace) -> int:
         raise InvalidInput(f"each --to is given once; got {', '.join(args.ends)}")
     reference = reference_of(args)
     clocks = clocks_of(args, reference)
-    site, source = site_of(args), source_of(args)
+    site, source = observer_of(args, reference), source_of(args)
     start = args.start if args.start is not None else (clocks[0].scale if clocks else "UTC")
     try:
-        chains = [chain(start, end, site=site, clocks=clocks, source=source, reference=reference) for end in args.ends]
+        chains = [
+            chain(
+                start,
+                end,
+                site=site,
+                clocks=clocks,
+                source=source,
+                reference=reference,
+                second_order=args.second_order,
+            )
+            for end in args.ends
+        ]
     except MissingPiece as error:
         options = [option for word, option in _OPTION_FOR.items() if word in str(error)]
         hint = f" (on the command line: {', '.join(options)})" if options else ""
@@ -207,6 +223,9 @@ class _Conversion:
             if args.sigma:
                 for name, sigma in zip(self._ends(), walk.sigma_s(), strict=True):
                     columns[f"sigma {name} (s)"] = [f"{value:.3e}" for value in sigma.tolist()]
+            if args.rate:
+                for name, chain in zip(self._ends(), self.chains, strict=True):
+                    columns[f"rate {name}"] = [f"{value:.17e}" for value in chain.rate(t).tolist()]
             if args.ledger:
                 for name, value in walk.terms().items():
                     columns[f"{name} (s)"] = fixed_decimals(value, _TERM_DIGITS)

@@ -29,6 +29,8 @@ _BLOCK_ROWS: Final = 8192
 _MOST_ROWS: Final = 10_000_000
 _TERM_DIGITS: Final = 15
 
+_OPTION_FOR: Final = {'occultation="ignore"': "--occultation ignore", "bodies=": "--without BODY"}
+
 _EPILOG: Final = (
     FORMS
     + """
@@ -67,9 +69,16 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     parser.add_argument("--turnaround", metavar="S", type=float, default=0.0, help="TDB seconds spent at the other end")
     parser.add_argument("--no-second-order", action="store_true", help="first-order gravitational delays only")
     parser.add_argument(
+        "--without",
+        metavar="BODY",
+        action="append",
+        default=[],
+        help="a body whose gravity and shadow are left out; repeatable",
+    )
+    parser.add_argument(
         "--occultation",
-        choices=("error", "mark"),
-        help="where a body or the ground is in the way: stop, or mark it (default: stop for one date, not for a table)",
+        choices=("error", "ignore"),
+        help="where a body or the ground is in the way: stop, or only say so (default: stop for one date only)",
     )
     parser.add_argument("--ledger", action="store_true", help="add a column for every term to a table, in seconds")
     parser.add_argument(
@@ -102,10 +111,10 @@ def run(args: argparse.Namespace) -> int:
     if args.until is None and (args.output != "-" or args.plot or args.ledger):
         raise InvalidInput("--output, --plot and --ledger belong to a table: give --until and --step")
     reference = reference_of(args)
-    work = _Work(args, reference, clocks_of(args, reference))
     with warnings.catch_warnings(record=True) as caught:
         warnings.simplefilter("ignore")
         warnings.simplefilter("default", ExtrapolationWarning)
+        work = _Work(args, reference, clocks_of(args, reference))
         if args.until is None:
             print(work.account(work.solve(work.first)))
         else:
@@ -119,9 +128,12 @@ class _Work:
     """One run of the command."""
 
     def __init__(self, args: argparse.Namespace, reference: ReferenceData, clocks: Sequence[ClockLog]) -> None:
+        from ..ephemeris import PLANETARY_BODIES, body_id
         from ..instants import Instants
 
         self.args = args
+        without = {body_id(int(text) if text.isdigit() else text) for text in args.without}
+        self.bodies = [body for body in PLANETARY_BODIES if body not in without]
         self.reference = reference
         self.clocks = clocks
         self.ends = end_of(args.start, reference), end_of(args.end, reference)
@@ -130,6 +142,7 @@ class _Work:
 
     def solve(self, t: Instants) -> Solution:
         """Solve links at dates given."""
+        from ..errors import GeometryError
         from ..link import one_way, two_way
 
         args = self.args
@@ -137,12 +150,18 @@ class _Work:
             self.given: t,
             "reference": self.reference,
             "clocks": self.clocks,
+            "bodies": self.bodies,
             "second_order": not args.no_second_order,
-            "occultation": args.occultation or ("error" if args.until is None else "mark"),
+            "occultation": args.occultation or ("error" if args.until is None else "ignore"),
         }
-        if args.two_way:
-            return two_way(station=self.ends[0], target=self.ends[1], turnaround_s=args.turnaround, **common)
-        return one_way(transmitter=self.ends[0], receiver=self.ends[1], **common)
+        try:
+            if args.two_way:
+                return two_way(station=self.ends[0], target=self.ends[1], turnaround_s=args.turnaround, **common)
+            return one_way(transmitter=self.ends[0], receiver=self.ends[1], **common)
+        except GeometryError as error:
+            hints = [option for word, option in _OPTION_FOR.items() if word in str(error)]
+            error.args = (f"{error} (on the command line: {', '.join(hints)})" if hints else str(error),)
+            raise
 
     def _events(self, solution: Solution) -> dict[str, Instants]:
         """Dates of every event by the head of their column."""

@@ -10,8 +10,9 @@ if TYPE_CHECKING:
     from ..source import Source
     from ..tables.clock_log import ClockLog
     from ..tables.reference import ReferenceData
+    from ..trajectory import Trajectory
 
-__all__ = ["add_observer", "add_tables", "clocks_of", "reference_of", "site_of", "source_of"]
+__all__ = ["add_observer", "add_tables", "clocks_of", "observer_of", "reference_of", "source_of"]
 
 
 def add_tables(parser: argparse.ArgumentParser) -> None:
@@ -29,6 +30,12 @@ def add_observer(parser: argparse.ArgumentParser) -> None:
     """Add the options that say where the clock is, how it was compared, and where the signal comes from."""
     group = parser.add_argument_group("observer, clock and source")
     group.add_argument("--site", metavar="FILE", help="TOML file with a [site] table; needed for TCB and TDB there")
+    group.add_argument(
+        "--orbit",
+        metavar="FILE",
+        help="a moving observatory in place of --site: CCSDS Orbit Ephemeris Message, TOML file with an [orbit] table, "
+        "or KERNEL.bsp:NUMBER",
+    )
     group.add_argument(
         "--clock",
         metavar="FILE",
@@ -49,6 +56,11 @@ def add_observer(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--source", metavar="FILE", help="TOML file with a [source] table; needed for another place")
     group.add_argument("--ra", metavar="DEG", type=float, help="ICRS right ascension of the source, degrees")
     group.add_argument("--dec", metavar="DEG", type=float, help="ICRS declination of the source, degrees")
+    group.add_argument(
+        "--second-order",
+        action="store_true",
+        help="add the second-order gravitational delay of the Sun (18 ns at its limb)",
+    )
 
 
 def reference_of(args: argparse.Namespace) -> ReferenceData:
@@ -63,8 +75,22 @@ def reference_of(args: argparse.Namespace) -> ReferenceData:
     )
 
 
-def site_of(args: argparse.Namespace) -> Site | None:
-    """Read the site, if one is given."""
+def observer_of(args: argparse.Namespace, reference: ReferenceData) -> Site | Trajectory | None:
+    """Read the site or the orbit, if one is given."""
+    from ..errors import InvalidInput
+
+    if args.orbit is not None:
+        from ..trajectory import Trajectory
+        from .link_ends import end_of
+
+        if args.site is not None:
+            raise InvalidInput("give the observer by --site FILE or by --orbit FILE, not by both")
+        orbit = end_of(args.orbit, reference)
+        if not isinstance(orbit, Trajectory):
+            raise InvalidInput(
+                f"--orbit {args.orbit} is not an orbit: give an Orbit Ephemeris Message, [orbit] or KERNEL.bsp:N"
+            )
+        return orbit
     if args.site is None:
         return None
     from ..earth.site import Site

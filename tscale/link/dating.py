@@ -36,7 +36,7 @@ __all__ = ["GEOCENTRIC_REGION_M", "dates_on", "tdb_of"]
 
 GEOCENTRIC_REGION_M: Final = 5e8
 """Farthest distance from the geocentre at which an event is dated on TT and the scales that hang on it: the Moon is
-within it. What the relation leaves out (IAU 2000 B1.5, terms of third order in the distance) is a few ps there."""
+within it. What the relation leaves out (terms of IAU 2000 B1.3 of second order in distance) is 0.01 ps there."""
 
 _EARTH: Final = 399
 

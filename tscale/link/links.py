@@ -3,21 +3,21 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from types import MappingProxyType
 from typing import TYPE_CHECKING, Any, Final, Literal
 
 import numpy as np
 import numpy.typing as npt
 
 from .. import exact
-from ..ephemeris import PLANETARY_BODIES
+from ..body_shape import own_body
+from ..ephemeris import PLANETARY_BODIES, body_id
 from ..errors import InvalidInput, TscaleError
 from ..exact import FloatArray, Pair
 from ..instants import Instants
 from ..tables.reference import ReferenceData
 from .dating import tdb_of
 from .ends import End, Participant, as_end
-from .solution import LinkSolution, TwoWaySolution
+from .solution import LinkSolution, Terms, TwoWaySolution
 from .solve import Options, Solved, moved_mask, solve
 
 if TYPE_CHECKING:
@@ -38,7 +38,7 @@ def one_way(
     clocks: Sequence[ClockLog] = (),
     bodies: Sequence[str | int] = PLANETARY_BODIES,
     second_order: bool = True,
-    occultation: Literal["error", "mark"] = "error",
+    occultation: Literal["error", "ignore"] = "error",
     tolerance_s: float = 1e-12,
     max_iterations: int = 8,
 ) -> LinkSolution:
@@ -59,9 +59,9 @@ def one_way(
         Bodies whose gravity delays the light and that may stand in its way. One whose centre is an end is left out.
     second_order : bool
         Add the Sun's delay of second and third order (10 ns for a line that grazes the Sun).
-    occultation : {"error", "mark"}
+    occultation : {"error", "ignore"}
         What to do where the line passes through a body (mean radius; the Sun's nominal one) or an end on the ground has
-        the other below its horizon: raise, or mark it in the solution, where it is computed as if the way were clear.
+        the other below its horizon: raise, or go on as if the way were clear; `occulted` of the solution tells which.
     tolerance_s : float
         The light time is found when Newton's step falls below this, or below the rounding of the positions (0.5 ps at
         Jupiter, 4 ps at Neptune).
@@ -81,7 +81,7 @@ def one_way(
     OutOfSpan
         Dates beyond the ephemeris, a trajectory or a table (with the mask).
     GeometryError
-        No clear path (with the mask), or both ends at one point.
+        No clear path, both ends at one point, or an end deep inside a body (with the mask).
     NotConverged
         Still moving after `max_iterations` (with the mask).
 
@@ -110,7 +110,7 @@ def two_way(
     clocks: Sequence[ClockLog] = (),
     bodies: Sequence[str | int] = PLANETARY_BODIES,
     second_order: bool = True,
-    occultation: Literal["error", "mark"] = "error",
+    occultation: Literal["error", "ignore"] = "error",
     tolerance_s: float = 1e-12,
     max_iterations: int = 8,
 ) -> TwoWaySolution:
@@ -183,15 +183,18 @@ def _broadcast(known: Pair, turnaround_s: npt.ArrayLike) -> tuple[Pair, FloatArr
 def _options(
     bodies: Sequence[str | int], second_order: bool, occultation: str, tolerance_s: float, max_iterations: int
 ) -> Options:
-    if occultation not in ("error", "mark"):
-        raise InvalidInput(f'occultation must be "error" or "mark", got {occultation!r}')
+    if occultation not in ("error", "ignore"):
+        raise InvalidInput(f'occultation must be "error" or "ignore", got {occultation!r}')
     if isinstance(bodies, str):
         raise InvalidInput(f"bodies is a sequence such as ('sun', 'jupiter'), got the text {bodies!r}")
+    numbers = [own_body(body_id(body)) for body in bodies]
+    if len(set(numbers)) < len(numbers):
+        raise InvalidInput(f"bodies names one body twice: {', '.join(map(str, bodies))}")
     if not (np.isfinite(tolerance_s) and tolerance_s > 0.0):
         raise InvalidInput(f"tolerance_s must be a positive number of seconds, got {tolerance_s!r}")
     if max_iterations < 3:
         raise InvalidInput(f"max_iterations must be 3 or more, got {max_iterations!r}")
-    return Options(tuple(bodies), bool(second_order), occultation == "mark", float(tolerance_s), int(max_iterations))
+    return Options(tuple(bodies), bool(second_order), occultation == "ignore", float(tolerance_s), int(max_iterations))
 
 
 def _solution(
@@ -223,7 +226,7 @@ def _solution(
     return LinkSolution(
         transmit=Instants._of(sent, "TDB", ends[0].place),
         receive=Instants._of(met, "TDB", ends[1].place),
-        ledger=MappingProxyType(terms),
+        ledger=Terms(terms),
         range_m=_joined([p.range_m for p in parts], shape),
         range_rate_m_s=_joined([p.range_rate_m_s for p in parts], shape),
         light_time_rate=_joined([p.light_time_rate for p in parts], shape),

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
@@ -19,7 +19,28 @@ if TYPE_CHECKING:
     from ..tables.clock_log import ClockLog
     from ..tables.reference import ReferenceData
 
-__all__ = ["LinkSolution", "TwoWaySolution"]
+__all__ = ["LinkSolution", "Terms", "TwoWaySolution"]
+
+
+class Terms(Mapping[str, FloatArray]):
+    """Parts of a light time by name, s: read-only, in order, and fit to be sent to another process."""
+
+    def __init__(self, parts: Mapping[str, FloatArray]) -> None:
+        self._parts = dict(parts)
+        for value in self._parts.values():
+            value.flags.writeable = False
+
+    def __getitem__(self, name: str) -> FloatArray:
+        return self._parts[name]
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self._parts)
+
+    def __len__(self) -> int:
+        return len(self._parts)
+
+    def __repr__(self) -> str:
+        return f"<Terms: {'; '.join(self._parts)}>"
 
 
 @dataclass(frozen=True, eq=False)
@@ -43,7 +64,7 @@ class LinkSolution:
         refraction), degrees; None for an end that does not stand on a body.
     occulted : bool array
         Where the line passes through a body, or an end on the ground has the other below its horizon. All False
-        unless `occultation="mark"` was asked for, since it is an error otherwise.
+        unless `occultation="ignore"` was asked for, since it is an error otherwise.
     iterations : int
         Newton steps taken.
     """
@@ -188,7 +209,7 @@ class TwoWaySolution:
         parts = {f"up: {name}": value for name, value in self.up.ledger.items()}
         parts["turnaround"] = self.turnaround_s
         parts.update({f"down: {name}": value for name, value in self.down.ledger.items()})
-        return parts
+        return Terms(parts)
 
     @property
     def occulted(self) -> BoolArray:

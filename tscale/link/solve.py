@@ -36,7 +36,7 @@ class Options:
 
     bodies: tuple[str | int, ...]
     second_order: bool
-    mark: bool
+    ignore_occultation: bool
     tolerance_s: float
     max_iterations: int
 
@@ -265,11 +265,11 @@ def _occulted(
     any_way = np.zeros(pull.total_s.shape, dtype=np.bool_)
     for _, mask in ways:
         any_way = any_way | mask
-    if np.any(any_way) and not options.mark:
+    if np.any(any_way) and not options.ignore_occultation:
         reasons = "; ".join(f"{words} ({int(mask.sum())})" for words, mask in ways if np.any(mask))
         raise GeometryError(
             f"{int(any_way.sum())} of {any_way.size} links from {transmitter.name} to {receiver.name} have no clear "
-            f'path: {reasons}. Leave them out (see the mask), or give occultation="mark" to get them marked',
+            f'path: {reasons}. Leave them out (see the mask), or give occultation="ignore" to have them marked only',
             mask=np.asarray(any_way),
         )
     return np.asarray(any_way)

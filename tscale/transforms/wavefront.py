@@ -24,18 +24,26 @@ from typing import Final, NamedTuple
 import numpy as np
 
 from .. import exact
-from ..constants import AU_M, C_M_S
+from ..constants import AU_M, C_M_S, SUN_RADIUS_M
 from ..earth.frames import dot
 from ..earth.moving import observer_event
 from ..earth.observer import Observer
 from ..errors import NotConverged
-from ..exact import FloatArray, Pair
+from ..exact import BoolArray, FloatArray, Pair
 from ..instants import Instants
 from ..source import Source
 from ..tables.reference import ReferenceData
 from .terrestrial import require_scale
 
-__all__ = ["DELAYING_BODIES", "WavefrontTerms", "barycenter_to_observer", "observer_to_barycenter", "wavefront_terms"]
+__all__ = [
+    "DELAYING_BODIES",
+    "WavefrontTerms",
+    "barycenter_to_observer",
+    "behind_the_sun",
+    "observer_state",
+    "observer_to_barycenter",
+    "wavefront_terms",
+]
 
 DELAYING_BODIES: Final = ("sun", "mercury", "venus", "mars", "jupiter", "saturn", "uranus", "neptune", "moon")
 """Bodies whose gravitational delay is taken into account."""
@@ -147,12 +155,12 @@ def wavefront_terms(
         body_m, body_v = (sun, sun_velocity) if at is None else (places[at], speeds[at])
         r, distance, depth = _passage(x, seen, body_m, body_v)
         factor = 2.0 * reference.ephemeris.gm_m3_s2(body) / C_M_S**3
-        terms[f"gravitational delay, {body}"] = factor * np.log(depth / AU_M)
+        terms[f"minus Shapiro delay, {body}"] = factor * np.log(depth / AU_M)
         if with_rate:
             w = v - body_v
             rate = rate + factor * (dot(r, w) / distance + dot(seen, w)) / depth
     if second_order:
-        terms["gravitational delay, sun, second order"] = _second_order(
+        terms["minus Shapiro delay, sun, second order"] = _second_order(
             x, seen, sun, reference.ephemeris.gm_m3_s2("sun")
         )
     return WavefrontTerms(terms, np.asarray(rate))
@@ -193,6 +201,15 @@ def _second_order(x: FloatArray, seen: FloatArray, sun: FloatArray, gm: float) -
     opening = np.where(cosine > 0.0, 1.0 + cosine, sine**2 / np.where(cosine > 0.0, 1.0, 1.0 - cosine))
     m = gm / C_M_S**2
     return np.asarray(-(m * m / (C_M_S * distance)) * (3.75 * ratio - 4.0 / opening))
+
+
+def behind_the_sun(tdb: Pair, reference: ReferenceData, source: Source, observer: Observer | None = None) -> BoolArray:
+    """Whether the line of sight passes through the Sun (nominal radius), where no light would arrive."""
+    x, _, sun, _ = observer_state(tdb, reference, observer, with_velocity=False)
+    r = x - sun
+    toward = source.direction(tdb)
+    along = dot(toward, r)
+    return np.asarray((along < 0.0) & (dot(r, r) - along * along < SUN_RADIUS_M**2))
 
 
 def observer_to_barycenter(
