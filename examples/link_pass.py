@@ -56,7 +56,7 @@ def main() -> None:
         target=orbiter(),
         turnaround_s=TURNAROUND_S,
         clocks=logs,
-        occultation="mark",  # the ground or Mars may be in the way of some packets
+        occultation="ignore",  # the ground or Mars may be in the way of some packets
     )
     columns = {
         "sent, CLOCK(maser)": readings.to_iso(9),
