@@ -1,4 +1,4 @@
-"""ERFA's published validation vectors, met by our own functions, and by the ERFA functions we stand on or check against."""
+"""ERFA's published validation vectors, met by our functions and by the ERFA functions that we stand on."""
 
 from __future__ import annotations
 

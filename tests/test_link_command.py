@@ -72,7 +72,7 @@ def test_one_date(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     found = tscale.link.one_way(transmit=t, transmitter=site, receiver="mars")
     assert str(found.receive.to_iso(12)) in out
     assert f"{float(found.light_time_s):.15f}" in out
-    assert "gravitational delay, sun, second order" in out
+    assert "Shapiro delay, sun, second order" in out
     assert "elevation at transmit" in out
 
 
@@ -85,7 +85,7 @@ def test_table_to_a_file_with_every_term(folder: Path, capsys: pytest.CaptureFix
     assert len(rows) == 21
     assert rows[1]["receive (UTC)"] == "2024-05-05T00:30:00.000000000000"
     assert {row["path"] for row in rows} == {"clear", "blocked"}
-    terms = [name for name in rows[0] if name.startswith(("geometric", "gravitational"))]
+    terms = [name for name in rows[0] if name.startswith(("geometric", "Shapiro"))]
     for row in rows:
         total = sum(float(row[name]) for name in terms)
         # Fifteen decimals of a double of 1000 s.

@@ -91,8 +91,8 @@ def test_earth_and_moon_delay_a_laser_to_the_moon(reference: tscale.ReferenceDat
     found = one_way(transmit=t, transmitter=site, receiver=near_side, reference=reference, occultation="ignore")
     up = ~found.occulted
     assert 10 < up.sum() < 40
-    earth = found.ledger["gravitational delay, earth"][up]
-    moon = found.ledger["gravitational delay, moon"][up]
+    earth = found.ledger["Shapiro delay, earth"][up]
+    moon = found.ledger["Shapiro delay, moon"][up]
     assert np.all((earth > 116e-12) & (earth < 150e-12))
     assert np.all((moon > 0.5e-12) & (moon < 3e-12))
 
@@ -169,7 +169,7 @@ def test_all_orders_against_the_exact_ray(p_m: float, far_au: float) -> None:
     # Rounding of distances of 4.5e12 m, and the fourth order, (4 m L / b^2) of the third: 0.2 ps at the limb.
     tolerance_s = 4 * np.spacing(far_au * AU_M + AU_M) / C_M_S + 0.3e-12
     assert float(found.total_s) == pytest.approx(beyond_s, abs=tolerance_s)
-    first = found.terms_s["gravitational delay, sun"]
+    first = found.terms_s["Shapiro delay, sun"]
     if p_m < 1.1 * SUN_RADIUS_M:
         # Without the second order the delay is wrong by 4 to 18 ns each way ("about 10 ns" round trip to inner
         # planets: Richter and Matzner 1983, Phys. Rev. D 28, 3007).
@@ -179,7 +179,7 @@ def test_all_orders_against_the_exact_ray(p_m: float, far_au: float) -> None:
 def test_third_order_of_a_far_source_at_the_limb() -> None:
     # "Enhanced" third order of about 31 ps for 1 au and 50 au (Linet and Teyssandier 2013, from memory).
     found = pull(*limb(AU_M, 50 * AU_M))
-    assert float(found.terms_s["gravitational delay, sun, third order"]) == pytest.approx(31e-12, abs=1.5e-12)
+    assert float(found.terms_s["Shapiro delay, sun, third order"]) == pytest.approx(31e-12, abs=1.5e-12)
 
 
 def test_moving_body_is_the_static_one_seen_from_another_frame() -> None:
@@ -248,13 +248,13 @@ def test_mars_behind_the_sun_is_an_error_with_its_mask(reference: tscale.Referen
     clear = one_way(receive=t[~mask], transmitter="mars", receiver="earth", reference=reference)
     assert not clear.occulted.any()
     # One way at the limb: 123.6 us at mean distances (see above).
-    assert np.max(clear.ledger["gravitational delay, sun"]) == pytest.approx(122.5e-6, abs=2e-6)
+    assert np.max(clear.ledger["Shapiro delay, sun"]) == pytest.approx(122.5e-6, abs=2e-6)
 
 
 def test_two_way_to_mars_reaches_about_250_us(reference: tscale.ReferenceData) -> None:
     t = conjunction()
     found = two_way(transmit=t, station="earth", target="mars", reference=reference, occultation="ignore")
-    both = found.up.ledger["gravitational delay, sun"] + found.down.ledger["gravitational delay, sun"]
+    both = found.up.ledger["Shapiro delay, sun"] + found.down.ledger["Shapiro delay, sun"]
     assert np.max(both[~found.occulted]) == pytest.approx(245e-6, abs=5e-6)
 
 
@@ -302,6 +302,6 @@ def test_a_body_does_not_delay_its_own_light(reference: tscale.ReferenceData) ->
     t = Instants.from_iso("2027-03-01T00:00:00", scale="TDB")
     found = one_way(transmit=t, transmitter="sun", receiver="jupiter", reference=reference)
     assert not any("sun" in name or "jupiter" in name for name in found.ledger)
-    assert "gravitational delay, earth" in found.ledger
+    assert "Shapiro delay, earth" in found.ledger
     middle = one_way(transmit=t, transmitter="earth-moon barycenter", receiver="jupiter", reference=reference)
-    assert "gravitational delay, earth" not in middle.ledger
+    assert "Shapiro delay, earth" not in middle.ledger

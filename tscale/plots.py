@@ -24,7 +24,7 @@ if TYPE_CHECKING:
 __all__ = ["check_picture", "link_figure", "save_link_picture"]
 
 _KINDS: Final = (".png", ".pdf", ".svg")
-_PULL: Final = "gravitational delay, "
+_PULL: Final = "Shapiro delay, "
 _SHOWN_FROM_S: Final = 1e-14  # a line that never rises above this tells nothing
 # After Okabe and Ito, whose colours are told apart with any colour vision; one for each body.
 _COLOURS: Final = {

@@ -97,16 +97,25 @@ class Event(NamedTuple):
     v_gcrs_m_s: FloatArray
     bodies: EarthAndSun
 
+    def offset(self) -> FloatArray:
+        """Barycentric vector from the geocentre, m, TDB-compatible."""
+        return bcrs_offset(self.r_gcrs_m, self.bodies.earth_v_m_s, self.bodies.potential_m2_s2)
+
+    def offset_rate(self, tt_rate: FloatArray) -> FloatArray:
+        """Derivative of `offset` by TDB, m/s; `tt_rate` is dTT/dTDB at the geocentre."""
+        bodies, r, v = self.bodies, self.r_gcrs_m, self.v_gcrs_m_s
+        own_rate = tt_rate - bodies.topocentric_rate(r, v)
+        return bcrs_offset_velocity(
+            r, v, bodies.earth_v_m_s, bodies.acceleration_m_s2, bodies.potential_m2_s2, own_rate
+        )
+
     def bcrs_position(self) -> FloatArray:
         """Barycentric position, m, TDB-compatible."""
-        return self.bodies.earth_m + bcrs_offset(self.r_gcrs_m, self.bodies.earth_v_m_s, self.bodies.potential_m2_s2)
+        return self.bodies.earth_m + self.offset()
 
     def bcrs_state(self, tt_rate: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Barycentric position (m) and velocity (m/s) by TDB; `tt_rate` is dTT/dTDB at the geocentre."""
-        _, earth_v, _, _, potential = self.bodies
-        r, v, acceleration = self.r_gcrs_m, self.v_gcrs_m_s, self.bodies.acceleration_m_s2
-        tt_rate = tt_rate - self.bodies.topocentric_rate(r, v)
-        return self.bcrs_position(), earth_v + bcrs_offset_velocity(r, v, earth_v, acceleration, potential, tt_rate)
+        """Barycentric position (m) and velocity (m/s) by TDB; `tt_rate` as for `offset_rate`."""
+        return self.bcrs_position(), self.bodies.earth_v_m_s + self.offset_rate(tt_rate)
 
 
 def topocentric_terms(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray) -> TopocentricTerms:

@@ -122,7 +122,7 @@ def gravity(
         around = r1 + r2
         factor = (2.0 * gm / C_M_S**3) * lens.factor
         name = body_name(number).split(" (")[0]
-        terms[f"gravitational delay, {name}"] = factor * np.log((around + rho) ** 2 / (2.0 * q))
+        terms[f"Shapiro delay, {name}"] = factor * np.log((around + rho) ** 2 / (2.0 * q))
         # Derivatives of rho and r1 + r2 by the date of either end.
         rho_1, rho_2 = -dot(line, lens.w1) / rho, dot(line, lens.w2) / rho
         around_1, around_2 = dot(lens.r1, lens.w1) / r1, dot(lens.r2, lens.w2) / r2
@@ -140,8 +140,8 @@ def gravity(
             ratio = np.where(psi > 1e-8, psi * r1 * r2 / np.where(psi > 1e-8, np.sqrt(square), 1.0), 1.0)
             second = (m * m / C_M_S) * rho * (3.75 * ratio / (r1 * r2) - 4.0 / q)
             third = (2.0 * m**3 / C_M_S) * (around + rho) ** 2 / q**2
-            terms["gravitational delay, sun, second order"] = np.where(outside, second, 0.0)
-            terms["gravitational delay, sun, third order"] = np.where(outside, third, 0.0)
+            terms["Shapiro delay, sun, second order"] = np.where(outside, second, 0.0)
+            terms["Shapiro delay, sun, third order"] = np.where(outside, third, 0.0)
             # The rate is that of the bending, all but 1% of the whole; what is left out is below 1e-14.
             bend = np.where(outside, -4.0 * m * m / C_M_S, 0.0)
             q_1, q_2 = around * around_1 - rho * rho_1, around * around_2 - rho * rho_2

@@ -14,8 +14,8 @@ import numpy as np
 
 from .. import exact
 from ..constants import C_M_S
-from ..earth.frames import bcrs_offset, bcrs_offset_velocity, dot
-from ..earth.moving import tt_from_tdb_at_geocentre
+from ..earth.frames import dot
+from ..earth.moving import observer_event
 from ..earth.observer import Observer
 from ..earth.rotation import gcrs_from_itrs
 from ..earth.site import Site
@@ -24,7 +24,6 @@ from ..errors import InvalidInput
 from ..exact import FloatArray, Pair
 from ..surface import SurfaceSite, contracted
 from ..trajectory import Trajectory
-from ..transforms.barycentric import topocentric_rate, topocentric_terms
 
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
@@ -139,19 +138,8 @@ class ObserverEnd(End):
         return _span_of(self.observer)
 
     def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
-        ephemeris = reference.ephemeris
-        earth, velocity = ephemeris.state("earth", tdb)
-        to_sun = ephemeris.position("sun", tdb) - earth
-        distance = np.sqrt(dot(to_sun, to_sun))
-        potential = np.asarray(ephemeris.gm_m3_s2("sun") / distance)
-        acceleration = to_sun * (potential / distance**2)[..., np.newaxis]
-        table = reference.time_ephemeris
-        # TT of the event without the observer's terms (2 us on the ground), whose effect on r is then linear.
-        tt = exact.add_seconds(tdb, table.tt_minus_tdb_s(tdb))
-        r, v = self.observer.gcrs(tt, reference)
-        r = r - v * topocentric_terms(ephemeris, tdb, r).total_s[..., np.newaxis]
-        rate = 1.0 + table.rate(tdb) - topocentric_rate(ephemeris, tdb, r, v)
-        return bcrs_offset(r, velocity, potential), bcrs_offset_velocity(r, v, velocity, acceleration, potential, rate)
+        event = observer_event(tdb, reference, self.observer)
+        return event.offset(), event.offset_rate(1.0 + reference.time_ephemeris.rate(tdb))
 
     def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
         if not isinstance(self.observer, Site):
@@ -192,10 +180,7 @@ class MovingEnd(End):
 
     def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         if self.anchor != 0 and isinstance(self.moving, Trajectory):
-            orbit = self.moving
-            own = tdb if orbit.scale == "TDB" else tt_from_tdb_at_geocentre(tdb, reference)
-            # The vector from the trajectory's own centre, before the centre's place is added and rounds it.
-            return orbit._assemble(own, lambda piece, index, r, v: (r, v))
+            return self.moving.state_from_center(tdb, reference)
         position, velocity = self.moving.state_bcrs(tdb, reference)
         return np.asarray(position, dtype=np.float64), np.asarray(velocity, dtype=np.float64)
 

@@ -225,8 +225,17 @@ class Trajectory:
             center_r, center_v = reference.ephemeris.state(piece.center, at)
             return center_r + r, center_v + v
 
-        own = tdb if self.scale == "TDB" else tt_from_tdb_at_geocentre(tdb, reference)
-        return self._assemble(own, from_barycentre)
+        return self._assemble(self._own_count(tdb, reference), from_barycentre)
+
+    def state_from_center(self, tdb: Pair, reference: ReferenceData) -> _State:
+        """Position (m) and velocity (m/s) from the centre of each piece, not yet rounded by the centre's own place.
+
+        For trajectories that are not geocentric; axes of the ICRF, TDB-compatible, at TDB counts of any shape.
+        """
+        return self._assemble(self._own_count(broadcast_pair(tdb), reference), lambda piece, index, r, v: (r, v))
+
+    def _own_count(self, tdb: Pair, reference: ReferenceData) -> Pair:
+        return tdb if self.scale == "TDB" else tt_from_tdb_at_geocentre(tdb, reference)
 
     def gcrs(self, tt: Pair, reference: ReferenceData) -> _State:
         """Geocentric position (m) and velocity (m/s) on the GCRS axes, TT-compatible, at TT counts of any shape.

@@ -8,9 +8,10 @@ the time at which the wavefront would pass the barycentre if no mass bent or slo
 part is split into the Roemer delay n.x/c (infinitely far source) and the curvature (parallax) term.
 The gravitational delay of each body, at the place it had when the light passed it, is
 
-    -(2GM/c^3) ln((r + n.r) / au),  r from the body to the observer
+    -(2GM/c^3) (1 + n.v/c) ln((r + n.r) / au),  r from the body to the observer, v the body's velocity
 
-(the limit of IERS Conventions 2010 eq. 11.17 for a far source). Its constant is a convention: a delay
+(the limit of IERS Conventions 2010 eq. 11.17 for a far source; the factor from Kopeikin and Schaefer 1999, Phys.
+Rev. D 60, 124002). Its constant is a convention: a delay
 is counted from light that arrives at 90 degrees from a body 1 au away.
 
 Left out: the delay within other stars, the Galaxy's gravity and acceleration, radial motion of the
@@ -116,7 +117,8 @@ def wavefront_terms(
     bodies : tuple of str
         Bodies whose gravity delays the light.
     second_order : bool
-        Add the Sun's delay of second order in GM/c^2 (18 ns at the limb, below 0.1 ns beyond 4 degrees).
+        Add the Sun's delays of second and third order in GM/c^2 (18 ns and 30 ps at the limb, below 0.1 ns beyond 4
+        degrees).
     with_rate : bool
         Whether the rate is wanted: it costs a fifth of the whole.
     loose : bool
@@ -154,15 +156,16 @@ def wavefront_terms(
         at = None if body == "sun" else others.index(body)
         body_m, body_v = (sun, sun_velocity) if at is None else (places[at], speeds[at])
         r, distance, depth = _passage(x, seen, body_m, body_v)
-        factor = 2.0 * reference.ephemeris.gm_m3_s2(body) / C_M_S**3
+        # In the frame of the moving body: light against its motion is held up longer (8 ps at the limb of Jupiter).
+        factor = (2.0 * reference.ephemeris.gm_m3_s2(body) / C_M_S**3) * (1.0 + dot(seen, body_v) / C_M_S)
         terms[f"minus Shapiro delay, {body}"] = factor * np.log(depth / AU_M)
         if with_rate:
             w = v - body_v
             rate = rate + factor * (dot(r, w) / distance + dot(seen, w)) / depth
     if second_order:
-        terms["minus Shapiro delay, sun, second order"] = _second_order(
-            x, seen, sun, reference.ephemeris.gm_m3_s2("sun")
-        )
+        second, third = _higher_orders(x, seen, sun, reference.ephemeris.gm_m3_s2("sun"))
+        terms["minus Shapiro delay, sun, second order"] = second
+        terms["minus Shapiro delay, sun, third order"] = third
     return WavefrontTerms(terms, np.asarray(rate))
 
 
@@ -183,24 +186,29 @@ def _passage(
     return r, distance, np.maximum(distance + dot(seen, r), 1e-15 * distance)
 
 
-def _second_order(x: FloatArray, seen: FloatArray, sun: FloatArray, gm: float) -> FloatArray:
-    """Minus the Sun's delay of second order, for a far source.
+def _higher_orders(x: FloatArray, seen: FloatArray, sun: FloatArray, gm: float) -> tuple[FloatArray, FloatArray]:
+    """Minus the Sun's delays of second order and the leading part of the third, for a far source.
 
-    (m^2/(c r)) [15/4 psi/sin(psi) - 4/(1 + cos psi)], m = GM/c^2, psi between the Sun-observer and the
-    source direction: the far-source limit of Le Poncin-Lafitte, Linet and Teyssandier 2004, Class. Quantum
-    Grav. 21, 4463 (from memory); its second part is the bending term of IERS Conventions 2010, eq. 11.14.
+    With m = GM/c^2 and psi between the Sun-observer and the source direction: (m^2/(c r)) [15/4 psi/sin(psi) -
+    4/(1 + cos psi)] (far-source limit of Le Poncin-Lafitte, Linet and Teyssandier 2004, Class. Quantum Grav. 21,
+    4463, from memory; its second part is the bending of IERS Conventions 2010, eq. 11.14), and 8 m^3/(c (r + n.r)^2)
+    (as in `link.delay`). Both lose their meaning within the Sun and are zero there.
     """
     r = x - sun
     distance = np.sqrt(dot(r, r))
     cosine = np.clip(dot(seen, r) / distance, -1.0, 1.0)
     cross = np.cross(seen, r) / distance[..., np.newaxis]
     sine = np.sqrt(dot(cross, cross))
+    outside = (cosine > 0.0) | (sine * distance > SUN_RADIUS_M)
     psi = np.arctan2(sine, cosine)
-    ratio = np.where(sine > 1e-8, psi / np.where(sine > 1e-8, sine, 1.0), 1.0)
+    safe = np.where(sine > 1e-8, sine, 1.0)
+    ratio = np.where(sine > 1e-8, psi / safe, 1.0)
     # 1 + cos = sin^2 / (1 - cos), stable where the Sun is in front of the source.
-    opening = np.where(cosine > 0.0, 1.0 + cosine, sine**2 / np.where(cosine > 0.0, 1.0, 1.0 - cosine))
+    opening = np.where(cosine > 0.0, 1.0 + cosine, safe**2 / np.where(cosine > 0.0, 1.0, 1.0 - cosine))
     m = gm / C_M_S**2
-    return np.asarray(-(m * m / (C_M_S * distance)) * (3.75 * ratio - 4.0 / opening))
+    second = -(m * m / (C_M_S * distance)) * (3.75 * ratio - 4.0 / opening)
+    third = (-8.0 * m**3 / C_M_S) / (distance * opening) ** 2
+    return np.where(outside, second, 0.0), np.where(outside, third, 0.0)
 
 
 def behind_the_sun(tdb: Pair, reference: ReferenceData, source: Source, observer: Observer | None = None) -> BoolArray:
