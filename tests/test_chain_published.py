@@ -109,7 +109,7 @@ def test_topocentric_terms_against_the_analytic_series() -> None:
 def test_topocentric_terms_against_astropy_site_vectors() -> None:
     # v_E.r/c^2 evaluated from astropy's GCRS vector of the site and ERFA's analytic Earth velocity (5 mm/s at most off,
     # hence 0.4 ps); the rest is the second-order term and rounding. 1 ps.
-    coordinates = pytest.importorskip("astropy.coordinates")
+    from astropy import coordinates
     from astropy import units as u
     from astropy.time import Time
     from astropy.utils import iers

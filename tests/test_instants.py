@@ -71,6 +71,7 @@ def test_eighteen_decimals() -> None:
     assert t.to_iso(18) == "2031-03-01T04:05:06.000000000000000123"
 
 
+@pytest.mark.filterwarnings("ignore::tscale.errors.ExtrapolationWarning")
 def test_the_pinned_ways_in_and_out() -> None:
     with pytest.warns(tscale.ExtrapolationWarning, match="leap second"):
         t = tscale.Instants.from_iso(["2031-03-01T04:05:06.123456789012"], scale="UTC")

@@ -1,4 +1,4 @@
-"""Speed, as ratios within one run: `python -m pytest tests/benchmarks --benchmark-only -s`.
+"""Speed, as ratios within one run: `python -m pytest tests/benchmarks -s`.
 
 Ordinary test runs skip this folder's timings. Each benchmark times a general library beside ours, in turns and on the
 same dates, and prints and checks the ratio of the medians.
@@ -43,7 +43,7 @@ def dates() -> tscale.Instants:
 @pytest.fixture(scope="module")
 def general(dates: tscale.Instants) -> Callable[[], Any]:
     """The general astronomy library's Time of the same dates, made anew each time: it caches conversions."""
-    coordinates = pytest.importorskip("astropy.coordinates")
+    from astropy import coordinates
     from astropy import units as u
     from astropy.time import Time
     from astropy.utils import iers
