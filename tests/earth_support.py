@@ -7,6 +7,8 @@ from types import SimpleNamespace
 import erfa
 import numpy as np
 
+from tscale.tables import EOPMotion
+
 ARCSEC = np.pi / 648000.0
 
 
@@ -22,9 +24,10 @@ class HeldOrientation:
             "dy_rad": dy_rad,
         }
 
-    def at(self, tai):
+    def motion(self, tai):
         shape = np.shape(tai[0] + tai[1])
-        return SimpleNamespace(**{name: np.full(shape, value) for name, value in self.values.items()})
+        values = [np.full(shape, value) for value in self.values.values()]
+        return EOPMotion(*values, *np.zeros((5, *shape)))
 
 
 def held(**values):

@@ -94,7 +94,7 @@ def orientation_of_pvtob(x_rad, y_rad, s_prime_rad, angle_rad):
     angle = np.float64(angle_rad + s_prime_rad)
     # pvtob turns at the rate of the Earth rotation angle, 1.00273781191135448 turns a day.
     rate = np.float64(2 * np.pi * 1.00273781191135448 / 86400)
-    return Orientation(zero, zero, zero, zero, angle, rate, np.float64(x_rad), np.float64(y_rad))
+    return Orientation(zero, zero, zero, zero, angle, rate, np.float64(x_rad), np.float64(y_rad), zero, zero)
 
 
 def test_pvtob_vector():

@@ -65,7 +65,7 @@ class Chain:
         return Ledger(lines, t.shape, notes)
 
     def rate(self, t: Instants) -> FloatArray:
-        """d(out)/d(in) - 1 of the counts at instants of the start node, by derivative of every step.
+        """d(out)/d(in) - 1 of the counts at instants of the start node, by the derivative of every step.
 
         For a wavefront this is the Doppler factor less one: a frequency f at the start is f / (1 + rate)
         at the end. Good to about 1e-17 for scales at one place, 1e-15 with a wavefront.

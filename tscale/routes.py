@@ -34,20 +34,23 @@ class Supplies:
 
 
 def shortened(steps: Sequence[Step], supplies: Supplies) -> list[Step]:
-    """The same path for mapping alone: TT, TCG, TCB, TDB at one place become one step, which says the same
+    """The same path for mapping alone: TT, TCG, TCB (and TDB) at one place become one step, which says the same
     with fewer roundings.
     """
-    onward, found = ("TT", "TCG", "TCB", "TDB"), list(steps)
-    for scales in (onward, onward[::-1]):
-        for i in range(len(found) - 2):
-            window = found[i : i + 3]
-            nodes = (window[0].start, *(step.end for step in window))
-            place = nodes[0].place
-            if place is None or tuple(node.scale.name for node in nodes) != scales:
-                continue
-            step = edges.tt_tdb_step(place, supplies.site if place == "TOPOCENTER" else None, supplies.reference)
-            found[i : i + 3] = [step if scales == onward else step.reversed()]
-            break
+    found = list(steps)
+    for onward in (("TT", "TCG", "TCB", "TDB"), ("TT", "TCG", "TCB")):
+        for scales in (onward, onward[::-1]):
+            width = len(scales) - 1
+            for i in range(len(found) - width + 1):
+                window = found[i : i + width]
+                nodes = (window[0].start, *(step.end for step in window))
+                place = nodes[0].place
+                if place is None or tuple(node.scale.name for node in nodes) != scales:
+                    continue
+                observer = supplies.site if place == "TOPOCENTER" else None
+                step = edges.tt_barycentric_step(onward[-1], place, observer, supplies.reference)
+                found[i : i + width] = [step if scales == onward else step.reversed()]
+                break
     return found
 
 

@@ -62,11 +62,11 @@ class Source:
             )
         if abs(self.dec_deg) > 90.0:
             raise InvalidInput(f"source {self.name!r}: dec_deg must lie in [-90, 90], got {self.dec_deg}")
-        if not 0.0 <= self.parallax_mas <= 3.6e6:
+        if not 0.0 <= self.parallax_mas <= 1e4:
             raise InvalidInput(
-                f"source {self.name!r}: parallax_mas must lie in [0, 3.6e6], got {self.parallax_mas}; "
-                "0 is infinitely far, "
-                "a negative measured parallax carries no distance: use 0"
+                f"source {self.name!r}: parallax_mas must lie in [0, 10000], got {self.parallax_mas}; 0 is "
+                "infinitely far, a negative measured parallax carries no distance: use 0; "
+                "nearer things are ends of a link"
             )
         if math.hypot(self.pm_ra_cosdec_mas_yr, self.pm_dec_mas_yr) > 1e6:
             raise InvalidInput(f"source {self.name!r}: proper motion beyond 1000 arcsec/yr; the unit is mas/yr")

@@ -2,7 +2,8 @@
 
 An event has one TT and one TDB, which differ by the topocentric term V.r/c^2 from the pair at the geocentre (2 us on
 the ground, in which a low satellite moves 2 cm). Both functions find the other date first and then change
-the vectors with the scale and Lorentz terms of `frames`; each is the other's inverse to 1e-9 m near the Earth.
+the vectors with the terms of order c^-2 of `frames`; each is the other's inverse to the rounding of a barycentric
+position, 1.5e-5 m.
 """
 
 from __future__ import annotations
@@ -13,10 +14,10 @@ from typing import TYPE_CHECKING, Final, NamedTuple
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S, L_C, L_G
-from ..ephemeris import Ephemeris
+from ..constants import C_M_S, L_G
+from ..ephemeris import PLANETARY_BODIES, Ephemeris
 from ..exact import FloatArray, Pair
-from .frames import bcrs_offset, bcrs_offset_velocity, dot
+from .frames import bcrs_offset, bcrs_offset_velocity, dot, gcrs_offset, gcrs_offset_velocity
 from .observer import Observer, nearest_inside, require_inside
 
 if TYPE_CHECKING:
@@ -99,7 +100,8 @@ class Event(NamedTuple):
 
     def offset(self) -> FloatArray:
         """Barycentric vector from the geocentre, m, TDB-compatible."""
-        return bcrs_offset(self.r_gcrs_m, self.bodies.earth_v_m_s, self.bodies.potential_m2_s2)
+        bodies = self.bodies
+        return bcrs_offset(self.r_gcrs_m, bodies.earth_v_m_s, bodies.acceleration_m_s2, bodies.potential_m2_s2)
 
     def offset_rate(self, tt_rate: FloatArray) -> FloatArray:
         """Derivative of `offset` by TDB, m/s; `tt_rate` is dTT/dTDB at the geocentre."""
@@ -132,21 +134,31 @@ def topocentric_terms(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray) -> 
 
     Notes
     -----
-    Of the external potential the Sun's alone is taken: the planets' would change the second term
-    by 2e-17 s.
+    Of the external potential the Sun's alone is taken, and no vector potential: together 6e-17 s on the ground, 9e-15 s
+    at 1e9 m.
     """
     return EarthAndSun.at(ephemeris, tdb).terms(r_gcrs_m)
 
 
 def topocentric_rate(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray, v_gcrs_m_s: FloatArray) -> FloatArray:
-    """Derivative of the topocentric terms by TDB for dr/dTT = `v_gcrs_m_s`, with the Moon's pull on the Earth (2e-15).
+    """Derivative of the topocentric terms by TDB for dr/dTT = `v_gcrs_m_s`, to 1e-17 as far as 1e9 m.
 
-    What is left out, the planets' pull and order c^-4, is below 1e-17 on the ground.
+    Sun, Moon and planets pull on the Earth; the second term goes with the first, its factor changing slowly.
     """
-    bodies = EarthAndSun.at(ephemeris, tdb)
-    to_moon = ephemeris.position("moon", tdb, "earth")
-    pull = to_moon * (ephemeris.gm_m3_s2("moon") / dot(to_moon, to_moon) ** 1.5)[..., np.newaxis]
-    return np.asarray(bodies.topocentric_rate(r_gcrs_m, v_gcrs_m_s) + dot(pull, r_gcrs_m) / _C2)
+    positions, velocities = ephemeris.states(PLANETARY_BODIES, tdb)
+    here = PLANETARY_BODIES.index(399)
+    acceleration = np.zeros_like(positions[here])
+    potential = np.zeros(acceleration.shape[:-1])
+    for number, position in zip(PLANETARY_BODIES, positions, strict=True):
+        if number != 399:
+            toward = position - positions[here]
+            distance = np.sqrt(dot(toward, toward))
+            pull = ephemeris.gm_m3_s2(number) / distance
+            potential += pull
+            acceleration += toward * (pull / distance**2)[..., np.newaxis]
+    velocity = velocities[here]
+    second = (3.0 * potential + 0.5 * dot(velocity, velocity)) / _C2
+    return np.asarray((dot(acceleration, r_gcrs_m) + dot(velocity, v_gcrs_m_s)) * ((1.0 + second) / _C2))
 
 
 def tt_from_tdb_at_geocentre(tdb: Pair, reference: ReferenceData) -> Pair:
@@ -190,11 +202,14 @@ def observer_event(tdb: Pair, reference: ReferenceData, observer: Observer, *, l
         r_m = r_m - v_m_s * bodies.terms(r_m).total_s[..., np.newaxis]
         tt = exact.add_seconds(geocentric, -TT_PER_TCG * bodies.terms(r_m).total_s)
     else:
-        # In orbit the velocity turns by 2e-5 m/s in that time, so the trajectory is asked again.
+        # In orbit the vector is asked for again: after two rounds the terms move by less than 1e-18 s.
+        for _ in range(2):
+            r_m, v_m_s = observer.gcrs(asked, reference)
+            r_m = r_m + v_m_s * exact.seconds(exact.subtract(tt, asked))[..., np.newaxis]
+            tt = exact.add_seconds(geocentric, -TT_PER_TCG * bodies.terms(r_m).total_s)
+            asked = nearest_inside(observer, tt)
         if not loose:
             require_inside(observer, tt, reference)
-        r_m, v_m_s = observer.gcrs(asked, reference)
-        r_m = r_m + v_m_s * exact.seconds(exact.subtract(tt, asked))[..., np.newaxis]
     return Event(tt, r_m, v_m_s, bodies)
 
 
@@ -239,9 +254,7 @@ def gcrs_state(
 
     Notes
     -----
-    The inverse of `bcrs_state`: r = d (1 + U/c^2 + L_C) + (V.d) V / (2 c^2) with d the barycentric offset from the
-    geocentre at the event's own TDB. Terms with the Earth's acceleration, a r^2 / c^2, are left out as in `frames`:
-    1 mm at 10^5 km, 15 cm at 1.5 million km.
+    The inverse of `bcrs_state`, from the barycentric offset from the geocentre at the event's own TDB.
     """
     near = tdb_from_tt_at_geocentre(tt, reference)
     x_m, _ = state(near)
@@ -251,11 +264,9 @@ def gcrs_state(
     earth_v, acceleration = bodies.earth_v_m_s, bodies.acceleration_m_s2
     x_m, v_m_s = state(tdb)
     d, d_rate = x_m - bodies.earth_m, v_m_s - earth_v
-    scale = (1.0 + bodies.potential_m2_s2 / _C2 + L_C)[..., np.newaxis]
-    along = (dot(earth_v, d) / (2.0 * _C2))[..., np.newaxis]
+    potential = bodies.potential_m2_s2
+    r = gcrs_offset(d, earth_v, acceleration, potential)
+    r_rate = gcrs_offset_velocity(d, d_rate, earth_v, acceleration, potential)
     rate = bodies.topocentric_rate(d, d_rate)
-    along_rate = (0.5 * rate)[..., np.newaxis]
-    r = d * scale + earth_v * along
-    r_rate = d_rate * scale + earth_v * along_rate + acceleration * along
     tt_rate = 1.0 + reference.time_ephemeris.rate(tdb) - rate
     return np.asarray(r), np.asarray(r_rate / tt_rate[..., np.newaxis])

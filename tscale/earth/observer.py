@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Protocol, runtime_checkable
+from typing import TYPE_CHECKING, Final, Protocol, runtime_checkable
 
 import numpy as np
 
@@ -12,7 +12,11 @@ from ..exact import FloatArray, Pair
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
 
-__all__ = ["Observer", "nearest_inside", "require_inside"]
+__all__ = ["SLACK_S", "Observer", "nearest_inside", "require_inside"]
+
+SLACK_S: Final = 2e-6
+"""How far past its end a trajectory is followed in a straight line, s: over the grid on which wavefronts are dated,
+exact to 1e-10 m."""
 
 
 @runtime_checkable
@@ -55,7 +59,7 @@ def nearest_inside(observer: Observer, tt: Pair) -> Pair:
 
 
 def require_inside(observer: Observer, tt: Pair, reference: ReferenceData) -> None:
-    """Raise the observer's own `OutOfSpan` for TT counts more than 1 ns (a rounding, 8 um) outside its span."""
+    """Raise the observer's own `OutOfSpan` for TT counts more than `SLACK_S` outside its span."""
     outside_s = np.abs(exact.seconds(exact.subtract(tt, nearest_inside(observer, tt))))
-    if np.any(outside_s > 1e-9):
+    if np.any(outside_s > SLACK_S):
         observer.gcrs(tt, reference)

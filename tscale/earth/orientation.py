@@ -29,6 +29,8 @@ class Orientation(NamedTuple):
         ERA - s + s', and its rate.
     pole_x_rad, pole_y_rad : float array
         Pole of the ITRS, xp and yp.
+    pole_x_rate_rad_s, pole_y_rate_rad_s : float array
+        Their rates.
     """
 
     cip_x: FloatArray
@@ -39,23 +41,29 @@ class Orientation(NamedTuple):
     angle_rate_rad_s: FloatArray
     pole_x_rad: FloatArray
     pole_y_rad: FloatArray
+    pole_x_rate_rad_s: FloatArray
+    pole_y_rate_rad_s: FloatArray
 
     def celestial(self, r_m: FloatArray) -> FloatArray:
         """ITRS vectors (..., 3) on the GCRS axes."""
-        return _stack(*_pole_up(self, *_spin(self, *_terrestrial_up(self, *_parts(r_m)))))
+        sine, cosine = self._turned()
+        return _stack(*_pole_up(self, *_spin(sine, cosine, *_terrestrial_up(self, *_parts(r_m)))))
 
     def terrestrial(self, r_m: FloatArray) -> FloatArray:
         """GCRS vectors (..., 3) on the ITRS axes."""
-        return _stack(*_terrestrial_down(self, *_spin_back(self, *_pole_down(self, *_parts(r_m)))))
+        sine, cosine = self._turned()
+        return _stack(*_terrestrial_down(self, *_spin(-sine, cosine, *_pole_down(self, *_parts(r_m)))))
 
     def celestial_state(self, r_m: FloatArray, v_m_s: FloatArray | None = None) -> tuple[FloatArray, FloatArray]:
         """Position and velocity on the GCRS axes; `v_m_s` is the velocity relative to the ITRS (None: at rest)."""
-        x, y, z = _spin(self, *_terrestrial_up(self, *_parts(r_m)))
-        vx, vy, vz = -self.angle_rate_rad_s * y, self.angle_rate_rad_s * x, np.zeros_like(z)
+        parts = _terrestrial_up(self, *_parts(r_m))
+        vx, vy, vz = _turning(self, *parts)
         if v_m_s is not None:
-            wx, wy, wz = _spin(self, *_terrestrial_up(self, *_parts(v_m_s)))
+            wx, wy, wz = _terrestrial_up(self, *_parts(v_m_s))
             vx, vy, vz = vx + wx, vy + wy, vz + wz
-        vx, vy, vz = _pole_up(self, vx, vy, vz)
+        sine, cosine = self._turned()
+        x, y, z = _spin(sine, cosine, *parts)
+        vx, vy, vz = _pole_up(self, *_spin(sine, cosine, vx, vy, vz))
         mx, my, mz = _pole_up_rate(self, x, y, z)
         return _stack(*_pole_up(self, x, y, z)), _stack(vx + mx, vy + my, vz + mz)
 
@@ -64,10 +72,15 @@ class Orientation(NamedTuple):
         parts = _parts(r_m)
         vx, vy, vz = _pole_down(self, *_parts(v_m_s))
         mx, my, mz = _pole_down_rate(self, *parts)
-        x, y, z = _spin_back(self, *_pole_down(self, *parts))
-        vx, vy, vz = _spin_back(self, vx + mx, vy + my, vz + mz)
-        vx, vy = vx + self.angle_rate_rad_s * y, vy - self.angle_rate_rad_s * x
-        return _stack(*_terrestrial_down(self, x, y, z)), _stack(*_terrestrial_down(self, vx, vy, vz))
+        sine, cosine = self._turned()
+        x, y, z = _spin(-sine, cosine, *_pole_down(self, *parts))
+        vx, vy, vz = _spin(-sine, cosine, vx + mx, vy + my, vz + mz)
+        wx, wy, wz = _turning(self, x, y, z)
+        return _stack(*_terrestrial_down(self, x, y, z)), _stack(*_terrestrial_down(self, vx - wx, vy - wy, vz - wz))
+
+    def _turned(self) -> tuple[Any, Any]:
+        """Sine and cosine of the angle about the pole."""
+        return np.sin(self.angle_rad), np.cos(self.angle_rad)
 
 
 def _parts(vectors: FloatArray) -> tuple[Any, Any, Any]:
@@ -102,15 +115,20 @@ def _terrestrial_down(o: Orientation, x: Any, y: Any, z: Any) -> tuple[Any, Any,
     return x, cosine_y * y - sine_y * z, sine_y * y + cosine_y * z
 
 
-def _spin(o: Orientation, x: Any, y: Any, z: Any) -> tuple[Any, Any, Any]:
+def _turning(o: Orientation, x: Any, y: Any, z: Any) -> tuple[Any, Any, Any]:
+    """Velocity of a point at rest on the ground that `_terrestrial_up` brought to (x, y, z), on the same axes.
+
+    The spin about z, and the drift of the pole: the derivative of R2(xp) R1(yp) by xp and yp, with sin xp = xp and
+    cos xp = 1 beside it (1e-12 of 1e-6 m/s).
+    """
+    wz = o.angle_rate_rad_s - o.pole_x_rad * o.pole_y_rate_rad_s
+    wx, wy = -o.pole_y_rate_rad_s, -o.pole_x_rate_rad_s
+    return wy * z - wz * y, wz * x - wx * z, wx * y - wy * x
+
+
+def _spin(sine: Any, cosine: Any, x: Any, y: Any, z: Any) -> tuple[Any, Any, Any]:
     """R3(-angle)."""
-    sine, cosine = np.sin(o.angle_rad), np.cos(o.angle_rad)
     return cosine * x - sine * y, sine * x + cosine * y, z
-
-
-def _spin_back(o: Orientation, x: Any, y: Any, z: Any) -> tuple[Any, Any, Any]:
-    sine, cosine = np.sin(o.angle_rad), np.cos(o.angle_rad)
-    return cosine * x + sine * y, cosine * y - sine * x, z
 
 
 # Q(X, Y, s) = M(X, Y) R3(s), TN36 eq. 5.10 with Z = sqrt(1 - X^2 - Y^2) and a = 1/(1 + Z); R3(s) is in the angle.

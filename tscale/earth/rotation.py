@@ -8,9 +8,10 @@ with X, Y, s of IAU 2006/2000A plus the observed offsets dX, dY; the Earth rotat
 the pole xp, yp of the Earth orientation in use, and s' = -47 uas per century (eq. 5.13). The rotations are applied
 in closed form (`orientation.py`).
 
-Velocities include the rotation about the pole at the defining rate of the Earth rotation angle, and precession and
-nutation. Left out: the excess length of day (below 4 ms of 86400 s: 2e-5 m/s at the surface) and the drift of
-the pole within the Earth (1e-6 m/s).
+Velocities are the exact derivatives of the positions: they include the rotation about the pole at the rate of UT1
+(its excess length of day, up to 4 ms of 86400 s, is 2e-5 m/s at the surface), precession and nutation, the drift of
+the pole within the Earth (1e-6 m/s) and that of dX, dY, all by the polynomials that the Earth orientation table is
+interpolated with. At its rows, where two polynomials meet, the rate of the later one is given.
 
 The sub-daily tidal terms of chapters 5 and 8 are not part of this module.
 """
@@ -90,19 +91,21 @@ def orientation(tt: Pair, reference: ReferenceData) -> Orientation:
     """
     tt = (np.asarray(tt[0], dtype=np.int64), np.asarray(tt[1], dtype=np.float64))
     tai = _tai(tt)
-    eop = reference.earth_orientation.at(tai)
+    eop = reference.earth_orientation.motion(tai)
     xys, rate = cip(tt)
     era = era_rad(exact.add_seconds(tai, eop.ut1_minus_tai_s))
     s_prime = _S_PRIME_RAD_S * (tt[0] + tt[1])
     return Orientation(
         xys[..., 0] + eop.dx_rad,
         xys[..., 1] + eop.dy_rad,
-        rate[..., 0],
-        rate[..., 1],
+        rate[..., 0] + eop.dx_rate_rad_s,
+        rate[..., 1] + eop.dy_rate_rad_s,
         era - xys[..., 2] + s_prime,
-        EARTH_ANGULAR_VELOCITY_RAD_S + _S_PRIME_RAD_S - rate[..., 2],
+        EARTH_ANGULAR_VELOCITY_RAD_S * (1.0 + eop.ut1_minus_tai_rate) + _S_PRIME_RAD_S - rate[..., 2],
         eop.x_rad,
         eop.y_rad,
+        eop.x_rate_rad_s,
+        eop.y_rate_rad_s,
     )
 
 
@@ -157,7 +160,7 @@ def gcrs_state_from_itrs(
     Returns
     -------
     r_m, v_m_s : float array, broadcast shape + (3,)
-        See the module's notes for what the velocity leaves out (2e-5 m/s at the surface).
+        The velocity is the derivative of the position by TT.
 
     Raises
     ------

@@ -222,7 +222,8 @@ class Site:
         Returns
         -------
         r_m, v_m_s : float array, shape of `tt` + (3,)
-            TT-compatible. The velocity is that of the turning Earth (within 2e-5 m/s); plate motion, nm/s, is left out.
+            TT-compatible. The velocity is the derivative of the position by TT, but for plate motion (nm/s), which it
+            leaves out; see `rotation` for what turns the Earth.
 
         Raises
         ------

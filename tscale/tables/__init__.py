@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from ..formats.leap_seconds import LeapSeconds
 from .clock_log import ClockLog
-from .earth_orientation import EarthOrientation, EOPValues
+from .earth_orientation import EarthOrientation, EOPMotion, EOPValues
 from .reference import ReferenceData
 from .tt_bipm import TTBIPM
 
-__all__ = ["TTBIPM", "ClockLog", "EOPValues", "EarthOrientation", "LeapSeconds", "ReferenceData"]
+__all__ = ["TTBIPM", "ClockLog", "EOPMotion", "EOPValues", "EarthOrientation", "LeapSeconds", "ReferenceData"]

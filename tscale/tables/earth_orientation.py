@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import warnings
 from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
@@ -12,28 +11,20 @@ import numpy as np
 import numpy.typing as npt
 
 from .. import exact
-from ..constants import JULIAN_YEAR_S
-from ..errors import ExtrapolationWarning, InvalidInput, OutOfSpan
+from ..errors import InvalidInput, OutOfSpan
 from ..exact import FloatArray, IntArray, Pair
 from ..formats.leap_seconds import LeapSeconds
 from .common import FrozenArrays, as_pair, mjd_date, read_file, rows_hash, since
-from .eop_rows import EOPNodes, EOPRows, EOPValues, checked_rows, constant_rows, nodes_of
+from .eop_held import grow_sigmas, warn_held
+from .eop_rows import EOPMotion, EOPNodes, EOPRows, EOPValues, checked_rows, constant_rows, nodes_of
 from .iers_files import installed_rows, parse_earth_orientation
-from .node_cubics import evaluate
+from .node_cubics import evaluate, evaluate_with_slope
 
-__all__ = ["EOPValues", "EarthOrientation"]
+__all__ = ["EOPMotion", "EOPValues", "EarthOrientation"]
 
 AfterEnd: TypeAlias = Literal["raise", "hold"]
 
 _EXTRAPOLATED: Final = np.int8(2)
-
-# Hindcast over C04 1962-2026, every day as a start: UT1-TAI held for n years is off by 0.65 s per year rms, the same
-# from 0.1 to 10 years (1 year 0.65 s, largest 1.15 s; 5 years 3.3 s; 30 years 18 s); since 2000 alone 0.26 s after
-# 1 year and 3.5 s after 10. A pole coordinate held is off by 0.23 arcsec rms at the worst lag, half a year (0.56 at
-# most), and by 0.1 to 0.2 arcsec rms at any longer one.
-_HELD_UT1_S_PER_YEAR: Final = 0.65
-_HELD_POLE_RAD: Final = 0.3 * np.pi / 648000.0
-_HELD_OFFSET_RAD: Final = 0.25e-3 * np.pi / 648000.0
 
 # A UT1 that came out of this table may miss its ends by a rounding on the way back.
 _SLACK_S: Final = 1e-9
@@ -223,21 +214,26 @@ class EarthOrientation(FrozenArrays):
         sigmas = evaluate(nodes.sigmas, interval, u)
         status = nodes.status_in(interval, elapsed_s)
         if past_s is not None:
-            held = past_s > 0.0
-            status[held] = _EXTRAPOLATED
-            growth = _HELD_UT1_S_PER_YEAR / JULIAN_YEAR_S * past_s[held]
-            sigmas[held, 0] = np.hypot(sigmas[held, 0], growth)
-            sigmas[held, 1:3] = np.maximum(sigmas[held, 1:3], _HELD_POLE_RAD)
-            sigmas[held, 3:5] = np.maximum(sigmas[held, 3:5], _HELD_OFFSET_RAD)
-            warnings.warn(
-                f"{growth.size} of {held.size} instants are past the end of the Earth orientation {self.name!r} on "
-                f"{mjd_date(self.mjd[-1])}: the last values are held, UT1 known to {growth.max():.2g} s at the latest",
-                ExtrapolationWarning,
-                stacklevel=2,
-            )
-        values[..., 0] += nodes.ut1_base[interval]
-        columns: list[Any] = [np.array(table[..., k]) for table in (values, sigmas) for k in range(5)]
+            status[past_s > 0.0] = _EXTRAPOLATED
+            grow_sigmas(sigmas, past_s)
+            warn_held(past_s, self.name, self.mjd[-1])
+        values[0] += nodes.ut1_base[interval]
+        columns: list[Any] = [table[k, ...] for table in (values, sigmas) for k in range(5)]
         return EOPValues._make([*columns, status])
+
+    def motion(self, tai: Pair) -> EOPMotion:
+        """Earth orientation and its derivatives at TAI counts, without uncertainties; spans as for `at`."""
+        nodes = self._nodes
+        interval, elapsed_s, past_s = self._find(as_pair(tai), hold=self.after_end == "hold")
+        length_s = nodes.length_s[interval]
+        values, slopes = evaluate_with_slope(nodes.powers, interval, elapsed_s / length_s)
+        values[0] += nodes.ut1_base[interval]
+        slopes /= length_s
+        if past_s is not None:
+            slopes[:, past_s > 0.0] = 0.0
+            warn_held(past_s, self.name, self.mjd[-1])
+        columns: list[Any] = [table[k, ...] for table in (values, slopes) for k in range(5)]
+        return EOPMotion._make(columns)
 
     def status(self, tai: Pair) -> npt.NDArray[np.int8]:
         """Return 0 measured, 1 predicted, 2 extrapolated, as `at` does, without a warning."""

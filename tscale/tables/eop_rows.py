@@ -11,10 +11,18 @@ from .. import exact
 from ..errors import InvalidInput
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 from ..formats.leap_seconds import LeapSeconds
-from .common import locate, since, tai_of_days
+from .common import locate, mjd_date, since, tai_of_days
 from .node_cubics import lagrange_cubics
 
-__all__ = ["EOPNodes", "EOPRows", "EOPValues", "checked_rows", "constant_rows", "nodes_of"]
+__all__ = [
+    "EOPMotion",
+    "EOPNodes",
+    "EOPRows",
+    "EOPValues",
+    "checked_rows",
+    "constant_rows",
+    "nodes_of",
+]
 
 _ARCSEC: Final = float(np.pi) / 648000.0
 _TO_SI: Final = np.array([1.0, _ARCSEC, _ARCSEC, _ARCSEC / 1000.0, _ARCSEC / 1000.0])
@@ -50,6 +58,26 @@ class EOPValues(NamedTuple):
     dx_sigma_rad: FloatArray
     dy_sigma_rad: FloatArray
     status: npt.NDArray[np.int8]
+
+
+class EOPMotion(NamedTuple):
+    """Earth orientation and its time derivatives at instants, each array in their shape.
+
+    The first five are those of `EOPValues`, to the same bit; `*_rate*` are the derivatives by TAI of the polynomials
+    between the rows, zero where the values are held. At a row, where two polynomials meet, it is that of the later.
+    """
+
+    ut1_minus_tai_s: FloatArray
+    x_rad: FloatArray
+    y_rad: FloatArray
+    dx_rad: FloatArray
+    dy_rad: FloatArray
+    ut1_minus_tai_rate: FloatArray
+    """d(UT1-TAI)/dTAI, s/s."""
+    x_rate_rad_s: FloatArray
+    y_rate_rad_s: FloatArray
+    dx_rate_rad_s: FloatArray
+    dy_rate_rad_s: FloatArray
 
 
 class EOPNodes(NamedTuple):
@@ -124,7 +152,7 @@ def constant_rows(values: tuple[float, ...], start_mjd: int, end_mjd: int) -> EO
     if not np.isfinite(row).all() or not start_mjd < end_mjd:
         raise InvalidInput(
             f"constant Earth orientation needs finite values and start_mjd before end_mjd; got {row.tolist()} "
-            f"from {start_mjd} to {end_mjd}"
+            f"from MJD {start_mjd}{_date(start_mjd)} to MJD {end_mjd}{_date(end_mjd)}"
         )
     mjd = np.arange(start_mjd, end_mjd + 1, dtype=np.int64)
     still = np.tile(row, (len(mjd), 1))
@@ -145,10 +173,14 @@ def nodes_of(rows: EOPRows, leap_seconds: LeapSeconds, *, constant: bool = False
         powers[:, 1, 0] = -2.0 * (leap_seconds.tai_minus_utc(noon) - tai_minus_utc_s[:-1])
     else:
         # UT1-TAI, which knows no leap second, is what the polynomials go through.
-        values[:, 0] = small + (base - base[0])
-        powers = lagrange_cubics(tai, values)
+        values[:, 0] = small
+        powers = lagrange_cubics(tai, values, base)
     powers[:, 0, 0] = small[:-1]
     sigmas = rows.sigmas * _TO_SI
     lines = np.stack([sigmas[:-1], np.diff(sigmas, axis=0)], axis=1)
     length_s = since((tai[0][:-1], tai[1][:-1]), (tai[0][1:], tai[1][1:]))
     return EOPNodes(tai, length_s, base.astype(np.int64), powers, lines, rows.predicted.astype(np.int8))
+
+
+def _date(mjd: float) -> str:
+    return f" ({mjd_date(mjd)})" if abs(mjd) < 1e6 else ""

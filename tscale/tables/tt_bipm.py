@@ -202,8 +202,8 @@ def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray]:
         day = int(match[1])
         if days and day != days[-1] + _STEP_DAYS:
             raise DataFileError(
-                f"{path}, line {number}: MJD {day} after {days[-1]}, where rows are {_STEP_DAYS} days apart; "
-                f"a row is missing, doubled or damaged",
+                f"{path}, line {number}: MJD {day} ({mjd_date(day)}) after {days[-1]}, where rows are "
+                f"{_STEP_DAYS} days apart; a row is missing, doubled or damaged",
                 row=number,
                 path=path,
             )
@@ -239,7 +239,8 @@ def _build(
         origin, at_origin, rate, limit = extension
         if not (np.isfinite(at_origin) and np.isfinite(rate)) or limit <= mjd[-1]:
             raise InvalidInput(
-                f"an extension needs finite numbers and an end after the last row, MJD {mjd[-1]}; got {extension}"
+                f"an extension needs finite numbers and an end after the last row, MJD {mjd[-1]} ({issued}); "
+                f"got {extension}"
             )
         # The line itself from the last row on, also where that leaves a small step.
         first = np.append(first, at_origin + rate * (mjd[-1] - origin))

@@ -263,11 +263,18 @@ class Trajectory:
     def clip(self, tt: Pair) -> Pair:
         """TT counts moved into the span from the first to the last date, for iterations that start outside it.
 
-        Trajectories dated in TDB are clipped 3 ms inside their ends, more than TT and TDB ever differ by.
+        Trajectories dated in TDB are clipped 20 ms inside their ends, more than TT and TDB of one event differ by
+        near the Earth.
         """
-        whole, fraction = broadcast_pair(tt)
-        whole, fraction = np.array(whole), np.array(fraction)
-        margin_s = 0.0 if self.scale == "TT" else 0.003
+        return self._clipped(broadcast_pair(tt), 0.0 if self.scale == "TT" else 0.02)
+
+    def clip_tdb(self, tdb: Pair, reference: ReferenceData) -> Pair:
+        """TDB counts moved into the span, for a trajectory that is not geocentric."""
+        own = self._own_count(broadcast_pair(tdb), reference)
+        return exact.add(broadcast_pair(tdb), exact.subtract(self._clipped(own, 0.0), own))
+
+    def _clipped(self, count: Pair, margin_s: float) -> Pair:
+        whole, fraction = np.array(count[0]), np.array(count[1])
         for end, sign in ((self._end(0), 1), (self._end(1), -1)):
             if end is None:
                 continue
@@ -276,6 +283,11 @@ class Trajectory:
             outside = (sign * (whole - limit[0]) < 0) | ((whole == limit[0]) & (sign * (fraction - limit[1]) < 0.0))
             whole[outside], fraction[outside] = limit
         return whole, fraction
+
+    @property
+    def uses_earth_orientation(self) -> bool:
+        """Whether any part of it is given in the ITRS."""
+        return any(piece.axes == "ITRS" for piece in self.pieces)
 
     def _end(self, which: int) -> Pair | None:
         """The first (0) or last (1) date of all pieces; None if there is no end."""

@@ -12,17 +12,22 @@ from __future__ import annotations
 
 from typing import Final
 
+import numpy as np
+
 from .. import exact
 from ..constants import L_B, T0_COUNT, TDB0_S
+from ..earth.frames import dot
 from ..earth.moving import TT_PER_TCG, TopocentricTerms, observer_event, topocentric_rate, topocentric_terms
 from ..earth.observer import Observer
-from ..exact import Factor, Pair
+from ..errors import ScaleMismatch
+from ..exact import Factor, FloatArray, Pair
 from ..instants import Instants
 from ..tables.reference import ReferenceData
 from .geocentric import tcg_from_tt, tt_from_tcg
 from .terrestrial import require_scale
 
 __all__ = [
+    "GEOCENTRIC_LIMIT_M",
     "TopocentricTerms",
     "tcb_from_tdb",
     "tcb_to_tcg",
@@ -37,6 +42,10 @@ __all__ = [
     "tt_from_tdb",
     "tt_to_tdb",
 ]
+
+GEOCENTRIC_LIMIT_M: Final = 1e10
+"""Distance from the Earth up to which events are dated in TT and TCG, m: what the terms of order c^-4 leave out
+grows as its square and reaches 2e-12 s there."""
 
 _LOSS: Final = Factor.of(-L_B)
 _GAIN: Final = Factor.of(L_B / (1 - L_B))
@@ -68,7 +77,11 @@ def tdb_from_tt(tt: Pair, reference: ReferenceData, observer: Observer | None = 
         r_m, _ = observer.gcrs(tt, reference)
         # v_E moves by 1e-5 m/s in the 2 ms between TT and TDB: 1e-15 s in the terms, so P comes first.
         near = exact.add_seconds(tt, -table.tt_minus_tdb_s(tt))
+        _require_near_earth(r_m, observer)
         terms = topocentric_terms(reference.ephemeris, near, r_m)
+        if np.any(np.abs(terms.total_s) > 1e-5):  # far from the ground the terms themselves move the date they are for
+            near = exact.add_seconds(near, terms.total_s)
+            terms = topocentric_terms(reference.ephemeris, near, r_m)
         tt = exact.add_seconds(tt, TT_PER_TCG * terms.total_s)
     value, rate = table.tt_minus_tdb_and_rate(tt)
     return exact.add_seconds(tt, -value / (1.0 + rate))
@@ -78,7 +91,20 @@ def tt_from_tdb(tdb: Pair, reference: ReferenceData, observer: Observer | None =
     """TT count of an event dated in TDB at the geocentre, or at an observer."""
     if observer is None:
         return exact.add_seconds(tdb, reference.time_ephemeris.tt_minus_tdb_s(tdb))
-    return observer_event(tdb, reference, observer).tt
+    event = observer_event(tdb, reference, observer)
+    _require_near_earth(event.r_gcrs_m, observer)
+    return event.tt
+
+
+def _require_near_earth(r_gcrs_m: FloatArray, observer: Observer) -> None:
+    """Refuse TT and TCG of events so far from the Earth that the geocentric frame no longer gives them."""
+    far = dot(r_gcrs_m, r_gcrs_m) > GEOCENTRIC_LIMIT_M**2
+    if np.any(far):
+        raise ScaleMismatch(
+            f"{int(np.count_nonzero(far))} of {far.size} events at {observer.name} are over {GEOCENTRIC_LIMIT_M:.0e} m "
+            "from the Earth, where TT, TCG and the scales tied to them do not reach: date them in TDB or TCB",
+            mask=np.asarray(far),
+        )
 
 
 def tcb_to_tdb(t: Instants) -> Instants:

@@ -14,13 +14,15 @@ The gravitational delay of each body, at the place it had when the light passed 
 Rev. D 60, 124002). Its constant is a convention: a delay
 is counted from light that arrives at 90 degrees from a body 1 au away.
 
-Left out: the delay within other stars, the Galaxy's gravity and acceleration, radial motion of the
-source, and the Earth's own field (up to 60 ps, it has no finite value at the geocentre) unless asked for.
+Left out: the delay within other stars, the Galaxy's gravity and acceleration, radial motion of the source; the
+Earth's own field, which has no finite value at the geocentre (it varies by 20 ps over the sky of a site); near the limb
+of a giant planet its flattening (0.1 to 0.3 ns for Jupiter) and its distance from the centre of mass of its system (200
+km, 0.1 ns).
 """
 
 from __future__ import annotations
 
-from typing import Final, NamedTuple
+from typing import Final, NamedTuple, Protocol, runtime_checkable
 
 import numpy as np
 
@@ -28,12 +30,13 @@ from .. import exact
 from ..constants import AU_M, C_M_S, SUN_RADIUS_M
 from ..earth.frames import dot
 from ..earth.moving import observer_event
-from ..earth.observer import Observer
+from ..earth.observer import SLACK_S, Observer
 from ..errors import NotConverged
 from ..exact import BoolArray, FloatArray, Pair
 from ..instants import Instants
 from ..source import Source
 from ..tables.reference import ReferenceData
+from .shapiro import higher_orders, passage
 from .terrestrial import require_scale
 
 __all__ = [
@@ -49,6 +52,28 @@ __all__ = [
 DELAYING_BODIES: Final = ("sun", "mercury", "venus", "mars", "jupiter", "saturn", "uranus", "neptune", "moon")
 """Bodies whose gravitational delay is taken into account."""
 
+ROEMER: Final = "Roemer delay"
+
+_GRID_PER_S: Final = 2.0**20
+
+
+@runtime_checkable
+class Barycentric(Protocol):
+    """A trajectory; one that is not geocentric is followed in the barycentric frame alone."""
+
+    @property
+    def geocentric(self) -> bool:
+        """Whether its own vectors are geocentric."""
+        ...
+
+    def state_bcrs(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
+        """Barycentric position (m) and velocity (m/s)."""
+        ...
+
+    def clip_tdb(self, tdb: Pair, reference: ReferenceData) -> Pair:
+        """TDB counts moved into its span."""
+        ...
+
 
 class WavefrontTerms(NamedTuple):
     """t_bary - t_obs in parts, seconds."""
@@ -57,10 +82,18 @@ class WavefrontTerms(NamedTuple):
     """Each term by name; t_bary = t_obs + their sum."""
     rate: FloatArray
     """d(t_bary - t_obs)/dt_obs; zeros if it was not asked for."""
+    beyond_s: FloatArray
+    """The part of the Roemer delay, below 1 ns, that is added to its float64 of 500 s (ulp 0.06 ps) exactly."""
+
+    def exact(self) -> dict[str, Pair]:
+        """The terms as exact pairs."""
+        pairs = {name: exact.from_seconds(value) for name, value in self.terms_s.items()}
+        pairs[ROEMER] = exact.add_seconds(pairs[ROEMER], self.beyond_s)
+        return pairs
 
     def later(self, t: Pair) -> Pair:
         """`t` plus the terms, each added exactly to the pair."""
-        for value in self.terms_s.values():
+        for value in (*self.terms_s.values(), self.beyond_s):
             t = exact.add_seconds(t, value)
         return t
 
@@ -78,16 +111,25 @@ def observer_state(
     Returns
     -------
     x_m, v_m_s, sun_m, sun_v_m_s : (..., 3) arrays
-        TDB-compatible BCRS, m and m/s; `v_m_s` has no meaning without `with_velocity`.
+        TDB-compatible BCRS, m and m/s; without `with_velocity` v is good to 1e-4 m/s only.
     """
     if observer is None:
         (earth, sun), (velocity, sun_velocity) = reference.ephemeris.states(("earth", "sun"), tdb)
         return earth, velocity, sun, sun_velocity
+    if isinstance(observer, Barycentric) and not observer.geocentric:
+        asked = observer.clip_tdb(tdb, reference)
+        ahead_s = exact.seconds(exact.subtract(tdb, asked))
+        if not loose and np.any(np.abs(ahead_s) > SLACK_S):
+            asked = tdb  # which raises
+        x, v = observer.state_bcrs(asked, reference)
+        x = x + v * ahead_s[..., np.newaxis]
+        sun, sun_velocity = reference.ephemeris.state("sun", tdb)
+        return x, v, sun, sun_velocity
     event = observer_event(tdb, reference, observer, loose=loose)
     if with_velocity:
         x, v = event.bcrs_state(1.0 + reference.time_ephemeris.rate(tdb))
     else:
-        x = v = event.bcrs_position()
+        x, v = event.bcrs_position(), event.bodies.earth_v_m_s + event.v_gcrs_m_s
     return x, v, event.bodies.sun_m, event.bodies.sun_v_m_s
 
 
@@ -124,6 +166,11 @@ def wavefront_terms(
     loose : bool
         See `earth.moving.observer_event`; for dates that are still being sought.
     """
+    # A barycentric position rounds to 0.1 ps. So that a date and the same date found on the way back, 1e-16 s apart,
+    # see the same rounding, all is evaluated on a grid of 1 us and carried on from there in a straight line.
+    grid = np.floor(tdb[1] * _GRID_PER_S) / _GRID_PER_S
+    beyond_s = tdb[1] - grid
+    tdb = (tdb[0], grid)
     x, v, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=with_rate, loose=loose)
     # The direction is the one at the barycentric date; the first guess of that date is good to 4e-7 s
     # even for the largest proper motion known, and a microsecond moves no direction by 1e-17 rad.
@@ -132,13 +179,13 @@ def wavefront_terms(
     place, place_rate = source.motion(at_bary)
     length = np.sqrt(dot(place, place))[..., np.newaxis]
     k = place / length
-    along = dot(k, x)
-    along_v = dot(k, v) if with_rate else along
-    terms: dict[str, FloatArray] = {"Roemer delay": along / C_M_S}
+    along, along_v = dot(k, x), dot(k, v)
+    terms: dict[str, FloatArray] = {ROEMER: along / C_M_S}
     rate = np.zeros_like(along)
     if with_rate:
         k_rate = (place_rate - k * dot(k, np.broadcast_to(place_rate, k.shape))[..., np.newaxis]) / length
-        rate = along_v / C_M_S + dot(k_rate, x) * ((1.0 + along_v / C_M_S) / C_M_S)
+        along_v = along_v + dot(k_rate, x) * (1.0 + along_v / C_M_S)
+        rate = along_v / C_M_S
     seen = k
     if source.parallax_mas:
         distance = source.distance_m * length[..., 0]
@@ -152,72 +199,33 @@ def wavefront_terms(
         seen = (k * distance[..., np.newaxis] - x) / path[..., np.newaxis]
     others = tuple(body for body in bodies if body != "sun")
     places, speeds = reference.ephemeris.states(others, tdb)
+    later: dict[str, FloatArray] = {}
     for body in bodies:
         at = None if body == "sun" else others.index(body)
         body_m, body_v = (sun, sun_velocity) if at is None else (places[at], speeds[at])
-        r, distance, depth = _passage(x, seen, body_m, body_v)
+        r, distance, depth = passage(x, seen, body_m, body_v)
+        gm, w = reference.ephemeris.gm_m3_s2(body), v - body_v
         # In the frame of the moving body: light against its motion is held up longer (8 ps at the limb of Jupiter).
-        factor = (2.0 * reference.ephemeris.gm_m3_s2(body) / C_M_S**3) * (1.0 + dot(seen, body_v) / C_M_S)
+        factor = (2.0 * gm / C_M_S**3) * (1.0 + dot(seen, body_v) / C_M_S)
         terms[f"minus Shapiro delay, {body}"] = factor * np.log(depth / AU_M)
         if with_rate:
-            w = v - body_v
             rate = rate + factor * (dot(r, w) / distance + dot(seen, w)) / depth
-    if second_order:
-        second, third = _higher_orders(x, seen, sun, reference.ephemeris.gm_m3_s2("sun"))
-        terms["minus Shapiro delay, sun, second order"] = second
-        terms["minus Shapiro delay, sun, third order"] = third
-    return WavefrontTerms(terms, np.asarray(rate))
-
-
-def _passage(
-    x: FloatArray, seen: FloatArray, body_m: FloatArray, body_v: FloatArray
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Vector r from a body to the observer when the light passed it, its length, and r + n.r.
-
-    The body is moved back in a straight line by its light time: its acceleration would move it by
-    less than 1 km, 0.1 ps at the limb of Jupiter.
-    """
-    r = x - body_m
-    light_s = np.sqrt(dot(r, r)) / C_M_S
-    r += body_v * light_s[..., np.newaxis]
-    distance = np.sqrt(dot(r, r))
-    # r + n.r = r (1 - cos angle): at the limb of Jupiter cancellation leaves 8 digits, 1e-16 s of 9 ns. The floor
-    # only keeps the logarithm finite for a source exactly behind the centre of a body.
-    return r, distance, np.maximum(distance + dot(seen, r), 1e-15 * distance)
-
-
-def _higher_orders(x: FloatArray, seen: FloatArray, sun: FloatArray, gm: float) -> tuple[FloatArray, FloatArray]:
-    """Minus the Sun's delays of second order and the leading part of the third, for a far source.
-
-    With m = GM/c^2 and psi between the Sun-observer and the source direction: (m^2/(c r)) [15/4 psi/sin(psi) -
-    4/(1 + cos psi)] (far-source limit of Le Poncin-Lafitte, Linet and Teyssandier 2004, Class. Quantum Grav. 21,
-    4463, from memory; its second part is the bending of IERS Conventions 2010, eq. 11.14), and 8 m^3/(c (r + n.r)^2)
-    (as in `link.delay`). Both lose their meaning within the Sun and are zero there.
-    """
-    r = x - sun
-    distance = np.sqrt(dot(r, r))
-    cosine = np.clip(dot(seen, r) / distance, -1.0, 1.0)
-    cross = np.cross(seen, r) / distance[..., np.newaxis]
-    sine = np.sqrt(dot(cross, cross))
-    outside = (cosine > 0.0) | (sine * distance > SUN_RADIUS_M)
-    psi = np.arctan2(sine, cosine)
-    safe = np.where(sine > 1e-8, sine, 1.0)
-    ratio = np.where(sine > 1e-8, psi / safe, 1.0)
-    # 1 + cos = sin^2 / (1 - cos), stable where the Sun is in front of the source.
-    opening = np.where(cosine > 0.0, 1.0 + cosine, safe**2 / np.where(cosine > 0.0, 1.0, 1.0 - cosine))
-    m = gm / C_M_S**2
-    second = -(m * m / (C_M_S * distance)) * (3.75 * ratio - 4.0 / opening)
-    third = (-8.0 * m**3 / C_M_S) / (distance * opening) ** 2
-    return np.where(outside, second, 0.0), np.where(outside, third, 0.0)
+        if second_order and body == "sun":
+            higher = higher_orders(r, seen, w, gm)
+            later["minus Shapiro delay, sun, second order"] = higher.second_s
+            later["minus Shapiro delay, sun, third order"] = higher.third_s
+            rate = rate + higher.rate if with_rate else rate
+    terms |= later
+    return WavefrontTerms(terms, np.asarray(rate), np.asarray(along_v * beyond_s / C_M_S))
 
 
 def behind_the_sun(tdb: Pair, reference: ReferenceData, source: Source, observer: Observer | None = None) -> BoolArray:
     """Whether the line of sight passes through the Sun (nominal radius), where no light would arrive."""
-    x, _, sun, _ = observer_state(tdb, reference, observer, with_velocity=False)
-    r = x - sun
+    x, _, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=False)
     toward = source.direction(tdb)
+    r, distance, _ = passage(x, toward, sun, sun_velocity)
     along = dot(toward, r)
-    return np.asarray((along < 0.0) & (dot(r, r) - along * along < SUN_RADIUS_M**2))
+    return np.asarray((along < 0.0) & (distance**2 - along * along < SUN_RADIUS_M**2))
 
 
 def observer_to_barycenter(
@@ -244,11 +252,13 @@ def barycenter_to_observer(
 ) -> Instants:
     """TDB at the barycentre -> TDB at which the wavefront meets an observer, by Newton's method.
 
-    The start is off by 500 s at most; the steps leave 1e-5 s, then 1e-14 s, then the rounding of the
-    positions. Raises `NotConverged` if the last step still exceeds 1e-12 s.
+    The start, from the plane wave at the geocentre, is off by 50 ms for an observer near the Earth; the steps leave
+    1e-13 s, then the rounding of the positions. Raises `NotConverged` if the sixth still moves a date by 1e-8 s.
     """
     require_scale(t, "TDB")
-    guess = t.pair
+    barycentric = isinstance(observer, Barycentric) and not observer.geocentric
+    near, _, _, _ = observer_state(t.pair, reference, observer if barycentric else None, loose=True)
+    guess = exact.add_seconds(t.pair, dot(source.direction(t.pair), near) / -C_M_S)
     for _ in range(6):
         terms = wavefront_terms(guess, reference, source, observer, second_order=second_order, loose=True)
         missing = exact.seconds(exact.subtract(terms.later(guess), t.pair))
@@ -256,6 +266,6 @@ def barycenter_to_observer(
         guess = exact.add_seconds(guess, -step)
         if np.max(np.abs(step), initial=0.0) < 1e-8:  # quadratic: the next step would be below 1e-20 s
             if observer is not None and hasattr(observer, "clip"):
-                observer_event(guess, reference, observer)  # raises where the date found lies outside its span
+                observer_state(guess, reference, observer)  # raises where the date found lies outside its span
             return Instants._of(guess, "TDB", "GEOCENTER" if observer is None else "TOPOCENTER")
     raise NotConverged(f"a wavefront date still moves by {np.max(np.abs(step)):.3g} s after 6 Newton steps")

@@ -1,0 +1,150 @@
+"""Edges between scales kept on Earth and by clocks: constant offsets, rates and tables."""
+
+from __future__ import annotations
+
+from typing import Final
+
+import numpy as np
+
+from .. import exact
+from ..constants import L_G
+from ..exact import FloatArray, Pair
+from ..instants import Instants
+from ..scales import Node, Scale
+from ..step import Step, Terms
+from ..tables.clock_log import ClockLog
+from ..tables.reference import ReferenceData
+from ..tables.tt_bipm import TTBIPM
+from ..transforms import geocentric, terrestrial
+from .common import count_difference
+
+__all__ = ["clock_step", "fixed_step", "tt_bipm_step", "tt_tcg_step", "ut1_step"]
+
+
+def _zero_rate(before: Instants, after: Instants) -> FloatArray:
+    return np.zeros(before.shape)
+
+
+def _label_minus_tai(scale: Scale, count: Pair, reference: ReferenceData) -> Pair:
+    """Label of a fixed-distance scale minus the TAI label, in seconds."""
+    if not scale.utc_labels:
+        offset = scale.count_minus_tai
+        assert offset is not None
+        return exact.normalise(*offset)
+    utc = exact.add(count, exact.normalise(-scale.label_offset_s, 0.0))
+    tai_minus_utc = exact.from_seconds(reference.leap_seconds.tai_minus_utc(utc))
+    return exact.subtract(exact.normalise(scale.label_offset_s, 0.0), tai_minus_utc)
+
+
+_FIXED_SOURCES: Final = {
+    "UTC": "ITU-R TF.460-6; IERS leap-second table",
+    "TT": "IAU 1991 Resolution A4",
+    "GPS": "IS-GPS-200",
+    "GST": "Galileo OS-SIS-ICD",
+    "BDT": "BDS-SIS-ICD",
+    "GLONASS": "GLONASS ICD",
+}
+
+
+def fixed_step(start: str, end: str, place: str | None, reference: ReferenceData) -> Step:
+    """Between TAI and UTC, TT or a satellite-navigation time: constant in counts, a table in labels."""
+    a, b = Scale.parse(start), Scale.parse(end)
+    named = end if start == "TAI" else start
+
+    def terms(before: Instants, after: Instants) -> Terms:
+        shift = exact.subtract(_label_minus_tai(b, after.pair, reference), _label_minus_tai(a, before.pair, reference))
+        return {f"{end} - {start}": shift}
+
+    def notes(before: Instants) -> tuple[str, ...]:
+        if not (a.utc_labels or b.utc_labels):
+            return ()
+        table = reference.leap_seconds
+        utc = terrestrial.to_fixed_scale(before, "UTC")
+        expired = int(np.count_nonzero(table.is_expired(utc.pair)))
+        if not expired:
+            return ()
+        return (f"{expired} of {before.size} instants are past the expiry of the leap-second table {table.name}",)
+
+    return Step(
+        start=Node(a, place),
+        end=Node(b, place),
+        title="leap seconds" if "UTC" in (start, end) else "fixed offset",
+        source=_FIXED_SOURCES[named],
+        forward=lambda t: terrestrial.to_fixed_scale(t, end),
+        backward=lambda t: terrestrial.to_fixed_scale(t, start),
+        terms=terms,
+        rate=_zero_rate,
+        notes=notes,
+    )
+
+
+def tt_tcg_step(place: str | None) -> Step:
+    """TT to TCG."""
+    rate = float(L_G / (1 - L_G))
+    return Step(
+        start=Node(Scale.parse("TT"), place),
+        end=Node(Scale.parse("TCG"), place),
+        title="rate L_G",
+        source="IAU 2000 Resolution B1.9",
+        forward=geocentric.tt_to_tcg,
+        backward=geocentric.tcg_to_tt,
+        terms=lambda before, after: {"TCG - TT": count_difference(before, after)},
+        rate=lambda before, after: np.full(before.shape, rate),
+    )
+
+
+def ut1_step(place: str | None, reference: ReferenceData) -> Step:
+    """TAI to UT1."""
+
+    def rate(before: Instants, after: Instants) -> FloatArray:
+        return reference.earth_orientation.ut1_rate(before.pair)
+
+    return Step(
+        start=Node(Scale.parse("TAI"), place),
+        end=Node(Scale.parse("UT1"), place),
+        title="Earth rotation",
+        source="IERS Conventions (2010) chapter 5",
+        forward=lambda t: terrestrial.tai_to_ut1(t, reference.earth_orientation),
+        backward=lambda t: terrestrial.ut1_to_tai(t, reference.earth_orientation),
+        terms=lambda before, after: {"UT1 - TAI": count_difference(before, after)},
+        rate=rate,
+        uncertainty_s=lambda before: {"UT1": reference.earth_orientation.at(before.pair).ut1_sigma_s},
+    )
+
+
+def tt_bipm_step(place: str | None, table: TTBIPM) -> Step:
+    """TAI to a realisation TT(BIPMxx)."""
+
+    def terms(before: Instants, after: Instants) -> Terms:
+        return {f"{table.scale} - TAI": count_difference(before, after)}
+
+    return Step(
+        start=Node(Scale.parse("TAI"), place),
+        end=Node(Scale.parse(table.scale), place),
+        title="realisation of TT",
+        source=f"BIPM, {table.name}",
+        forward=lambda t: terrestrial.tai_to_tt_bipm(t, table),
+        backward=lambda t: terrestrial.tt_bipm_to_tai(t, table),
+        terms=terms,
+        rate=lambda before, after: table.rate(before.pair),
+        uncertainty_s=lambda before: {table.scale: np.broadcast_to(table.uncertainty_s(before.pair), before.shape)},
+    )
+
+
+def clock_step(place: str | None, log: ClockLog) -> Step:
+    """A clock's reading to the scale it was compared with."""
+
+    def terms(before: Instants, after: Instants) -> Terms:
+        return {f"{log.reference} - {log.scale}": count_difference(before, after)}
+
+    return Step(
+        start=Node(Scale.parse(log.scale), place),
+        end=Node(Scale.parse(log.reference), place),
+        title="clock comparisons",
+        source=f"log {log.name}",
+        forward=lambda t: terrestrial.clock_to_reference(t, log),
+        backward=lambda t: terrestrial.reference_to_clock(t, log),
+        terms=terms,
+        rate=lambda before, after: log.rate(after.pair),
+        uncertainty_s=lambda before: {log.scale: log.uncertainty_s(log.to_reference(before.pair))},
+    )
