@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import pickle
+
 import numpy as np
 import pytest
 
@@ -151,3 +153,62 @@ def test_another_tt_realisation(tmp_path: object) -> None:
     assert out.scale == "TT(BIPM25)"
     assert float(chain.ledger(t)["TT(BIPM25) - TAI"]) == pytest.approx(32.184 + 27.67425e-6, abs=1e-11)
     assert chain.inverse(out).minus(t) == pytest.approx(0.0, abs=3e-16)
+
+
+@pytest.mark.parametrize(
+    "given",
+    [
+        {"site": "site.toml"},
+        {"clocks": "maser.csv"},
+        {"clocks": ["maser.csv"]},
+        {"clocks": 5},
+        {"source": (83.6, 22.0)},
+        {"reference": "today"},
+    ],
+)
+def test_pieces_of_a_wrong_kind(given: dict[str, object], clocks: list[tscale.ClockLog]) -> None:
+    with pytest.raises(InvalidInput, match=next(iter(given))):
+        tscale.chain("UTC", "TDB", **given)  # type: ignore[arg-type]
+    with pytest.raises(InvalidInput, match=r"clocks=\[log\]"):
+        tscale.chain("UTC", "TT", clocks=clocks[0])  # type: ignore[arg-type]
+
+
+def test_a_chain_travels_to_another_process(clocks: list[tscale.ClockLog]) -> None:
+    chain = tscale.chain("CLOCK(maser)", "TDB@BARYCENTER", site=SITE, clocks=clocks, source=SOURCE)
+    readings = tscale.Instants.from_iso(["2024-05-01T00:00:00"], scale="CLOCK(maser)")
+    twin = pickle.loads(pickle.dumps(chain))
+    assert str(twin) == str(chain)
+    assert (twin(readings) == chain(readings)).all()
+
+
+def test_uncertainty_of_earth_orientation_at_a_site() -> None:
+    # Turning the site by one standard uncertainty of UT1 must move the result by what the budget says, for a place and
+    # for a wavefront: 2050, UT1 held, 14 s.
+    t = tscale.Instants.from_iso("2050-01-01T05:00:00", scale="TT")
+    reference = tscale.ReferenceData.default()
+    for end in ("TDB", "TDB@BARYCENTER"):
+        chain = tscale.chain("TT", end, site=SITE, source=SOURCE)
+        with pytest.warns(tscale.ExtrapolationWarning):
+            sigma = chain.uncertainty_s(t)
+        with pytest.warns(tscale.ExtrapolationWarning):
+            ut1_sigma_s = float(reference.earth_orientation.at(tscale.chain("TT", "TAI")(t).pair).ut1_sigma_s)
+        assert 10 < ut1_sigma_s < 20
+        turn = 2 * np.pi * 1.00273781191135448 / 86400 * ut1_sigma_s
+        x, y, z = SITE.position_m
+        c, s = np.cos(turn), np.sin(turn)
+        turned = tscale.Site.from_itrf("turned", c * x - s * y, s * x + c * y, z)
+        with pytest.warns(tscale.ExtrapolationWarning):
+            moved = tscale.chain("TT", end, site=turned, source=SOURCE)(t).minus(chain(t))
+        assert sigma["Earth orientation, UT1"] == pytest.approx(abs(float(moved)), rel=0.01)
+
+
+def test_an_orbit_owes_nothing_to_earth_orientation() -> None:
+    # Before the table (1962) and past its end (2027): a geocentric orbit on celestial axes needs neither.
+    orbit = tscale.Trajectory.from_kepler(
+        tscale.Instants.from_iso("2000-01-01T12:00:00", scale="TT"), 7.0e6, 0.01, 51.0, 10.0, 20.0, 30.0, name="orbit"
+    )
+    t = tscale.Instants.from_iso(["1961-06-01T00:00:00", "2040-01-01T00:00:00"], scale="TT")
+    chain = tscale.chain("TT", "TDB@BARYCENTER", site=orbit, source=SOURCE)
+    assert set(chain.uncertainty_s(t)) == {"time ephemeris"}
+    assert chain.notes(t) == ()
+    assert np.max(np.abs(chain.ledger(t).total)) < 520.0

@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 import pytest
 
-from tscale.errors import InvalidInput, TextError
+from tscale.errors import ExtrapolationWarning, InvalidInput, TextError
 from tscale.formats import iso8601, labels
 from tscale.formats.leap_seconds import LeapSeconds
 from tscale.scales import Scale
@@ -86,3 +86,12 @@ def test_far_counts(scale: str) -> None:
         labels.label(kind, (np.array([0, 2**63 - 1]), np.zeros(2)))
     assert caught.value.mask is not None
     assert caught.value.mask.tolist() == [False, True]
+
+
+def test_days_in_messages_have_their_calendar_date() -> None:
+    table = LeapSeconds.default().with_expiry(61584)
+    utc = Scale.parse("UTC")
+    with pytest.warns(ExtrapolationWarning, match=r"past the expiry of the leap-second table .* on 2027-07-01 \(MJD 6"):
+        labels.warn_if_expired(utc, table.count_from_label(61584, 0, 0.0), table)
+    with pytest.raises(TextError, match=r"second 86400 of 2016-12-31 \(MJD 57753\)"):
+        labels.count(Scale.parse("TAI"), (np.array(57753), np.array(86400), np.array(0.0)))

@@ -148,11 +148,26 @@ def test_comparison_is_elementwise_and_never_across_scales_or_places() -> None:
     assert (t >= t).all()
     assert (t != u).all()
     for other in (tscale.Instants.from_seconds([1, 2], 0.5, scale="TAI"), t.at("GEOCENTER")):
-        for act in (t.minus, t.__eq__, t.__lt__):
+        for act in (t.minus, t.__eq__, t.__lt__, t.__sub__):
             with pytest.raises(tscale.errors.ScaleMismatch):
                 act(other)
+    assert (t == None) is False  # noqa: E711
+    assert None not in [t]
     with pytest.raises(tscale.errors.ScaleMismatch):
-        _ = t == 5
+        _ = t < 5  # type: ignore[operator]
+
+
+def test_plus_and_minus_are_shifted_and_minus() -> None:
+    t = tscale.Instants.from_seconds([1, 2], 0.5, scale="TT")
+    assert (t - t[0]).tolist() == [0.0, 1.0]
+    assert ((t + 0.25) == t.shifted(0.25)).all()
+    assert ((t - 0.25) == t.shifted(-0.25)).all()
+    assert (t.__add__((3, 0.25)) == t.shifted((3, 0.25))).all()
+
+
+def test_repr_never_raises() -> None:
+    assert "9223372036854775807" in repr(tscale.Instants.from_seconds(2**63 - 1, 0.0, scale="TT"))
+    assert "1950" not in repr(tscale.Instants.from_seconds(-1_600_000_000, 0.0, scale="UTC"))
 
 
 @pytest.mark.parametrize("bad", [float("nan"), float("inf"), -float("inf")])
@@ -187,6 +202,13 @@ def test_nan_and_infinity_carry_the_mask(bad: float) -> None:
         lambda: tscale.Instants.from_iso("1960-12-31T00:00:00", scale="UTC"),
         lambda: tscale.Instants.from_mjd(50000.5, 0.0, scale="TT"),
         lambda: tscale.Instants.concatenate([]),
+        lambda: tscale.Instants.from_mjd([1, 2], [0.1, 0.2, 0.3], scale="TT"),
+        lambda: tscale.Instants.from_seconds([1, 2], 0.0, scale="TT").shifted([1.0, 2.0, 3.0]),
+        lambda: tscale.Instants.from_seconds([1, 2], 0.0, scale="TT").shifted("1"),
+        lambda: (
+            tscale.Instants.from_seconds([1, 2], 0.0, scale="TT")
+            < tscale.Instants.from_seconds([1, 2, 3], 0.0, scale="TT")
+        ),
     ],
 )
 def test_bad_input_is_a_clear_error(act: object) -> None:

@@ -19,8 +19,10 @@ from tscale import exact
 from tscale.errors import DataFileError, ExtrapolationWarning, InvalidInput, OutOfSpan
 from tscale.exact import Pair
 from tscale.formats.leap_seconds import LeapSeconds
+from tscale.instants import Instants
 from tscale.tables import EarthOrientation
 from tscale.tables.iers_files import parse_c04, parse_earth_orientation, parse_finals
+from tscale.transforms.terrestrial import tai_to_ut1, ut1_to_tai
 
 ARCSEC = np.pi / 648000
 LEAP = LeapSeconds.default()
@@ -269,6 +271,55 @@ def test_a_cubic_of_tai_is_reproduced_across_leap_seconds() -> None:
     np.testing.assert_allclose(table.at(at).x_rad, 0.1 * ARCSEC, rtol=1e-14)
 
 
+def test_ut1_closes_at_the_rows(table: EarthOrientation) -> None:
+    """UTC -> UT1 -> UTC on every row and a ns around it: two roundings of a fraction below 1 (0.1 fs each)."""
+    mjd = np.arange(table.span[0] + 1, table.span[1])
+    for shift_s in (0.0, 1e-9, -1e-9):
+        tai = Instants.from_seconds(*tai_of(mjd), scale="TAI").shifted(shift_s)
+        back = ut1_to_tai(tai_to_ut1(tai, table), table)
+        assert np.abs(exact.seconds(exact.subtract(back.pair, tai.pair))).max() < 2.5e-16
+
+
+def test_cubics_meet_at_the_rows(table: EarthOrientation) -> None:
+    """The end of each cubic is the next row, to 2e-16 s of UT1-TAI less its whole seconds and 1e-21 rad of the pole."""
+    nodes = table._nodes
+    end = nodes.powers.sum(axis=1)[:-1]
+    step = np.diff(nodes.ut1_base)[:-1]
+    off = np.abs(end - step[:, None] * np.array([1, 0, 0, 0, 0]) - nodes.powers[1:, 0])
+    assert off[:, 0].max() < 5e-16
+    assert off[:, 1:].max() < 2e-21
+
+
+def test_motion_is_the_values_and_their_derivatives(table: EarthOrientation) -> None:
+    rng = np.random.default_rng(8)
+    tai = tai_of(rng.integers(37665, 61700, 2000), rng.integers(600, 85000, 2000), rng.random(2000))
+    motion, at = table.motion(tai), table.at(tai)
+    for mine, theirs in zip(motion[:5], at[:5], strict=True):
+        np.testing.assert_array_equal(mine, theirs)
+    np.testing.assert_allclose(motion.ut1_minus_tai_rate, table.ut1_rate(tai), rtol=0, atol=1e-22)
+    later, earlier = (table.at((tai[0] + k, tai[1])) for k in (300, -300))
+    # Over 600 s: 1.4e-14 s of rounding in UT1-TAI, ulps of 4e-22 rad in the pole; the cubics' third derivative leaves
+    # h^2/6 of less than 1e-2 s (4e-7 rad) per day^3: 2e-13 s/s and 1e-17 rad/s.
+    for column, limit in zip(range(5), (1e-12, *[1e-16] * 4), strict=True):
+        slope = (later[column] - earlier[column]) / 600
+        np.testing.assert_allclose(motion[5 + column], slope, rtol=0, atol=limit)
+        assert np.abs(motion[5 + column]).max() > 100 * limit
+
+
+def test_motion_where_values_are_held(table: EarthOrientation) -> None:
+    end = tai_of(table.span[1])
+    tai = (end[0] + np.array([-43200, 31557600]), np.zeros(2))
+    with pytest.warns(ExtrapolationWarning, match="1 of 2 instants are past the end") as caught:
+        motion = table.motion(tai)
+    assert caught[0].filename == __file__
+    for column in motion[5:8]:
+        assert column[0] != 0.0 == column[1]
+    with pytest.raises(OutOfSpan):
+        table.motion((-(10**10), 0.0))
+    one = table.motion((0, 0.5))
+    assert all(column.shape == () for column in one)
+
+
 @given(day=st.integers(37665, 61706), second=st.integers(0, 86399), fraction=st.floats(0, 1, exclude_max=True))
 def test_ut1_is_found_back(day: int, second: int, fraction: float) -> None:
     """The start for the inverse lies within 1e-12 s: UT1 runs at most 1e-7 off TAI, so one more pass is exact."""
@@ -402,6 +453,8 @@ def test_bad_options_are_refused() -> None:
         EarthOrientation.from_rows([58000, 58001], 0, 0, 0, after_end="guess")  # type: ignore[arg-type]
     with pytest.raises(InvalidInput, match="finite"):
         EarthOrientation.constant(ut1_minus_utc_s=np.inf)
+    with pytest.raises(InvalidInput, match=r"from MJD 58000 \(2017-09-04\) to MJD 57999 \(2017-09-03\)"):
+        EarthOrientation.constant(start_mjd=58000, end_mjd=57999)
 
 
 def test_layouts_are_told_apart() -> None:

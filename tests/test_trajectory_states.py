@@ -8,12 +8,14 @@ from hypothesis import given
 from hypothesis import strategies as st
 from jplephem.daf import DAF
 
+import tscale
 from tscale import Instants, Site, Trajectory
 from tscale.earth import Observer
 from tscale.earth.moving import bcrs_state, gcrs_state, tdb_from_tt_at_geocentre, tt_from_tdb_at_geocentre
 from tscale.ephemeris.spk_writer import spk_bytes
 from tscale.errors import InvalidInput, MissingPiece, OutOfSpan
 from tscale.trajectory.knots import Knots
+from tscale.trajectory.pieces import Piece, piece_numbers
 
 START = Instants.from_iso("2021-05-04T03:02:01.5", "TT")
 C_M_S = 299792458.0
@@ -258,7 +260,7 @@ def test_nothing_is_extrapolated(reference):
     table = sampled("hermite", 7)
     ends = START.shifted(np.array([0.0, 39 * 60.0]))
     table.gcrs(ends.pair, reference)
-    outside = START.shifted(np.array([[-1e-9, 5.0], [39 * 60.0 + 1e-9, 60.0]]))
+    outside = START.shifted(np.array([[-2e-9, 5.0], [39 * 60.0 + 2e-9, 60.0]]))
     with pytest.raises(
         OutOfSpan, match="2 of 4 dates lie outside the trajectory 'states', which covers 2021-05-04"
     ) as e:
@@ -269,6 +271,56 @@ def test_nothing_is_extrapolated(reference):
     assert table.span[0] == pytest.approx(START.whole + START.fraction)
     assert orbit().span == (-np.inf, np.inf)
     assert "any date" in repr(orbit())
+
+
+@pytest.mark.parametrize("scale", ["TCG", "TAI", "GPS"])
+def test_own_end_dates_are_inside_in_any_scale_of_the_earth(scale, reference):
+    # The dates of states come back from TCG to TT with a rounding of 0.1 fs, on either side of the ends.
+    r, v = orbit().gcrs(every(60.0, 8).pair, None)
+    chain = tscale.chain(scale, "TT", reference=reference)
+    length = 1 - 6.969290134e-10 if scale == "TCG" else 1.0  # x_TT = x_TCG (1 - L_G), TN36 eq. 1.1: 5 mm
+    for shift_s in np.random.default_rng(5).uniform(0, 3e8, 40):
+        t = tscale.chain("TT", scale, reference=reference)(every(60.0, 8).shifted(shift_s))
+        table = Trajectory.from_states(t, r, v)
+        got_r, got_v = table.gcrs(chain(t).pair, reference)
+        np.testing.assert_allclose(got_r, r * length, rtol=0, atol=1e-5)  # 7.5 km/s for 1 ns
+        np.testing.assert_allclose(got_v, v, rtol=0, atol=1e-8)  # 9 m/s2 for 1 ns
+
+
+def test_own_end_dates_are_inside_in_tcb(reference):
+    tdb = Instants.from_seconds(START.whole + 60 * np.arange(8), 0.25, "TDB")
+    r, v = np.tile([1e11, 2e11, 0.0], (8, 1)), np.zeros((8, 3))
+    back = tscale.chain("TCB", "TDB", reference=reference)
+    for shift_s in np.random.default_rng(6).uniform(0, 3e8, 40):
+        t = tscale.chain("TDB", "TCB", reference=reference)(tdb.shifted(shift_s))
+        table = Trajectory.from_states(t, r, v, "BCRS")
+        assert table.state_bcrs(back(t).pair, reference)[0].shape == (8, 3)
+
+
+@pytest.mark.parametrize(("method", "degree"), [("hermite", 7), ("lagrange", 5)])
+def test_a_rounding_past_an_end_goes_on_with_the_polynomial_there(method, degree):
+    table = sampled(method, degree)
+    for end_s, sign in ((0.0, -1), (39 * 60.0, 1)):
+        end = START.shifted(end_s)
+        r, v = table.gcrs(end.pair, None)
+        for by_s in (1e-16, 1e-12, 0.9e-9):
+            past_r, past_v = table.gcrs(end.shifted(sign * by_s).pair, None)
+            np.testing.assert_allclose(past_r, r + sign * by_s * v, rtol=0, atol=1e-8)  # a few ulp of 7e6 m
+            np.testing.assert_allclose(past_v, v, rtol=0, atol=2e-8)  # 9 m/s2 for 1 ns
+        with pytest.raises(OutOfSpan):
+            table.gcrs(end.shifted(sign * 1.1e-9).pair, None)
+
+
+def test_a_piece_that_covers_a_date_comes_before_one_a_rounding_away():
+    def piece(first, last):
+        ends = [(np.asarray(int(x // 1)), np.asarray(x % 1)) for x in (first, last)]
+        return Piece(orbit().pieces[0].motion, 399, "ICRF", *ends)
+
+    pieces = (piece(0.0, 10.0), piece(10.0, 20.0), piece(30.0, 40.0))
+    # Exact inside the first, on the shared end, a rounding past each, in the gap, before all and after all.
+    at = [(9, 1 - 1e-10), (10, 0.0), (20, 5e-10), (29, 1 - 5e-10), (25, 0.0), (-1, 1 - 5e-10), (40, 5e-10), (41, 0.0)]
+    whole, fraction = np.array([x[0] for x in at]), np.array([x[1] for x in at])
+    assert piece_numbers(pieces, (whole, fraction)).tolist() == [0, 1, 1, 2, -1, 0, 2, -1]
 
 
 @pytest.mark.parametrize(
@@ -364,3 +416,16 @@ def test_spk_probe_that_changes_its_centre(reference, probe):
     np.testing.assert_allclose(v[2] - mars_rate[2], np.array([2, 0, 4]) * 1e3 / 43200, rtol=0, atol=1e-9)
     with pytest.raises(OutOfSpan, match="2000-01-01T12:00:00 to 2000-01-21T12:00:00"):
         path.state_bcrs((np.array([-1]), np.array([0.0])), reference)
+
+
+def test_spk_ends_allow_a_rounding_and_stand_still_there(reference, probe):
+    path = Trajectory.from_spk(probe, target=-900)
+    first, last = (0, 0.0), (20 * 86400, 0.0)
+    before, after = (-1, 1 - 5e-10), (20 * 86400, 5e-10)
+    for end, past in ((first, before), (last, after)):
+        r, v = path.state_from_center(tuple(map(np.asarray, end)), reference)
+        past_r, past_v = path.state_from_center(tuple(map(np.asarray, past)), reference)
+        np.testing.assert_array_equal(past_r, r)
+        np.testing.assert_array_equal(past_v, v)
+    with pytest.raises(OutOfSpan):
+        path.state_from_center((np.asarray(20 * 86400), np.asarray(2e-9)), reference)

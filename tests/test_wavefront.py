@@ -277,6 +277,24 @@ def test_rate_of_the_whole_map_against_differencing(end: str, parallax_mas: floa
     assert np.max(np.abs(chain.rate(t))) > 1e-7
 
 
+def test_rate_of_the_higher_orders_near_the_sun(reference: tscale.ReferenceData) -> None:
+    # Differences of the second and third order alone, 60 s apart, at 1.2 solar radii: 1e-12 in the rate, to 1e-3 of it.
+    t0 = one("2024-04-04T00:00:00")
+    earth, sun = reference.ephemeris.positions(("earth", "sun"), t0)
+    toward = sun - earth
+    across = np.cross(toward, [0.0, 0.0, 1.0])
+    source = source_toward(toward + 1.2 * SUN_RADIUS_M * across / np.linalg.norm(across))
+
+    def terms(shift_s: float, second_order: bool) -> tuple[float, float]:
+        found = wavefront_terms(exact.add_seconds(t0, shift_s), reference, source, second_order=second_order)
+        return sum(float(v) for k, v in found.terms_s.items() if "order" in k), float(found.rate)
+
+    numeric = (terms(30.0, True)[0] - terms(-30.0, True)[0]) / 60.0
+    analytic = terms(0.0, True)[1] - terms(0.0, False)[1]
+    assert abs(analytic) > 1e-13
+    assert analytic == pytest.approx(numeric, rel=1e-3)
+
+
 def test_rate_of_scales_at_one_place_against_differencing() -> None:
     # UTC to TDB at a site, over 16 s: 2e-16 s of rounding, 5e-17.
     t = tscale.Instants.from_seconds(np.arange(40) * 2_000_003 - 700_000_000, 0.3, scale="UTC")
@@ -316,6 +334,7 @@ def test_a_moving_observatory_works_in_the_same_call(reference: tscale.Reference
         {"ra_deg": 12.0, "dec_deg": 91.0},
         {"ra_deg": 400.0, "dec_deg": 0.0},
         {"ra_deg": 12.0, "dec_deg": 0.0, "parallax_mas": -1.0},
+        {"ra_deg": 12.0, "dec_deg": 0.0, "parallax_mas": 2e4},
         {"ra_deg": 12.0, "dec_deg": 0.0, "pm_dec_mas_yr": float("inf")},
         {"ra_deg": 12.0, "dec_deg": 0.0, "epoch": "yesterday"},
         {"ra_deg": "12h", "dec_deg": 0.0},

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
+from typing import Any
 
 import numpy as np
 
@@ -40,6 +41,7 @@ class Chain:
         self.end = end
         self.steps = tuple(route(start, end, supplies))
         self.reference = supplies.reference
+        self._supplies = supplies
         self._quick = tuple(shortened(self.steps, supplies))
 
     def __call__(self, t: Instants) -> Instants:
@@ -114,6 +116,10 @@ class Chain:
         stations[-1] = stations[-1].at(self.end.place or stations[-1].place)
         return stations
 
+    def __reduce__(self) -> tuple[Any, ...]:
+        # Steps are closures; what they were made of travels, and they are made again.
+        return (Chain, (self.start, self.end, self._supplies))
+
     def __str__(self) -> str:
         return " -> ".join(str(node) for node in (self.start, *(step.end for step in self.steps)))
 
@@ -168,6 +174,7 @@ def chain(
     InvalidInput
         Unknown scales or places.
     """
+    _check_pieces(site, clocks, source, reference)
     first, last = Node.parse(start), Node.parse(end)
     if first.place is None:
         first = Node(first.scale, "TOPOCENTER" if site is not None else last.place)
@@ -175,3 +182,29 @@ def chain(
         last = Node(last.scale, first.place)
     tables = ReferenceData.default() if reference is None else reference
     return Chain(first, last, Supplies(tables, site, tuple(clocks), source, second_order))
+
+
+def _check_pieces(site: Any, clocks: Any, source: Any, reference: Any) -> None:
+    if site is not None and not isinstance(site, Observer):
+        raise InvalidInput(f"site= takes a Site or a Trajectory, got {_kind(site)}; read a file with Site.load(path)")
+    if isinstance(clocks, ClockLog):
+        raise InvalidInput("clocks= takes a list of logs: write clocks=[log]")
+    if isinstance(clocks, str) or not isinstance(clocks, Iterable):
+        raise InvalidInput(
+            f"clocks= takes a list of ClockLog, got {_kind(clocks)}; read files with ClockLog.load(path)"
+        )
+    for log in clocks:
+        if not isinstance(log, ClockLog):
+            raise InvalidInput(
+                f"clocks= takes a list of ClockLog, one is {_kind(log)}; read files with ClockLog.load(path)"
+            )
+    if source is not None and not isinstance(source, Source):
+        raise InvalidInput(f"source= takes a Source, got {_kind(source)}; make one with Source(ra_deg, dec_deg)")
+    if reference is not None and not isinstance(reference, ReferenceData):
+        raise InvalidInput(
+            f"reference= takes a ReferenceData, got {_kind(reference)}; make one with ReferenceData.load()"
+        )
+
+
+def _kind(value: Any) -> str:
+    return f"{value!r:.60}" if isinstance(value, str | int | float) else type(value).__name__

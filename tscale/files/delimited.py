@@ -1,20 +1,23 @@
 """Delimited text (RFC 4180) read in blocks, with the line of every row and its text as it stood.
 
-Lines that begin with `#`, and blank lines, are no rows: they are kept at their place and handed on.
+Lines that begin with `#`, and blank lines, are no rows: they are kept at their place and handed on. A mark of byte order
+is left out. Written rows end like the first line: with CRLF, or else with LF.
 """
 
 from __future__ import annotations
 
 import csv
-from collections.abc import Iterable, Iterator, Sequence
+import time
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
 from typing import Final
 
 from ..errors import DataFileError, InvalidInput
 
-__all__ = ["DelimitedReader", "RowBlock", "delimiter_of", "encode_row"]
+__all__ = ["DelimitedReader", "RowBlock", "delimiter_hint", "delimiter_of", "encode_row"]
 
 _NAMED_DELIMITERS: Final = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "\\t": "\t"}
+_LONGEST_WAIT_S: Final = 0.25
 
 
 def delimiter_of(text: str) -> str:
@@ -23,6 +26,14 @@ def delimiter_of(text: str) -> str:
     if len(found) != 1 or found in '\r\n"#' or found.isalnum():
         raise InvalidInput(f"a delimiter is one character or one of {', '.join(_NAMED_DELIMITERS)}; got {text!r}")
     return found
+
+
+def delimiter_hint(header: Sequence[str]) -> str:
+    """What to add to a complaint where the header is one name that holds a delimiter; else nothing."""
+    for word, character in _NAMED_DELIMITERS.items():
+        if len(header) == 1 and character in header[0]:
+            return f" (the header holds {character!r}: --delimiter {word})"
+    return ""
 
 
 def encode_row(fields: Iterable[str], delimiter: str = ",") -> str:
@@ -91,6 +102,8 @@ class DelimitedReader:
         Names of the columns.
     header_text : str
         The header as it stood.
+    header_line : int
+        Its line, from 1.
     preamble : list of str
         Comments and blank lines above it.
     column : str
@@ -119,19 +132,26 @@ class DelimitedReader:
             raise DataFileError("the input is empty; it needs a header line and rows below it", path=name)
         self.header = [text.strip() for text in header]
         self.header_text = self._text()
+        self.header_line = self._start
         self.preamble = self._aside
         self._aside = []
         self._index = self._find(column)
         self.column = self.header[self._index]
 
-    def blocks(self, rows: int) -> Iterator[RowBlock]:
-        """Blocks of at most `rows` rows; the last one may hold comments alone."""
+    def blocks(self, rows: int, ready: Callable[[], bool] | None = None) -> Iterator[RowBlock]:
+        """Blocks of at most `rows` rows; the last one may hold comments alone.
+
+        With `ready`, which says whether more lines are at hand, a block ends where the next row would have to be
+        waited for, or after a quarter of a second.
+        """
         width, index = len(self.header), self._index
         block = RowBlock()
+        start = time.monotonic()
         while (fields := self._next()) is not None:
             if len(fields) != width:
                 raise DataFileError(
-                    f"this row has {len(fields)} fields, the header has {width}: {', '.join(self.header)}",
+                    f"this row has {len(fields)} {'field' if len(fields) == 1 else 'fields'}, the header has {width}: "
+                    f"{', '.join(self.header)}{delimiter_hint(self.header)}",
                     path=self.name,
                     row=self._start,
                 )
@@ -140,9 +160,11 @@ class DelimitedReader:
             block.column.append(fields[index])
             block.texts.append(self._text())
             block.lines.append(self._start)
-            if len(block) == rows:
+            full = len(block) == rows
+            if full or (ready is not None and (time.monotonic() - start > _LONGEST_WAIT_S or not ready())):
                 yield block
                 block = RowBlock()
+                start = time.monotonic()
         self._hand_over(block)
         if len(block) or block.aside:
             yield block
@@ -155,6 +177,7 @@ class DelimitedReader:
         """Lines for the parser; comments and blank lines between rows are set aside."""
         for line in stream:
             self._line += 1
+            self._check(line)
             if self._line == 1:
                 line = line.removeprefix("\ufeff")
                 if line.endswith("\r\n"):
@@ -170,13 +193,31 @@ class DelimitedReader:
                 self._raw.append(line)
             yield line
 
+    def _check(self, line: str) -> None:
+        """Refuse what is no text."""
+        if "\0" in line:
+            raise DataFileError("this line holds a NUL character: the file is no text", path=self.name, row=self._line)
+        if line.isascii():
+            return
+        try:
+            line.encode("utf-8")
+        except UnicodeEncodeError as error:
+            byte = ord(line[error.start]) & 0xFF
+            raise DataFileError(
+                f"this line is no UTF-8 text (byte 0x{byte:02x} after {error.start} characters); save the file as UTF-8",
+                path=self.name,
+                row=self._line,
+            ) from error
+
     def _next(self) -> list[str] | None:
         """Fields of the next row, or None at the end."""
         self._fresh = True
         try:
             return next(self._rows, None)
         except csv.Error as error:
-            raise DataFileError(f"this row cannot be read: {error}", path=self.name, row=self._start) from error
+            # The parser's limit to a field is met where a quote is opened and never closed.
+            why = f"{error}; is a quote left open?" if "limit" in str(error) or "end of data" in str(error) else error
+            raise DataFileError(f"this row cannot be read: {why}", path=self.name, row=self._start) from error
         except UnicodeDecodeError as error:
             raise DataFileError(
                 f"this is no UTF-8 text ({error.reason} near here); save the file as UTF-8",
@@ -194,7 +235,8 @@ class DelimitedReader:
         if len(places) != 1:
             how = "no column" if not places else f"{len(places)} columns"
             raise DataFileError(
-                f"there is {how} called {column!r}; the header has {', '.join(self.header)}",
+                f"there is {how} called {column!r}; the header has {', '.join(self.header)}"
+                + delimiter_hint(self.header),
                 path=self.name,
                 row=self._start,
             )

@@ -10,7 +10,7 @@ from ..constants import MJD_J2000
 from ..errors import InvalidInput
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 
-__all__ = ["Label", "days", "finite", "first_item", "integers", "label", "pair"]
+__all__ = ["Label", "days", "finite", "first_item", "integers", "label", "pair", "together"]
 
 Label: TypeAlias = tuple[IntArray, IntArray, FloatArray]
 """A label as (MJD day, whole seconds of the day, fraction of a second in [0, 1))."""
@@ -69,13 +69,13 @@ def pair(seconds: Any) -> Pair:
     if count.size and (int(count.min()) < -_MOST_SECONDS or int(count.max()) > _MOST_SECONDS):
         far = np.asarray((count < -_MOST_SECONDS) | (count > _MOST_SECONDS))
         raise InvalidInput("counts must lie within 8.6e18 s (270 Gyr) of 0 to have a label", mask=far)
-    whole, fraction = np.broadcast_arrays(count, _fractions(seconds[1]))
+    whole, fraction = together(count, _fractions(seconds[1]))
     return whole, fraction
 
 
 def label(day: Any, whole: Any, fraction: Any) -> Label:
     """Check the parts of a label and bring them to one shape."""
-    parts = np.broadcast_arrays(days(day), integers(whole, "whole seconds", _APART), _fractions(fraction))
+    parts = together(days(day), integers(whole, "whole seconds", _APART), _fractions(fraction))
     return parts[0], parts[1], parts[2]
 
 
@@ -85,3 +85,12 @@ def _fractions(values: Any) -> FloatArray:
         bad = np.asarray(~((array >= 0.0) & (array < 1.0)))
         raise InvalidInput("the fraction of a second must be in [0, 1); carry whole seconds apart", mask=bad)
     return array
+
+
+def together(*arrays: Any) -> tuple[Any, ...]:
+    """Broadcast arrays, or say that their shapes do not go together."""
+    try:
+        return tuple(np.broadcast_arrays(*arrays))
+    except ValueError as error:
+        shapes = " and ".join(str(np.shape(array)) for array in arrays)
+        raise InvalidInput(f"shapes {shapes} do not go together; give equal ones, or ones that broadcast") from error

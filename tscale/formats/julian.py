@@ -15,7 +15,7 @@ import numpy.typing as npt
 
 from ..errors import InvalidInput
 from ..exact import FloatArray, IntArray, normalise, two_product, two_sum
-from .checks import Label, days, finite
+from .checks import Label, days, finite, together
 from .checks import label as checked
 from .labels import DayLength
 
@@ -108,7 +108,7 @@ def _fractions(fraction: Any) -> FloatArray:
 
 def _label(day: IntArray, high: FloatArray, low: FloatArray, day_length: DayLength | None) -> Label:
     """Label of day + (high + low), exact up to one rounding of the fraction of a second."""
-    day, high, low = np.broadcast_arrays(day, high, low)
+    day, high, low = together(day, high, low)
     length = day_length or DayLength()
     carry = np.floor(high)
     # The unevaluated sum: a tiny negative fraction is just below 1 of the day before, and 1.0 cannot say so alone.

@@ -21,7 +21,7 @@ from ..scales import Scale
 from . import decimals
 from .checks import Label, first_item, pair
 from .checks import label as checked
-from .leap_seconds import LeapSeconds
+from .leap_seconds import LeapSeconds, day_words
 
 __all__ = ["DayLength", "count", "day_length", "label", "round_label", "warn_if_expired"]
 
@@ -115,7 +115,8 @@ def count(kind: Scale, face: Label, leap_seconds: LeapSeconds | None = None) -> 
         at = first_item(bad)
         raise TextError(
             f"{int(np.count_nonzero(bad))} of {bad.size} labels do not exist: {kind} has no leap seconds, "
-            f"its days have 86400 s; the first (item {at}) is second {second.flat[at]} of MJD {day.flat[at]}",
+            f"its days have 86400 s; the first (item {at}) is second {second.flat[at]} of "
+            f"{day_words(day.flat[at])}",
             mask=bad,
         )
     return np.asarray((day - MJD_J2000) * DAY_S + (second - DAY_S // 2)), np.array(fraction)
@@ -171,7 +172,7 @@ def warn_if_expired(kind: Scale, seconds: Pair, leap_seconds: LeapSeconds | None
     if expired:
         warnings.warn(
             f"{expired} of {np.size(seconds[0])} {kind} labels are past the expiry of the leap-second table "
-            f"{table.name!r} (MJD {table.expires_mjd}): they hold if no further leap second is announced",
+            f"{table.name!r} on {day_words(table.expires_mjd or 0)}: they hold if no further leap second is announced",
             ExtrapolationWarning,
             stacklevel=4,
         )

@@ -26,10 +26,16 @@ from .leap_second_files import read_leap_file
 from .leap_second_rows import DRIFT_ROWS, LeapRow, day_number, row_of
 from .leap_second_table import Spans
 
-__all__ = ["LeapRow", "LeapSeconds"]
+__all__ = ["LeapRow", "LeapSeconds", "day_words"]
 
 _DAY: Final = 86400
 _HALF: Final = 43200
+
+
+def day_words(mjd: Any) -> str:
+    """Spell a day for messages: calendar date and MJD."""
+    year, month, day = date_from_mjd(mjd)
+    return f"{year}-{month:02d}-{day:02d} (MJD {mjd})"
 
 
 @dataclass(frozen=True)
@@ -67,7 +73,7 @@ class LeapSeconds:
         object.__setattr__(self, "_spans", Spans.of(self.rows))
         if self.expires_mjd is not None and self.expires_mjd <= self.start_mjd:
             raise InvalidInput(
-                f"a leap-second table that starts on MJD {self.start_mjd} cannot expire on {self.expires_mjd}"
+                f"a table that starts on {day_words(self.start_mjd)} cannot expire on {day_words(self.expires_mjd)}"
             )
 
     @classmethod
@@ -130,7 +136,7 @@ class LeapSeconds:
         `mjd` must come after the last row. The expiry stays as it is (see `with_expiry`).
         """
         rows = (*self.rows, row_of((mjd, tai_minus_utc_s)))
-        made = self.from_rows(rows, f"{self.name} with {tai_minus_utc_s} s from MJD {mjd}")
+        made = self.from_rows(rows, f"{self.name} with {tai_minus_utc_s} s from {day_words(rows[-1].mjd)}")
         return LeapSeconds(made.rows, made.name, made.sha256, self.expires_mjd, self.issued)
 
     def with_expiry(self, mjd: int | None) -> LeapSeconds:
@@ -187,8 +193,7 @@ class LeapSeconds:
         """
         day = days(day)
         self._check_start(np.asarray(day < self.start_mjd))
-        whole = np.full(day.shape, _DAY, dtype=np.int64)
-        fraction = np.zeros(day.shape)
+        whole, fraction = np.full(day.shape, _DAY, dtype=np.int64), np.zeros(day.shape)
         row, last = self._spans.last_day(day)
         if np.any(last):
             whole[last] = self._spans.end_whole[row[last]]
@@ -229,8 +234,7 @@ class LeapSeconds:
         self._check_label(day, whole, fraction)
         if first >= spans.plain_from:
             row = spans.row_of_day(day, first)
-            count = (day - MJD_J2000) * _DAY + (whole + (spans.plain_shift[row] - _HALF))
-            return np.asarray(count), fraction.copy()
+            return np.asarray((day - MJD_J2000) * _DAY + (whole + (spans.plain_shift[row] - _HALF))), fraction.copy()
         return spans.count(spans.row_of_day(day, first), day, whole, fraction)
 
     def label_from_count(self, utc: Pair) -> Label:
@@ -264,7 +268,7 @@ class LeapSeconds:
         if np.any(early):
             raise OutOfSpan(
                 f"{int(np.count_nonzero(early))} of {early.size} instants are before the UTC table {self.name!r}, "
-                f"which starts at MJD {self.start_mjd}; date earlier instants in TAI, TT or UT1",
+                f"which starts on {day_words(self.start_mjd)}; date earlier instants in TAI, TT or UT1",
                 mask=early,
             )
 
@@ -275,11 +279,10 @@ class LeapSeconds:
         bad = np.asarray((whole < 0) | (whole > length) | ((whole == length) & (fraction >= rest)))
         if np.any(bad):
             at = first_item(bad)
-            year, month, date = date_from_mjd(day.flat[at])
             second_s, length_s = whole.flat[at] + fraction.flat[at], length.flat[at] + rest.flat[at]
             raise TextError(
                 f"{int(np.count_nonzero(bad))} of {bad.size} labels do not exist in the UTC table {self.name!r}: "
-                f"first, item {at}: second {second_s:.9f} of {year}-{month:02d}-{date:02d}, a day of {length_s:.9f} s",
+                f"first, item {at}: second {second_s:.9f} of {day_words(day.flat[at])}, a day of {length_s:.9f} s",
                 mask=bad,
             )
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal, Protocol, TypeAlias
+from typing import TYPE_CHECKING, Final, Literal, Protocol, TypeAlias
 
 import numpy as np
 
@@ -21,6 +21,8 @@ __all__ = ["Axes", "Motion", "Piece", "SegmentMotion", "cover_words", "piece_num
 Axes: TypeAlias = Literal["ICRF", "ITRS"]
 
 _KM_M = 1e3
+_SLACK_S: Final = 1e-9
+"""How far past an end a date may lie: what its roundings on the way through other scales come to, as in the tables."""
 # Bodies that planetary ephemerides hold: the barycentre, the planets (systems), the Sun, the Moon and the Earth.
 _PLANETARY = frozenset((*range(11), 301, 399))
 
@@ -29,7 +31,10 @@ class Motion(Protocol):
     """Where something is with respect to its centre."""
 
     def state(self, count: Pair) -> tuple[FloatArray, FloatArray]:
-        """Position (m) and velocity (m/s), (n, 3) each, at 1-d counts inside the span of the piece."""
+        """Position (m) and velocity (m/s), (n, 3) each, at 1-d counts inside the span of the piece or 1 ns outside it.
+
+        In that nanosecond the motion at the end goes on or stands still.
+        """
         ...
 
 
@@ -51,16 +56,30 @@ class Piece:
 
 
 def piece_numbers(pieces: tuple[Piece, ...], count: Pair) -> IntArray:
-    """Which piece answers for each 1-d count: the last that covers it, -1 for none. Ends are compared exactly."""
+    """Which piece answers for each 1-d count: the last that covers it, -1 for none.
+
+    Ends are compared exactly. Counts that no piece covers, but which lie within 1 ns of an end, belong to
+    that piece: dates that were carried through another scale come back to their own end with a rounding (0.1 fs). A
+    low orbit moves by 8 um in that time.
+    """
     which = np.full(count[0].shape, -1, dtype=np.int64)
+    _claim(pieces, count, which, 0.0)
+    left = np.flatnonzero(which < 0)
+    if left.size:
+        near = np.full(left.shape, -1, dtype=np.int64)
+        _claim(pieces, (count[0][left], count[1][left]), near, _SLACK_S)
+        which[left] = near
+    return which
+
+
+def _claim(pieces: tuple[Piece, ...], count: Pair, which: IntArray, slack_s: float) -> None:
     for number, piece in enumerate(pieces):
         inside = np.ones(which.shape, dtype=np.bool_)
         if piece.first is not None:
-            inside &= since(count, piece.first) >= 0
+            inside &= since(count, piece.first) >= -slack_s
         if piece.last is not None:
-            inside &= since(count, piece.last) <= 0
+            inside &= since(count, piece.last) <= slack_s
         which[inside] = number
-    return which
 
 
 def cover_words(pieces: tuple[Piece, ...]) -> str:
@@ -84,7 +103,8 @@ class SegmentMotion:
         self._top = top
 
     def state(self, count: Pair) -> tuple[FloatArray, FloatArray]:
-        """See `Motion.state`."""
+        """See `Motion.state`; the bodies above end where the segment does, so counts are moved to its ends."""
+        count = self._clipped(count)
         position, velocity = self._segment.evaluate(count[0], count[1], True, {})
         if velocity is None:
             raise DataFileError(f"{self._kernel.name} gives no velocities", path=self._kernel.path)
@@ -93,6 +113,15 @@ class SegmentMotion:
             up_r, up_v = self._kernel.state(self._segment.center, count, self._top)
             r, v = r + up_r, v + up_v
         return r, v
+
+    def _clipped(self, count: Pair) -> Pair:
+        whole, fraction = count
+        for end_s, sign in ((self._segment.start_s, 1), (self._segment.end_s, -1)):
+            end = _pair(end_s)
+            past = sign * since(count, end) < 0.0
+            if past.any():
+                whole, fraction = np.where(past, end[0], whole), np.where(past, end[1], fraction)
+        return whole, fraction
 
 
 def segment_pieces(kernel: Ephemeris, segments: tuple[Segment, ...], target: int) -> tuple[Piece, ...]:

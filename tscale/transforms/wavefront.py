@@ -167,10 +167,10 @@ def wavefront_terms(
         See `earth.moving.observer_event`; for dates that are still being sought.
     """
     # A barycentric position rounds to 0.1 ps. So that a date and the same date found on the way back, 1e-16 s apart,
-    # see the same rounding, all is evaluated on a grid of 1 us and carried on from there in a straight line.
-    grid = np.floor(tdb[1] * _GRID_PER_S) / _GRID_PER_S
+    # see the same rounding, all is evaluated on the nearest of a grid of 1 us and carried on in a straight line.
+    grid = np.round(tdb[1] * _GRID_PER_S) / _GRID_PER_S
     beyond_s = tdb[1] - grid
-    tdb = (tdb[0], grid)
+    tdb = exact.normalise(tdb[0], grid)
     x, v, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=with_rate, loose=loose)
     # The direction is the one at the barycentric date; the first guess of that date is good to 4e-7 s
     # even for the largest proper motion known, and a microsecond moves no direction by 1e-17 rad.
@@ -253,7 +253,7 @@ def barycenter_to_observer(
     """TDB at the barycentre -> TDB at which the wavefront meets an observer, by Newton's method.
 
     The start, from the plane wave at the geocentre, is off by 50 ms for an observer near the Earth; the steps leave
-    1e-13 s, then the rounding of the positions. Raises `NotConverged` if the sixth still moves a date by 1e-8 s.
+    1e-13 s, then the rounding of the positions. Raises `NotConverged` if the sixth still moves a date by 1 ps.
     """
     require_scale(t, "TDB")
     barycentric = isinstance(observer, Barycentric) and not observer.geocentric
@@ -264,7 +264,7 @@ def barycenter_to_observer(
         missing = exact.seconds(exact.subtract(terms.later(guess), t.pair))
         step = missing / (1.0 + terms.rate)
         guess = exact.add_seconds(guess, -step)
-        if np.max(np.abs(step), initial=0.0) < 1e-8:  # quadratic: the next step would be below 1e-20 s
+        if np.max(np.abs(step), initial=0.0) < 1e-12:  # so that the grid used is that of the date found
             if observer is not None and hasattr(observer, "clip"):
                 observer_state(guess, reference, observer)  # raises where the date found lies outside its span
             return Instants._of(guess, "TDB", "GEOCENTER" if observer is None else "TOPOCENTER")
