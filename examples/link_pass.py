@@ -1,7 +1,7 @@
 """Packets from an invented observatory to an invented Mars orbiter: when they arrive, and when the answer is back.
 
 They are sent at readings of the maser of Kestrel Ridge, carried to UTC by the comparison logs beside this file. Run
-from anywhere; the table of all packets is written to the folder you are in::
+from anywhere; `--output` writes the table of all packets::
 
     python examples/link_pass.py [--output link_pass.csv] [--plot link_pass.png]
 
@@ -42,7 +42,7 @@ def windows(clear: np.ndarray) -> list[tuple[int, int]]:
 
 def main() -> None:
     parser = argparse.ArgumentParser(description="Packets to an invented Mars orbiter and back.")
-    parser.add_argument("--output", type=Path, default=Path("link_pass.csv"), help="CSV file (default: %(default)s)")
+    parser.add_argument("--output", type=Path, help="CSV file of all packets")
     parser.add_argument("--plot", type=Path, help="picture, PNG, PDF or SVG")
     args = parser.parse_args()
 
@@ -67,12 +67,13 @@ def main() -> None:
         "range rate up, m/s": [f"{x:.6f}" for x in trip.up.range_rate_m_s],
         "path": ["blocked" if x else "clear" for x in trip.occulted],
     }
-    temporary = args.output.with_name(args.output.name + ".part")
-    with temporary.open("w", encoding="utf-8", newline="") as file:
-        writer = csv.writer(file, lineterminator="\n")
-        writer.writerow(columns)
-        writer.writerows(zip(*columns.values(), strict=True))
-    os.replace(temporary, args.output)
+    if args.output:
+        temporary = args.output.with_name(args.output.name + ".part")
+        with temporary.open("w", encoding="utf-8", newline="") as file:
+            writer = csv.writer(file, lineterminator="\n")
+            writer.writerow(columns)
+            writer.writerows(zip(*columns.values(), strict=True))
+        os.replace(temporary, args.output)
 
     print(f"{len(readings)} packets, one every {EVERY_S} s; {int((~trip.occulted).sum())} have a clear path both ways")
     print(f"\n{'from':<21}{'to':<21}{'round trip, s':>24}{'range rate, km/s':>22}{'elevation, deg':>18}")
@@ -87,7 +88,8 @@ def main() -> None:
         )
     start = windows(~trip.occulted)[0][0]
     print(f"\nThe first packet with a clear path, on its way up:\n\n{trip.up.table(start)}")
-    print(f"\nwritten: {args.output}")
+    if args.output:
+        print(f"\nwritten: {args.output}")
     if args.plot:
         from tscale.plots import save_link_picture
 

@@ -19,6 +19,7 @@ FLOORS = {
     "errors": 1,
     "scales": 1,
     "exact": 1,
+    "counts": 2,
     "formats": 2,
     "instants": 2,
     "tables": 3,
@@ -39,6 +40,7 @@ FLOORS = {
     "interop": 7,
     "plots": 7,
     "cli": 7,
+    "__main__": 7,
 }
 
 

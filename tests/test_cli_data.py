@@ -93,7 +93,7 @@ def test_version_and_help(capsys: pytest.CaptureFixture[str]) -> None:
 def test_help_is_light() -> None:
     script = (
         "import sys\n"
-        "from tscale.cli.main import parser\n"
+        "from tscale.cli.command import parser\n"
         "parser().format_help()\n"
         "assert 'numpy' not in sys.modules, 'help loads numpy'\n"
     )

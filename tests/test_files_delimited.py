@@ -60,7 +60,7 @@ def test_column_lines_and_endings() -> None:
         ("# only\n\n", None, None, "empty"),
         ("a,b\n1,2\n", "c", 1, "no column called 'c'"),
         ("a,a\n1,2\n", "a", 1, "2 columns called 'a'"),
-        ("a,b\n1,2\n3\n", None, 3, "1 fields, the header has 2"),
+        ("a,b\n1,2\n3\n", None, 3, "1 field, the header has 2"),
         ("a,b\n1,2\n3,4,5\n", None, 3, "3 fields"),
         ('a,b\n1,2\n3,"4\n5,6\n', None, 3, "cannot be read"),
         ('a,b\n1,"2"x\n', None, 2, "cannot be read"),

@@ -14,7 +14,6 @@ import pytest
 
 import tscale
 from tscale import Instants, errors
-from tscale.cli import link as link_command
 from tscale.cli import main as entry
 
 SITE = """\
@@ -50,11 +49,6 @@ def folder(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
         (tmp_path / name).write_text(text)
     monkeypatch.chdir(tmp_path)
     return tmp_path
-
-
-@pytest.fixture(autouse=True)
-def _command(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(entry, "COMMANDS", tuple(dict.fromkeys((*entry.COMMANDS, link_command))))
 
 
 def run(*words: str) -> int:
@@ -276,7 +270,7 @@ def test_example_runs(folder: Path, monkeypatch: pytest.MonkeyPatch, capsys: pyt
     script = Path(tscale.__file__).parents[1] / "examples" / "link_pass.py"
     if not script.is_file():
         pytest.fail("the examples stand beside the package in a checkout")
-    monkeypatch.setattr(sys, "argv", [str(script), "--plot", "pass.png"])
+    monkeypatch.setattr(sys, "argv", [str(script), "--output", "link_pass.csv", "--plot", "pass.png"])
     runpy.run_path(str(script), run_name="__main__")
     out = capsys.readouterr().out
     assert "packets" in out

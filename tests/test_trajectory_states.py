@@ -275,26 +275,29 @@ def test_nothing_is_extrapolated(reference):
 
 @pytest.mark.parametrize("scale", ["TCG", "TAI", "GPS"])
 def test_own_end_dates_are_inside_in_any_scale_of_the_earth(scale, reference):
-    # The dates of states come back from TCG to TT with a rounding of 0.1 fs, on either side of the ends.
+    # States dated in TCG: the TT that those dates were made from lies 0.1 fs to either side of the ends.
     r, v = orbit().gcrs(every(60.0, 8).pair, None)
-    chain = tscale.chain(scale, "TT", reference=reference)
+    there, back = tscale.chain("TT", scale, reference=reference), tscale.chain(scale, "TT", reference=reference)
     length = 1 - 6.969290134e-10 if scale == "TCG" else 1.0  # x_TT = x_TCG (1 - L_G), TN36 eq. 1.1: 5 mm
     for shift_s in np.random.default_rng(5).uniform(0, 3e8, 40):
-        t = tscale.chain("TT", scale, reference=reference)(every(60.0, 8).shifted(shift_s))
+        tt = every(60.0, 8).shifted(shift_s)
+        t = there(tt)
         table = Trajectory.from_states(t, r, v)
-        got_r, got_v = table.gcrs(chain(t).pair, reference)
-        np.testing.assert_allclose(got_r, r * length, rtol=0, atol=1e-5)  # 7.5 km/s for 1 ns
-        np.testing.assert_allclose(got_v, v, rtol=0, atol=1e-8)  # 9 m/s2 for 1 ns
+        for at in (tt, back(t)):
+            got_r, got_v = table.gcrs(at.pair, reference)
+            np.testing.assert_allclose(got_r, r * length, rtol=0, atol=1e-5)  # 7.5 km/s for 1 ns
+            np.testing.assert_allclose(got_v, v, rtol=0, atol=1e-8)  # 9 m/s2 for 1 ns
 
 
 def test_own_end_dates_are_inside_in_tcb(reference):
-    tdb = Instants.from_seconds(START.whole + 60 * np.arange(8), 0.25, "TDB")
+    start = Instants.from_seconds(START.whole + 60 * np.arange(8), 0.25, "TDB")
     r, v = np.tile([1e11, 2e11, 0.0], (8, 1)), np.zeros((8, 3))
-    back = tscale.chain("TCB", "TDB", reference=reference)
     for shift_s in np.random.default_rng(6).uniform(0, 3e8, 40):
-        t = tscale.chain("TDB", "TCB", reference=reference)(tdb.shifted(shift_s))
-        table = Trajectory.from_states(t, r, v, "BCRS")
-        assert table.state_bcrs(back(t).pair, reference)[0].shape == (8, 3)
+        tdb = start.shifted(shift_s)
+        table = Trajectory.from_states(tscale.chain("TDB", "TCB", reference=reference)(tdb), r, v, "BCRS")
+        # x_TDB = x_TCB (1 - L_B), TN36 eq. 1.2: 3.5 km; two ulp of 2e11 m.
+        got_r, _ = table.state_bcrs(tdb.pair, reference)
+        np.testing.assert_allclose(got_r, r * (1 - 1.550519768e-8), rtol=0, atol=6e-5)
 
 
 @pytest.mark.parametrize(("method", "degree"), [("hermite", 7), ("lagrange", 5)])

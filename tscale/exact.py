@@ -22,6 +22,9 @@ BoolArray: TypeAlias = npt.NDArray[np.bool_]
 Pair: TypeAlias = tuple[IntArray, FloatArray]
 """Seconds as (whole, fraction), any shape; the fraction lies in [0, 1)."""
 
+MOST_S: Final = 2**62 - 1
+"""Largest count or shift, s: 146 Gyr."""
+
 _SPLITTER: Final = 134217729.0  # 2**27 + 1, halves a 53-bit significand
 
 
@@ -108,25 +111,47 @@ def seconds(a: Pair) -> FloatArray:
 
 
 def multiply(a: Pair, factor: Factor) -> Pair:
-    """A pair times a two-part constant, to 0.5 fs for |product| < 2**53.
+    """A pair times a two-part constant, rounded once, for |product| < 2**62."""
+    whole, pieces = _product(a[0], a[1], 0.0, factor)
+    return _collect(whole, pieces)
 
-    The whole part is split below 2**32, so that each partial product is exact also for counts
-    that no float64 holds.
+
+def affine(a: Pair, origin: Pair, factor: Factor, offset_s: float = 0.0) -> Pair:
+    """A + offset_s + factor (a - origin), rounded once: a linear relation between two scales."""
+    fraction, rest = two_sum(a[1], -origin[1])
+    whole, pieces = _product(a[0] - origin[0], fraction, rest, factor)
+    return _collect(a[0] + whole, (a[1], offset_s, *pieces))
+
+
+def _product(whole: Any, fraction: Any, rest: Any, factor: Factor) -> tuple[Any, tuple[Any, ...]]:
+    """(whole + fraction + rest) times a constant: whole seconds, and floats below 1 to be added, large ones first.
+
+    The whole part is split below 2**32, so that each partial product is exact also for counts that no float64 holds.
     """
-    upper = (a[0] >> 32).astype(np.float64) * 4294967296.0
-    lower = (a[0] & 0xFFFFFFFF).astype(np.float64)
+    upper = (whole >> 32).astype(np.float64) * 4294967296.0
+    lower = (whole & 0xFFFFFFFF).astype(np.float64)
     product, error = two_product(lower, factor.high)
     carry = np.floor(product)
-    rest = (product - carry) + (error + lower * factor.low + a[1] * factor.high)
-    whole = carry.astype(np.int64)
-    if np.any(upper):
-        product, error = two_product(upper, factor.high)
-        carry = np.floor(product)
-        low, low_error = two_product(upper, factor.low)
-        low_carry = np.floor(low)
-        whole = whole + carry.astype(np.int64) + low_carry.astype(np.int64)
-        rest = rest + (product - carry) + (error + ((low - low_carry) + low_error))
-    return normalise(whole, rest)
+    total = carry.astype(np.int64)
+    small = error + lower * factor.low + (fraction * factor.high + rest * factor.high)
+    if not np.any(upper):
+        return total, (product - carry, small)
+    high, high_error = two_product(upper, factor.high)
+    high_carry = np.floor(high)
+    low, low_error = two_product(upper, factor.low)
+    low_carry = np.floor(low)
+    total = total + high_carry.astype(np.int64) + low_carry.astype(np.int64)
+    return total, (product - carry, high - high_carry, low - low_carry, high_error, small + low_error)
+
+
+def _collect(whole: Any, pieces: tuple[Any, ...]) -> Pair:
+    """Whole seconds plus floats: the floats are added without error, then rounded once."""
+    total, error = pieces[0], 0.0
+    for piece in pieces[1:]:
+        total, slip = two_sum(total, piece)
+        error = error + slip
+    carry = np.floor(total)
+    return normalise(whole + carry.astype(np.int64), (total - carry) + error)
 
 
 def checked_parts(whole: Any, fraction: Any) -> Pair:
@@ -154,10 +179,11 @@ def checked_parts(whole: Any, fraction: Any) -> Pair:
         both = np.broadcast_arrays(whole_array.astype(np.int64), fraction_array)
     except (TypeError, ValueError) as error:
         raise InvalidInput(f"seconds must be numbers of shapes that broadcast: {error}") from error
-    bad = ~np.isfinite(both[1]) | (np.abs(both[1]) >= 2.0**62)
+    # Half of what an int64 holds is left free, so that no carry, sum or difference of two wraps round.
+    bad = (np.abs(both[0] + (both[0] < 0)) >= MOST_S) | ~np.isfinite(both[1]) | (np.abs(both[1]) >= 2.0**62)
     if np.any(bad):
         raise InvalidInput(
-            f"{int(np.count_nonzero(bad))} of {bad.size} values are NaN, infinite or beyond 2**62 s; "
+            f"{int(np.count_nonzero(bad))} of {bad.size} values are NaN, infinite or beyond 2**62 s (146 Gyr); "
             "drop them first (see .mask)",
             mask=np.asarray(bad),
         )

@@ -273,7 +273,11 @@ class Instants:
         else:
             step = exact.from_seconds(exact.checked_parts(0, seconds)[1])
         _broadcast_shapes(self.shape, step[0].shape)
-        return Instants._of(exact.add(self.pair, step), self._scale, self._place)
+        moved = exact.add(self.pair, step)
+        far = np.abs(moved[0] + (moved[0] < 0)) >= exact.MOST_S
+        if np.any(far):
+            raise InvalidInput("shifted beyond 2**62 s (146 Gyr) from 2000, as far as counts go", mask=np.asarray(far))
+        return Instants._of(moved, self._scale, self._place)
 
     def minus_exact(self, other: Instants) -> Pair:
         """`self - other` in seconds of the scale as (int64, float64 in [0, 1))."""

@@ -7,6 +7,7 @@ from datetime import date
 from typing import TYPE_CHECKING, Any, Final
 
 from .options import add_tables, reference_of
+from .streams import standard_output
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -39,6 +40,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Print the list."""
+    standard_output()
     if args.verify:
         checked = _verify()
     facts = reference_of(args).describe()

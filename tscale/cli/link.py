@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 import argparse
-import contextlib
-import sys
-import warnings
+import re
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any, Final, TextIO
 
 from .link_ends import FORMS, end_of
 from .options import add_tables, reference_of
+from .streams import is_standard_output, standard_output, written
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
@@ -29,7 +28,15 @@ _BLOCK_ROWS: Final = 8192
 _MOST_ROWS: Final = 10_000_000
 _TERM_DIGITS: Final = 15
 
-_OPTION_FOR: Final = {'occultation="ignore"': "--occultation ignore", "bodies=": "--without BODY"}
+# How errors that speak of arrays and arguments speak on the command line.
+_SPOKEN: Final = (
+    (r"^1 of 1 links (.*?) have ", r"the link \1 has "),
+    (
+        r'Leave them out \(see the mask\), or give occultation="ignore" to have them marked only',
+        "Say --occultation ignore to have that marked only",
+    ),
+    (r"leave (\S+) out of bodies=", r"say --without \1"),
+)
 
 _EPILOG: Final = (
     FORMS
@@ -99,7 +106,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Solve one link, or a table of links."""
-    from ..errors import ExtrapolationWarning, InvalidInput
+    from ..errors import InvalidInput
     from ..formats.decimals import check_digits
     from .options import clocks_of
 
@@ -110,17 +117,14 @@ def run(args: argparse.Namespace) -> int:
         raise InvalidInput("--turnaround is part of --two-way; add it or leave both")
     if args.until is None and (args.output != "-" or args.plot or args.ledger):
         raise InvalidInput("--output, --plot and --ledger belong to a table: give --until and --step")
+    if is_standard_output(args.output):
+        standard_output()  # asked for first, so that a closed one is found out before any work
     reference = reference_of(args)
-    with warnings.catch_warnings(record=True) as caught:
-        warnings.simplefilter("ignore")
-        warnings.simplefilter("default", ExtrapolationWarning)
-        work = _Work(args, reference, clocks_of(args, reference))
-        if args.until is None:
-            print(work.account(work.solve(work.first)))
-        else:
-            work.table()
-    for text in dict.fromkeys(str(w.message) for w in caught if issubclass(w.category, ExtrapolationWarning)):
-        print(f"tscale: note: {text}", file=sys.stderr)
+    work = _Work(args, reference, clocks_of(args, reference))
+    if args.until is None:
+        print(work.account(work.solve(work.first)))
+    else:
+        work.table()
     return 0
 
 
@@ -159,8 +163,10 @@ class _Work:
                 return two_way(station=self.ends[0], target=self.ends[1], turnaround_s=args.turnaround, **common)
             return one_way(transmitter=self.ends[0], receiver=self.ends[1], **common)
         except GeometryError as error:
-            hints = [option for word, option in _OPTION_FOR.items() if word in str(error)]
-            error.args = (f"{error} (on the command line: {', '.join(hints)})" if hints else str(error),)
+            message = str(error)
+            for pattern, words in _SPOKEN:
+                message = re.sub(pattern, words, message)
+            error.args = (message,)
             raise
 
     def _events(self, solution: Solution) -> dict[str, Instants]:
@@ -202,14 +208,12 @@ class _Work:
 
     def table(self) -> None:
         """Write the table, and the picture if one is asked for."""
-        from ..files import replaced
-
         if self.args.plot:
             from ..plots import check_picture
 
             check_picture(self.args.plot)
         solutions = []
-        with contextlib.nullcontext(sys.stdout) if self.args.output == "-" else replaced(self.args.output) as target:
+        with written(self.args.output) as target:
             for number, t in enumerate(self._blocks()):
                 solution = self.solve(t)
                 self._write(target, solution, head=number == 0)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -12,7 +13,7 @@ if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
     from ..trajectory import Trajectory
 
-__all__ = ["add_observer", "add_tables", "clocks_of", "observer_of", "reference_of", "source_of"]
+__all__ = ["add_observer", "add_tables", "clocks_of", "observer_of", "reference_of", "source_of", "start_of"]
 
 
 def add_tables(parser: argparse.ArgumentParser) -> None:
@@ -116,10 +117,17 @@ def source_of(args: argparse.Namespace) -> Source | None:
 
 
 def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockLog]:
-    """Read the logs in the order given; those of one clock against one reference are joined."""
+    """Read the logs in the order given; those of one clock are joined.
+
+    Raises
+    ------
+    InvalidInput
+        For logs of one clock against different references.
+    """
+    from ..errors import InvalidInput
     from ..tables.clock_log import ClockLog
 
-    found: dict[tuple[str, str], list[ClockLog]] = {}
+    found: dict[str, list[tuple[str, ClockLog]]] = {}
     for path in args.clock:
         log = ClockLog.load(
             path,
@@ -127,5 +135,32 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
             max_gap_s=args.max_gap_s,
             leap_seconds=reference.leap_seconds,
         )
-        found.setdefault((log.scale, log.reference), []).append(log)
-    return [logs[0] if len(logs) == 1 else ClockLog.joined(logs) for logs in found.values()]
+        others = found.setdefault(log.scale, [])
+        if others and others[0][1].reference != log.reference:
+            first, before = others[0]
+            raise InvalidInput(
+                f"{first} compares {log.scale} with {before.reference}, and {path} with {log.reference}: there "
+                "would be two ways from it; give one of them"
+            )
+        others.append((path, log))
+    return [logs[0][1] if len(logs) == 1 else ClockLog.joined([log for _, log in logs]) for logs in found.values()]
+
+
+def start_of(clocks: Sequence[ClockLog]) -> str:
+    """What dates are when nothing is said: of the one clock that is no other's reference, or UTC without clocks.
+
+    Raises
+    ------
+    InvalidInput
+        Where several clocks, or none, could be meant.
+    """
+    from ..errors import InvalidInput
+
+    if not clocks:
+        return "UTC"
+    references = {log.reference for log in clocks}
+    outer = [log.scale for log in clocks if log.scale not in references]
+    if len(outer) != 1:
+        known = ", ".join(outer or sorted({log.scale for log in clocks}))
+        raise InvalidInput(f"the dates may be those of {known}: say which with --from")
+    return outer[0]

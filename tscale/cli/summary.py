@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from typing import Protocol
 
 from ..chains import Chain
+from ..earth.observer import Observer
 from ..instants import Instants
 from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
+from .status import uses_orientation
 
-__all__ = ["longest", "summary", "tables_used"]
+__all__ = ["longest", "summary", "tables_used", "unused"]
 
 
 class _Table(Protocol):
@@ -31,7 +33,9 @@ def longest(chains: Sequence[Chain]) -> list[Chain]:
     ]
 
 
-def tables_used(chains: Sequence[Chain], clocks: Sequence[ClockLog], reference: ReferenceData) -> list[tuple[str, str]]:
+def tables_used(
+    chains: Sequence[Chain], clocks: Sequence[ClockLog], reference: ReferenceData, site: Observer | None = None
+) -> list[tuple[str, str]]:
     """(table, its name and hash) for the tables that the steps of these chains read."""
     steps = [step for chain in chains for step in chain.steps]
     ends = {frozenset((step.start.scale.name, step.end.scale.name)) for step in steps}
@@ -39,13 +43,12 @@ def tables_used(chains: Sequence[Chain], clocks: Sequence[ClockLog], reference: 
     names = {node.scale.name for node in nodes}
     moved = any(step.start.place != step.end.place for step in steps)
     integral = moved or frozenset(("TCG", "TCB")) in ends
-    at_site = integral and any(node.place == "TOPOCENTER" for node in nodes)
     found: list[tuple[str, _Table]] = [
         (f"{log.scale} by {log.reference}", log) for log in clocks if frozenset((log.scale, log.reference)) in ends
     ]
     if any(node.scale.utc_labels for node in nodes):
         found.append(("leap seconds", reference.leap_seconds))
-    if at_site or "UT1" in names:
+    if any(uses_orientation(step, site) for step in steps):
         found.append(("Earth orientation", reference.earth_orientation))
     found += [(table.scale, table) for table in reference.tt_bipm if table.scale in names]
     if integral:
@@ -53,17 +56,41 @@ def tables_used(chains: Sequence[Chain], clocks: Sequence[ClockLog], reference: 
     return [(title, f"{table.name}  (SHA-256 {table.sha256[:12]})") for title, table in found]
 
 
+def unused(
+    chains: Sequence[Chain],
+    clocks: Sequence[ClockLog],
+    reference: ReferenceData,
+    *,
+    site: str | None,
+    source: str | None,
+) -> list[str]:
+    """Notes on what was given and is read by no step of these chains; `site` and `source` are names for messages."""
+    steps = [step for chain in chains for step in chain.steps]
+    ends = {frozenset((step.start.scale.name, step.end.scale.name)) for step in steps}
+    scales = {name for pair in ends for name in pair}
+    idle = [log.name for log in clocks if frozenset((log.scale, log.reference)) not in ends]
+    idle += [table.name for table in reference.tt_bipm if table.scale not in scales]
+    moved = [step for step in steps if step.start.place != step.end.place]
+    placed = moved + [step for step in steps if {step.start.scale.name, step.end.scale.name} == {"TCG", "TCB"}]
+    if site is not None and not any("TOPOCENTER" in (step.start.place, step.end.place) for step in placed):
+        idle.append(site)
+    if source is not None and not moved:
+        idle.append(source)
+    return [f"{name} was not used" for name in idle]
+
+
 def summary(
     chains: Sequence[Chain],
     clocks: Sequence[ClockLog],
     reference: ReferenceData,
+    site: Observer | None,
     *,
     rows: int,
     first: Instants,
     first_text: str,
     first_line: int,
     results: Sequence[tuple[str, str]],
-    notes: Mapping[str, list[int]],
+    notes: Sequence[str],
     source: str,
     target: str,
 ) -> str:
@@ -81,9 +108,8 @@ def summary(
             table = [line for line in ledger.table(0).splitlines() if not line.startswith("note: ")]
             lines += ["", *("  " + line for line in table)]
     lines.append("")
-    for note, (count,) in notes.items():
-        lines.append(f"note: {count} of {rows} {note}" if count else f"note: {note}")
-    used = tables_used(chains, clocks, reference)
+    lines += [f"note: {note}" for note in notes]
+    used = tables_used(chains, clocks, reference, site)
     wide = max((len(title) for title, _ in used), default=0)
     lines += [f"table: {title:<{wide}}  {name}" for title, name in used]
     lines.append(f"{rows} rows: {source} -> {target}")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import re
 from collections.abc import Sequence
 from typing import Final, NamedTuple
@@ -9,11 +10,14 @@ from typing import Final, NamedTuple
 import numpy as np
 
 from ..chains import Chain
+from ..earth.observer import Observer
 from ..exact import FloatArray, Pair
 from ..instants import Instants
 from ..step import Step
+from ..tables.reference import ReferenceData
+from .status import status_codes, status_words
 
-__all__ = ["Passed", "Walk", "add_notes"]
+__all__ = ["Passed", "Walk", "add_notes", "note_texts"]
 
 _COUNTED: Final = re.compile(r"(\d+) of (\d+) (.*)", re.DOTALL)
 
@@ -77,31 +81,20 @@ class Walk:
         none = np.zeros(self._start.shape)
         return [np.sqrt(sum((squares[path] for path in taken), none)) for taken in self._paths]
 
-    def statuses(self, reference: ReferenceData) -> list[list[str]]:
-        """For each chain and row: the Earth orientation it rests on, and whether the leap seconds have expired."""
-        orientation = {path: _orientation(passed, reference) for path, passed in self.passed.items()}
-        expired = {path: _expired(passed, reference) for path, passed in self.passed.items()}
-        none = np.zeros(self._start.shape, dtype=np.int8)
+    def statuses(self, reference: ReferenceData, site: Observer | None) -> list[list[str]]:
+        """For each chain what the result of each row rests on, in the words of `status`."""
+        codes = {path: status_codes(*passed, reference, site) for path, passed in self.passed.items()}
+        none = np.zeros(self._start.shape, dtype=np.int8), np.zeros(self._start.shape, dtype=np.bool_)
         found = []
         for taken in self._paths:
-            worst = functools.reduce(np.maximum, (orientation[path] for path in taken), none)
-            late = functools.reduce(np.maximum, (expired[path] for path in taken), none)
-            found.append([_STATUS[code, over] for code, over in zip(worst.tolist(), late.tolist(), strict=True)])
+            parts = [none, *(codes[path] for path in taken)]
+            worst, late = (functools.reduce(np.maximum, column) for column in zip(*parts, strict=True))
+            found.append(status_words(worst, late))
         return found
 
     def notes(self) -> list[str]:
         """Notes of all steps, each once."""
         return list(dict.fromkeys(note for step, before, _ in self.passed.values() for note in step.notes(before)))
-
-
-def _orientation(passed: Passed, reference: ReferenceData) -> IntArray:
-    """By row: 0 where the step uses no Earth orientation, 1 measured, 2 predicted, 3 held."""
-    step, before, after = passed
-    sides = {step.start: before, step.end: after}
-    steps_of = {node.scale.name: at.pair for node, at in sides.items() if node.place != "BARYCENTER"}
-    if step.uses_orientation:
-        pass
-    return np.zeros(before.shape, dtype=np.int8)
 
 
 def add_notes(known: dict[str, list[int]], block: Sequence[str]) -> None:
@@ -111,3 +104,8 @@ def add_notes(known: dict[str, list[int]], block: Sequence[str]) -> None:
         counts = known.setdefault(found.group(3) if found else note, [0])
         if found:
             counts[0] += int(found.group(1))
+
+
+def note_texts(known: dict[str, list[int]], rows: int) -> list[str]:
+    """Notes of a file of so many rows, from what `add_notes` has gathered."""
+    return [f"{count} of {rows} {note}" if count else note for note, (count,) in known.items()]

@@ -168,8 +168,8 @@ def tt_from_tdb_at_geocentre(tdb: Pair, reference: ReferenceData) -> Pair:
 
 def tdb_from_tt_at_geocentre(tt: Pair, reference: ReferenceData) -> Pair:
     """TDB count at the geocentre of a TT count: one Newton step from TDB = TT leaves 1e-21 s."""
-    table = reference.time_ephemeris
-    return exact.add_seconds(tt, -table.tt_minus_tdb_s(tt) / (1.0 + table.rate(tt)))
+    value, rate = reference.time_ephemeris.tt_minus_tdb_and_rate(tt)
+    return exact.add_seconds(tt, -value / (1.0 + rate))
 
 
 def observer_event(tdb: Pair, reference: ReferenceData, observer: Observer, *, loose: bool = False) -> Event:

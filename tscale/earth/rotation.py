@@ -10,8 +10,9 @@ in closed form (`orientation.py`).
 
 Velocities are the exact derivatives of the positions: they include the rotation about the pole at the rate of UT1
 (its excess length of day, up to 4 ms of 86400 s, is 2e-5 m/s at the surface), precession and nutation, the drift of
-the pole within the Earth (1e-6 m/s; 1e-5 m/s in the noisy rows of the 1960s) and that of dX, dY, all by the polynomials that the Earth orientation table is
-interpolated with. At its rows, where two polynomials meet, the rate of the later one is given.
+the pole within the Earth (1e-6 m/s; 1e-5 m/s in the noisy rows of the 1960s) and that of dX, dY, all by the
+polynomials that the Earth orientation table is interpolated with. At its rows, where two polynomials meet, the rate
+of the later one is given.
 
 The sub-daily tidal terms of chapters 5 and 8 are not part of this module.
 """

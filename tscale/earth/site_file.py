@@ -44,8 +44,10 @@ def read_site(path: Path, from_itrf: Callable[..., _Made], from_geodetic: Callab
     """Read the file and build a site with one of the two makers; every fault is a `DataFileError` with the path."""
     try:
         text = path.read_text(encoding="utf-8")
-    except (OSError, UnicodeDecodeError) as error:
-        raise DataFileError(f"cannot read the site file {path}: {error}", path=path) from error
+    except OSError as error:
+        raise DataFileError(f"cannot read the site file {path}: {error.strerror or error}", path=path) from error
+    except UnicodeDecodeError as error:
+        raise DataFileError(f"the site file {path} is not UTF-8 text: {error}", path=path) from error
     try:
         document = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
@@ -56,7 +58,7 @@ def read_site(path: Path, from_itrf: Callable[..., _Made], from_geodetic: Callab
     table = document.get("site")
     if not isinstance(table, dict):
         raise DataFileError(f"site file {path} has no [site] table; it holds {', '.join(_KEYS)}", path=path)
-    _only(path, "[site]", table, _KEYS)
+    _only(path, "[site]", table, _KEYS, _advice(table))
     if "name" not in table:
         raise DataFileError(f"site file {path}: [site] needs a name", path=path)
     if ("itrf" in table) == ("geodetic" in table):
@@ -94,10 +96,18 @@ def _toml(value: Any) -> str:
     return repr(float(value))
 
 
-def _only(path: Path, where: str, table: Mapping[str, Any], allowed: tuple[str, ...]) -> None:
+def _advice(table: Mapping[str, Any]) -> str:
+    """The line to write where coordinates stand outside a table of theirs."""
+    for kind, keys in (("geodetic", _GEODETIC), ("itrf", _ITRF)):
+        if any(key in table for key in keys):
+            return f"; write {kind} = {{ {', '.join(f'{key} = ...' for key in keys)} }}"
+    return ""
+
+
+def _only(path: Path, where: str, table: Mapping[str, Any], allowed: tuple[str, ...], advice: str = "") -> None:
     unknown = [key for key in table if key not in allowed]
     if unknown:
         raise DataFileError(
-            f"site file {path}: unknown key {', '.join(unknown)} in {where}; allowed are {', '.join(allowed)}",
+            f"site file {path}: unknown key {', '.join(unknown)} in {where}; allowed are {', '.join(allowed)}{advice}",
             path=path,
         )

@@ -7,7 +7,8 @@ from typing import Final
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S, EARTH_ANGULAR_VELOCITY_RAD_S, L_B, L_G, TT_MINUS_TAI
+from ..constants import C_M_S, EARTH_ANGULAR_VELOCITY_RAD_S, L_B, L_G
+from ..counts import tai_from_tt
 from ..earth.frames import dot
 from ..earth.moving import observer_event
 from ..earth.observer import Observer
@@ -22,7 +23,6 @@ from .common import count_difference
 
 __all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "wavefront_step"]
 
-_TT_MINUS_TAI: Final = exact.normalise(*TT_MINUS_TAI)
 
 _TCB_GAIN: Final = float(L_B / (1 - L_B))
 
@@ -177,7 +177,7 @@ def _orientation_sigma_s(
     tt: Pair, r_m: FloatArray, weight: FloatArray, reference: ReferenceData
 ) -> dict[str, FloatArray]:
     """Uncertainty of weight.r/c of a place that turns with the Earth: that of UT1 along its motion, and of the pole."""
-    values = reference.earth_orientation.at(exact.subtract(tt, _TT_MINUS_TAI))
+    values = reference.earth_orientation.at(tai_from_tt(tt))
     along = (weight[..., 1] * r_m[..., 0] - weight[..., 0] * r_m[..., 1]) * (EARTH_ANGULAR_VELOCITY_RAD_S / C_M_S)
     pole = values.x_sigma_rad**2 + values.y_sigma_rad**2 + values.dx_sigma_rad**2 + values.dy_sigma_rad**2
     size = np.sqrt(dot(r_m, r_m) * dot(weight, weight)) / C_M_S
@@ -189,7 +189,7 @@ def _orientation_sigma_s(
 
 def _orientation_notes(tt: Pair, reference: ReferenceData) -> tuple[str, ...]:
     """What a reader should know of the Earth orientation used: how much is predicted or held."""
-    tai = exact.subtract(tt, _TT_MINUS_TAI)
+    tai = tai_from_tt(tt)
     status = reference.earth_orientation.status(tai)
     names = {1: "use predicted Earth orientation", 2: "are past the end of the Earth orientation, which is held"}
     counts = {code: int(np.count_nonzero(status == code)) for code in names}

@@ -47,7 +47,7 @@ def write_atomically(path: Path, content: bytes) -> None:
     OSError
         Where the folder cannot be written; no part of the file is left behind.
     """
-    temporary = path.with_name(f".{path.name}.{os.getpid()}.{secrets.token_hex(4)}.part")
+    temporary = path.with_name(f".{secrets.token_hex(8)}.part")
     try:
         with temporary.open("xb") as file:
             file.write(content)

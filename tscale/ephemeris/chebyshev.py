@@ -59,13 +59,21 @@ class ChebyshevTable:
     step_s : float
         Length of a record, s.
     coefficients : float array (records, components, degree + 1)
-        Lowest degree first, of the argument that runs from -1 to 1 over a record. Kept as given (it
-        may be a read-only view into a mapped file) and must not be changed afterwards.
+        Lowest degree first, of the argument that runs from -1 to 1 over a record. A read-only array (a view into a
+        mapped file) is kept as it is, one that can be written is copied.
     name : str
         What the table is, for messages.
     """
 
     __slots__ = ("_columns", "_exact_step", "_fraction", "_rows", "_whole", "name", "start_s", "step_s")
+    name: str
+    start_s: float
+    step_s: float
+    _whole: int
+    _fraction: float
+    _exact_step: bool
+    _rows: npt.NDArray[Any]
+    _columns: FloatArray | None
 
     def __init__(self, start_s: float, step_s: float, coefficients: npt.NDArray[Any], name: str = "table") -> None:
         if coefficients.ndim != 3 or 0 in coefficients.shape:
@@ -75,14 +83,19 @@ class ChebyshevTable:
             )
         if not (np.isfinite(start_s) and np.isfinite(step_s) and step_s > 0):
             raise InvalidInput(f"{name}: start {start_s} s and step {step_s} s must be finite and the step positive")
-        self.name = name
-        self.start_s = float(start_s)
-        self.step_s = float(step_s)
-        self._whole = int(np.floor(start_s))
-        self._fraction = float(start_s) - self._whole
-        self._exact_step = self.step_s.is_integer() and coefficients.shape[0] * self.step_s < _EXACT_INTEGER
-        self._rows = coefficients
-        self._columns: FloatArray | None = None
+        start_s, step_s = float(start_s), float(step_s)
+        rows = _read_only(coefficients.copy()) if coefficients.flags.writeable else coefficients
+        whole = int(np.floor(start_s))
+        exact_step = step_s.is_integer() and rows.shape[0] * step_s < _EXACT_INTEGER
+        self._keep(name=name, start_s=start_s, step_s=step_s, _whole=whole, _fraction=start_s - whole)
+        self._keep(_exact_step=exact_step, _rows=rows, _columns=None)
+
+    def _keep(self, **values: Any) -> None:
+        for name, value in values.items():
+            object.__setattr__(self, name, value)
+
+    def __setattr__(self, name: str, value: object) -> None:
+        raise AttributeError(f"a ChebyshevTable is immutable; cannot set {name!r}. Make another one")
 
     def __reduce__(self) -> tuple[Any, ...]:
         return ChebyshevTable, (self.start_s, self.step_s, np.array(self._rows), self.name)
@@ -100,9 +113,7 @@ class ChebyshevTable:
     @property
     def coefficients(self) -> npt.NDArray[Any]:
         """The coefficients as given, (records, components, degree + 1); read only."""
-        view = self._rows.view()
-        view.flags.writeable = False
-        return view
+        return self._rows
 
     @property
     def span(self) -> tuple[float, float]:
@@ -228,7 +239,8 @@ class ChebyshevTable:
         columns = self._columns
         if columns is None and self._rows.nbytes <= _COPY_LIMIT_BYTES:
             # Two threads may both make this copy; they make the same one.
-            columns = self._columns = np.ascontiguousarray(self._rows.transpose(2, 1, 0), dtype=np.float64)
+            columns = _read_only(np.array(self._rows.transpose(2, 1, 0), dtype=np.float64, order="C"))
+            self._keep(_columns=columns)
         if columns is None:
             picked = np.ascontiguousarray(self._rows[record].transpose(2, 1, 0), dtype=np.float64)
             return picked.__getitem__
@@ -239,3 +251,9 @@ class ChebyshevTable:
             return np.take(layout[k], record, axis=1, out=buffer, mode="clip")
 
         return take
+
+
+def _read_only(array: npt.NDArray[Any]) -> npt.NDArray[Any]:
+    """The same array, closed to writing."""
+    array.flags.writeable = False
+    return array

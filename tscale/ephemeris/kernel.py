@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import threading
 from collections.abc import Iterable, Mapping, Sequence
 from functools import lru_cache
 from pathlib import Path
 from types import MappingProxyType
-from typing import Any
+from typing import Any, Final
 
 import numpy as np
 import numpy.typing as npt
@@ -25,6 +26,7 @@ __all__ = ["Ephemeris"]
 
 _KM_M = 1e3
 _Motion = tuple[FloatArray, FloatArray | None]
+_OPENING: Final = threading.Lock()
 
 
 class Ephemeris:
@@ -44,15 +46,27 @@ class Ephemeris:
         Mass parameters given to `open`.
     """
 
+    path: Path
+    name: str
+    comment: str
+    given_gm_m3_s2: Mapping[int, float]
+    _gm: Mapping[int, float]
+    _paths: Paths
+    _sha256: str | None
+
     def __init__(self, path: Path, gm_m3_s2: Mapping[int, float]) -> None:
         container = read_container(path)
-        self.path = path
-        self.name = path.name
-        self.comment = container.comment
-        self.given_gm_m3_s2: Mapping[int, float] = MappingProxyType(dict(gm_m3_s2))
-        self._gm: Mapping[int, float] = MappingProxyType({**GM_M3_S2, **mass_parameters(container.comment), **gm_m3_s2})
-        self._paths = Paths(read_segments(container))
-        self._sha256: str | None = None
+        masses = {**GM_M3_S2, **mass_parameters(container.comment), **gm_m3_s2}
+        self._keep(path=path, name=path.name, comment=container.comment)
+        self._keep(given_gm_m3_s2=MappingProxyType(dict(gm_m3_s2)), _gm=MappingProxyType(masses))
+        self._keep(_paths=Paths(read_segments(container)), _sha256=None)
+
+    def _keep(self, **values: Any) -> None:
+        for name, value in values.items():
+            object.__setattr__(self, name, value)
+
+    def __setattr__(self, name: str, value: object) -> None:
+        raise AttributeError(f"an Ephemeris is immutable; cannot set {name!r}. Open another one, with gm_m3_s2= if so")
 
     @classmethod
     def open(cls, path: str | Path, *, gm_m3_s2: Mapping[int, float] | None = None) -> Ephemeris:
@@ -81,7 +95,8 @@ class Ephemeris:
     @classmethod
     def default(cls) -> Ephemeris:
         """Return the shipped excerpt of DE440, 1960 to 2060 (one shared value)."""
-        return _default()
+        with _OPENING:  # so that all threads get the same one
+            return _default()
 
     def __repr__(self) -> str:
         return f"Ephemeris({self.name!r}, {span_text(self.span)} TDB)"
@@ -93,7 +108,8 @@ class Ephemeris:
     def sha256(self) -> str:
         """SHA-256 of the file, computed when first asked for."""
         if self._sha256 is None:
-            self._sha256 = file_sha256(self.path)
+            self._keep(_sha256=file_sha256(self.path))
+        assert self._sha256 is not None
         return self._sha256
 
     @property

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import hashlib
 import math
+import re
+import threading
 import warnings
 from functools import lru_cache
 from pathlib import Path
@@ -32,6 +34,8 @@ TIME_CENTER: Final = 1000000000
 VERSION: Final = 1
 """Raised whenever the integrator would give other numbers: older cache files are then not used."""
 
+_OPENING: Final = threading.Lock()
+
 
 class TimeEphemeris:
     """TT - TDB at the geocentre as a function of TDB: immutable, safe between threads, picklable.
@@ -45,14 +49,23 @@ class TimeEphemeris:
         File name, or what it was built from.
     path : pathlib.Path or None
         File it was read from.
+    sha256 : str
+        Of that file, or of the file that `write_spk` would write.
     """
 
+    name: str
+    path: Path | None
+    sha256: str
+    _table: ChebyshevTable
+    _comment: str
+
     def __init__(self, table: ChebyshevTable, name: str, path: Path | None, sha256: str, comment: str) -> None:
-        self._table = table
-        self._comment = comment
-        self.name = name
-        self.path = path
-        self.sha256 = sha256
+        values = {"name": name, "path": path, "sha256": sha256, "_table": table, "_comment": comment}
+        for attribute, value in values.items():
+            object.__setattr__(self, attribute, value)
+
+    def __setattr__(self, name: str, value: object) -> None:
+        raise AttributeError(f"a TimeEphemeris is immutable; cannot set {name!r}. Make another one with of or open")
 
     @classmethod
     def of(
@@ -94,7 +107,8 @@ class TimeEphemeris:
             return cls._build(ephemeris, progress, anchor)
         key = _key(ephemeris, anchor)
         if key == manifest(DEFAULT_KERNEL)["sha256"]:
-            return _shipped()
+            with _OPENING:  # so that all threads get the same one
+                return _shipped()
         path = cache_folder() / f"time_ephemeris_{key[:32]}_v{VERSION}.bsp"
         found = cls._cached(path, key)
         if found is not None:
@@ -108,8 +122,8 @@ class TimeEphemeris:
                 built.write_spk(path)
         except OSError as error:
             warnings.warn(
-                f"cannot store the time ephemeris in {path.parent} ({error}): it is built in memory each time; set "
-                "TSCALE_CACHE to a folder that can be written",
+                f"cannot store the time ephemeris in {path.parent} ({error.strerror or error}): it is built in memory "
+                "each time; set TSCALE_CACHE to a folder that can be written",
                 stacklevel=2,
             )
             return cls._build(ephemeris, progress, anchor)
@@ -124,6 +138,11 @@ class TimeEphemeris:
         DataFileError
             For a file that is missing, damaged, without such a segment, or whose checksum does not fit.
         """
+        return cls._open(path, None)
+
+    @classmethod
+    def _open(cls, path: str | Path, key: str | None) -> TimeEphemeris:
+        """Read a kernel; with a `key` only one that this module wrote, checksum and all, for that key."""
         path = Path(path).expanduser().resolve()
         container = read_container(path)
         found = [a for a in container.arrays if (a.target, a.center) == (TIME_TARGET, TIME_CENTER)]
@@ -140,6 +159,10 @@ class TimeEphemeris:
                 f"{path} is damaged: its numbers do not fit the checksum in its comments: remove it and build it anew",
                 path=path,
             )
+        if key is not None and not stated:
+            raise DataFileError(f"{path} has no checksum in its comments: build it anew", path=path)
+        if key is not None and f"Key: {key}" not in container.comment.splitlines():
+            raise DataFileError(f"{path} was made from another kernel: build it anew", path=path)
         comment = CHECKSUM_LINE.sub("", container.comment)
         whole = ChebyshevSegment(found[0], path.name, container).table
         # Only x is kept, in memory: the file may be replaced while this value is in use.
@@ -198,13 +221,12 @@ class TimeEphemeris:
         if not path.is_file():
             return None
         try:
-            found = cls.open(path)
-            if f"Key: {key}" not in found._comment:
-                raise DataFileError(f"{path} was made from another kernel", path=path)
+            return cls._open(path, key)
         except DataFileError as error:
-            warnings.warn(f"{error}; the time ephemeris is built anew", stacklevel=3)
+            # Whoever reads this has nothing to do: no advice to fetch or remove the file.
+            found_wrong = re.sub(r": (?:fetch|remove|build)\b[^:]*$", "", str(error))
+            warnings.warn(f"{found_wrong}; the time ephemeris is built anew", stacklevel=3)
             return None
-        return found
 
     @classmethod
     def _build(

@@ -1,7 +1,7 @@
 """Delimited text (RFC 4180) read in blocks, with the line of every row and its text as it stood.
 
-Lines that begin with `#`, and blank lines, are no rows: they are kept at their place and handed on. A mark of byte order
-is left out. Written rows end like the first line: with CRLF, or else with LF.
+Lines that begin with `#`, and blank lines, are no rows: they are kept at their place and handed on. A mark of byte
+order is left out. Written rows end like the first line: with CRLF, or else with LF.
 """
 
 from __future__ import annotations
@@ -204,7 +204,8 @@ class DelimitedReader:
         except UnicodeEncodeError as error:
             byte = ord(line[error.start]) & 0xFF
             raise DataFileError(
-                f"this line is no UTF-8 text (byte 0x{byte:02x} after {error.start} characters); save the file as UTF-8",
+                f"this line is no UTF-8 text (byte 0x{byte:02x} after {error.start} characters); save the file as "
+                "UTF-8",
                 path=self.name,
                 row=self._line,
             ) from error

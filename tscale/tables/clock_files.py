@@ -69,13 +69,18 @@ def _cells(content: bytes, path: Path) -> tuple[list[int], list[dict[str, str]]]
     try:
         text = content.decode("utf-8-sig")
     except UnicodeDecodeError as error:
-        raise DataFileError(f"the clock log {path} is not UTF-8 text: {error}", path=path) from error
+        number = content.count(b"\n", 0, error.start) + 1
+        raise DataFileError(
+            f"{path}, line {number}: not UTF-8 text ({error.reason}); save the file as UTF-8", row=number, path=path
+        ) from error
     header: list[str] | None = None
     numbers: list[int] = []
     rows: list[dict[str, str]] = []
     for number, line in enumerate(text.splitlines(), 1):
         if not line.strip() or line.lstrip().startswith("#"):
             continue
+        if "\0" in line:
+            raise DataFileError(f"{path}, line {number}: a NUL character; this is no text", row=number, path=path)
         try:
             cells = [cell.strip() for cell in next(csv.reader([line], skipinitialspace=True))]
         except csv.Error as error:
@@ -87,7 +92,8 @@ def _cells(content: bytes, path: Path) -> tuple[list[int], list[dict[str, str]]]
                 raise DataFileError(
                     f"{path}, line {number}: the header is {', '.join(header)}; needed are "
                     f"{', '.join(_NEEDED)}, each once (and, if wanted, reference and clock)"
-                    + (f"; missing: {', '.join(lacking)}" if lacking else ""),
+                    + (f"; missing: {', '.join(lacking)}" if lacking else "")
+                    + _delimiter_hint(header),
                     row=number,
                     path=path,
                 )
@@ -103,6 +109,11 @@ def _cells(content: bytes, path: Path) -> tuple[list[int], list[dict[str, str]]]
             f"the clock log {path} holds no comparison; one row each is needed under the header", path=path
         )
     return numbers, rows
+
+
+def _delimiter_hint(header: list[str]) -> str:
+    found = [character for character in ";\t|" if len(header) == 1 and character in header[0]]
+    return f" (the header holds {found[0]!r}: a log is separated by commas)" if found else ""
 
 
 def _single(values: list[str] | None, default: str, column: str, numbers: list[int], path: Path) -> str:
@@ -127,7 +138,7 @@ def _number(text: str, column: str, row: int, path: Path) -> Decimal:
         value = Decimal("NaN")
     if not value.is_finite() or "_" in text or abs(value) > _LARGEST_OFFSET_S:
         raise DataFileError(
-            f"{path}, line {row}: {column} is {text!r}; a finite number of seconds is needed"
+            f"{path}, line {row}: {column} is {text!r}; a number of seconds from -1e9 to 1e9 is needed"
             + (" (or an empty cell where the comparison failed)" if column == "offset_s" else ""),
             row=row,
             path=path,

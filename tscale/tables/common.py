@@ -54,7 +54,7 @@ def read_file(path: Path, what: str) -> tuple[bytes, str]:
     try:
         content = path.read_bytes()
     except OSError as error:
-        raise DataFileError(f"cannot read the {what} {path}: {error}", path=path) from error
+        raise DataFileError(f"cannot read the {what} {path}: {error.strerror or error}", path=path) from error
     if not content.strip():
         raise DataFileError(f"the {what} {path} is empty", path=path)
     return content, hashlib.sha256(content).hexdigest()

@@ -117,7 +117,9 @@ class TTBIPM(FrozenArrays):
             match = _NAME.match(path.name)
             if match is None:
                 raise InvalidInput(
-                    f"{path.name} does not name a realisation as TTBIPM.23 does; give name='BIPM23'", path=path
+                    f"{path.name} does not name a realisation: rename the file as the BIPM does, to TTBIPM.23 for "
+                    f"TT(BIPM23), or in Python give name='BIPM23'",
+                    path=path,
                 )
             name = f"BIPM{match[1]}"
         return _build(mjd, offset_us * 1e-6, name, path.name, sha256, path, extension, uncertainty_s, leap_seconds)

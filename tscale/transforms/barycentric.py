@@ -15,15 +15,14 @@ from typing import Final
 import numpy as np
 
 from .. import exact
-from ..constants import L_B, T0_COUNT, TDB0_S
+from ..counts import tcb_from_tdb, tcg_from_tt, tdb_from_tcb, tt_from_tcg
 from ..earth.frames import dot
 from ..earth.moving import TT_PER_TCG, TopocentricTerms, observer_event, topocentric_rate, topocentric_terms
 from ..earth.observer import Observer
 from ..errors import ScaleMismatch
-from ..exact import Factor, FloatArray, Pair
+from ..exact import FloatArray, Pair
 from ..instants import Instants
 from ..tables.reference import ReferenceData
-from .geocentric import tcg_from_tt, tt_from_tcg
 from .terrestrial import require_scale
 
 __all__ = [
@@ -46,23 +45,6 @@ __all__ = [
 GEOCENTRIC_LIMIT_M: Final = 1e10
 """Distance from the Earth up to which events are dated in TT and TCG, m: what the terms of order c^-4 leave out
 grows as its square and reaches 2e-12 s there."""
-
-_LOSS: Final = Factor.of(-L_B)
-_GAIN: Final = Factor.of(L_B / (1 - L_B))
-_T0: Final[Pair] = exact.normalise(*T0_COUNT)
-_TDB_AT_T0: Final[Pair] = exact.add(_T0, exact.from_seconds(TDB0_S))
-
-
-def tcb_from_tdb(tdb: Pair) -> Pair:
-    """TCB count of a TDB count, inverse of `tdb_from_tcb`."""
-    since = exact.subtract(tdb, _TDB_AT_T0)
-    return exact.add(exact.add(_T0, since), exact.multiply(since, _GAIN))
-
-
-def tdb_from_tcb(tcb: Pair) -> Pair:
-    """TDB count of a TCB count: TDB = TCB - L_B (TCB - T0) + TDB0, IAU 2006 Resolution B3."""
-    since = exact.subtract(tcb, _T0)
-    return exact.add(exact.add(_TDB_AT_T0, since), exact.multiply(since, _LOSS))
 
 
 def tdb_from_tt(tt: Pair, reference: ReferenceData, observer: Observer | None = None) -> Pair:

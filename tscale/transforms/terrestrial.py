@@ -8,8 +8,8 @@ from __future__ import annotations
 import numpy as np
 
 from .. import exact
+from ..counts import fixed_count
 from ..errors import NotConverged, ScaleMismatch
-from ..exact import Pair
 from ..instants import Instants
 from ..scales import Scale
 from ..tables.clock_log import ClockLog
@@ -19,12 +19,10 @@ from ..tables.tt_bipm import TTBIPM
 __all__ = [
     "clock_to_reference",
     "reference_to_clock",
-    "tai_count",
     "tai_to_tt_bipm",
     "tai_to_ut1",
     "to_fixed_scale",
     "tt_bipm_to_tai",
-    "tt_count",
     "ut1_to_tai",
 ]
 
@@ -37,15 +35,6 @@ def require_scale(t: Instants, *scales: str) -> None:
         )
 
 
-def _count_minus_tai(scale: Scale) -> Pair:
-    offset = scale.count_minus_tai
-    if offset is None:
-        raise ScaleMismatch(
-            f"{scale.name} is not at a fixed distance from TAI; UTC, TAI, TT, GPS, GST, BDT and GLONASS are"
-        )
-    return np.asarray(offset[0], dtype=np.int64), np.asarray(offset[1], dtype=np.float64)
-
-
 def to_fixed_scale(t: Instants, scale: str) -> Instants:
     """Re-date between scales at a fixed distance from TAI: UTC, TAI, TT, GPS, GST, BDT, GLONASS.
 
@@ -55,21 +44,7 @@ def to_fixed_scale(t: Instants, scale: str) -> Instants:
     Sources: ITU-R TF.460-6; IAU 1991 A4; IS-GPS-200; Galileo OS-SIS-ICD; BDS-SIS-ICD; GLONASS ICD.
     """
     target = Scale.parse(scale)
-    here, there = _count_minus_tai(Scale.parse(t.scale)), _count_minus_tai(target)
-    if here[1] == there[1]:
-        return Instants._of((t.whole + (there[0] - here[0]), t.fraction), target, t.place)
-    # By way of TAI, so that 32.184 s is taken off as it was put on: the double nearest 0.816 is not 1 - 0.184.
-    return Instants._of(exact.add(exact.subtract(t.pair, here), there), target, t.place)
-
-
-def tai_count(t: Instants) -> Pair:
-    """TAI count (whole, fraction) of instants on a fixed-distance scale."""
-    return to_fixed_scale(t, "TAI").pair
-
-
-def tt_count(t: Instants) -> Pair:
-    """TT count (whole, fraction) of instants on a fixed-distance scale."""
-    return to_fixed_scale(t, "TT").pair
+    return Instants._of(fixed_count(t.pair, Scale.parse(t.scale), target), target, t.place)
 
 
 def tai_to_ut1(t: Instants, earth_orientation: EarthOrientation) -> Instants:

@@ -1,10 +1,10 @@
-"""`python -m tscale.cli` is the command `tscale`."""
+"""`python -m tscale` is the command `tscale`."""
 
 from __future__ import annotations
 
 import sys
 
-from .main import main
+from .cli.main import main
 
 if __name__ == "__main__":
     sys.exit(main())
