@@ -9,7 +9,7 @@ import pytest
 
 import tscale
 from tscale import exact
-from tscale.constants import AU_M, C_M_S, PARSEC_M, SUN_RADIUS_M
+from tscale.constants import AU_M, C_M_S, SUN_RADIUS_M
 from tscale.ephemeris.shipped import shipped_path
 from tscale.link.delay import Ray, gravity
 from tscale.transforms.wavefront import observer_state, wavefront_terms
@@ -120,7 +120,7 @@ def test_curvature_reaches_1_2_milliseconds_at_one_parsec(reference: tscale.Refe
     t = days("2020-01-01T00:00:00", 366)
     source = source_toward(np.array([0.0, -np.sin(0.40909), np.cos(0.40909)]), parallax_mas=1000.0)  # ecliptic pole
     term = wavefront_terms(t, reference, source).terms_s["parallax (curvature)"]
-    assert source.distance_m == pytest.approx(PARSEC_M, rel=1e-10)
+    assert source.distance_m == pytest.approx(3.0856775814913673e16, rel=1e-10)  # IAU 2015 B2
     assert -term == pytest.approx(np.full(366, 499.004784 / (2 * 206264.806)), rel=0.05)
 
 

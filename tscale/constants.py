@@ -24,9 +24,6 @@ C_M_S: Final = 299792458.0
 AU_M: Final = 149597870700.0
 """Astronomical unit, m. Defining (IAU 2012 Resolution B2)."""
 
-PARSEC_M: Final = AU_M * 648000.0 / 3.141592653589793
-"""Parsec, m. Derived (IAU 2015 Resolution B2, note 4)."""
-
 DAY_S: Final = 86400
 """Seconds in a day of a uniform scale. Defining."""
 
@@ -54,9 +51,6 @@ T0_COUNT: Final = (-725803168, 0.184)
 
 TT_MINUS_TAI: Final = (32, 0.184)
 """TT - TAI (whole s, fraction). Defining (IAU 1991 Resolution A4)."""
-
-W0_M2_S2: Final = 62636856.0
-"""Geoid potential behind L_G, m2/s2. Measured, +-0.5 (TN36 Table 1.1)."""
 
 WGS84_A_M: Final = 6378137.0
 """Equatorial radius of the WGS84 and GRS80 ellipsoids, m. Defining."""

@@ -30,7 +30,7 @@ _TERM_DIGITS: Final = 15
 
 # How errors that speak of arrays and arguments speak on the command line.
 _SPOKEN: Final = (
-    (r"^1 of 1 links (.*?) have ", r"the link \1 has "),
+    (r"^1 of 1 links (.*?)have ", r"the link \1has "),
     (
         r'Leave them out \(see the mask\), or give occultation="ignore" to have them marked only',
         "Say --occultation ignore to have that marked only",

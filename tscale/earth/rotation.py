@@ -41,7 +41,6 @@ __all__ = [
     "itrs_from_gcrs",
     "itrs_state_from_gcrs",
     "orientation",
-    "ut1_from_tt",
 ]
 
 _TWO_PI: Final = 2.0 * np.pi
@@ -64,11 +63,6 @@ def era_rad(ut1: Pair) -> FloatArray:
     day = (whole + ut1[1]) / 86400.0
     turn = turn + (0.7790572732640 + 0.00273781191135448 * day)
     return np.asarray(_TWO_PI * (turn - np.floor(turn)), dtype=np.float64)
-
-
-def ut1_from_tt(tt: Pair, ut1_minus_tai_s: FloatArray) -> Pair:
-    """UT1 count of a TT count, given UT1 - TAI (s)."""
-    return exact.add_seconds(_tai(tt), ut1_minus_tai_s)
 
 
 def _tai(tt: Pair) -> Pair:

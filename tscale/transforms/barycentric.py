@@ -53,6 +53,22 @@ def tdb_from_tt(tt: Pair, reference: ReferenceData, observer: Observer | None = 
     TT is shifted by the observer's terms to the geocentric argument, then TDB + P(TDB) = TT is
     solved for TDB with P = TT - TDB of the time ephemeris; one Newton step from TDB = TT leaves
     P'' P^2 / 2 < 1e-21 s.
+
+    Parameters
+    ----------
+    tt : Pair
+        TT count of the event, any shape.
+    reference : ReferenceData
+        Ephemeris, time ephemeris, and what the observer needs (Earth orientation for a site).
+    observer : Observer or None
+        Site or trajectory; None is the geocentre.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the ephemeris, the Earth orientation or the trajectory does not reach, with the mask.
+    ScaleMismatch
+        For an observer more than `GEOCENTRIC_LIMIT_M` from the Earth.
     """
     table = reference.time_ephemeris
     if observer is not None:
@@ -70,7 +86,24 @@ def tdb_from_tt(tt: Pair, reference: ReferenceData, observer: Observer | None = 
 
 
 def tt_from_tdb(tdb: Pair, reference: ReferenceData, observer: Observer | None = None) -> Pair:
-    """TT count of an event dated in TDB at the geocentre, or at an observer."""
+    """TT count of an event dated in TDB at the geocentre, or at an observer; inverse of `tdb_from_tt` to 0.2 fs.
+
+    Parameters
+    ----------
+    tdb : Pair
+        TDB count of the event, any shape.
+    reference : ReferenceData
+        Ephemeris, time ephemeris, and what the observer needs (Earth orientation for a site).
+    observer : Observer or None
+        Site or trajectory; None is the geocentre.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the ephemeris, the Earth orientation or the trajectory does not reach, with the mask.
+    ScaleMismatch
+        For an observer more than `GEOCENTRIC_LIMIT_M` from the Earth.
+    """
     if observer is None:
         return exact.add_seconds(tdb, reference.time_ephemeris.tt_minus_tdb_s(tdb))
     event = observer_event(tdb, reference, observer)
@@ -102,13 +135,47 @@ def tdb_to_tcb(t: Instants) -> Instants:
 
 
 def tt_to_tdb(t: Instants, reference: ReferenceData, observer: Observer | None = None) -> Instants:
-    """TT to TDB of the same event, at the geocentre (`observer=None`) or at an observer."""
+    """TT to TDB of the same event, at the geocentre (`observer=None`) or at an observer.
+
+    Parameters
+    ----------
+    t : Instants
+        TT, any shape.
+    reference : ReferenceData
+        Ephemeris, time ephemeris, and what the observer needs (Earth orientation for a site).
+    observer : Observer or None
+        Site or trajectory; None is the geocentre.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the ephemeris, the Earth orientation or the trajectory does not reach, with the mask.
+    ScaleMismatch
+        For another scale than TT, and for an observer more than `GEOCENTRIC_LIMIT_M` from the Earth.
+    """
     require_scale(t, "TT")
     return Instants._of(tdb_from_tt(t.pair, reference, observer), "TDB", t.place)
 
 
 def tdb_to_tt(t: Instants, reference: ReferenceData, observer: Observer | None = None) -> Instants:
-    """TDB to TT of the same event; inverse of `tt_to_tdb` to 0.5 fs."""
+    """TDB to TT of the same event; inverse of `tt_to_tdb` to 0.2 fs.
+
+    Parameters
+    ----------
+    t : Instants
+        TDB, any shape.
+    reference : ReferenceData
+        Ephemeris, time ephemeris, and what the observer needs (Earth orientation for a site).
+    observer : Observer or None
+        Site or trajectory; None is the geocentre.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the ephemeris, the Earth orientation or the trajectory does not reach, with the mask.
+    ScaleMismatch
+        For another scale than TDB, and for an observer more than `GEOCENTRIC_LIMIT_M` from the Earth.
+    """
     require_scale(t, "TDB")
     return Instants._of(tt_from_tdb(t.pair, reference, observer), "TT", t.place)
 
