@@ -199,7 +199,11 @@ GOOD = "2025-03-03T00:00:00,1"
         ([HEAD, "# c", GOOD, "2025-03-03T23:59:60,2"], ["--to", "TAI"], "in.csv:4: '2025-03-03T23:59:60'"),
         ([HEAD, GOOD, "1950-01-01,2"], ["--to", "TAI"], "in.csv:3: '1950-01-01'"),
         ([HEAD, GOOD, "2061-01-01,2"], ["--to", "TDB@GEOCENTER"], "in.csv:3: '2061-01-01'"),
-        ([HEAD, GOOD, "inf,2"], ["--to", "TAI", "--input-format", "mjd"], "in.csv:2: '2025-03-03T00:00:00' is no decimal number"),
+        (
+            [HEAD, GOOD, "inf,2"],
+            ["--to", "TAI", "--input-format", "mjd"],
+            "in.csv:2: '2025-03-03T00:00:00' is no decimal number",
+        ),
         ([HEAD, GOOD], ["--to", "TDB"], "--site FILE"),
         ([HEAD, GOOD], ["--to", "TDB@BARYCENTER", *SITE], "--source FILE (or --ra and --dec)"),
         ([HEAD, GOOD], ["--to", "TAI", *CLOCKS[:2]], "--clock FILE"),

@@ -164,7 +164,10 @@ def test_orbit_message_as_an_end(folder: Path, capsys: pytest.CaptureFixture[str
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "1e-9"), "rows"),
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "soon"), "soon"),
         (("--from", "site.toml", "--to", "nowhere.toml", "--transmit", "2024-05-05"), "nowhere.toml"),
-        (("--from", "site.toml", "--to", "venus", "--transmit", "2024-05-05T12:00:00"), "the link from Heron Flat to venus has"),
+        (
+            ("--from", "site.toml", "--to", "venus", "--transmit", "2024-05-05T12:00:00"),
+            "the link from Heron Flat to venus has",
+        ),
         (("--from", "site.toml", "--to", "venus", "--transmit", "2024-05-05T12:00:00"), "Say --occultation ignore to"),
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE, "--plot", "a.txt"), ".png"),
     ],

@@ -89,12 +89,32 @@ def test_first_c04_row_is_read_whole(c04: Any) -> None:
 
 def test_every_number_is_the_float_nearest_to_its_text(finals: Any, c04: Any) -> None:
     lines = Path(IERS_A_FILE).read_bytes().splitlines()[: len(finals.mjd)]
-    for column, first, last in [(0, 58, 68), (1, 18, 27), (2, 37, 46)]:
-        assert finals.values[:, column].tolist() == [float(line[first:last]) for line in lines]
-    assert finals.sigmas[:, 0].tolist() == [float(line[68:78]) for line in lines]
+    known = sum(bool(line[97:106].strip()) for line in lines)  # rows with celestial pole offsets
+    # ReadMe.finals2000A: UT1-UTC, PM-x, PM-y (s and arcsec), dX, dY (mas), each followed by its error.
+    for column, first, middle, last in [(0, 58, 68, 78), (1, 18, 27, 36), (2, 37, 46, 55)]:
+        assert finals.values[:, column].tolist() == [float(line[first:middle]) for line in lines]
+        assert finals.sigmas[:, column].tolist() == [float(line[middle:last]) for line in lines]
+    for column, first, middle, last in [(3, 97, 106, 115), (4, 116, 125, 134)]:
+        assert finals.values[:known, column].tolist() == [float(line[first:middle]) for line in lines[:known]]
+        assert finals.sigmas[:known, column].tolist() == [float(line[middle:last]) for line in lines[:known]]
+    # The head of the C04 file: UT1-UTC, x, y, dX, dY are the cells 7, 5, 6, 8, 9 of a row, their errors 15, 13, 14, 16,
+    # 17; the offsets are in arcseconds there.
     text = [line.split() for line in Path(IERS_B_FILE).read_text().splitlines() if not line.startswith("#")]
-    assert c04.values[:, 0].tolist() == [float(cells[7]) for cells in text]
-    assert c04.sigmas[:, 1].tolist() == [float(cells[13]) for cells in text]
+    for column, value, sigma, unit in [(0, 7, 15, 1), (1, 5, 13, 1), (2, 6, 14, 1), (3, 8, 16, 1000), (4, 9, 17, 1000)]:
+        assert c04.values[:, column].tolist() == [float(cells[value]) * unit for cells in text]
+        assert c04.sigmas[:, column].tolist() == [float(cells[sigma]) * unit for cells in text]
+        assert len(set(c04.sigmas[:, column].tolist())) > 20  # none of them a constant
+
+
+def test_no_day_is_lost_between_the_two_files(table: EarthOrientation, c04: Any, finals: Any) -> None:
+    assert (np.diff(table.mjd) == 1).all()
+    assert (table.mjd[0], table.mjd[-1]) == (c04.mjd[0], finals.mjd[-1])
+    # The first day after C04 is the finals file's own row.
+    first = c04.mjd[-1] + 1
+    value = table.at(tai_of(first))
+    row = finals.values[finals.mjd == first][0]
+    assert float(value.x_rad) == pytest.approx(row[1] * ARCSEC, rel=1e-14, abs=0)
+    assert float(value.y_rad) == pytest.approx(row[2] * ARCSEC, rel=1e-14, abs=0)
 
 
 def test_flags_and_blanks_of_the_finals_file(finals: Any) -> None:
@@ -345,7 +365,7 @@ def test_constant_holds_ut1_minus_utc() -> None:
     table = EarthOrientation.constant(ut1_minus_utc_s=0.3341, x_arcsec=0.0349282, y_arcsec=0.4833163)
     got = table.at(tai_of(53750, [0, 77077], [0.0, 0.5]))
     assert got.ut1_minus_tai_s.tolist() == pytest.approx([0.3341 - 33] * 2, abs=1e-14)
-    assert got.x_rad.tolist() == pytest.approx([0.0349282 * ARCSEC] * 2, rel=1e-14)
+    assert got.x_rad.tolist() == pytest.approx([0.0349282 * ARCSEC] * 2, rel=1e-14, abs=0)
     # In the drift years UTC itself moves: 0.002592 s a day in 1970 (tai-utc.dat, USNO).
     early = EarthOrientation.constant(start_mjd=40587, end_mjd=40590)
     tai = tai_of(40588, [0, 43200, 86399])

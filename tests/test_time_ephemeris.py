@@ -168,8 +168,9 @@ def test_first_order_rate_by_hand(eph: Ephemeris) -> None:
     for body in ("sun", "moon", 1, 2, 4, 5, 6, 7, 8, 9):
         potential += eph.gm_m3_s2(body) / np.linalg.norm(position - eph.position(body, pair), axis=-1)
     rest = coordinate_rate(eph, "earth", pair) - potential / C_M_S**2
-    assert rest.mean() == pytest.approx(1.1e-16, rel=0.1)
-    assert np.ptp(rest) < 0.15e-16
+    assert rest.mean() == pytest.approx(1.1e-16, rel=0.1, abs=0)
+    # Over the year and over Jupiter's they come and go by 1.3e-17.
+    assert 1e-17 < np.ptp(rest) < 1.5e-17
 
 
 def test_lunar_coordinate_time(eph: Ephemeris) -> None:

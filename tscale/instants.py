@@ -12,7 +12,7 @@ from . import exact
 from .errors import InvalidInput, ScaleMismatch, TscaleError
 from .exact import BoolArray, FloatArray, IntArray, Pair
 from .formats import iso8601, julian, labels
-from .formats.checks import Label
+from .formats.checks import Label, together
 from .scales import Node, Scale, check_place
 
 if TYPE_CHECKING:
@@ -272,7 +272,7 @@ class Instants:
             step = exact.normalise(*exact.checked_parts(*seconds))
         else:
             step = exact.from_seconds(exact.checked_parts(0, seconds)[1])
-        _broadcast_shapes(self.shape, step[0].shape)
+        together(self._whole, step[0])
         moved = exact.add(self.pair, step)
         far = np.abs(moved[0] + (moved[0] < 0)) >= exact.MOST_S
         if np.any(far):
@@ -296,7 +296,7 @@ class Instants:
                 f"cannot {verb} {self.node} and {other.node}: convert one with tscale.chain, "
                 "or state the place with .at(...)"
             )
-        _broadcast_shapes(self.shape, other.shape)
+        together(self._whole, other._whole)
 
     def __add__(self, seconds: Seconds) -> Instants:
         return self.shifted(seconds)
@@ -343,10 +343,3 @@ class Instants:
         if flat.size > 4:
             texts.insert(2, "...")
         return f"<Instants {self.node} shape={self.shape} [{', '.join(texts)}]>"
-
-
-def _broadcast_shapes(a: tuple[int, ...], b: tuple[int, ...]) -> None:
-    try:
-        np.broadcast_shapes(a, b)
-    except ValueError as error:
-        raise InvalidInput(f"shapes {a} and {b} do not go together; give equal ones, or ones that broadcast") from error

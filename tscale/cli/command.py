@@ -134,6 +134,7 @@ def _located(message: str, path: Path | None, row: int | None) -> str:
     """`FILE:LINE: message`, without saying the file twice."""
     if path is None:
         return message
+    message = re.sub(r"\[Errno \d+\] ([^:]+): '.*'", r"\1", message)  # a system's text says the file again
     place = f"{path}{'' if row is None else f':{row}'}"
     for name in dict.fromkeys((str(path), str(path.resolve()), path.name)):
         said = re.match(rf"{re.escape(name)}(?:, (?:line|row) \d+)?: ", message)

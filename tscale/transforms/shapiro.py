@@ -2,15 +2,101 @@
 
 from __future__ import annotations
 
-from typing import NamedTuple
+from typing import Final, NamedTuple
 
 import numpy as np
 
-from ..constants import C_M_S, SUN_RADIUS_M
+from ..constants import AU_M, C_M_S, SUN_RADIUS_M
 from ..earth.frames import dot
-from ..exact import FloatArray
+from ..ephemeris import Ephemeris
+from ..errors import OutOfSpan
+from ..exact import FloatArray, Pair
 
-__all__ = ["HigherOrders", "higher_orders", "passage"]
+__all__ = ["HigherOrders", "Ray", "higher_orders", "passage", "shapiro_terms"]
+
+_BLOCK: Final = 8192
+"""Instants handled at a time, so that the states of all bodies stay in the processor's cache."""
+
+
+class Ray(NamedTuple):
+    """The observer's barycentric state, the direction of the source, and the Sun's state; (..., 3) each."""
+
+    x_m: FloatArray
+    v_m_s: FloatArray
+    seen: FloatArray
+    sun_m: FloatArray
+    sun_v_m_s: FloatArray
+
+
+def shapiro_terms(
+    tdb: Pair, ray: Ray, ephemeris: Ephemeris, bodies: tuple[str, ...], *, second_order: bool, with_rate: bool
+) -> tuple[dict[str, FloatArray], FloatArray]:
+    """Minus the gravitational delay of each body, s, by name, and the rate of their sum (zeros without `with_rate`).
+
+    Parameters
+    ----------
+    tdb : Pair
+        TDB count at which the light meets the observer, any shape.
+    ray : Ray
+    ephemeris : Ephemeris
+    bodies : tuple of str
+    second_order : bool
+        Add the Sun's second and third order.
+
+    Raises
+    ------
+    OutOfSpan
+        Where the ephemeris does not reach, with the mask.
+    """
+    names = [f"minus Shapiro delay, {body}" for body in bodies]
+    if second_order and "sun" in bodies:
+        names += ["minus Shapiro delay, sun, second order", "minus Shapiro delay, sun, third order"]
+    shape = np.shape(ray.x_m)[:-1]
+    flat = Ray(*(np.broadcast_to(vectors, (*shape, 3)).reshape(-1, 3) for vectors in ray))
+    whole, fraction = np.broadcast_to(tdb[0], shape).reshape(-1), np.broadcast_to(tdb[1], shape).reshape(-1)
+    out = np.zeros((len(names) + 1, whole.size))
+    try:
+        for i in range(0, whole.size, _BLOCK):
+            part = slice(i, i + _BLOCK)
+            block = Ray(*(vectors[part] for vectors in flat))
+            _terms_of_block(
+                out[:, part], (whole[part], fraction[part]), block, ephemeris, bodies, second_order, with_rate
+            )
+    except OutOfSpan:
+        ephemeris.positions(bodies, tdb)  # raises it again, with the mask of all dates
+        raise
+    columns = out.reshape(len(out), *shape)
+    return dict(zip(names, columns[:-1], strict=True)), columns[-1]
+
+
+def _terms_of_block(
+    out: FloatArray,
+    tdb: Pair,
+    ray: Ray,
+    ephemeris: Ephemeris,
+    bodies: tuple[str, ...],
+    second_order: bool,
+    with_rate: bool,
+) -> None:
+    """Fill the rows of `out`: a term each, the rate last."""
+    others = tuple(body for body in bodies if body != "sun")
+    places, speeds = ephemeris.states(others, tdb)
+    states = dict(zip(others, zip(places, speeds, strict=True), strict=True)) | {"sun": (ray.sun_m, ray.sun_v_m_s)}
+    for row, body in enumerate(bodies):
+        body_m, body_v = states[body]
+        r, distance, depth = passage(ray.x_m, ray.seen, body_m, body_v)
+        gm = ephemeris.gm_m3_s2(body)
+        # In the frame of the moving body: light against its motion is held up longer (8 ps at the limb of Jupiter).
+        factor = (2.0 * gm / C_M_S**3) * (1.0 + dot(ray.seen, body_v) / C_M_S)
+        out[row] = factor * np.log(depth / AU_M)
+        if with_rate:
+            w = ray.v_m_s - body_v
+            out[-1] += factor * (dot(r, w) / distance + dot(ray.seen, w)) / depth
+        if second_order and body == "sun":
+            higher = higher_orders(r, ray.seen, ray.v_m_s - body_v, gm)
+            out[-3], out[-2] = higher.second_s, higher.third_s
+            if with_rate:
+                out[-1] += higher.rate
 
 
 def passage(

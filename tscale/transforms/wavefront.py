@@ -27,7 +27,7 @@ from typing import Final, NamedTuple, Protocol, runtime_checkable
 import numpy as np
 
 from .. import exact
-from ..constants import AU_M, C_M_S, SUN_RADIUS_M
+from ..constants import C_M_S, SUN_RADIUS_M
 from ..earth.frames import dot
 from ..earth.moving import observer_event
 from ..earth.observer import SLACK_S, Observer
@@ -36,7 +36,7 @@ from ..exact import BoolArray, FloatArray, Pair
 from ..instants import Instants
 from ..source import Source
 from ..tables.reference import ReferenceData
-from .shapiro import higher_orders, passage
+from .shapiro import Ray, passage, shapiro_terms
 from .terrestrial import require_scale
 
 __all__ = [
@@ -197,25 +197,16 @@ def wavefront_terms(
         if with_rate:
             rate = rate - (dot(x, v) + along_v * closer) / (path * C_M_S)
         seen = (k * distance[..., np.newaxis] - x) / path[..., np.newaxis]
-    others = tuple(body for body in bodies if body != "sun")
-    places, speeds = reference.ephemeris.states(others, tdb)
-    later: dict[str, FloatArray] = {}
-    for body in bodies:
-        at = None if body == "sun" else others.index(body)
-        body_m, body_v = (sun, sun_velocity) if at is None else (places[at], speeds[at])
-        r, distance, depth = passage(x, seen, body_m, body_v)
-        gm, w = reference.ephemeris.gm_m3_s2(body), v - body_v
-        # In the frame of the moving body: light against its motion is held up longer (8 ps at the limb of Jupiter).
-        factor = (2.0 * gm / C_M_S**3) * (1.0 + dot(seen, body_v) / C_M_S)
-        terms[f"minus Shapiro delay, {body}"] = factor * np.log(depth / AU_M)
-        if with_rate:
-            rate = rate + factor * (dot(r, w) / distance + dot(seen, w)) / depth
-        if second_order and body == "sun":
-            higher = higher_orders(r, seen, w, gm)
-            later["minus Shapiro delay, sun, second order"] = higher.second_s
-            later["minus Shapiro delay, sun, third order"] = higher.third_s
-            rate = rate + higher.rate if with_rate else rate
-    terms |= later
+    delays, delay_rate = shapiro_terms(
+        tdb,
+        Ray(x, v, seen, sun, sun_velocity),
+        reference.ephemeris,
+        bodies,
+        second_order=second_order,
+        with_rate=with_rate,
+    )
+    terms |= delays
+    rate = rate + delay_rate if with_rate else rate
     return WavefrontTerms(terms, np.asarray(rate), np.asarray(along_v * beyond_s / C_M_S))
 
 
