@@ -172,7 +172,7 @@ class Conversion:
     def _on_its_line(self, error: TscaleError, block: RowBlock) -> TscaleError:
         """The same error with the line of the first row at fault, in words that speak of this row alone."""
         mask = error.mask
-        if error.path is not None or mask is None or mask.shape != (len(block),) or not mask.any():
+        if error.row is not None or mask is None or mask.shape != (len(block),) or not mask.any():
             return error
         at = int(np.flatnonzero(mask)[0])
         text = block.column[at].strip()
