@@ -131,8 +131,14 @@ def test_the_hint_of_a_delimiter_stands_with_a_column_that_is_missing(
     [
         ("", "the clock log log.csv is empty"),
         ("epoch;offset_s;uncertainty_s\n2025-01-01;1;0\n", "(the header holds ';': a log is separated by commas)"),
-        (LOG + "2025-01-01,1e12,0,UTC,x\n", "log.csv:2: offset_s is '1e12'; a number of seconds from -1e9 to 1e9"),
-        (LOG + "2025-01-01,1,inf,UTC,x\n", "log.csv:2: uncertainty_s is 'inf'; a number of seconds from -1e9 to 1e9"),
+        (
+            LOG + "2025-01-01,1e12,0,UTC,x\n",
+            "log.csv:2: offset_s is '1e12'; a finite number of seconds from -1e9 to 1e9",
+        ),
+        (
+            LOG + "2025-01-01,1,inf,UTC,x\n",
+            "log.csv:2: uncertainty_s is 'inf'; a finite number of seconds from -1e9 to 1e9",
+        ),
         (LOG + "2025-01-01\0,1,0,UTC,x\n", "log.csv:2: a NUL character"),
         (LOG + "2025-01-01,1,0,UTC,x\n2025-01-01,1,0,UTC,é\n", "log.csv:3: not UTF-8 text"),
         (LOG + "2025-01-01,1,0,UTC,x\n2025-01-01,1,0,UTC,x\n", "log.csv:3: this epoch is not after the one before"),

@@ -215,7 +215,8 @@ def test_second_order_is_a_term_of_its_own(folder: Path, reference: tscale.Refer
     full = converted(*words, "--second-order")[0]
     extra = {name.rpartition(", ")[2]: float(full[name]) for name in set(full) - set(plain)}
     assert set(extra) == {"second order (s)", "third order (s)"}
-    # The light is bent while it is delayed: (2GM/c^2)^2 / (c r (1 - cos theta)), as in IERS Conventions (2010) eq. 11.14.
+    # The light is bent while it is delayed: (2GM/c^2)^2 / (c r (1 - cos theta)), from the logarithm of the first order,
+    # ln(r (1 - cos theta)), along a line moved by that bending; cf. IERS Conventions (2010) eq. 11.14.
     # The rest, 15 pi/4 (GM/c^2)^2 / (c b), is 1.3 % of it here; theta is that of the geocentre, to 0.5 %.
     m, r = 1476.625, np.linalg.norm(sun)
     expected = (2.0 * m) ** 2 / (r * (1.0 - np.cos(np.radians(0.5)))) / 299792458.0

@@ -21,8 +21,8 @@ ROOT = Path(tscale.__file__).parents[1]
 EXAMPLES = ROOT / "examples"
 COMMAND = [sys.executable, "-m", "tscale"]
 ENVIRONMENT = {**os.environ, "PYTHONPATH": str(ROOT)}
-GIVEN = "t,é\n2025-01-01T00:00:00,ü\n"  # noqa: RUF001
-TAKEN = "t,é,TAI\n2025-01-01T00:00:00,ü,2025-01-01T00:00:37\n"  # noqa: RUF001
+GIVEN = "t,é\n2025-01-01T00:00:00,ü\n"
+TAKEN = "t,é,TAI\n2025-01-01T00:00:00,ü,2025-01-01T00:00:37\n"
 TO_TAI = ["--to", "TAI", "--digits", "0", "--quiet"]
 
 pytestmark = pytest.mark.skipif(os.name != "posix", reason="streams and signals as on POSIX systems")

@@ -62,3 +62,28 @@ def test_folders_are_refused(tmp_path: Path) -> None:
         pass
     with pytest.raises(InvalidInput, match="there is no folder"), replaced(tmp_path / "no" / "out.csv"):
         pass
+
+
+@pytest.mark.skipif(os.name != "posix", reason="descriptors by name")
+def test_a_stream_that_is_open_is_written_where_it_stands(tmp_path: Path) -> None:
+    target = tmp_path / "out.csv"
+    with target.open("w") as file:
+        file.write("before\n")
+        file.flush()
+        with replaced(f"/dev/fd/{file.fileno()}") as text:
+            text.write("within\n")
+        file.write("after\n")
+    assert target.read_text() == "before\nwithin\nafter\n"
+
+
+def test_the_longest_names(tmp_path: Path) -> None:
+    target = tmp_path / ("x" * 255)  # the most that common file systems allow
+    with replaced(target) as file:
+        file.write("a")
+    assert target.read_text() == "a"
+    longer = tmp_path / ("x" * 256)
+    with pytest.raises(OSError, match="x" * 256) as caught, replaced(longer):
+        pass
+    assert caught.value.filename == str(longer)
+    with pytest.raises(InvalidInput, match="empty"), replaced(""):
+        pass

@@ -144,3 +144,13 @@ def test_defaults_and_refusals() -> None:
         read_dates(["30000.5"], "mjd", "UTC")
     with pytest.raises(TextError, match="2016-12-30"):
         read_dates(["2016-12-30T23:59:60"], "iso", "UTC")
+
+
+@pytest.mark.parametrize("layout", ["iso", "mjd", "jd", "seconds"])
+def test_nul_characters_are_refused(layout: str) -> None:
+    good = {"iso": "2025-01-01", "mjd": "60676", "jd": "2460676.5", "seconds": "1"}[layout]
+    for text in (f"{good}\0", f"\0{good}", f"{good}\0\0"):
+        with pytest.raises(TextError) as caught:
+            read_dates([good, text], layout, "TT")
+        assert caught.value.mask is not None
+        assert caught.value.mask.tolist() == [False, True]

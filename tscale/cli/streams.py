@@ -36,7 +36,11 @@ def opened(path: str) -> Iterator[Input]:
     if path == "-":
         if sys.stdin is None:
             raise InvalidInput("the standard input is closed; give the name of a file, or a stream to read")
-        live = LiveLines(sys.stdin.buffer)  # type: ignore[arg-type]  # has read1
+        buffer: Any = getattr(sys.stdin, "buffer", None)
+        if buffer is None:  # a stream of text alone, as a caller may have put in its place
+            yield Input(sys.stdin, "<stdin>", None, None)
+            return
+        live = LiveLines(buffer)
         yield Input(live, "<stdin>", None, live.ready)
         return
     with open(path, "rb") as stream:

@@ -19,7 +19,7 @@ from typing import Any, Final
 import numpy as np
 
 from ..errors import InvalidInput, TextError
-from ..exact import FloatArray, IntArray, Pair
+from ..exact import BoolArray, FloatArray, IntArray, Pair
 from ..formats import decimals, labels
 from ..formats.labels import DayLength
 from ..formats.leap_seconds import LeapSeconds
@@ -64,7 +64,9 @@ def read_dates(
     """
     kind = Scale.parse(scale)
     if _checked(layout) == "iso":
-        _refuse_nul(texts)
+        # An array of texts would drop NUL characters at their ends in silence.
+        bad = np.array(["\0" in text for text in texts], dtype=np.bool_)
+        _refuse(bad, texts, "dates", "it holds a NUL character")
         return Instants.from_iso([text.strip() for text in texts], scale, place, leap_seconds=leap_seconds)
     whole, numerator = parse_decimals(texts)
     if layout == "seconds":
@@ -126,24 +128,16 @@ def parse_decimals(texts: Sequence[str]) -> tuple[IntArray, IntArray]:
         if sign == "-":
             value, part = (-value - 1, _E18 - part) if part else (-value, 0)
         whole[index], numerator[index] = value, part
-    if bad.any():
-        first = int(np.flatnonzero(bad)[0])
-        raise TextError(
-            f"{int(np.count_nonzero(bad))} of {bad.size} texts are not decimal numbers; the first (item {first}) is "
-            f"{texts[first]!r}: write a number such as 60676.25, with up to 18 decimals and no exponent",
-            mask=bad,
-        )
+    _refuse(bad, texts, "decimal numbers", "write a number such as 60676.25, with up to 18 decimals and no exponent")
     return whole, numerator
 
 
-def _refuse_nul(texts: Sequence[str]) -> None:
-    """An array of texts would drop NUL characters at their ends in silence."""
-    bad = np.array(["\0" in text for text in texts], dtype=np.bool_)
+def _refuse(bad: BoolArray, texts: Sequence[str], what: str, advice: str) -> None:
     if bad.any():
         first = int(np.flatnonzero(bad)[0])
         raise TextError(
-            f"{int(np.count_nonzero(bad))} of {bad.size} texts are not dates; the first (item {first}) is "
-            f"{texts[first]!r}: it holds a NUL character",
+            f"{int(np.count_nonzero(bad))} of {bad.size} texts are not {what}; the first (item {first}) is "
+            f"{texts[first]!r}: {advice}",
             mask=bad,
         )
 

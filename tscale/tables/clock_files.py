@@ -138,7 +138,7 @@ def _number(text: str, column: str, row: int, path: Path) -> Decimal:
         value = Decimal("NaN")
     if not value.is_finite() or "_" in text or abs(value) > _LARGEST_OFFSET_S:
         raise DataFileError(
-            f"{path}, line {row}: {column} is {text!r}; a number of seconds from -1e9 to 1e9 is needed"
+            f"{path}, line {row}: {column} is {text!r}; a finite number of seconds from -1e9 to 1e9 is needed"
             + (" (or an empty cell where the comparison failed)" if column == "offset_s" else ""),
             row=row,
             path=path,
