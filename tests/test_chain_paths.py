@@ -212,3 +212,15 @@ def test_an_orbit_owes_nothing_to_earth_orientation() -> None:
     assert set(chain.uncertainty_s(t)) == {"time ephemeris"}
     assert chain.notes(t) == ()
     assert np.max(np.abs(chain.ledger(t).total)) < 520.0
+
+
+def test_the_table_of_a_ledger_is_that_of_its_row() -> None:
+    ledger = tscale.chain("UTC", "TDB@BARYCENTER", site=SITE, source=SOURCE).ledger(T)
+    for row in (0, 1, -1):
+        lines = [line.split() for line in ledger.table(row).splitlines()]
+        total = next(words[-1] for words in lines if words[0] == "total")
+        roemer = next(words[-1] for words in lines if "Roemer" in words)
+        # Printed to 1 fs; as float64 500 s and 70 s are good to 6e-14 s.
+        assert float(total) == pytest.approx(ledger.total[row], abs=1e-13)
+        assert float(roemer) == pytest.approx(ledger["Roemer delay"][row], abs=1e-13)
+    assert abs(ledger["Roemer delay"][0] - ledger["Roemer delay"][1]) > 1.0

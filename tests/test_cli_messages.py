@@ -160,7 +160,7 @@ def test_other_files(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert text.endswith("; write itrf = { x_m = ..., y_m = ..., z_m = ... }")
     (folder / "s.toml").write_text("[site\n")
     text = complaint(capsys, "convert", "t.csv", "out.csv", "--to", "TAI", "--site", "s.toml")
-    assert text.startswith("site file s.toml:1 is not TOML")
+    assert text.startswith("s.toml:1 is not TOML")
     (folder / "l.dat").write_text("# rows\nnonsense\n")
     assert complaint(capsys, "data", "--leap-seconds", "l.dat").startswith("l.dat:2: 'nonsense' is not a row")
     (folder / "x.txt").write_text("".join(f" {53000 + 10 * i}  32.0 27.0\n" for i in range(3)))

@@ -180,7 +180,7 @@ def test_signals_leave_no_file(folder: Path, name: str) -> None:
         started(process, folder)
         number = getattr(signal, name)
         process.send_signal(number)
-        assert process.wait(60) == 128 + number
+        assert process.wait(60) == 128 + number, process.stderr.read()
         assert b"Traceback" not in process.stderr.read()
     assert os.listdir(folder) == ["in.csv"]
 

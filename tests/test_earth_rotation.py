@@ -17,7 +17,7 @@ from hypothesis import strategies as st
 
 from tscale.earth import Site, cip_table, gcrs_from_itrs, gcrs_state_from_itrs, itrs_from_gcrs, itrs_state_from_gcrs
 from tscale.earth.orientation import Orientation
-from tscale.earth.rotation import era_rad
+from tscale.earth.rotation import era_rad, orientation
 from tscale.errors import ExtrapolationWarning, InvalidInput
 from tscale.formats.leap_seconds import LeapSeconds
 from tscale.tables.earth_orientation import EarthOrientation
@@ -351,3 +351,26 @@ def test_not_finite():
     with pytest.raises(InvalidInput, match="not finite") as caught:
         itrs_from_gcrs([[1.0, 2.0, np.nan], [1.0, 2.0, 3.0]], (0, 0.0), held())
     assert caught.value.mask.tolist() == [True, False]
+
+
+def test_rate_of_the_angle_is_its_derivative():
+    # With the drift of the origins in it: that of s reaches 1e-14 rad/s (6e-8 m/s on the ground, less than the
+    # differences of positions above show). Over 4 h the angle rounds by 1e-14 rad of 1e4 s: 1e-18 rad/s.
+    random = np.random.default_rng(12)
+    whole, fraction = LeapSeconds.default().count_from_label(
+        random.integers(41317, 61340, 400), random.integers(15000, 71000, 400), random.random(400)
+    )
+    reference = SimpleNamespace(earth_orientation=EarthOrientation.default())
+    tt, mean = (whole + 64, fraction + 0.184), 2 * np.pi * 1.00273781191135448 / 86400
+    step = 7200
+
+    def turned(k):
+        # What the angle has gained on an even rotation, without its whole turns.
+        ahead = orientation((tt[0] + k * step, tt[1]), reference).angle_rad - now.angle_rad - mean * (k * step)
+        return (ahead + np.pi) % (2 * np.pi) - np.pi
+
+    now = orientation(tt, reference)
+    slope = (8 * (turned(1) - turned(-1)) - (turned(2) - turned(-2))) / (12 * step)
+    np.testing.assert_allclose(now.angle_rate_rad_s - mean, slope, rtol=0, atol=1e-15)
+    s_rate = cip_table.cip(tt)[1][:, 2]
+    assert 5e-15 < np.abs(s_rate).max() < 5e-14

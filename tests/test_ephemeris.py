@@ -20,6 +20,7 @@ from jplephem.spk import SPK
 from numpy.polynomial import chebyshev
 
 from tscale.constants import GM_M3_S2
+from tscale.earth import cip_table
 from tscale.ephemeris import PLANETARY_BODIES, ChebyshevTable, Ephemeris, body_id
 from tscale.ephemeris.shipped import DEFAULT_KERNEL, manifest, shipped_path
 from tscale.errors import DataFileError, InvalidInput, MissingPiece, OutOfSpan
@@ -453,3 +454,53 @@ def test_table_edges_and_large_tables(monkeypatch: pytest.MonkeyPatch) -> None:
 def test_table_refuses_nonsense(start: float, step: float, shape: tuple[int, ...]) -> None:
     with pytest.raises(InvalidInput, match="table: "):
         ChebyshevTable(start, step, np.zeros(shape))
+
+
+def test_immutable(eph: Ephemeris) -> None:
+    fresh = Ephemeris.open(eph.path)
+    assert fresh.sha256 == eph.sha256  # found when asked for, all the same
+    for name in ("path", "name", "comment", "_gm", "_sha256", "anything"):
+        with pytest.raises(AttributeError, match="an Ephemeris is immutable"):
+            setattr(fresh, name, None)
+    with pytest.raises(TypeError):
+        fresh.given_gm_m3_s2[5] = 0.0  # type: ignore[index]
+
+
+def test_a_table_is_immutable() -> None:
+    given = np.ones((4, 1, 3))
+    table = ChebyshevTable(0.0, 10.0, given)
+    pair = (np.array([5, 15]), np.zeros(2))
+    before = table.value(pair)
+    given[:] = 7.0
+    np.testing.assert_array_equal(table.value(pair), before)
+    for name in ("start_s", "step_s", "name", "_rows", "_columns"):
+        with pytest.raises(AttributeError, match="a ChebyshevTable is immutable"):
+            setattr(table, name, 1.0)
+    arrays = [table.coefficients, table._rows, table._columns, pickle.loads(pickle.dumps(table)).coefficients]
+    arrays += [cip_table._table().coefficients, cip_table._table()._rows]
+    for array in arrays:
+        assert array is not None
+        with pytest.raises(ValueError, match="read-only"):
+            array[0] = 0.0
+    # What cannot be written is not copied: the records of a mapped kernel.
+    assert ChebyshevTable(0.0, 10.0, table.coefficients).coefficients is table.coefficients
+
+
+def test_default_is_one_value_for_all_threads() -> None:
+    """In a fresh interpreter, with files that take their time."""
+    code = (
+        "import threading, time\n"
+        "from tscale.ephemeris import Ephemeris, TimeEphemeris, kernel, time_ephemeris\n"
+        "for module in (kernel, time_ephemeris):\n"
+        "    slow = lambda name, whole=module.shipped_path: time.sleep(0.05) or whole(name)\n"
+        "    module.shipped_path = slow\n"
+        "gate, found = threading.Barrier(16), []\n"
+        "def work():\n"
+        "    gate.wait()\n"
+        "    mine = Ephemeris.default()\n"
+        "    found.append((id(mine), id(TimeEphemeris.of(mine))))\n"
+        "threads = [threading.Thread(target=work) for _ in range(16)]\n"
+        "[t.start() for t in threads], [t.join() for t in threads]\n"
+        "assert len(found) == 16 and len(set(found)) == 1, found\n"
+    )
+    subprocess.run([sys.executable, "-W", "error", "-c", code], check=True, timeout=60)

@@ -227,3 +227,18 @@ def test_errors_travel_between_processes_with_their_mask() -> None:
     twin = pickle.loads(pickle.dumps(caught.value))
     assert twin.mask.tolist() == [False, True]
     assert str(twin) == str(caught.value)
+
+
+def test_neither_part_can_be_written() -> None:
+    for t in (
+        tscale.Instants.from_seconds([1, 2], [0.25, 0.5], scale="TT"),
+        tscale.Instants.from_seconds([1, 2], [0.25, 0.5], scale="TT")[::-1],
+        tscale.Instants.from_seconds([1, 2], [0.25, 0.5], scale="TT").shifted(1.0).at("GEOCENTER"),
+    ):
+        for part in (t.whole, t.fraction, *t.pair):
+            with pytest.raises(ValueError, match="read-only"):
+                part[0] = 0
+    given = np.array([0.25, 0.5])
+    kept = tscale.Instants.from_seconds([1, 2], given, scale="TT")
+    given[:] = 0.0
+    assert kept.fraction.tolist() == [0.25, 0.5]

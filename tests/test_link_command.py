@@ -187,7 +187,7 @@ def test_errors_are_one_line_and_leave_no_file(
 
 @pytest.mark.parametrize(
     ("text", "message"),
-    [("[orbit]\nname = 'a'\n", "needs"), ("nonsense", "not a TOML"), (SITE + CAMP, "one table"), ("", "one table")],
+    [("[orbit]\nname = 'a'\n", "needs"), ("nonsense", "is not TOML"), (SITE + CAMP, "one table"), ("", "one table")],
 )
 def test_wrong_files_of_ends(folder: Path, capsys: pytest.CaptureFixture[str], text: str, message: str) -> None:
     (folder / "end.toml").write_text(text)

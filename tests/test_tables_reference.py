@@ -6,6 +6,7 @@ import pickle
 import subprocess
 import sys
 import threading
+import time
 from datetime import date
 from pathlib import Path
 from typing import Any
@@ -87,16 +88,18 @@ def test_replace() -> None:
         first.replace(leapseconds=None)
 
 
-def test_fingerprint_tells_bundles_apart() -> None:
+def test_fingerprint_tells_bundles_apart(tmp_path: Path) -> None:
     default = ReferenceData.default()
+    (tmp_path / "other.bsp").write_bytes(default.ephemeris.path.read_bytes() + bytes(1024))
     prints = {
         default.fingerprint,
         default.replace(tt_bipm=bipm()).fingerprint,
         default.replace(tt_bipm=bipm("BIPM09")).fingerprint,
         default.replace(leap_seconds=LeapSeconds.default().with_step(63000, 36)).fingerprint,
         default.replace(earth_orientation=EarthOrientation.constant()).fingerprint,
+        default.replace(ephemeris=tmp_path / "other.bsp").fingerprint,
     }
-    assert len(prints) == 5
+    assert len(prints) == 6
     assert ReferenceData().fingerprint == default.fingerprint
 
 
@@ -157,21 +160,22 @@ def test_threads_share_one_time_ephemeris(monkeypatch: pytest.MonkeyPatch) -> No
 
     def counted(self: ReferenceData, part: str) -> Any:
         made.append(part)
+        time.sleep(0.05)  # long enough for all threads to ask meanwhile
         return whole(self, part)
 
     monkeypatch.setattr(ReferenceData, "_make", counted)
     found: list[int] = []
-    gate = threading.Barrier(8)
+    gate = threading.Barrier(16)
 
     def work() -> None:
         gate.wait()
         found.append(id(reference.time_ephemeris))
 
-    threads = [threading.Thread(target=work) for _ in range(8)]
+    threads = [threading.Thread(target=work) for _ in range(16)]
     for thread in threads:
         thread.start()
     for thread in threads:
         thread.join()
     assert len(set(found)) == 1
-    assert len(found) == 8
+    assert len(found) == 16
     assert sorted(made) == ["ephemeris", "time_ephemeris"]

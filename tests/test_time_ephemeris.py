@@ -18,8 +18,8 @@ from jplephem.excerpter import write_excerpt
 from jplephem.spk import SPK
 
 from tscale.constants import C_M_S, L_B, L_C, L_G, T0_COUNT, TDB0_S
-from tscale.ephemeris import Ephemeris, TimeEphemeris, coordinate_rate
-from tscale.ephemeris.shipped import DEFAULT_TIME_EPHEMERIS, manifest
+from tscale.ephemeris import Ephemeris, TimeEphemeris, coordinate_rate, time_ephemeris
+from tscale.ephemeris.shipped import DEFAULT_TIME_EPHEMERIS, manifest, shipped_path
 from tscale.ephemeris.time_integral import T0_TDB
 from tscale.errors import DataFileError, InvalidInput, MissingPiece, OutOfSpan
 
@@ -342,3 +342,58 @@ def test_kernel_too_short_or_without_bodies(eph: Ephemeris, tmp_path: Path, cach
 def test_progress_bar(short: Path, cache: Path, capsys: pytest.CaptureFixture[str]) -> None:
     TimeEphemeris.of(Ephemeris.open(short), progress=True)
     assert "time ephemeris: 100%" in capsys.readouterr().err
+
+
+def test_cache_file_of_another_kernel_is_not_taken(short: Path, cache: Path) -> None:
+    first = TimeEphemeris.of(Ephemeris.open(short))
+    light = Ephemeris.open(short, gm_m3_s2={5: 0.0})
+    other = TimeEphemeris.of(light)
+    assert first.path is not None
+    assert other.path is not None
+    pair = (np.array(T0_COUNT[0] + 300 * DAY_S), np.array(0.0))
+    expected = other.tt_minus_tdb_s(pair)
+    other.path.write_bytes(first.path.read_bytes())
+    with pytest.warns(UserWarning, match="was made from another kernel; the time ephemeris is built anew"):
+        again = TimeEphemeris.of(light)
+    assert again.tt_minus_tdb_s(pair) == expected != first.tt_minus_tdb_s(pair)
+
+
+def test_cache_file_without_a_checksum_is_not_taken(short: Path, cache: Path) -> None:
+    kernel = Ephemeris.open(short)
+    good = TimeEphemeris.of(kernel)
+    assert good.path is not None
+    content = good.path.read_bytes()
+    assert content.count(b"SHA-256 of the segment") == 1
+    good.path.write_bytes(content.replace(b"SHA-256 of the segment", b"SHA-256 of the sediment"[:22]))
+    assert TimeEphemeris.open(good.path).span == good.span  # any file with such a segment may be opened by name
+    with pytest.warns(UserWarning, match="has no checksum in its comments; the time ephemeris is built anew"):
+        again = TimeEphemeris.of(kernel)
+    assert again.sha256 == good.sha256
+
+
+def test_cache_file_of_another_integrator_is_not_looked_at(
+    short: Path, cache: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    told: list[int] = []
+    before = TimeEphemeris.of(Ephemeris.open(short))
+    monkeypatch.setattr("tscale.ephemeris.time_ephemeris.VERSION", 2)
+    after = TimeEphemeris.of(Ephemeris.open(short), progress=lambda done, total: told.append(done))
+    assert told
+    assert after.path != before.path
+    assert {p.name for p in cache.glob("*.bsp")} == {p.path.name for p in (before, after) if p.path}
+
+
+def test_shipped_file_is_checked_against_the_manifest(monkeypatch: pytest.MonkeyPatch) -> None:
+    entry = {**manifest(DEFAULT_TIME_EPHEMERIS), "sha256": "0" * 64}
+    monkeypatch.setattr("tscale.ephemeris.time_ephemeris.manifest", lambda name: entry)
+    with pytest.raises(DataFileError, match=f"its manifest says {'0' * 64}: install the package again") as caught:
+        time_ephemeris._shipped.__wrapped__()
+    assert caught.value.path == shipped_path(DEFAULT_TIME_EPHEMERIS)
+
+
+def test_immutable(tables: TimeEphemeris) -> None:
+    for name in ("name", "path", "sha256", "_table", "anything"):
+        with pytest.raises(AttributeError, match="immutable"):
+            setattr(tables, name, None)
+    assert not tables._table.coefficients.flags.writeable
+    assert not tables._table._rows.flags.writeable

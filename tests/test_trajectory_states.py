@@ -432,3 +432,15 @@ def test_spk_ends_allow_a_rounding_and_stand_still_there(reference, probe):
         np.testing.assert_array_equal(past_v, v)
     with pytest.raises(OutOfSpan):
         path.state_from_center((np.asarray(20 * 86400), np.asarray(2e-9)), reference)
+
+
+def test_lengths_of_states_dated_in_tcb(reference):
+    # TN36 eq. 1.2: x_TDB = x_TCB (1 - L_B), velocities keep their value; at the knots nothing is interpolated.
+    tdb = Instants.from_seconds(700_000_000 + 86400 * np.arange(12), 0.5, scale="TDB", place="BARYCENTER")
+    tcb = tscale.chain("TDB@BARYCENTER", "TCB@BARYCENTER")(tdb)
+    r = np.random.default_rng(5).normal(size=(12, 3)) * 1e11
+    v = np.random.default_rng(6).normal(size=(12, 3)) * 1e4
+    plain = Trajectory.from_states(tdb, r, v, frame="BCRS", center=0).state_bcrs(tdb.pair, reference)
+    scaled = Trajectory.from_states(tcb, r, v, frame="BCRS", center=0).state_bcrs(tdb.pair, reference)
+    np.testing.assert_allclose(scaled[0] / plain[0], 1 - 1.550519768e-8, rtol=0, atol=1e-15)
+    np.testing.assert_allclose(scaled[1], plain[1], rtol=1e-12, atol=0)

@@ -9,7 +9,6 @@ import numpy as np
 import pytest
 
 import tscale
-from tscale.ephemeris.shipped import shipped_path
 from tscale.transforms.shapiro import higher_orders
 from tscale.transforms.wavefront import observer_state, wavefront_terms
 
@@ -72,7 +71,7 @@ def test_each_delay_by_hand(reference: tscale.ReferenceData, body: str) -> None:
         factor = 2 * GM_M3_S2[body] / C_M_S**3 * (1 + dot(n, velocity) / C_M_S)
         expected = float(factor * ((length(r) + dot(n, r)) / AU_M).ln())
     found = float(wavefront_terms(T.pair, reference, SOURCE).terms_s[f"minus Shapiro delay, {body}"])
-    assert abs(expected) > 1e-12
+    assert abs(expected) > 1e-14
     assert found == pytest.approx(expected, rel=1e-14, abs=1e-19)
 
 
@@ -89,9 +88,3 @@ def test_second_order_at_right_angles() -> None:
     # In front of the source (psi = 0) psi/sin(psi) is 1 and d = 2 r; far behind the limb it nears pi r/b.
     front = higher_orders(np.array([r_m, 0.0, 0.0]), np.array([1.0, 0.0, 0.0]), still, gm)
     assert float(front.second_s) == pytest.approx(-(15 / 4 - 2) * m**2 / (c * r_m), rel=1e-12, abs=0)
-
-
-def test_shipped_masses_are_those(reference: tscale.ReferenceData) -> None:
-    assert shipped_path("de440_1960_2060.bsp") == reference.ephemeris.path
-    for body, gm in GM_M3_S2.items():
-        assert reference.ephemeris.gm_m3_s2(body) == pytest.approx(float(gm), rel=1e-9)

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
+import io
 import os
-import secrets
 from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
@@ -14,6 +14,7 @@ import numpy.typing as npt
 from .errors import InvalidInput, MissingPiece
 from .exact import FloatArray
 from .link import LinkSolution, TwoWaySolution
+from .storage import write_atomically
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -140,12 +141,9 @@ def save_link_picture(
     if not target.parent.is_dir():
         raise InvalidInput(f"{path} cannot be written: there is no folder {target.parent}; make it first")
     figure = link_figure(solution, title)
-    temporary = target.with_name(f".{target.name}.{os.getpid()}.{secrets.token_hex(4)}.part")
-    try:
-        figure.savefig(temporary, format=target.suffix.lower()[1:])
-        os.replace(temporary, target)
-    finally:
-        temporary.unlink(missing_ok=True)
+    picture = io.BytesIO()
+    figure.savefig(picture, format=target.suffix.lower()[1:])
+    write_atomically(target, picture.getvalue())
 
 
 def _dates(t: Instants) -> npt.NDArray[Any]:

@@ -3,10 +3,9 @@
 from __future__ import annotations
 
 import math
-import tomllib
 from dataclasses import dataclass, field, fields
 from pathlib import Path
-from typing import Any, Final
+from typing import Final
 
 import numpy as np
 
@@ -15,6 +14,7 @@ from .constants import AU_M, JULIAN_YEAR_S
 from .errors import DataFileError, InvalidInput
 from .exact import FloatArray, Pair
 from .instants import Instants
+from .storage import toml_table
 
 __all__ = ["Source"]
 
@@ -76,19 +76,8 @@ class Source:
     def load(cls, path: str | Path) -> Source:
         """Read a TOML file with a `[source]` table whose keys are the parameters of this class."""
         path = Path(path)
-        try:
-            content = tomllib.loads(path.read_text(encoding="utf-8"))
-        except OSError as error:
-            raise DataFileError(f"cannot read the source file {path}: {error.strerror or error}", path=path) from error
-        except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
-            raise DataFileError(f"{path} is not a TOML file: {error}", path=path) from error
-        table: Any = content.get("source")
         allowed = [item.name for item in fields(cls) if item.init]
-        if not isinstance(table, dict) or not {"ra_deg", "dec_deg"} <= table.keys():
-            raise DataFileError(f"{path} needs a [source] table with at least ra_deg and dec_deg", path=path)
-        unknown = sorted(set(table) - set(allowed))
-        if unknown:
-            raise DataFileError(f"{path}: unknown keys {unknown} in [source]; allowed are {allowed}", path=path)
+        table = toml_table(path, "source", ("ra_deg", "dec_deg"), allowed)
         try:
             return cls(**table)
         except InvalidInput as error:

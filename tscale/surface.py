@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-import tomllib
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
@@ -16,6 +15,7 @@ from .earth.frames import dot
 from .ephemeris.bodies import body_id, body_name
 from .errors import DataFileError, InvalidInput
 from .exact import FloatArray, Pair
+from .storage import toml_table
 
 if TYPE_CHECKING:
     from .tables.reference import ReferenceData
@@ -104,18 +104,7 @@ class SurfaceSite:
             Missing or damaged file, unknown or missing keys, values out of range; with the path.
         """
         path = Path(path)
-        try:
-            document = tomllib.loads(path.read_text(encoding="utf-8"))
-        except OSError as error:
-            raise DataFileError(f"cannot read the surface site {path}: {error.strerror or error}", path=path) from error
-        except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
-            raise DataFileError(f"{path} is not a TOML file: {error}", path=path) from error
-        table: Any = document.get("surface")
-        if not isinstance(table, dict) or not set(_KEYS[:4]) <= table.keys():
-            raise DataFileError(f"{path} needs a [surface] table with {', '.join(_KEYS[:4])}", path=path)
-        unknown = sorted(set(table) - set(_KEYS))
-        if unknown:
-            raise DataFileError(f"{path}: unknown keys {unknown} in [surface]; allowed are {list(_KEYS)}", path=path)
+        table = toml_table(path, "surface", _KEYS[:4], _KEYS)
         try:
             return cls(**table)
         except InvalidInput as error:

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-import tomllib
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Final
 
 if TYPE_CHECKING:
     from ..link import Participant
@@ -62,14 +61,10 @@ def end_of(text: str, reference: ReferenceData) -> Participant:
 def _from_toml(path: Path, reference: ReferenceData) -> Participant:
     from ..earth.site import Site
     from ..errors import DataFileError
+    from ..storage import read_toml
     from ..surface import SurfaceSite
 
-    try:
-        document = tomllib.loads(path.read_text(encoding="utf-8"))
-    except OSError as error:
-        raise DataFileError(f"cannot be read: {error.strerror or error}", path=path) from error
-    except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
-        raise DataFileError(f"not a TOML file: {error}", path=path) from error
+    document = read_toml(path)
     kinds = [kind for kind in ("site", "surface", "orbit") if kind in document]
     if len(kinds) != 1:
         raise DataFileError(
@@ -79,16 +74,16 @@ def _from_toml(path: Path, reference: ReferenceData) -> Participant:
         return Site.load(path)
     if kinds == ["surface"]:
         return SurfaceSite.load(path)
-    return _orbit(path, document["orbit"], reference)
+    return _orbit(path, reference)
 
 
-def _orbit(path: Path, table: Any, reference: ReferenceData) -> Trajectory:
+def _orbit(path: Path, reference: ReferenceData) -> Trajectory:
     from ..errors import DataFileError, TscaleError
     from ..instants import Instants
+    from ..storage import toml_table
     from ..trajectory import Trajectory
 
-    if not isinstance(table, dict) or set(table) != set(_ORBIT):
-        raise DataFileError(f"[orbit] needs {', '.join(_ORBIT)}, and nothing else", path=path)
+    table = toml_table(path, "orbit", _ORBIT, _ORBIT)
     wrong = [key for key in _ORBIT[3:9] if isinstance(table[key], bool) or not isinstance(table[key], int | float)]
     if wrong:
         raise DataFileError(f"[orbit]: {', '.join(wrong)} must be numbers", path=path)

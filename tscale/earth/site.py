@@ -15,6 +15,7 @@ import numpy as np
 from ..constants import JULIAN_YEAR_S
 from ..errors import InvalidInput
 from ..exact import FloatArray, Pair
+from ..storage import write_atomically
 from .geodesy import Ellipsoid, geocentric_from_geodetic, geodetic_from_geocentric
 from .rotation import gcrs_state_from_itrs
 from .site_file import read_site, site_text
@@ -161,13 +162,7 @@ class Site:
 
     def save(self, path: str | os.PathLike[str]) -> None:
         """Write the site to a TOML file; `load` gives the same site back, bit for bit."""
-        target = Path(path)
-        temporary = target.with_name(f".{target.name}.{os.getpid()}.tmp")
-        try:
-            temporary.write_text(site_text(self._facts()), encoding="utf-8")
-            os.replace(temporary, target)
-        finally:
-            temporary.unlink(missing_ok=True)
+        write_atomically(Path(path), site_text(self._facts()).encode())
 
     def _facts(self) -> Mapping[str, Any]:
         return {

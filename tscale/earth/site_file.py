@@ -16,13 +16,12 @@ Layout::
 from __future__ import annotations
 
 import json
-import re
-import tomllib
 from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import Any, Final, TypeVar
 
 from ..errors import DataFileError, InvalidInput
+from ..storage import read_toml
 
 __all__ = ["read_site", "site_text"]
 
@@ -42,18 +41,7 @@ _KEYS: Final = ("name", "itrf", "geodetic", *_OPTIONAL)
 
 def read_site(path: Path, from_itrf: Callable[..., _Made], from_geodetic: Callable[..., _Made]) -> _Made:
     """Read the file and build a site with one of the two makers; every fault is a `DataFileError` with the path."""
-    try:
-        text = path.read_text(encoding="utf-8")
-    except OSError as error:
-        raise DataFileError(f"cannot read the site file {path}: {error.strerror or error}", path=path) from error
-    except UnicodeDecodeError as error:
-        raise DataFileError(f"the site file {path} is not UTF-8 text: {error}", path=path) from error
-    try:
-        document = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        line = re.search(r"line (\d+)", str(error))
-        row = int(line.group(1)) if line else None
-        raise DataFileError(f"site file {path} is not TOML: {error}", path=path, row=row) from error
+    document = read_toml(path)
     _only(path, "the file", document, ("site",))
     table = document.get("site")
     if not isinstance(table, dict):

@@ -19,7 +19,7 @@ from ..source import Source
 from ..step import Step, Terms
 from ..tables.reference import ReferenceData
 from ..transforms import barycentric, geocentric, wavefront
-from .common import count_difference
+from .common import count_difference, orientation_notes
 
 __all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "wavefront_step"]
 
@@ -84,7 +84,7 @@ def tcg_tcb_step(place: str, observer: Observer | None, reference: ReferenceData
     def notes(before: Instants) -> tuple[str, ...]:
         if observer is None or not _turns_with_earth(observer):
             return ()
-        return _orientation_notes(geocentric.tt_from_tcg(before.pair), reference)
+        return orientation_notes(tai_from_tt(geocentric.tt_from_tcg(before.pair)), reference)
 
     return Step(
         start=Node(Scale.parse("TCG"), place),
@@ -147,7 +147,7 @@ def wavefront_step(
     def notes(before: Instants) -> tuple[str, ...]:
         found: tuple[str, ...] = ()
         if observer is not None and _turns_with_earth(observer):
-            found = _orientation_notes(barycentric.tt_from_tdb(before.pair, reference, observer), reference)
+            found = orientation_notes(tai_from_tt(barycentric.tt_from_tdb(before.pair, reference, observer)), reference)
         hidden = int(np.count_nonzero(wavefront.behind_the_sun(before.pair, reference, source, observer)))
         if hidden:
             found += (f"{hidden} of {before.size} lines of sight pass through the Sun",)
@@ -185,12 +185,3 @@ def _orientation_sigma_s(
         "Earth orientation, UT1": np.asarray(np.abs(along) * values.ut1_sigma_s),
         "Earth orientation, pole": np.asarray(np.sqrt(pole) * size),
     }
-
-
-def _orientation_notes(tt: Pair, reference: ReferenceData) -> tuple[str, ...]:
-    """What a reader should know of the Earth orientation used: how much is predicted or held."""
-    tai = tai_from_tt(tt)
-    status = reference.earth_orientation.status(tai)
-    names = {1: "use predicted Earth orientation", 2: "are past the end of the Earth orientation, which is held"}
-    counts = {code: int(np.count_nonzero(status == code)) for code in names}
-    return tuple(f"{n} of {status.size} instants {names[code]}" for code, n in counts.items() if n)

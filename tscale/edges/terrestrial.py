@@ -16,7 +16,7 @@ from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
 from ..tables.tt_bipm import TTBIPM
 from ..transforms import geocentric, terrestrial
-from .common import count_difference
+from .common import count_difference, orientation_notes
 
 __all__ = ["clock_step", "fixed_step", "tt_bipm_step", "tt_tcg_step", "ut1_step"]
 
@@ -109,6 +109,7 @@ def ut1_step(place: str | None, reference: ReferenceData) -> Step:
         terms=lambda before, after: {"UT1 - TAI": count_difference(before, after)},
         rate=rate,
         uncertainty_s=lambda before: {"UT1": reference.earth_orientation.at(before.pair).ut1_sigma_s},
+        notes=lambda before: orientation_notes(before.pair, reference),
     )
 
 

@@ -1,14 +1,13 @@
-"""The user's cache folder, locks between processes, and files that appear whole or not at all."""
+"""The user's cache folder, and locks between processes."""
 
 from __future__ import annotations
 
 import contextlib
 import os
-import secrets
 from collections.abc import Iterator
 from pathlib import Path
 
-__all__ = ["cache_folder", "locked", "write_atomically"]
+__all__ = ["cache_folder", "locked"]
 
 
 def cache_folder() -> Path:
@@ -37,23 +36,3 @@ def locked(path: Path) -> Iterator[None]:
     path.parent.mkdir(parents=True, exist_ok=True)
     with FileLock(path.with_name(path.name + ".lock")):
         yield
-
-
-def write_atomically(path: Path, content: bytes) -> None:
-    """Write a file under a temporary name in the same folder, then rename it.
-
-    Raises
-    ------
-    OSError
-        Where the folder cannot be written; no part of the file is left behind.
-    """
-    temporary = path.with_name(f".{secrets.token_hex(8)}.part")
-    try:
-        with temporary.open("xb") as file:
-            file.write(content)
-            file.flush()
-            os.fsync(file.fileno())
-        os.replace(temporary, path)
-    except BaseException:
-        temporary.unlink(missing_ok=True)
-        raise

@@ -15,7 +15,8 @@ import numpy as np
 
 from ..errors import DataFileError, OutOfSpan
 from ..exact import FloatArray, Pair
-from .cache import cache_folder, locked, write_atomically
+from ..storage import write_atomically
+from .cache import cache_folder, locked
 from .chebyshev import ChebyshevTable, span_text
 from .daf import check_sha256, file_sha256, read_container
 from .integrator import NODES, Progress

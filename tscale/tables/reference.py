@@ -220,6 +220,7 @@ class ReferenceData:
         """SHA-256 over the hashes of all tables: equal where two bundles give equal results."""
         parts = [self.leap_seconds.sha256, self.earth_orientation.sha256, self.ephemeris.sha256]
         parts += [f"{table.scale} {table.sha256}" for table in self.tt_bipm]
+        parts += [f"GM {body} {value!r}" for body, value in sorted(self.ephemeris.given_gm_m3_s2.items())]
         return hashlib.sha256("\n".join(parts).encode()).hexdigest()
 
     def describe(self, on: date | None = None) -> list[TableFacts]:

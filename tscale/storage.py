@@ -1,0 +1,78 @@
+"""Small files: TOML tables read with errors that teach, and files that appear whole or not at all."""
+
+from __future__ import annotations
+
+import os
+import re
+import secrets
+import tomllib
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any
+
+from .errors import DataFileError
+
+__all__ = ["read_toml", "toml_table", "write_atomically"]
+
+
+def read_toml(path: Path) -> dict[str, Any]:
+    """Read a TOML document.
+
+    Raises
+    ------
+    DataFileError
+        For a file that is missing, not UTF-8 or not TOML, with the path and, where it is known, the row.
+    """
+    try:
+        return tomllib.loads(path.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise DataFileError(f"cannot read {path}: {error.strerror or error}", path=path) from error
+    except UnicodeDecodeError as error:
+        raise DataFileError(f"{path} is not UTF-8 text: {error}", path=path) from error
+    except tomllib.TOMLDecodeError as error:
+        line = re.search(r"line (\d+)", str(error))
+        row = int(line.group(1)) if line else None
+        raise DataFileError(f"{path} is not TOML: {error}", path=path, row=row) from error
+
+
+def toml_table(path: Path, name: str, needed: Sequence[str], allowed: Sequence[str]) -> dict[str, Any]:
+    """Read the table `[name]` of a TOML file, which must hold the keys `needed` and may hold those `allowed`.
+
+    Raises
+    ------
+    DataFileError
+        As `read_toml`, and for a table that is missing, lacks a key or has one more.
+    """
+    table = read_toml(path).get(name)
+    if not isinstance(table, dict):
+        raise DataFileError(f"{path} has no [{name}] table; it holds {', '.join(allowed)}", path=path)
+    lacking = [key for key in needed if key not in table]
+    if lacking:
+        raise DataFileError(f"{path}: [{name}] lacks {', '.join(lacking)}; it needs {', '.join(needed)}", path=path)
+    unknown = [key for key in table if key not in allowed]
+    if unknown:
+        raise DataFileError(
+            f"{path}: unknown key {', '.join(unknown)} in [{name}]; allowed are {', '.join(allowed)}", path=path
+        )
+    return table
+
+
+def write_atomically(path: Path, content: bytes) -> None:
+    """Write a file under a temporary name in the same folder, then rename it.
+
+    Raises
+    ------
+    OSError
+        Where the folder cannot be written; no part of the file is left behind.
+    """
+    # Short, so that the longest name allowed for the file itself is allowed.
+    temporary = path.with_name(f".{secrets.token_hex(8)}.part")
+    try:
+        with temporary.open("xb") as file:
+            file.write(content)
+            file.flush()
+            os.fsync(file.fileno())
+        os.replace(temporary, path)
+    except BaseException:
+        temporary.unlink(missing_ok=True)
+        raise
