@@ -143,7 +143,14 @@ def line_within(stream: IO[bytes], seconds: float) -> bytes:
 @contextlib.contextmanager
 def running(*words: str) -> object:
     pipe = subprocess.PIPE
-    with subprocess.Popen([*COMMAND, *words], stdin=pipe, stdout=pipe, stderr=pipe, env=ENVIRONMENT, bufsize=0) as done:
+
+    def hear() -> None:
+        # Tests that were started in the background hand on an interrupt that is ignored.
+        signal.signal(signal.SIGINT, signal.SIG_DFL)
+
+    with subprocess.Popen(
+        [*COMMAND, *words], stdin=pipe, stdout=pipe, stderr=pipe, env=ENVIRONMENT, bufsize=0, preexec_fn=hear
+    ) as done:
         try:
             yield done
         finally:
@@ -180,7 +187,9 @@ def test_signals_leave_no_file(folder: Path, name: str) -> None:
         started(process, folder)
         number = getattr(signal, name)
         process.send_signal(number)
-        assert process.wait(60) == 128 + number, process.stderr.read()
+        # CPython ends itself by the signal where an interrupt passed through code that was compiled on the way, as in
+        # the import of a named tuple; a shell shows both as 128 + number.
+        assert process.wait(60) in (128 + number, -number)
         assert b"Traceback" not in process.stderr.read()
     assert os.listdir(folder) == ["in.csv"]
 

@@ -93,10 +93,12 @@ def _ended_by_signals() -> Iterator[None]:
     """Let the signals that end a program pass through as an exception, so that temporary files are removed."""
 
     def leave(number: int, frame: FrameType | None) -> None:
-        signal.signal(number, signal.SIG_IGN)  # once is enough
+        signal.signal(number, signal.SIG_IGN)  # once is enough: a second one would stop the tidying up
+        if number == signal.SIGINT:
+            raise KeyboardInterrupt
         raise SystemExit(_BY_SIGNAL + number)
 
-    numbers = [getattr(signal, name) for name in ("SIGTERM", "SIGHUP") if hasattr(signal, name)]
+    numbers = [getattr(signal, name) for name in ("SIGINT", "SIGTERM", "SIGHUP") if hasattr(signal, name)]
     if threading.current_thread() is not threading.main_thread():
         numbers = []
     # One that is ignored (nohup) stays so.

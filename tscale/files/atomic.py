@@ -59,9 +59,10 @@ def replaced(path: str | os.PathLike[str]) -> Iterator[TextIO]:
         raise InvalidInput(f"{shown} cannot be written: there is no folder {target.parent}; make it first")
     # Short, so that the longest name allowed for the file itself is allowed.
     temporary = target.with_name(f".{secrets.token_hex(8)}.part")
-    with _naming(shown):
-        handle = os.open(temporary, os.O_WRONLY | os.O_CREAT | os.O_EXCL, 0o666)
     try:
+        # Inside, for a signal may come between the file's making and the next line.
+        with _naming(shown):
+            handle = os.open(temporary, os.O_WRONLY | os.O_CREAT | os.O_EXCL, 0o666)
         with _text(handle, shown) as file:
             if target.exists():
                 # A file that is replaced keeps who may read it. Some file systems have no such rights.
