@@ -6,13 +6,15 @@ Equations: IERS Technical Note 36, chapter 5.
 
 from __future__ import annotations
 
-from typing import Any, NamedTuple
+from typing import Any, Final, NamedTuple
 
 import numpy as np
 
 from ..exact import FloatArray
 
 __all__ = ["Orientation"]
+
+_BLOCK: Final = 8192
 
 
 class Orientation(NamedTuple):
@@ -56,6 +58,18 @@ class Orientation(NamedTuple):
 
     def celestial_state(self, r_m: FloatArray, v_m_s: FloatArray | None = None) -> tuple[FloatArray, FloatArray]:
         """Position and velocity on the GCRS axes; `v_m_s` is the velocity relative to the ITRS (None: at rest)."""
+        shape, size = np.shape(self.angle_rad), np.size(self.angle_rad)
+        if size <= _BLOCK or r_m.ndim > 1 or v_m_s is not None:
+            return self._celestial_state(r_m, v_m_s)
+        # One place at many instants, a block of which stays in the processor's cache: twice as fast.
+        flat = Orientation(*(np.broadcast_to(part, shape).reshape(-1) for part in self))
+        position, velocity = np.empty((size, 3)), np.empty((size, 3))
+        for i in range(0, size, _BLOCK):
+            part = slice(i, i + _BLOCK)
+            position[part], velocity[part] = Orientation(*(column[part] for column in flat))._celestial_state(r_m, None)
+        return position.reshape(*shape, 3), velocity.reshape(*shape, 3)
+
+    def _celestial_state(self, r_m: FloatArray, v_m_s: FloatArray | None) -> tuple[FloatArray, FloatArray]:
         parts = _terrestrial_up(self, *_parts(r_m))
         vx, vy, vz = _turning(self, *parts)
         if v_m_s is not None:
