@@ -7,6 +7,7 @@ between the ends is lost to rounding, where the difference of two barycentric po
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Final, Protocol, TypeAlias, runtime_checkable
 
@@ -59,7 +60,7 @@ Participant: TypeAlias = "Site | SurfaceSite | Observer | Moving | str | int"
 
 
 @dataclass(frozen=True)
-class End:
+class End(ABC):
     """One end of a link.
 
     Attributes
@@ -93,9 +94,9 @@ class End:
         """First and last TDB count (s) at which this end is known, or None for that of the ephemeris."""
         return None
 
+    @abstractmethod
     def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         """Barycentric TDB-compatible offset from the anchor (m) and its rate (m/s), each (..., 3)."""
-        raise NotImplementedError
 
     def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
         """Unit vector to the zenith, (..., 3), of an end on the ground; else None."""
