@@ -51,15 +51,18 @@ class Pulsar:
 EPOCH = tscale.Instants.from_iso("2021-01-01T00:00:00", scale="TDB", place="BARYCENTER")
 PULSARS = [
     Pulsar(
-        tscale.Source(287.4471, 9.2260, -2.9, -5.4, 0.9, name="Plover"), Fraction("315.44356324019"), -9.8e-16, EPOCH
+        tscale.Source(201.3180, 17.4420, 8.1, -3.6, 0.9, name="Plover"), Fraction("211.3046172905318"), -2.3e-15, EPOCH
     ),
     Pulsar(
-        tscale.Source(69.3166, -47.2523, 121.4, -71.5, 6.4, name="Dunlin"), Fraction("173.68794581218"), -1.7e-15, EPOCH
+        tscale.Source(74.9050, -33.6170, 57.3, -40.2, 6.1, name="Dunlin"),
+        Fraction("142.8193056611274"),
+        -1.1e-15,
+        EPOCH,
     ),
     Pulsar(
-        tscale.Source(155.7412, 10.0309, -16.2, 17.3, 1.4, name="Sandpiper"),
-        Fraction("60.77944798210"),
-        -1.6e-16,
+        tscale.Source(318.2260, 4.8710, -11.4, 6.7, 1.5, name="Sandpiper"),
+        Fraction("71.9064412850933"),
+        -4.4e-16,
         EPOCH,
     ),
 ]

@@ -10,7 +10,7 @@ import pytest
 import tscale
 from tscale.errors import InvalidInput, MissingPiece, OutOfSpan, ScaleMismatch
 
-SITE = tscale.Site.from_itrf("test site", 4_033_463.0, 23_662.0, 4_924_305.0)
+SITE = tscale.Site.from_itrf("test site", 4_051_700.0, 417_300.0, 4_890_200.0)
 SOURCE = tscale.Source(83.6, 22.0, name="test source")
 T = tscale.Instants.from_iso(["2024-05-01T00:00:00", "2024-05-02T00:00:00.5"], scale="UTC")
 
@@ -210,7 +210,7 @@ def test_an_orbit_owes_nothing_to_earth_orientation() -> None:
     t = tscale.Instants.from_iso(["1961-06-01T00:00:00", "2040-01-01T00:00:00"], scale="TT")
     chain = tscale.chain("TT", "TDB@BARYCENTER", site=orbit, source=SOURCE)
     assert set(chain.uncertainty_s(t)) == {"time ephemeris"}
-    assert chain.notes(t) == ()
+    assert not any("orientation" in note for note in chain.notes(t))
     assert np.max(np.abs(chain.ledger(t).total)) < 520.0
 
 

@@ -13,7 +13,7 @@ C_M_S = 299792458.0
 EARTH_RATE_RAD_S = 7.292115146706979e-5  # IAU 2000 B1.8, IERS Conventions 2010
 MAS = math.pi / (180 * 3600e3)
 
-SITE = tscale.Site.from_itrf("test site", 4_033_463.0, 23_662.0, 4_924_305.0)
+SITE = tscale.Site.from_itrf("test site", 4_051_700.0, 417_300.0, 4_890_200.0)
 SOURCE = tscale.Source(83.6, 22.0, name="test source")
 T = tscale.Instants.from_iso("2024-05-01T07:30:00", scale="UTC")
 

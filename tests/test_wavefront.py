@@ -248,6 +248,30 @@ def test_a_wavefront_is_a_link_from_far_away(reference: tscale.ReferenceData, si
     assert ours == pytest.approx(theirs, abs=0.9e-12)
 
 
+def test_an_observer_at_the_centre_of_a_body_is_refused(reference: tscale.ReferenceData) -> None:
+    start = tscale.Instants.from_iso("2024-01-01T00:00:00", scale="TDB")
+    t = start.shifted(np.linspace(0.0, 8e7, 20_000))
+    for number in (4, 5, 10, 301):
+        body = tscale.Trajectory.from_spk(str(reference.ephemeris.path), number)
+        chain = tscale.chain("TDB", "TDB@BARYCENTER", site=body, source=tscale.Source(10.0, 10.0))
+        for act in (chain, chain.rate, chain.ledger):
+            with pytest.raises(tscale.errors.GeometryError) as caught:
+                act(t)
+            assert caught.value.mask is not None
+            assert caught.value.mask.sum() == 20_000
+
+
+def test_what_hides_the_source_from_an_orbit_is_noted() -> None:
+    # Over one turn of a low orbit the Earth covers a source near its plane for asin(R/a)/pi = 36 % of the time.
+    epoch = tscale.Instants.from_iso("2024-03-01T00:00:00", scale="TT")
+    orbit = tscale.Trajectory.from_kepler(epoch, 7.0e6, 0.0, 0.0, 0.0, 0.0, 0.0, name="orbit")
+    t = epoch.shifted(np.linspace(0.0, 5828.5, 1000, endpoint=False))
+    chain = tscale.chain("TT", "TDB@BARYCENTER", site=orbit, source=tscale.Source(30.0, 0.0))
+    (note,) = chain.notes(t)
+    assert note.endswith("of 1000 lines of sight pass through the Earth")
+    assert int(note.split()[0]) == pytest.approx(363, abs=3)
+
+
 def test_proper_motion_is_counted_at_the_barycentre(reference: tscale.ReferenceData) -> None:
     # 10.3 arcsec a year for 30 years moves the source by 5 arcmin: 0.75 s of delay at most, and a delay computed with
     # the direction of the observer's date instead of the barycentre's would be off by up to 0.4 us.

@@ -99,7 +99,7 @@ class Chain:
         squares = np.zeros(t.shape)
         for value in self.uncertainty_s(t).values():
             squares = squares + value**2
-        return np.sqrt(squares)
+        return np.asarray(np.sqrt(squares))
 
     def notes(self, t: Instants) -> tuple[str, ...]:
         """What a reader should know of the result: values predicted, held, or past a table's expiry."""

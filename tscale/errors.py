@@ -7,6 +7,8 @@ input) or `row` (the line of a file, counted from 1).
 
 from __future__ import annotations
 
+import sys
+import warnings
 from pathlib import Path
 from typing import Any
 
@@ -24,6 +26,7 @@ __all__ = [
     "ScaleMismatch",
     "TextError",
     "TscaleError",
+    "warn_extrapolation",
 ]
 
 
@@ -96,3 +99,12 @@ class ExtrapolationWarning(UserWarning):
 
     Raised as a warning, never hidden: the ledger and the budget mark the same values.
     """
+
+
+def warn_extrapolation(message: str) -> None:
+    """Issue an `ExtrapolationWarning` at the line outside this package from which the call came."""
+    package = __name__.partition(".")[0]
+    level, frame = 2, sys._getframe(1)
+    while frame.f_back is not None and frame.f_globals.get("__name__", "").partition(".")[0] == package:
+        level, frame = level + 1, frame.f_back
+    warnings.warn(message, ExtrapolationWarning, stacklevel=level)

@@ -62,6 +62,8 @@ class Instants:
     def _set(self, pair: Pair, scale: Scale, place: str | None) -> None:
         whole = np.array(pair[0], dtype=np.int64)
         fraction = np.array(pair[1], dtype=np.float64)
+        if not np.isfinite(fraction).all():
+            raise InvalidInput("a date came out as NaN or infinite (see .mask)", mask=~np.isfinite(fraction))
         whole.flags.writeable = False
         fraction.flags.writeable = False
         object.__setattr__(self, "_whole", whole)

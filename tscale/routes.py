@@ -77,7 +77,7 @@ def route(first: Node, last: Node, supplies: Supplies) -> list[Step]:
         raise MissingPiece(_no_way(first, last))
     missing = list(dict.fromkeys(edge.missing for edge, _ in path if edge.missing))
     if missing:
-        raise MissingPiece(f"no chain from {first} to {last} yet: " + "; ".join(missing))
+        raise MissingPiece(f"no chain from {first} to {last}: " + "; ".join(missing))
     steps: list[Step] = []
     for edge, onward in path:
         assert edge.step is not None

@@ -45,7 +45,7 @@ def toml_table(path: Path, name: str, needed: Sequence[str], allowed: Sequence[s
     """
     table = read_toml(path).get(name)
     if not isinstance(table, dict):
-        raise DataFileError(f"{path} has no [{name}] table; it holds {', '.join(allowed)}", path=path)
+        raise DataFileError(f"{path} has no [{name}] table; such a table holds {', '.join(allowed)}", path=path)
     lacking = [key for key in needed if key not in table]
     if lacking:
         raise DataFileError(f"{path}: [{name}] lacks {', '.join(lacking)}; it needs {', '.join(needed)}", path=path)

@@ -26,6 +26,8 @@ __all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "wavefront_ste
 
 _TCB_GAIN: Final = float(L_B / (1 - L_B))
 
+_NAMED: Final = {"sun": "the Sun", "moon": "the Moon", "earth": "the Earth"}
+
 TIME_EPHEMERIS_SIGMA_S: Final = 2e-10
 """Standard uncertainty of TT - TDB at the geocentre, s: rms difference from an independently integrated
 planetary ephemeris (type B)."""
@@ -148,9 +150,9 @@ def wavefront_step(
         found: tuple[str, ...] = ()
         if observer is not None and _turns_with_earth(observer):
             found = orientation_notes(tai_from_tt(barycentric.tt_from_tdb(before.pair, reference, observer)), reference)
-        hidden = int(np.count_nonzero(wavefront.behind_the_sun(before.pair, reference, source, observer)))
-        if hidden:
-            found += (f"{hidden} of {before.size} lines of sight pass through the Sun",)
+        hidden = wavefront.hidden_by(before.pair, reference, source, observer)
+        counts = {_NAMED.get(body, body): int(np.count_nonzero(mask)) for body, mask in hidden.items()}
+        found += tuple(f"{n} of {before.size} lines of sight pass through {body}" for body, n in counts.items() if n)
         return found
 
     tdb = Scale.parse("TDB")

@@ -15,6 +15,7 @@ import numpy.typing as npt
 from ..constants import GM_M3_S2
 from ..errors import InvalidInput, MissingPiece, OutOfSpan
 from ..exact import FloatArray, Pair
+from .arguments import file_path
 from .bodies import body_id, body_name
 from .chebyshev import CHUNK, broadcast_pair, span_text
 from .daf import check_sha256, file_sha256, mass_parameters, read_container
@@ -69,7 +70,7 @@ class Ephemeris:
         raise AttributeError(f"an Ephemeris is immutable; cannot set {name!r}. Open another one, with gm_m3_s2= if so")
 
     @classmethod
-    def open(cls, path: str | Path, *, gm_m3_s2: Mapping[int, float] | None = None) -> Ephemeris:
+    def open(cls, path: str | Path, *, gm_m3_s2: Mapping[str | int, float] | None = None) -> Ephemeris:
         """Open a kernel.
 
         Parameters
@@ -77,20 +78,20 @@ class Ephemeris:
         path : str or Path
             A binary SPK file.
         gm_m3_s2 : mapping, optional
-            Mass parameters by NAIF number that overrule those in the file's comments and `constants.GM_M3_S2`.
+            Mass parameters by NAIF number or name that overrule those in the file's comments and `constants.GM_M3_S2`.
 
         Raises
         ------
         DataFileError
             For a file that is missing, damaged, truncated, not an SPK kernel or of a foreign data type.
         """
-        given = dict(gm_m3_s2 or {})
+        given = {body_id(body): value for body, value in (gm_m3_s2 or {}).items()}
         for body, value in given.items():
-            if not (np.isfinite(value) and value >= 0):
+            if not (isinstance(value, (int, float, np.number)) and np.isfinite(value) and value >= 0):
                 raise InvalidInput(
-                    f"mass parameter of {body_name(body)} is {value} m3/s2: give a finite one, not negative"
+                    f"mass parameter of {body_name(body)} is {value!r} m3/s2: give a finite number, not negative"
                 )
-        return cls(Path(path).expanduser().resolve(), given)
+        return cls(file_path(path, "a kernel").resolve(), given)
 
     @classmethod
     def default(cls) -> Ephemeris:

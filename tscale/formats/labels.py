@@ -7,7 +7,6 @@ section 3.3.3): its label is written as (d, 97200 + ...), which tells it from 03
 
 from __future__ import annotations
 
-import warnings
 from dataclasses import dataclass
 from typing import Literal
 
@@ -15,7 +14,7 @@ import numpy as np
 import numpy.typing as npt
 
 from ..constants import DAY_S, MJD_J2000
-from ..errors import ExtrapolationWarning, InvalidInput, TextError
+from ..errors import InvalidInput, TextError, warn_extrapolation
 from ..exact import IntArray, Pair, add, subtract
 from ..scales import Scale
 from . import decimals
@@ -170,11 +169,9 @@ def warn_if_expired(kind: Scale, seconds: Pair, leap_seconds: LeapSeconds | None
     table = leap_seconds or LeapSeconds.default()
     expired = int(np.count_nonzero(table.is_expired((seconds[0] - kind.label_offset_s, seconds[1]))))
     if expired:
-        warnings.warn(
+        warn_extrapolation(
             f"{expired} of {np.size(seconds[0])} {kind} labels are past the expiry of the leap-second table "
-            f"{table.name!r} on {day_words(table.expires_mjd or 0)}: they hold if no further leap second is announced",
-            ExtrapolationWarning,
-            stacklevel=4,
+            f"{table.name!r} on {day_words(table.expires_mjd or 0)}: they hold if no further leap second is announced"
         )
 
 

@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import warnings
 from typing import Final
 
 import numpy as np
 
 from ..constants import JULIAN_YEAR_S
-from ..errors import ExtrapolationWarning
+from ..errors import warn_extrapolation
 from ..exact import FloatArray
 from .common import mjd_date
 
@@ -34,12 +33,10 @@ def grow_sigmas(sigmas: FloatArray, past_s: FloatArray) -> None:
 
 
 def warn_held(past_s: FloatArray, name: str, end_mjd: int) -> None:
-    """Issue the `ExtrapolationWarning` of a table's method, in the name of its caller."""
-    warnings.warn(
+    """Say that values are held, in the name of whoever called the package."""
+    warn_extrapolation(
         f"{np.count_nonzero(past_s)} of {past_s.size} instants are past the end of the Earth orientation {name!r} on "
-        f"{mjd_date(end_mjd)}: the last values are held, UT1 known to {_ut1_sigma_s(past_s).max():.2g} s at the latest",
-        ExtrapolationWarning,
-        stacklevel=3,
+        f"{mjd_date(end_mjd)}: the last values are held, UT1 known to {_ut1_sigma_s(past_s).max():.2g} s at the latest"
     )
 
 

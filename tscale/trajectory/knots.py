@@ -8,15 +8,16 @@ a knot.
 
 from __future__ import annotations
 
-from typing import Final, Literal, TypeAlias
+from typing import Any, Final, Literal, TypeAlias
 
 import numpy as np
 
 from ..errors import InvalidInput
 from ..exact import FloatArray, IntArray, Pair
+from .arguments import check_motion
 from .dates import since
 
-__all__ = ["Knots", "Method"]
+__all__ = ["Knots", "Method", "check_degree"]
 
 Method: TypeAlias = Literal["hermite", "lagrange"]
 
@@ -67,6 +68,7 @@ class Knots:
                 "(the mask marks them): sort the states and drop doubles",
                 mask=bad,
             )
+        check_motion((whole, fraction), states[:, :3], states[:, 3:], name)
         self.name = name
         self.method = method
         self.degree = degree
@@ -126,12 +128,17 @@ def _checked_states(whole: IntArray, position_m: FloatArray, velocity_m_s: Float
     return np.concatenate((position, velocity), axis=1)
 
 
+def check_degree(degree: Any, before: str = "") -> None:
+    """Refuse what is no degree of a polynomial here; `before` starts the message."""
+    if isinstance(degree, bool) or not isinstance(degree, int) or not 1 <= degree <= _HIGHEST_DEGREE:
+        raise InvalidInput(f"{before}degree must be an integer of 1 to {_HIGHEST_DEGREE}, got {degree!r:.40}")
+
+
 def _knots_used(method: Method, degree: int, available: int, name: str) -> int:
     """Return the number of knots in one polynomial."""
     if method not in ("hermite", "lagrange"):
         raise InvalidInput(f"{name}: unknown interpolation {method!r}; known are hermite and lagrange")
-    if isinstance(degree, bool) or not isinstance(degree, int) or not 1 <= degree <= _HIGHEST_DEGREE:
-        raise InvalidInput(f"{name}: degree must be an integer of 1 to {_HIGHEST_DEGREE}, got {degree!r}")
+    check_degree(degree, f"{name}: ")
     if method == "hermite" and (degree % 2 == 0 or degree < 3):
         raise InvalidInput(f"{name}: a Hermite polynomial has an odd degree from 3 on (3, 5, 7 ...), got {degree}")
     count = (degree + 1) // 2 if method == "hermite" else degree + 1

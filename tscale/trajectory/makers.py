@@ -2,18 +2,19 @@
 
 from __future__ import annotations
 
+from typing import Any, Final, TypeAlias
 from pathlib import Path
-from typing import Final, TypeAlias
 
 import numpy as np
-import numpy.typing as npt
 
 from ..constants import GM_M3_S2, L_B, L_G
 from ..ephemeris import Ephemeris, body_id, body_name
+from ..ephemeris.arguments import file_path
 from ..ephemeris.daf import read_container
 from ..ephemeris.segments import read_segments
 from ..errors import InvalidInput, MissingPiece
 from ..instants import Instants
+from .arguments import check_dates, number, numbers
 from .dates import NativeScale, counts_of
 from .kepler import KeplerOrbit
 from .knots import Knots, Method
@@ -30,10 +31,10 @@ Parts: TypeAlias = tuple[NativeScale, bool, tuple[Piece, ...]]
 
 def states_parts(
     t: Instants,
-    position_m: npt.ArrayLike,
-    velocity_m_s: npt.ArrayLike,
+    position_m: Any,
+    velocity_m_s: Any,
     frame: str,
-    center: str | int,
+    center: str | int | None,
     method: Method,
     degree: int,
     name: str,
@@ -41,26 +42,35 @@ def states_parts(
     """See `Trajectory.from_states`."""
     if frame not in ("GCRS", "ITRS", "BCRS"):
         raise InvalidInput(f"unknown frame {frame!r}; known are GCRS, ITRS and BCRS")
-    counts = counts_of(t)
     geocentric = frame != "BCRS"
+    if geocentric and center is not None:
+        raise InvalidInput(
+            f"center={center!r} goes with frame='BCRS' only: {frame} states are from the centre of the Earth. Leave it "
+            "out, or give ICRF axes about that centre as frame='BCRS' dated in TDB or TCB"
+        )
+    check_dates(t, "the dates of states", geocentric=geocentric)
+    counts = counts_of(t)
     if geocentric != (counts.scale == "TT"):
         allowed = "TT, TCG, TAI, UTC, GPS ..." if geocentric else "TDB or TCB"
         raise InvalidInput(
             f"the dates of {frame} states are {t.scale}; allowed are {allowed}: convert them with tscale.chain first"
         )
-    position = np.asarray(position_m, dtype=np.float64) * counts.length
-    knots = Knots(counts.pair, position, np.asarray(velocity_m_s, dtype=np.float64), method, degree, name)
-    origin = EARTH if geocentric else body_id(center)
+    position = numbers(position_m, "position_m") * counts.length
+    knots = Knots(counts.pair, position, numbers(velocity_m_s, "velocity_m_s"), method, degree, name)
+    origin = EARTH if geocentric else body_id(0 if center is None else center)
     piece = Piece(knots, origin, "ITRS" if frame == "ITRS" else "ICRF", knots.first, knots.last)
     return counts.scale, geocentric, (piece,)
 
 
-def kepler_parts(epoch: Instants, elements: tuple[float, ...], center: str | int, gm_m3_s2: float | None) -> Parts:
+def kepler_parts(
+    epoch: Instants, elements: dict[str, float], center: str | int, gm_m3_s2: float | None
+) -> Parts:
     """See `Trajectory.from_kepler`; `elements` are a (m), e and four angles in degrees."""
-    if epoch.size != 1:
-        raise InvalidInput(f"an orbit has one epoch, got {epoch.size} instants")
     body = body_id(center)
     geocentric = body == EARTH
+    check_dates(epoch, "the epoch of an orbit", geocentric=geocentric)
+    if epoch.size != 1:
+        raise InvalidInput(f"an orbit has one epoch, got {epoch.size} instants")
     counts = counts_of(epoch)
     if geocentric != (counts.scale == "TT"):
         allowed = "TT, TCG, TAI, UTC, GPS ..." if geocentric else "TDB or TCB"
@@ -73,18 +83,15 @@ def kepler_parts(epoch: Instants, elements: tuple[float, ...], center: str | int
         if body not in known:
             raise InvalidInput(f"no mass parameter known for {body_name(body)}; give gm_m3_s2")
         gm_m3_s2 = known[body] * (_GM_TT_PER_TDB if geocentric else 1.0)
-    try:
-        a_m, e, *angles = (float(x) for x in elements)
-    except (TypeError, ValueError) as error:
-        raise InvalidInput(f"orbital elements are numbers, got {elements!r}") from error
+    a_m, e, *angles = (number(value, name) for name, value in elements.items())
     at = (counts.pair[0].reshape(()), counts.pair[1].reshape(()))
-    orbit = KeplerOrbit(at, float(gm_m3_s2), a_m * counts.length, e, *(float(x) for x in np.radians(angles)))
+    orbit = KeplerOrbit(at, number(gm_m3_s2, "gm_m3_s2"), a_m * counts.length, e, *(float(x) for x in np.radians(angles)))
     return counts.scale, geocentric, (Piece(orbit, body, "ICRF", None, None),)
 
 
-def spk_parts(path: Path, target: int) -> tuple[str, NativeScale, bool, tuple[Piece, ...], Path]:
+def spk_parts(path: Any, target: int) -> tuple[str, NativeScale, bool, tuple[Piece, ...], Path]:
     """See `Trajectory.from_spk`; the name comes first and the path last."""
-    kernel = Ephemeris.open(path)
+    kernel = Ephemeris.open(file_path(path, "an SPK kernel"))
     number = body_id(target)
     pieces = segment_pieces(kernel, read_segments(read_container(kernel.path)), number)
     if not pieces:

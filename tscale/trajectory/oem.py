@@ -14,25 +14,25 @@ from __future__ import annotations
 import re
 from itertools import pairwise
 from pathlib import Path
-from typing import TYPE_CHECKING, Final
+from typing import Any, Final
 
 import numpy as np
 
+from ..ephemeris.arguments import file_path
 from ..errors import DataFileError, InvalidInput, TscaleError
 from ..exact import FloatArray, Pair
+from ..formats.leap_seconds import LeapSeconds
 from ..instants import Instants
 from .dates import Counts, NativeScale, counts_of, since
-from .knots import Knots, Method
+from .knots import Knots, Method, check_degree
 from .makers import EARTH
 from .oem_text import OEMSegment, read_segments
 from .pieces import Axes, Piece
 
-if TYPE_CHECKING:
-    from ..formats.leap_seconds import LeapSeconds
-
 __all__ = ["read_oem"]
 
 _TIME_SYSTEMS: Final = ("UTC", "TAI", "TT", "TDB", "TCB", "TCG", "GPS")
+_MOST_DIGITS: Final = 4
 _ITRF: Final = re.compile(r"ITRF(-?\d{2}|-?\d{4})?\Z")
 _CENTERS: Final = {
     "SOLAR SYSTEM BARYCENTER": 0,
@@ -63,11 +63,16 @@ _BIAS_MAS: Final = (-14.6, -16.6170, -6.8192)
 
 
 def read_oem(
-    path: Path, degree: int | None, eme2000: str, leap_seconds: LeapSeconds | None
+    path: Any, degree: int | None, eme2000: str, leap_seconds: LeapSeconds | None
 ) -> tuple[str, NativeScale, bool, tuple[Piece, ...], Path]:
     """Name, scale, kind, pieces and path; see `Trajectory.from_oem`."""
     if eme2000 not in ("icrf", "mean_equator"):
         raise InvalidInput(f"eme2000 is 'icrf' or 'mean_equator', got {eme2000!r}")
+    if leap_seconds is not None and not isinstance(leap_seconds, LeapSeconds):
+        raise InvalidInput(f"leap_seconds must be LeapSeconds, got {leap_seconds!r}: use LeapSeconds.load for a path")
+    if degree is not None:
+        check_degree(degree)
+    path = file_path(path, "an orbit ephemeris message")
     segments = read_segments(path)
     names = {segment.need("OBJECT_NAME") for segment in segments}
     if len(names) > 1:
@@ -168,6 +173,8 @@ class _Reader:
         text = self._segment.need("INTERPOLATION_DEGREE")
         if not text.isascii() or not text.isdigit():
             raise self.error("INTERPOLATION_DEGREE", f"{text!r} is not a whole number")
+        if len(text) > _MOST_DIGITS:
+            raise self.error("INTERPOLATION_DEGREE", f"{text[:20]}... has {len(text)} digits: no such polynomial")
         degree = int(text)
         # A Hermite polynomial through whole states has an odd degree: an even one is raised by one.
         return method, degree + 1 if method == "hermite" and degree % 2 == 0 else degree

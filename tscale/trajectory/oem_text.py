@@ -162,6 +162,11 @@ def _read_xml(path: Path, content: bytes) -> list[OEMSegment]:
     except xml.sax.SAXParseException as error:
         row = error.getLineNumber() or 1
         raise _fault(path, row, f"not well-formed XML: {error.getMessage()}") from error
+    except DataFileError:  # of the handler, and a ValueError as well
+        raise
+    except (xml.sax.SAXException, LookupError, ValueError) as error:
+        # An encoding that Python does not know, or one of several bytes that the parser cannot take.
+        raise DataFileError(f"cannot read the XML of {path}: {error}; save it as UTF-8", path=path) from error
     if not handler.messages:
         raise DataFileError(f"{path} holds no <oem> element: it is not an orbit ephemeris message", path=path)
     return handler.segments
@@ -213,7 +218,9 @@ class _Handler(xml.sax.ContentHandler):
         parent = self._parent
         if parent == "metadata" and name != "COMMENT" and self.segments:
             self.segments[-1].add_fact(name, value, self._row)
-        elif parent == "stateVector":
+        elif parent == "stateVector" and name != "COMMENT":
+            if name in self._state:
+                raise _fault(self._path, self._row, f"{name} is given twice in one state vector: keep one of them")
             self._state[name] = value
         elif name == "stateVector" and self.segments:
             missing = [key for key in ("EPOCH", *_STATE) if not self._state.get(key)]

@@ -18,6 +18,7 @@ from ..ephemeris.chebyshev import broadcast_pair
 from ..errors import OutOfSpan
 from ..exact import FloatArray, IntArray, Pair
 from ..instants import Instants
+from .arguments import check_name
 from .dates import NativeScale
 from .knots import Method
 from .makers import kepler_parts, spk_parts, states_parts
@@ -70,7 +71,7 @@ class Trajectory:
         velocity_m_s: npt.ArrayLike,
         frame: Literal["GCRS", "ITRS", "BCRS"] = "GCRS",
         *,
-        center: str | int = "barycenter",
+        center: str | int | None = None,
         method: Method = "hermite",
         degree: int = 7,
         name: str = "states",
@@ -81,13 +82,14 @@ class Trajectory:
         ----------
         t : Instants (n,)
             Dates, increasing. GCRS and ITRS: TT, TCG, TAI, UTC or a GNSS scale; BCRS: TDB or TCB. Lengths are
-            compatible with the scale (those of TCG and TCB are rescaled).
+            compatible with the scale (those of TCG and TCB are rescaled). Their place, if stated, is TOPOCENTER or the
+            origin of the frame.
         position_m, velocity_m_s : float array (n, 3)
             m and m/s; with ITRS the velocity is relative to the turning Earth.
         frame : {"GCRS", "ITRS", "BCRS"}
             Axes and origin.
-        center : str or int
-            Origin of BCRS states: the barycentre or any body of the ephemeris, with ICRF axes.
+        center : str or int, optional
+            Origin of BCRS states: the barycentre (default) or any body of the ephemeris, with ICRF axes.
         method, degree : str, int
             `hermite` of odd degree (7 uses four states, 3 uses two), or `lagrange`.
         name : str
@@ -95,9 +97,10 @@ class Trajectory:
         Raises
         ------
         InvalidInput
-            Shapes that do not fit, too few states, dates that do not increase, a scale that does not go with `frame`.
+            Shapes that do not fit, too few states, dates that do not increase, a scale, place or `center` that does
+            not go with `frame`; velocities of c or more, or of another motion than the positions (mixed units).
         """
-        return cls(name, *states_parts(t, position_m, velocity_m_s, frame, center, method, degree, name))
+        return cls(check_name(name), *states_parts(t, position_m, velocity_m_s, frame, center, method, degree, name))
 
     @classmethod
     def from_kepler(
@@ -139,8 +142,9 @@ class Trajectory:
         InvalidInput
             Elements out of range, an epoch on another scale, a body without a known mass.
         """
-        elements = (a_m, e, i_deg, node_deg, periapsis_deg, mean_anomaly_deg)
-        return cls(name, *kepler_parts(epoch, elements, center, gm_m3_s2))
+        elements = {"a_m": a_m, "e": e, "i_deg": i_deg, "node_deg": node_deg}
+        elements |= {"periapsis_deg": periapsis_deg, "mean_anomaly_deg": mean_anomaly_deg}
+        return cls(check_name(name), *kepler_parts(epoch, elements, center, gm_m3_s2))
 
     @classmethod
     def from_oem(
@@ -172,7 +176,7 @@ class Trajectory:
         """
         from .oem import read_oem
 
-        return cls(*read_oem(Path(path), degree, eme2000, leap_seconds))
+        return cls(*read_oem(path, degree, eme2000, leap_seconds))
 
     @classmethod
     def from_spk(cls, path: str | os.PathLike[str], target: int) -> Trajectory:
@@ -187,7 +191,7 @@ class Trajectory:
         MissingPiece
             If the kernel does not hold the target; the message lists what it holds.
         """
-        return cls(*spk_parts(Path(path), target))
+        return cls(*spk_parts(path, target))
 
     # ---- facts -----------------------------------------------------------------------------------
 

@@ -6,11 +6,12 @@ from typing import Final, NamedTuple
 
 import numpy as np
 
+from ..body_shape import MEAN_RADIUS_M
 from ..constants import AU_M, C_M_S, SUN_RADIUS_M
 from ..earth.frames import dot
-from ..ephemeris import Ephemeris
-from ..errors import OutOfSpan
-from ..exact import FloatArray, Pair
+from ..ephemeris import Ephemeris, body_id
+from ..errors import GeometryError, OutOfSpan
+from ..exact import BoolArray, FloatArray, Pair
 
 __all__ = ["HigherOrders", "Ray", "higher_orders", "passage", "shapiro_terms"]
 
@@ -47,6 +48,8 @@ def shapiro_terms(
     ------
     OutOfSpan
         Where the ephemeris does not reach, with the mask.
+    GeometryError
+        For events within half a radius of a body's centre, with the mask.
     """
     names = [f"minus Shapiro delay, {body}" for body in bodies]
     if second_order and "sun" in bodies:
@@ -55,22 +58,38 @@ def shapiro_terms(
     flat = Ray(*(np.broadcast_to(vectors, (*shape, 3)).reshape(-1, 3) for vectors in ray))
     whole, fraction = np.broadcast_to(tdb[0], shape).reshape(-1), np.broadcast_to(tdb[1], shape).reshape(-1)
     out = np.zeros((len(names) + 1, whole.size))
+    inside = np.zeros(whole.size, dtype=np.bool_)
     try:
         for i in range(0, whole.size, _BLOCK):
             part = slice(i, i + _BLOCK)
             block = Ray(*(vectors[part] for vectors in flat))
             _terms_of_block(
-                out[:, part], (whole[part], fraction[part]), block, ephemeris, bodies, second_order, with_rate
+                out[:, part],
+                inside[part],
+                (whole[part], fraction[part]),
+                block,
+                ephemeris,
+                bodies,
+                second_order,
+                with_rate,
             )
     except OutOfSpan:
         ephemeris.positions(bodies, tdb)  # raises it again, with the mask of all dates
         raise
+    if np.any(inside):
+        raise GeometryError(
+            f"{int(np.count_nonzero(inside))} of {inside.size} events lie deep inside one of {', '.join(bodies)}, "
+            "where its gravity delays no signal by a finite time; leave them out (see .mask), or name the other "
+            "bodies in bodies= of transforms.wavefront_terms",
+            mask=inside.reshape(shape),
+        )
     columns = out.reshape(len(out), *shape)
     return dict(zip(names, columns[:-1], strict=True)), columns[-1]
 
 
 def _terms_of_block(
     out: FloatArray,
+    inside: BoolArray,
     tdb: Pair,
     ray: Ray,
     ephemeris: Ephemeris,
@@ -78,13 +97,18 @@ def _terms_of_block(
     second_order: bool,
     with_rate: bool,
 ) -> None:
-    """Fill the rows of `out`: a term each, the rate last."""
+    """Fill the rows of `out`, a term each, the rate last; mark the events within half a radius of a body's centre."""
     others = tuple(body for body in bodies if body != "sun")
     places, speeds = ephemeris.states(others, tdb)
     states = dict(zip(others, zip(places, speeds, strict=True), strict=True)) | {"sun": (ray.sun_m, ray.sun_v_m_s)}
     for row, body in enumerate(bodies):
         body_m, body_v = states[body]
         r, distance, depth = passage(ray.x_m, ray.seen, body_m, body_v)
+        within = distance < 0.5 * MEAN_RADIUS_M[body_id(body)]
+        if np.any(within):
+            inside |= within
+            depth = np.where(within, AU_M, depth)
+            distance = np.where(within, AU_M, distance)
         gm = ephemeris.gm_m3_s2(body)
         # In the frame of the moving body: light against its motion is held up longer (8 ps at the limb of Jupiter).
         factor = (2.0 * gm / C_M_S**3) * (1.0 + dot(ray.seen, body_v) / C_M_S)

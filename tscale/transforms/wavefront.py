@@ -27,10 +27,13 @@ from typing import Final, NamedTuple, Protocol, runtime_checkable
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S, SUN_RADIUS_M
+from ..body_shape import MEAN_RADIUS_M
+from ..constants import C_M_S
 from ..earth.frames import dot
 from ..earth.moving import observer_event
 from ..earth.observer import SLACK_S, Observer
+from ..earth.site import Site
+from ..ephemeris import body_id
 from ..errors import NotConverged
 from ..exact import BoolArray, FloatArray, Pair
 from ..instants import Instants
@@ -43,7 +46,7 @@ __all__ = [
     "DELAYING_BODIES",
     "WavefrontTerms",
     "barycenter_to_observer",
-    "behind_the_sun",
+    "hidden_by",
     "observer_state",
     "observer_to_barycenter",
     "wavefront_terms",
@@ -210,13 +213,28 @@ def wavefront_terms(
     return WavefrontTerms(terms, np.asarray(rate), np.asarray(along_v * beyond_s / C_M_S))
 
 
-def behind_the_sun(tdb: Pair, reference: ReferenceData, source: Source, observer: Observer | None = None) -> BoolArray:
-    """Whether the line of sight passes through the Sun (nominal radius), where no light would arrive."""
-    x, _, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=False)
+def hidden_by(
+    tdb: Pair, reference: ReferenceData, source: Source, observer: Observer | None = None
+) -> dict[str, BoolArray]:
+    """For each body whether it stands in the line of sight (mean radius; the Sun's nominal one): no light would arrive.
+
+    The Earth is looked at for observers off the ground only: on it, what stands above the horizon is seen.
+
+    Parameters
+    ----------
+    tdb, reference, source, observer
+        As for `wavefront_terms`.
+    """
+    x, _, _, _ = observer_state(tdb, reference, observer, with_velocity=False)
     toward = source.direction(tdb)
-    r, distance, _ = passage(x, toward, sun, sun_velocity)
-    along = dot(toward, r)
-    return np.asarray((along < 0.0) & (distance**2 - along * along < SUN_RADIUS_M**2))
+    bodies = DELAYING_BODIES if observer is None or isinstance(observer, Site) else (*DELAYING_BODIES, "earth")
+    places, speeds = reference.ephemeris.states(bodies, tdb)
+    found = {}
+    for body, place, speed in zip(bodies, places, speeds, strict=True):
+        r, distance, _ = passage(x, toward, place, speed)
+        along = dot(toward, r)
+        found[body] = np.asarray((along < 0.0) & (distance**2 - along * along < MEAN_RADIUS_M[body_id(body)] ** 2))
+    return found
 
 
 def observer_to_barycenter(
@@ -259,4 +277,6 @@ def barycenter_to_observer(
             if observer is not None and hasattr(observer, "clip"):
                 observer_state(guess, reference, observer)  # raises where the date found lies outside its span
             return Instants._of(guess, "TDB", "GEOCENTER" if observer is None else "TOPOCENTER")
-    raise NotConverged(f"a wavefront date still moves by {np.max(np.abs(step)):.3g} s after 6 Newton steps")
+    raise NotConverged(
+        f"wavefront dates still move by {np.max(np.abs(step)):.3g} s after 6 Newton steps", mask=np.abs(step) >= 1e-12
+    )
