@@ -10,6 +10,8 @@ from datetime import date
 from pathlib import Path
 
 import pytest
+from jplephem.excerpter import write_excerpt
+from jplephem.spk import SPK
 
 import tscale
 from tscale.cli import data
@@ -77,6 +79,52 @@ def test_missing_table(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> No
     path = tmp_path / "leap.dat"
     assert main(["data", "--leap-seconds", str(path)]) == 2
     assert str(path) in capsys.readouterr().err
+
+
+def excerpt(path: Path, start_jd: float, end_jd: float) -> str:
+    with SPK.open(shipped.shipped_path(shipped.DEFAULT_KERNEL)) as kernel, path.open("w+b") as file:
+        write_excerpt(kernel, file, start_jd, end_jd, kernel.daf.summaries())
+    return str(path)
+
+
+def test_kernel_that_does_not_reach_1977(
+    capsys: pytest.CaptureFixture[str],
+    tmp_path: Path,
+    monkeypatch: pytest.MonkeyPatch,
+    reference: tscale.ReferenceData,
+) -> None:
+    monkeypatch.setenv("TSCALE_CACHE", str(tmp_path / "cache"))
+    recent = excerpt(tmp_path / "recent.bsp", 2460310.5, 2461406.5)
+    shipped_name = reference.time_ephemeris.name
+    assert main(["data", "--ephemeris", recent]) == 0
+    assert f"anchored to {shipped_name}" in capsys.readouterr().out
+    given = ["--time-ephemeris", str(reference.time_ephemeris.path)]
+    assert main(["data", "--json", "--ephemeris", recent, *given]) == 0
+    (entry,) = [x for x in json.loads(capsys.readouterr().out) if x["table"] == "time ephemeris"]
+    assert entry["name"] == shipped_name
+    assert entry["error"] is None
+
+
+def test_a_table_that_fails_leaves_the_others(
+    capsys: pytest.CaptureFixture[str], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setenv("TSCALE_CACHE", str(tmp_path / "cache"))
+    words = ["data", "--ephemeris", excerpt(tmp_path / "days.bsp", 2460310.5, 2460312.0)]
+    assert main(words) == 2
+    captured = capsys.readouterr()
+    assert [line.split("  ")[0] for line in captured.out.splitlines()[1:5]] == [
+        "leap seconds",
+        "Earth orientation",
+        "ephemeris",
+        "time ephemeris",
+    ]
+    assert "days.bsp" in captured.out
+    assert "(cannot be used)" in captured.out
+    assert captured.err.startswith("tscale: error: time ephemeris: days.bsp covers only 2024-01-01")
+    assert captured.err.count("\n") == 1
+    assert main([*words, "--json"]) == 2
+    captured = capsys.readouterr()
+    assert "use a longer kernel" in json.loads(captured.out)[-1]["error"]
 
 
 def test_version_and_help(capsys: pytest.CaptureFixture[str]) -> None:

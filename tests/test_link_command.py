@@ -161,7 +161,26 @@ def test_orbit_message_as_an_end(folder: Path, capsys: pytest.CaptureFixture[str
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", "--turnaround", "3"), "--two-way"),
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", "--digits", "40"), "18"),
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05T10:00:00", *TABLE[:3], "-60"), "forward"),
-        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "1e-9"), "rows"),
+        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "1e-9"), "10000000 rows at most"),
+        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "1e999999999"), "--step lies"),
+        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "1e-9999999"), "--step lies"),
+        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "1e-16"), "--step lies"),
+        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "inf"), "--step lies"),
+        (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "nan"), "--step lies"),
+        (("--from", "earth", "--to", "mars", "--transmit", "yesterday"), "--transmit yesterday: is no date: "),
+        (("--from", "earth", "--to", "mars", "--receive", "2024-05-05T25:00:00"), "--receive 2024-05-05T25:00:00: "),
+        (
+            ("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", "--until", "later", "--step", "60"),
+            "--until later: ",
+        ),
+        (
+            ("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", "--without", "499", "--without", "3"),
+            "--without earth-moon barycenter (3)",
+        ),
+        (
+            ("--from", "site.toml", "--to", "venus", "--transmit", "2024-05-05T12:00:00", "--two-way"),
+            "the round trip between Heron Flat and venus has",
+        ),
         (("--from", "earth", "--to", "mars", "--transmit", "2024-05-05", *TABLE[:3], "soon"), "soon"),
         (("--from", "site.toml", "--to", "nowhere.toml", "--transmit", "2024-05-05"), "nowhere.toml"),
         (
@@ -182,6 +201,8 @@ def test_errors_are_one_line_and_leave_no_file(
     assert captured.err.startswith("tscale: error: ")
     assert captured.err.count("\n") == 1
     assert message in captured.err
+    assert "item 0" not in captured.err
+    assert len(captured.err) < 400
     assert sorted(folder.iterdir()) == before
 
 
@@ -208,7 +229,19 @@ def test_predictions_are_noted(folder: Path, capsys: pytest.CaptureFixture[str])
     with warnings.catch_warnings():
         warnings.simplefilter("error")
         assert run(*words) == 0
-    assert "tscale: note: " in capsys.readouterr().err
+    captured = capsys.readouterr()
+    assert "tscale: note: " in captured.err
+    held = "1 of 1 instants are past the end of the Earth orientation, which is held"
+    assert f"note: {held}\n" in captured.out
+
+
+def test_notes_of_a_table_are_summed_over_its_blocks(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    # 10000 rows, two blocks; leap seconds have expired and the Earth orientation is held for all of them.
+    words = ("--from", "site.toml", "--to", "moon", "--transmit", "2035-05-05", "--until", "2035-05-05T02:46:39")
+    assert run(*words, "--step", "1", "--output", "moon.csv") == 0
+    err = capsys.readouterr().err
+    assert "tscale: note: 10000 of 10000 instants are past the end of the Earth orientation, which is held\n" in err
+    assert "tscale: note: 10000 of 10000 instants are past the expiry of the leap-second table" in err
 
 
 # ---- pictures ------------------------------------------------------------------------------------

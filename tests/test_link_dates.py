@@ -93,17 +93,6 @@ def test_places_are_stamped_and_checked(reference: tscale.ReferenceData) -> None
         unhindered(receive=t.at("GEOCENTER"), transmitter="moon", receiver=SITE, reference=reference)
 
 
-def test_out_of_span_carries_the_mask_of_the_whole_batch(reference: tscale.ReferenceData) -> None:
-    last = int(reference.ephemeris.span[1])
-    t = Instants.from_seconds(last - 8500 * 600 + np.arange(9000).reshape(90, 100) * 600, 0.0, scale="TDB")
-    with pytest.raises(errors.OutOfSpan) as caught:
-        one_way(receive=t, transmitter="venus", receiver="earth", reference=reference, occultation="ignore")
-    mask = caught.value.mask
-    assert mask is not None
-    assert mask.shape == (90, 100)
-    assert np.array_equal(mask, t.whole > last)
-
-
 def test_not_converged(reference: tscale.ReferenceData) -> None:
     # At nine tenths of the speed of light on a bent path three steps are not enough.
     @np.vectorize

@@ -14,9 +14,13 @@ from typing import Any
 import numpy as np
 import pytest
 from astropy_iers_data import IERS_A_FILE, IERS_LEAP_SECOND_FILE
+from jplephem.excerpter import write_excerpt
+from jplephem.spk import SPK
 
+import tscale
 from tscale.errors import DataFileError, InvalidInput, MissingPiece
 from tscale.formats.leap_seconds import LeapSeconds
+from tscale.instants import Instants
 from tscale.tables import TTBIPM, EarthOrientation, ReferenceData
 
 
@@ -130,11 +134,84 @@ def test_describe() -> None:
         {"earth_orientation": 3},
         {"tt_bipm": ["TTBIPM.08"]},
         {"ephemeris": "de440.bsp"},
+        {"time_ephemeris": "tt_tdb.bsp"},
+        {"tt_bipm": 5},
     ],
 )
 def test_members_of_another_type(members: Any) -> None:
     with pytest.raises(InvalidInput, match=r"ReferenceData\.load"):
         ReferenceData(**members)
+
+
+@pytest.mark.parametrize(
+    ("make", "words"),
+    [
+        (lambda reference: reference.load(tt_bipm=5), "tt_bipm must be TTBIPM tables.*got 5"),
+        (lambda reference: reference.load(foo=1), "no table is called foo; there are leap_seconds"),
+        (lambda reference: reference.load(time_ephemeris=3), "must be a TimeEphemeris, got int"),
+        (lambda reference: reference.describe(on="2025"), r"on must be a datetime\.date.*got '2025'"),
+    ],
+)
+def test_bad_arguments(make: Any, words: str) -> None:
+    with pytest.raises(InvalidInput, match=words):
+        make(ReferenceData.default())
+
+
+# ---- kernels that do not reach 1977 --------------------------------------------------------------
+
+
+@pytest.fixture
+def recent(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
+    """The shipped kernel from 2024 to 2027."""
+    monkeypatch.setenv("TSCALE_CACHE", str(tmp_path / "cache"))
+    path = tmp_path / "recent.bsp"
+    with SPK.open(ReferenceData.default().ephemeris.path) as kernel, path.open("w+b") as file:
+        write_excerpt(kernel, file, 2460310.5, 2461406.5, kernel.daf.summaries())
+    return path
+
+
+def test_recent_kernel_is_anchored_and_says_so(recent: Path) -> None:
+    reference = ReferenceData.load(ephemeris=recent)
+    shipped = ReferenceData.default().time_ephemeris
+    facts = reference.describe()[-1]
+    assert facts.name.endswith(f"anchored to {shipped.name}")
+    assert facts.error is None
+    # The same positions, and TT - TDB continued from a value of the shipped file: only the rounding of the dates,
+    # 1.1e-16 s each, is left.
+    t = Instants.from_iso(["2024-06-01", "2025-01-01", "2026-09-01"], scale="TT", place="GEOCENTER")
+    here, there = (
+        tscale.chain("TT@GEOCENTER", "TDB@GEOCENTER", reference=tables)(t)
+        for tables in (reference, ReferenceData.default())
+    )
+    np.testing.assert_allclose(np.asarray(here - there), 0.0, rtol=0, atol=2.3e-16)
+
+
+def test_time_ephemeris_may_be_given(recent: Path) -> None:
+    shipped = ReferenceData.default().time_ephemeris
+    assert shipped.path is not None
+    own = ReferenceData.load(ephemeris=recent)
+    for given in (shipped, shipped.path, str(shipped.path)):
+        reference = ReferenceData.load(ephemeris=recent, time_ephemeris=given)
+        assert reference.time_ephemeris.sha256 == shipped.sha256
+        assert reference.describe()[-1].name == shipped.name
+        assert reference.fingerprint != own.fingerprint
+        assert reference.fingerprint == own.replace(time_ephemeris=given).fingerprint
+        assert reference.replace(time_ephemeris=None).fingerprint == own.fingerprint
+        assert pickle.loads(pickle.dumps(reference)).fingerprint == reference.fingerprint
+    with pytest.raises(DataFileError):
+        ReferenceData.load(time_ephemeris=recent)
+
+
+def test_describe_lists_what_it_can(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setenv("TSCALE_CACHE", str(tmp_path / "cache"))
+    path = tmp_path / "days.bsp"
+    with SPK.open(ReferenceData.default().ephemeris.path) as kernel, path.open("w+b") as file:
+        write_excerpt(kernel, file, 2460310.5, 2460312.0, kernel.daf.summaries())
+    facts = ReferenceData.load(ephemeris=path).describe()
+    assert [row.error is None for row in facts] == [True, True, True, False]
+    assert facts[2].name == "days.bsp"
+    assert "use a longer kernel" in str(facts[3].error)
+    assert facts[3][:4] == ("time ephemeris", "", "", None)
 
 
 def test_two_tables_of_one_realisation() -> None:

@@ -18,7 +18,8 @@ from jplephem.excerpter import write_excerpt
 from jplephem.spk import SPK
 
 from tscale.constants import C_M_S, L_B, L_C, L_G, T0_COUNT, TDB0_S
-from tscale.ephemeris import Ephemeris, TimeEphemeris, coordinate_rate, time_ephemeris
+from tscale.ephemeris import Ephemeris, TimeEphemeris, anchored, coordinate_rate, time_ephemeris
+from tscale.ephemeris.anchored import anchored_time_ephemeris
 from tscale.ephemeris.shipped import DEFAULT_TIME_EPHEMERIS, manifest, shipped_path
 from tscale.ephemeris.time_integral import T0_TDB
 from tscale.errors import DataFileError, InvalidInput, MissingPiece, OutOfSpan
@@ -311,7 +312,7 @@ def test_sixteen_processes_build_once(short: Path, cache: Path) -> None:
 
 def test_kernel_that_does_not_reach_t0(eph: Ephemeris, tables: TimeEphemeris, tmp_path: Path, cache: Path) -> None:
     late = Ephemeris.open(cut(eph.path, tmp_path / "late.bsp", 2459000.5, 2459400.5))
-    with pytest.raises(OutOfSpan, match=r"does not reach T0, 1977-01-01T00:00:32.*give anchor="):
+    with pytest.raises(OutOfSpan, match=r"does not reach T0, 1977-01-01T00:00:32.*anchor=TimeEphemeris.of"):
         TimeEphemeris.of(late)
     continued = TimeEphemeris.of(late, anchor=tables)
     whole = np.arange(np.ceil(continued.span[0]), continued.span[1], 10_000).astype(np.int64)
@@ -319,9 +320,48 @@ def test_kernel_that_does_not_reach_t0(eph: Ephemeris, tables: TimeEphemeris, tm
     np.testing.assert_allclose(
         continued.tt_minus_tdb_s((whole, np.zeros(1))), tables.tt_minus_tdb_s((whole, np.zeros(1))), rtol=0, atol=1e-17
     )
+    assert continued.anchor == tables.name == DEFAULT_TIME_EPHEMERIS
+    assert continued.name.endswith(f".bsp, anchored to {tables.name}")
+    assert pickle.loads(pickle.dumps(continued)).name == continued.name
+    assert (
+        TimeEphemeris.of(late, anchor=tables, cache=False).name
+        == f"time ephemeris of late.bsp, anchored to {tables.name}"
+    )
+    assert tables.anchor is None
+    continued.write_spk(tmp_path / "copy.bsp")
+    assert TimeEphemeris.open(tmp_path / "copy.bsp").name == f"copy.bsp, anchored to {tables.name}"
     short_one = Ephemeris.open(cut(eph.path, tmp_path / "early.bsp", 2443000.5, 2443400.5))
     with pytest.raises(OutOfSpan, match="does not overlap the kernel"):
         TimeEphemeris.of(late, anchor=TimeEphemeris.of(short_one))
+
+
+def test_time_ephemeris_that_goes_with_a_kernel(
+    eph: Ephemeris, tables: TimeEphemeris, short: Path, tmp_path: Path, cache: Path
+) -> None:
+    assert anchored_time_ephemeris(eph) is tables
+    assert anchored_time_ephemeris(Ephemeris.open(short)).anchor is None
+    late = Ephemeris.open(cut(eph.path, tmp_path / "late.bsp", 2459000.5, 2459400.5))
+    assert anchored_time_ephemeris(late).anchor == tables.name
+    # One that does not overlap, as the shipped one does not overlap kernels before 1960 or after 2060.
+    early = TimeEphemeris.of(Ephemeris.open(short))
+    words = r"time_ephemeris=te.*te\.write_spk\('FILE'\), --ephemeris .*late\.bsp --time-ephemeris FILE"
+    with pytest.raises(OutOfSpan, match=words) as caught:
+        anchored._overlapping(late, early)
+    assert caught.value.path == late.path
+
+
+def test_bad_arguments(eph: Ephemeris, tables: TimeEphemeris) -> None:
+    with pytest.raises(InvalidInput, match=r"got 'x'.*Ephemeris\.open"):
+        TimeEphemeris.of("x")  # type: ignore[arg-type]
+    with pytest.raises(InvalidInput, match="anchor must be a TimeEphemeris, got 'x'"):
+        TimeEphemeris.of(eph, anchor="x")  # type: ignore[arg-type]
+    with pytest.raises(InvalidInput, match=r"opened by its path.*got 5"):
+        TimeEphemeris.open(5)  # type: ignore[arg-type]
+    with pytest.raises(InvalidInput, match=r"opened by its path.*got 5"):
+        Ephemeris.open(5)  # type: ignore[arg-type]
+    with pytest.raises(InvalidInput, match=r"mass parameter of sun \(10\) is 'x'"):
+        Ephemeris.open(eph.path, gm_m3_s2={10: "x"})  # type: ignore[dict-item]
+    assert Ephemeris.open(eph.path, gm_m3_s2={"sun": 1.0}).gm_m3_s2("sun") == 1.0
 
 
 def test_kernel_too_short_or_without_bodies(eph: Ephemeris, tmp_path: Path, cache: Path) -> None:

@@ -1,10 +1,13 @@
 """CCSDS orbit ephemeris messages, both forms."""
 
+from pathlib import Path
+
 import erfa
 import numpy as np
 import pytest
 
 from tscale import Instants, Trajectory
+from tscale.ephemeris.shipped import shipped_path
 from tscale.errors import DataFileError, InvalidInput, OutOfSpan
 
 EPOCH = Instants.from_iso("2021-05-04T00:00:00", "UTC")
@@ -138,6 +141,14 @@ def test_xml_is_the_same(tmp_path, reference):
     no_oem = text.replace("<oem ", "<other ").replace("</oem>", "</other>")
     with pytest.raises(DataFileError, match="no <oem>"):
         Trajectory.from_oem(written(tmp_path, no_oem, "bad.xml"))
+    # Known to Python as no encoding at all, as one of several bytes, as none of texts.
+    for name in ("KLINGON-8", "utf-7", "base64", "shift_jis"):
+        with pytest.raises(DataFileError, match="XML"):
+            Trajectory.from_oem(written(tmp_path, text.replace("UTF-8", name, 1), "bad.xml"))
+    twice = text.replace("<X units", '<X units="km">1.0</X><X units', 1)
+    with pytest.raises(DataFileError, match="X is given twice in one state vector") as caught:
+        Trajectory.from_oem(written(tmp_path, twice, "bad.xml"))
+    assert caught.value.row == text[: text.index("<stateVector>")].count("\n") + 1
     dropped = text.replace("<Y units", "<W units", 1).replace("</Y>", "</W>", 1)
     with pytest.raises(DataFileError, match="without Y") as caught:
         Trajectory.from_oem(written(tmp_path, dropped, "bad.xml"))
@@ -250,6 +261,7 @@ def test_another_centre(tmp_path, reference):
         ("STOP_TIME = 2021-05-04", "STOP_TIME = 2021-05-03", "no state lies within", 12),
         ("META_STOP", "INTERPOLATION = PROPAGATE\nMETA_STOP", "HERMITE, LAGRANGE", 14),
         ("META_STOP", "INTERPOLATION_DEGREE = seven\nMETA_STOP", "whole number", 14),
+        ("META_STOP", f"INTERPOLATION_DEGREE = {'7' * 5000}\nMETA_STOP", "has 5000 digits", 14),
         ("META_STOP", "INTERPOLATION_DEGREE = 25\nMETA_STOP", "needs 13 states, got 10", 17),
         ("2021-05-04T00:02:00.000000 ", "2021-05-04T00:02:00.000000 1.0 ", "7 numbers|got 7", 18),
         ("2021-05-04T00:02:00.000000 ", "2021-05-04T00:02:00.000000 x", "not a number", 18),
@@ -286,6 +298,31 @@ def test_files_that_are_cut_off_or_empty(tmp_path):
     (tmp_path / "binary.oem").write_bytes(b"\xff\xfe\x00\x01")
     with pytest.raises(DataFileError, match="cannot read"):
         Trajectory.from_oem(tmp_path / "binary.oem")
+
+
+@pytest.mark.parametrize("path", [None, 3, b"tern.oem", "", "a\0b"])
+def test_no_path(path):
+    with pytest.raises(InvalidInput, match="opened by its path"):
+        Trajectory.from_oem(path)
+    with pytest.raises(InvalidInput, match="opened by its path"):
+        Trajectory.from_spk(path, 301)
+
+
+def test_bad_arguments(tmp_path):
+    path = written(tmp_path, kvn(one()))
+    with pytest.raises(InvalidInput, match="must be LeapSeconds, got 'x'"):
+        Trajectory.from_oem(path, leap_seconds="x")
+    with pytest.raises(InvalidInput, match="degree must be an integer of 1 to 27, got 'x'"):
+        Trajectory.from_oem(path, degree="x")
+    with pytest.raises(InvalidInput, match="unknown body"):
+        Trajectory.from_spk(Path(shipped_path("de440_1960_2060.bsp")), "wren")
+
+
+def test_velocities_in_m_s_are_found(tmp_path):
+    facts, (seconds, r, v), _ = one()
+    with pytest.raises(DataFileError, match=r"line 16.*not of one motion") as caught:
+        Trajectory.from_oem(written(tmp_path, kvn((facts, (seconds, r, v * 1e3), 0.0))))
+    assert caught.value.row == 16
 
 
 def test_segments_that_do_not_go_together(tmp_path):

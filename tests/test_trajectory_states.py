@@ -4,6 +4,7 @@ import pickle
 
 import numpy as np
 import pytest
+from astropy import units
 from hypothesis import given
 from hypothesis import strategies as st
 from jplephem.daf import DAF
@@ -345,6 +346,26 @@ def test_a_piece_that_covers_a_date_comes_before_one_a_rounding_away():
         ({"t": Instants.from_seconds(np.arange(5), 0.0, "UT1")}, "UT1"),
         ({"t": Instants.from_seconds(np.arange(5), 0.0, "TDB")}, "dates of GCRS states are TDB"),
         ({"t": START}, r"shape \(n, 3\)"),
+        ({"t": "2025"}, r"must be Instants, got '2025' \(str\).*from_iso"),
+        ({"t": None}, "must be Instants"),
+        ({"position_m": "abc"}, "position_m must be real numbers, got <U3"),
+        ({"velocity_m_s": [[1, 2, 3], [1, 2]]}, "velocity_m_s: rows of different length"),
+        ({"position_m": np.ones((5, 3), dtype=np.complex128)}, "real numbers, got complex128"),
+        ({"velocity_m_s": [[object()] * 3] * 5}, "no real number"),
+        ({"position_m": np.ma.masked_less(np.zeros((5, 3)), 1.0)}, "masked"),
+        ({"position_m": np.ones((5, 3)) * units.km}, "in units of km"),
+        ({"name": None}, "name must be a text"),
+        ({"name": ""}, "name must be a text"),
+        ({"degree": "x"}, "integer of 1 to"),
+        # What contradicts the frame.
+        ({"center": "mars"}, "center='mars' goes with frame='BCRS' only"),
+        ({"center": 0, "frame": "ITRS"}, "center=0 goes with frame='BCRS' only"),
+        ({"t": every(60.0, 5).at("BARYCENTER")}, "dated at BARYCENTER.*TOPOCENTER.*GEOCENTER"),
+        ({"t": every(60.0, 5).at("BARYCENTER"), "frame": "ITRS"}, "dated at BARYCENTER"),
+        ({"t": Instants.from_seconds(np.arange(5), 0.0, "TDB", "GEOCENTER"), "frame": "BCRS"}, "dated at GEOCENTER"),
+        # What does not move so.
+        ({"velocity_m_s": np.full((5, 3), C_M_S / np.sqrt(3) * 1.0001)}, "5 of 5 velocities are not below the speed"),
+        ({"velocity_m_s": np.full((5, 3), 7e3)}, "4 of 4 pairs.*changes by 0 m/s.*say 1.212e.04 m/s"),
     ],
 )
 def test_bad_states(change, words):
@@ -352,6 +373,40 @@ def test_bad_states(change, words):
     Trajectory.from_states(**good)
     with pytest.raises(InvalidInput, match=words):
         Trajectory.from_states(**(good | change))
+
+
+@pytest.mark.parametrize(("r_unit", "v_unit"), [(1e-3, 1.0), (1.0, 1e-3)])
+@pytest.mark.parametrize("step_s", [1.0, 60.0, 600.0])
+def test_mixed_units_are_found(r_unit, v_unit, step_s):
+    t = every(step_s, 9)
+    r, v = orbit().gcrs(t.pair, None)
+    Trajectory.from_states(t, r, v)
+    with pytest.raises(InvalidInput, match=r"not of one motion: between 8 of 8 pairs"):
+        Trajectory.from_states(t, r * r_unit, v * v_unit)
+
+
+@pytest.mark.parametrize("e", [0.0, 0.7, 0.95])
+def test_orbits_with_sparse_states_are_of_one_motion(e):
+    # Six states a revolution, more than an orbit can be interpolated with; the chord is then 3/pi of the arc at e = 0.
+    path = Trajectory.from_kepler(START, 6.9e6 / (1 - e), e, 20, 30, 40, 50)
+    period_s = 2 * np.pi / path.pieces[0].motion.mean_motion_rad_s
+    t = every(period_s / 6, 12)
+    Trajectory.from_states(t, *path.gcrs(t.pair, None))
+
+
+def test_an_antenna_that_creeps_is_not_refused():
+    # Plate motion and noise of 0.1 mm in the positions at 1 s; the velocities say 0.
+    r = np.array([4e6, 1e6, 4.8e6]) + np.random.default_rng(3).normal(size=(9, 3)) * 1e-4
+    Trajectory.from_states(every(1.0, 9), r, np.zeros((9, 3)), "ITRS")
+
+
+@pytest.mark.parametrize("place", [None, "TOPOCENTER", "GEOCENTER"])
+def test_places_that_fit(place):
+    t = START if place is None else START.at(place)
+    t = t.reshape(1).shifted(np.arange(5) * 60.0)
+    Trajectory.from_states(t, np.ones((5, 3)), np.zeros((5, 3)))
+    tdb = Instants.from_seconds(np.arange(5), 0.0, "TDB", "BARYCENTER" if place == "GEOCENTER" else place)
+    Trajectory.from_states(tdb, np.ones((5, 3)), np.zeros((5, 3)), "BCRS", center="mars")
 
 
 # ---- SPK kernels ---------------------------------------------------------------------------------
@@ -438,8 +493,8 @@ def test_lengths_of_states_dated_in_tcb(reference):
     # TN36 eq. 1.2: x_TDB = x_TCB (1 - L_B), velocities keep their value; at the knots nothing is interpolated.
     tdb = Instants.from_seconds(700_000_000 + 86400 * np.arange(12), 0.5, scale="TDB", place="BARYCENTER")
     tcb = tscale.chain("TDB@BARYCENTER", "TCB@BARYCENTER")(tdb)
-    r = np.random.default_rng(5).normal(size=(12, 3)) * 1e11
     v = np.random.default_rng(6).normal(size=(12, 3)) * 1e4
+    r = np.random.default_rng(5).normal(size=3) * 1e11 + 86400.0 * np.cumsum(v, axis=0)
     plain = Trajectory.from_states(tdb, r, v, frame="BCRS", center=0).state_bcrs(tdb.pair, reference)
     scaled = Trajectory.from_states(tcb, r, v, frame="BCRS", center=0).state_bcrs(tdb.pair, reference)
     np.testing.assert_allclose(scaled[0] / plain[0], 1 - 1.550519768e-8, rtol=0, atol=1e-15)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -16,6 +16,7 @@ from .routes import Supplies, route, shortened
 from .scales import Node
 from .source import Source
 from .step import Step
+from .tables.clock_arguments import checked_clocks, kind_words
 from .tables.clock_log import ClockLog
 from .tables.reference import ReferenceData
 
@@ -174,37 +175,25 @@ def chain(
     InvalidInput
         Unknown scales or places.
     """
-    _check_pieces(site, clocks, source, reference)
+    logs = checked_clocks(clocks)
+    _check_pieces(site, source, reference)
     first, last = Node.parse(start), Node.parse(end)
     if first.place is None:
         first = Node(first.scale, "TOPOCENTER" if site is not None else last.place)
     if last.place is None:
         last = Node(last.scale, first.place)
     tables = ReferenceData.default() if reference is None else reference
-    return Chain(first, last, Supplies(tables, site, tuple(clocks), source, second_order))
+    return Chain(first, last, Supplies(tables, site, logs, source, second_order))
 
 
-def _check_pieces(site: Any, clocks: Any, source: Any, reference: Any) -> None:
+def _check_pieces(site: Any, source: Any, reference: Any) -> None:
     if site is not None and not isinstance(site, Observer):
-        raise InvalidInput(f"site= takes a Site or a Trajectory, got {_kind(site)}; read a file with Site.load(path)")
-    if isinstance(clocks, ClockLog):
-        raise InvalidInput("clocks= takes a list of logs: write clocks=[log]")
-    if isinstance(clocks, str) or not isinstance(clocks, Iterable):
         raise InvalidInput(
-            f"clocks= takes a list of ClockLog, got {_kind(clocks)}; read files with ClockLog.load(path)"
+            f"site= takes a Site or a Trajectory, got {kind_words(site)}; read a file with Site.load(path)"
         )
-    for log in clocks:
-        if not isinstance(log, ClockLog):
-            raise InvalidInput(
-                f"clocks= takes a list of ClockLog, one is {_kind(log)}; read files with ClockLog.load(path)"
-            )
     if source is not None and not isinstance(source, Source):
-        raise InvalidInput(f"source= takes a Source, got {_kind(source)}; make one with Source(ra_deg, dec_deg)")
+        raise InvalidInput(f"source= takes a Source, got {kind_words(source)}; make one with Source(ra_deg, dec_deg)")
     if reference is not None and not isinstance(reference, ReferenceData):
         raise InvalidInput(
-            f"reference= takes a ReferenceData, got {_kind(reference)}; make one with ReferenceData.load()"
+            f"reference= takes a ReferenceData, got {kind_words(reference)}; make one with ReferenceData.load()"
         )
-
-
-def _kind(value: Any) -> str:
-    return f"{value!r:.60}" if isinstance(value, str | int | float) else type(value).__name__

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import operator
 from collections.abc import Iterator, Mapping, Sequence
 from typing import NamedTuple
 
@@ -73,6 +74,10 @@ class Ledger(Mapping[str, FloatArray]):
 
     def table(self, row: int = 0) -> str:
         """A readable table of the terms of one instant (`row` counts along the flattened array)."""
+        try:
+            row = operator.index(row)
+        except TypeError as error:
+            raise InvalidInput(f"row is the number of an instant, a whole number from 0; got {row!r}") from error
         size = int(np.prod(self._shape, dtype=np.int64))
         if not -size <= row < size:
             raise InvalidInput(f"row {row} is not among the {size} instants of this ledger")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import os
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
@@ -95,14 +96,18 @@ class SurfaceSite:
             object.__setattr__(self, key, value)
 
     @classmethod
-    def load(cls, path: str | Path) -> SurfaceSite:
+    def load(cls, path: str | os.PathLike[str]) -> SurfaceSite:
         """Read a TOML file with a `[surface]` table whose keys are the parameters of this class.
 
         Raises
         ------
         DataFileError
             Missing or damaged file, unknown or missing keys, values out of range; with the path.
+        InvalidInput
+            Something that is no path.
         """
+        if not isinstance(path, str | os.PathLike):
+            raise InvalidInput(f"SurfaceSite.load takes the path of a TOML file, got {path!r:.60}")
         path = Path(path)
         table = toml_table(path, "surface", _KEYS[:4], _KEYS)
         try:
@@ -112,11 +117,15 @@ class SurfaceSite:
 
     def offset(self, tdb: Pair) -> tuple[FloatArray, FloatArray]:
         """Position (m) and velocity (m/s) from the body's centre on the ICRF axes, each (..., 3), at TDB counts."""
-        return _turned(_rotation(self), self._fixed_m, tdb)
+        return _turned(_rotation(self), self._fixed_m, _pair(tdb))
 
     def up(self, tdb: Pair) -> FloatArray:
         """Unit normal of the ellipsoid on the ICRF axes, (..., 3), at TDB counts."""
-        return _turned(_rotation(self), self._up, tdb)[0]
+        return _turned(_rotation(self), self._up, _pair(tdb))[0]
+
+    def pole(self, tdb: Pair) -> FloatArray:
+        """Unit vector along the body's axis of rotation, to its north, on the ICRF axes, (..., 3), at TDB counts."""
+        return _turned(_rotation(self), np.array([0.0, 0.0, 1.0]), _pair(tdb))[0]
 
     def state_bcrs(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         """Barycentric position (m) and velocity (m/s), TDB-compatible, each (..., 3), at TDB counts.
@@ -124,6 +133,7 @@ class SurfaceSite:
         The Lorentz contraction of the body is included (1 cm on Mars); the scale between the body's own
         coordinates and TDB-compatible ones (a few cm) is left out, below the accuracy of the rotation elements.
         """
+        tdb = _pair(tdb)
         centre, velocity = reference.ephemeris.state(self.body, tdb)
         r, v = self.offset(tdb)
         return centre + contracted(r, velocity), velocity + v
@@ -134,6 +144,20 @@ def contracted(r_m: FloatArray, velocity_m_s: FloatArray) -> FloatArray:
     return np.asarray(r_m - velocity_m_s * (dot(velocity_m_s, r_m) * (0.5 / C_M_S**2))[..., np.newaxis])
 
 
+def _pair(tdb: Any) -> Pair:
+    """Counts as two arrays of one shape."""
+    try:
+        whole, fraction = tdb
+        whole, fraction = np.broadcast_arrays(np.asarray(whole), np.asarray(fraction))
+        if whole.dtype.kind not in "iu" or fraction.dtype.kind not in "iuf":
+            raise TypeError("the first part is integers, the second floats")
+    except (TypeError, ValueError) as error:
+        raise InvalidInput(
+            f"TDB counts are a pair (whole seconds, fraction) such as Instants.pair, got {tdb!r:.60}: {error}"
+        ) from error
+    return whole.astype(np.int64, copy=False), fraction.astype(np.float64, copy=False)
+
+
 def _rotation(site: SurfaceSite) -> Rotation:
     assert isinstance(site.body, int)
     return ROTATIONS[own_body(site.body)]
@@ -141,7 +165,7 @@ def _rotation(site: SurfaceSite) -> Rotation:
 
 def _turned(rotation: Rotation, fixed: FloatArray, tdb: Pair) -> tuple[FloatArray, FloatArray]:
     """Turn a body-fixed vector to the ICRF axes: about z by W, about x by 90 deg - dec, about z by 90 deg + ra."""
-    whole, fraction = np.broadcast_arrays(np.asarray(tdb[0]), np.asarray(tdb[1]))
+    whole, fraction = tdb
     day, second = np.divmod(whole, DAY_S)
     part = (second + fraction) / DAY_S
     days = np.asarray(day + part)

@@ -7,7 +7,7 @@ from datetime import date
 from typing import TYPE_CHECKING, Any, Final
 
 from .options import add_tables, reference_of
-from .streams import standard_output
+from .streams import note, standard_output
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -18,6 +18,7 @@ __all__ = ["add_parser", "run"]
 
 _HEADS: Final = ("table", "name", "from", "to", "issued", "expires", "age (d)", "SHA-256")
 _SHORT_HASH: Final = 12
+_FAILED: Final = 2
 
 
 def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
@@ -39,7 +40,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
 
 
 def run(args: argparse.Namespace) -> int:
-    """Print the list."""
+    """Print the list; a table that cannot be used is marked in it, told on standard error, and gives status 2."""
     standard_output()
     if args.verify:
         checked = _verify()
@@ -48,20 +49,27 @@ def run(args: argparse.Namespace) -> int:
         import json
 
         print(json.dumps([{**fact._asdict(), "path": fact.path and str(fact.path)} for fact in facts], indent=2))
-        return 0
+    else:
+        _print_table(args, facts)
+        if args.verify:
+            print()
+            for name in checked:
+                print(f"verified: {name}")
+    wrong = [fact for fact in facts if fact.error is not None]
+    for fact in wrong:
+        note(f"{fact.table}: {fact.error}", "error")
+    return _FAILED if wrong else 0
+
+
+def _print_table(args: argparse.Namespace, facts: Sequence[TableFacts]) -> None:
     rows = [_row(fact, full=args.full) for fact in facts]
     print(_aligned([_HEADS, *rows]))
-    for note in _overdue(facts, date.today()):
-        print(f"note: {note}")
+    for overdue in _overdue(facts, date.today()):
+        print(f"note: {overdue}")
     if args.full:
         print()
         for fact in facts:
             print(f"{fact.table}: {fact.path or 'not from a file'}")
-    if args.verify:
-        print()
-        for name in checked:
-            print(f"verified: {name}")
-    return 0
 
 
 def _overdue(facts: Sequence[TableFacts], today: date) -> list[str]:
@@ -77,7 +85,8 @@ def _overdue(facts: Sequence[TableFacts], today: date) -> list[str]:
 def _row(fact: TableFacts, *, full: bool) -> tuple[str, ...]:
     age = "" if fact.age_days is None else str(fact.age_days)
     sha256 = fact.sha256 if full else fact.sha256[:_SHORT_HASH]
-    return (fact.table, fact.name, fact.start, fact.end or "", fact.issued or "", fact.expires or "", age, sha256)
+    name = fact.name if fact.error is None else "(cannot be used)"
+    return (fact.table, name, fact.start, fact.end or "", fact.issued or "", fact.expires or "", age, sha256)
 
 
 def _aligned(rows: Sequence[Sequence[str]]) -> str:

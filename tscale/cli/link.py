@@ -4,15 +4,15 @@ from __future__ import annotations
 
 import argparse
 import re
-from fractions import Fraction
 from typing import TYPE_CHECKING, Any, Final, TextIO
 
+from .link_dates import blocks_of, date_of
 from .link_ends import FORMS, end_of
 from .options import add_tables, reference_of
-from .streams import is_standard_output, standard_output, written
+from .streams import is_standard_output, note, standard_output, written
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Sequence
 
     from ..exact import FloatArray
     from ..instants import Instants
@@ -24,13 +24,12 @@ if TYPE_CHECKING:
 
 __all__ = ["add_parser", "run"]
 
-_BLOCK_ROWS: Final = 8192
-_MOST_ROWS: Final = 10_000_000
 _TERM_DIGITS: Final = 15
 
 # How errors that speak of arrays and arguments speak on the command line.
 _SPOKEN: Final = (
-    (r"^1 of 1 links (.*?)have ", r"the link \1has "),
+    (r"^1 of 1 (link|round trip)s (.*?)have ", r"the \1 \2has "),
+    (r" \(1\)(?=;|\. Leave)", ""),
     (
         r'Leave them out \(see the mask\), or give occultation="ignore" to have them marked only',
         "Say --occultation ignore to have that marked only",
@@ -132,17 +131,24 @@ class _Work:
     """One run of the command."""
 
     def __init__(self, args: argparse.Namespace, reference: ReferenceData, clocks: Sequence[ClockLog]) -> None:
-        from ..ephemeris import PLANETARY_BODIES, body_id
-        from ..instants import Instants
+        from ..body_shape import own_body
+        from ..ephemeris import PLANETARY_BODIES, body_id, body_name
+        from ..errors import InvalidInput
 
         self.args = args
-        without = {body_id(int(text) if text.isdigit() else text) for text in args.without}
+        without = {own_body(body_id(int(text) if text.isdigit() else text)) for text in args.without}
+        unknown = without.difference(PLANETARY_BODIES)
+        if unknown:
+            raise InvalidInput(
+                f"--without {', '.join(map(body_name, sorted(unknown)))}: no such body delays the light; those that do "
+                f"are {', '.join(body_name(body) for body in PLANETARY_BODIES)}"
+            )
         self.bodies = [body for body in PLANETARY_BODIES if body not in without]
         self.reference = reference
         self.clocks = clocks
         self.ends = end_of(args.start, reference), end_of(args.end, reference)
         self.given = "transmit" if args.transmit is not None else "receive"
-        self.first = Instants.from_iso(getattr(args, self.given), args.scale, leap_seconds=reference.leap_seconds)
+        self.first = date_of(args, self.given, reference)
 
     def solve(self, t: Instants) -> Solution:
         """Solve links at dates given."""
@@ -204,19 +210,32 @@ class _Work:
         rule = f"{'-' * left}  {'-' * right}"
         table = [f"{name:<{left}}  {text:>{right}}" for name, text in terms]
         head = [f"{name:<{width}}  {text}" for name, text in lines]
-        return "\n".join([*head, "", f"{'term':<{left}}  {'TDB seconds':>{right}}", rule, *table[:-1], rule, table[-1]])
+        notes = [f"note: {text}" for text in solution.notes]
+        return "\n".join(
+            [
+                *head,
+                *["", f"{'term':<{left}}  {'TDB seconds':>{right}}", rule, *table[:-1], rule, table[-1]],
+                *[*([""] if notes else []), *notes],
+            ]
+        )
 
     def table(self) -> None:
         """Write the table, and the picture if one is asked for."""
+        from .walk import add_notes, note_texts
+
         if self.args.plot:
             from ..plots import check_picture
 
             check_picture(self.args.plot)
         solutions = []
+        notes: dict[str, list[int]] = {}
+        rows = 0
         with written(self.args.output) as target:
-            for number, t in enumerate(self._blocks()):
+            for number, t in enumerate(blocks_of(self.args, self.first, self.reference)):
                 solution = self.solve(t)
                 self._write(target, solution, head=number == 0)
+                add_notes(notes, solution.notes)
+                rows += t.size
                 if self.args.plot:
                     solutions.append(solution)
             if self.args.plot:
@@ -224,6 +243,8 @@ class _Work:
 
                 # Inside the block: when the picture fails there is no table either.
                 save_link_picture(solutions, self.args.plot)
+        for text in note_texts(notes, rows):
+            note(text)
 
     def _write(self, target: TextIO, solution: Solution, head: bool) -> None:
         columns = {name: self._iso(t) for name, t in self._events(solution).items()}
@@ -242,31 +263,6 @@ class _Work:
         if head:
             target.write(",".join(columns) + "\n")
         target.writelines(",".join(row) + "\n" for row in zip(*columns.values(), strict=True))
-
-    def _blocks(self) -> Iterator[Instants]:
-        """Dates of the table, each the exact sum of the first date and so many steps."""
-        import numpy as np
-
-        from .. import exact
-        from ..errors import InvalidInput
-        from ..instants import Instants
-
-        try:
-            step = Fraction(self.args.step)
-        except (ValueError, ZeroDivisionError) as error:
-            raise InvalidInput(f"--step is a decimal number of seconds, got {self.args.step!r}") from error
-        last = Instants.from_iso(self.args.until, self.args.scale, leap_seconds=self.reference.leap_seconds)
-        whole, fraction = last.minus_exact(self.first)
-        span = Fraction(int(whole)) + Fraction(float(fraction))
-        if step <= 0 or span < 0:
-            raise InvalidInput(f"a table runs forward: --until {self.args.until} by --step {self.args.step} does not")
-        # A step such as 0.1 s may miss the last date by the rounding of its text.
-        count = int((span + Fraction(1, 10**15)) / step) + 1
-        if count > _MOST_ROWS:
-            raise InvalidInput(f"{count} rows are more than {_MOST_ROWS}; take a longer --step or several tables")
-        for start in range(0, count, _BLOCK_ROWS):
-            rows = np.arange(start, min(start + _BLOCK_ROWS, count), dtype=np.int64)
-            yield self.first.shifted(exact.multiply((rows, np.zeros(rows.shape)), exact.Factor.of(step)))
 
 
 def _legs(solution: Solution) -> dict[str, LinkSolution]:

@@ -20,6 +20,12 @@ def add_tables(parser: argparse.ArgumentParser) -> None:
     """Add the options that replace a default table by a file."""
     group = parser.add_argument_group("tables", "each in place of the default one (see `tscale data`)")
     group.add_argument("--ephemeris", metavar="FILE", help="SPK kernel; its time ephemeris is built once and kept")
+    group.add_argument(
+        "--time-ephemeris",
+        metavar="FILE",
+        help="SPK kernel with TT - TDB (body 1000000001), in place of the one built; without it a kernel that does not "
+        "reach 1977 is anchored to the shipped one",
+    )
     group.add_argument("--leap-seconds", metavar="FILE", help="IERS Leap_Second.dat or the leap-seconds.list layout")
     group.add_argument("--earth-orientation", metavar="FILE", help="IERS finals2000A or C04 file")
     group.add_argument(
@@ -73,6 +79,7 @@ def reference_of(args: argparse.Namespace) -> ReferenceData:
         earth_orientation=args.earth_orientation,
         tt_bipm=args.tt_bipm,
         ephemeris=args.ephemeris,
+        time_ephemeris=args.time_ephemeris,
     )
 
 

@@ -17,9 +17,10 @@ from ..instants import Instants
 from ..scales import Node, Scale
 from ..source import Source
 from ..step import Step, Terms
+from ..tables.notes import orientation_notes
 from ..tables.reference import ReferenceData
 from ..transforms import barycentric, geocentric, wavefront
-from .common import count_difference, orientation_notes
+from .common import count_difference
 
 __all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "wavefront_step"]
 

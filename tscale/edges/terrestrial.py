@@ -13,10 +13,11 @@ from ..instants import Instants
 from ..scales import Node, Scale
 from ..step import Step, Terms
 from ..tables.clock_log import ClockLog
+from ..tables.notes import leap_second_notes, orientation_notes
 from ..tables.reference import ReferenceData
 from ..tables.tt_bipm import TTBIPM
 from ..transforms import geocentric, terrestrial
-from .common import count_difference, orientation_notes
+from .common import count_difference
 
 __all__ = ["clock_step", "fixed_step", "tt_bipm_step", "tt_tcg_step", "ut1_step"]
 
@@ -58,12 +59,7 @@ def fixed_step(start: str, end: str, place: str | None, reference: ReferenceData
     def notes(before: Instants) -> tuple[str, ...]:
         if not (a.utc_labels or b.utc_labels):
             return ()
-        table = reference.leap_seconds
-        utc = terrestrial.to_fixed_scale(before, "UTC")
-        expired = int(np.count_nonzero(table.is_expired(utc.pair)))
-        if not expired:
-            return ()
-        return (f"{expired} of {before.size} instants are past the expiry of the leap-second table {table.name}",)
+        return leap_second_notes(terrestrial.to_fixed_scale(before, "UTC").pair, reference)
 
     return Step(
         start=Node(a, place),

@@ -91,7 +91,7 @@ class Ephemeris:
                 raise InvalidInput(
                     f"mass parameter of {body_name(body)} is {value!r} m3/s2: give a finite number, not negative"
                 )
-        return cls(file_path(path, "a kernel").resolve(), given)
+        return cls(file_path(path, "a kernel").resolve(), {body: float(value) for body, value in given.items()})
 
     @classmethod
     def default(cls) -> Ephemeris:

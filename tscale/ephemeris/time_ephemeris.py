@@ -13,9 +13,10 @@ from typing import Any, Final
 
 import numpy as np
 
-from ..errors import DataFileError, OutOfSpan
+from ..errors import DataFileError, InvalidInput, OutOfSpan
 from ..exact import FloatArray, Pair
 from ..storage import write_atomically
+from .arguments import file_path
 from .cache import cache_folder, locked
 from .chebyshev import ChebyshevTable, span_text
 from .daf import check_sha256, file_sha256, read_container
@@ -35,6 +36,8 @@ TIME_CENTER: Final = 1000000000
 VERSION: Final = 1
 """Raised whenever the integrator would give other numbers: older cache files are then not used."""
 
+_ANCHOR: Final = re.compile(r"^Anchor: (.+), SHA-256 [0-9a-f]{64}$", re.MULTILINE)
+
 _OPENING: Final = threading.Lock()
 
 
@@ -47,7 +50,9 @@ class TimeEphemeris:
     Attributes
     ----------
     name : str
-        File name, or what it was built from.
+        File name, or what it was built from; and the anchor, if the kernel did not reach T0.
+    anchor : str or None
+        Name of the time ephemeris that was continued, for a kernel that did not reach T0.
     path : pathlib.Path or None
         File it was read from.
     sha256 : str
@@ -55,13 +60,18 @@ class TimeEphemeris:
     """
 
     name: str
+    anchor: str | None
     path: Path | None
     sha256: str
     _table: ChebyshevTable
     _comment: str
 
     def __init__(self, table: ChebyshevTable, name: str, path: Path | None, sha256: str, comment: str) -> None:
-        values = {"name": name, "path": path, "sha256": sha256, "_table": table, "_comment": comment}
+        found = _ANCHOR.search(comment)
+        anchor = found[1] if found else None
+        if anchor is not None and not name.endswith(anchor):
+            name = f"{name}, anchored to {anchor}"
+        values = {"name": name, "anchor": anchor, "path": path, "sha256": sha256, "_table": table, "_comment": comment}
         for attribute, value in values.items():
             object.__setattr__(self, attribute, value)
 
@@ -104,6 +114,16 @@ class TimeEphemeris:
         UserWarning
             If a damaged cache file was replaced, or the cache folder cannot be used.
         """
+        if not isinstance(ephemeris, Ephemeris):
+            raise InvalidInput(
+                f"a time ephemeris is that of an Ephemeris, got {ephemeris!r:.80}: use Ephemeris.open(path) for a "
+                "kernel, TimeEphemeris.open(path) for a file of TT - TDB"
+            )
+        if anchor is not None and not isinstance(anchor, TimeEphemeris):
+            raise InvalidInput(
+                f"anchor must be a TimeEphemeris, got {anchor!r:.80}: use TimeEphemeris.open(path) or "
+                "TimeEphemeris.of(Ephemeris.default())"
+            )
         if not cache:
             return cls._build(ephemeris, progress, anchor)
         key = _key(ephemeris, anchor)
@@ -144,7 +164,7 @@ class TimeEphemeris:
     @classmethod
     def _open(cls, path: str | Path, key: str | None) -> TimeEphemeris:
         """Read a kernel; with a `key` only one that this module wrote, checksum and all, for that key."""
-        path = Path(path).expanduser().resolve()
+        path = file_path(path, "a file of TT - TDB").resolve()
         container = read_container(path)
         found = [a for a in container.arrays if (a.target, a.center) == (TIME_TARGET, TIME_CENTER)]
         if len(found) != 1 or found[0].data_type not in CHEBYSHEV_TYPES:
@@ -248,6 +268,8 @@ class TimeEphemeris:
             f"TT - TDB = {pinned.value_s!r} s at TDB count {pinned.tdb[0]} + {pinned.tdb[1]!r} s.\n"
             f"Key: {_key(ephemeris, anchor)}\n"
         )
+        if anchor is not None:
+            comment += f"Anchor: {anchor.name}, SHA-256 {anchor.sha256}\n"
         return cls(table, table.name, None, hashlib.sha256(_content(table, comment)).hexdigest(), comment)
 
     def _pin(self, span: tuple[float, float]) -> Pin:
@@ -267,7 +289,8 @@ def _key(ephemeris: Ephemeris, anchor: TimeEphemeris | None) -> str:
     if not ephemeris.given_gm_m3_s2 and anchor is None:
         return ephemeris.sha256
     masses = sorted((body, float(value).hex()) for body, value in ephemeris.given_gm_m3_s2.items())
-    parts = (ephemeris.sha256, repr(masses), "" if anchor is None else anchor.sha256)
+    # The anchor's name is in the file: one of another name is another file.
+    parts = (ephemeris.sha256, repr(masses), "" if anchor is None else f"{anchor.name} {anchor.sha256}")
     return hashlib.sha256("\n".join(parts).encode()).hexdigest()
 
 

@@ -18,7 +18,7 @@ from .coordinate_rate import coordinate_rate
 from .integrator import Progress, integrate_panels
 from .kernel import Ephemeris
 
-__all__ = ["PANEL_S", "T0_TDB", "Pin", "integrate_tt_minus_tdb", "pin_at_t0", "progress_bar"]
+__all__ = ["PANEL_S", "T0_TDB", "Pin", "integrate_tt_minus_tdb", "pin_at_t0", "progress_bar", "reaches_t0"]
 
 PANEL_S: Final = 4 * 86400.0
 """Longest panel, s: halving it moves the integral by less than 1e-4 ps over a century."""
@@ -98,9 +98,16 @@ def pin_at_t0(span: tuple[float, float]) -> Pin:
     if not span[0] <= count_s <= span[1]:
         raise OutOfSpan(
             f"the kernel covers {span_text(span)} TDB and so does not reach T0, {date_text(count_s)}, where "
-            "TT - TDB is defined: use a kernel that reaches it, or give anchor=, a TimeEphemeris that overlaps this one"
+            "TT - TDB is defined: use a kernel that reaches it, or continue a time ephemeris that overlaps it, as "
+            "TimeEphemeris.of(kernel, anchor=TimeEphemeris.of(Ephemeris.default()))"
         )
     return Pin(T0_TDB, -TDB0_S)
+
+
+def reaches_t0(ephemeris: Ephemeris) -> bool:
+    """Whether the whole panels of a kernel reach T0, where TT - TDB is defined."""
+    start_s, step_s, panels = _panels(ephemeris, PANEL_S)
+    return start_s <= T0_TDB[0] + T0_TDB[1] <= start_s + panels * step_s
 
 
 def _panels(ephemeris: Ephemeris, panel_s: float) -> tuple[float, float, int]:

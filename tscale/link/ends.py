@@ -9,16 +9,16 @@ from __future__ import annotations
 
 from abc import ABC, abstractmethod
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any, Final, Protocol, TypeAlias, runtime_checkable
+from typing import TYPE_CHECKING, Any, Final, NamedTuple, Protocol, TypeAlias, runtime_checkable
 
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S
-from ..earth.frames import dot
+from ..body_shape import FIGURES, Figure, own_body
+from ..constants import WGS84_A_M, WGS84_INVERSE_FLATTENING
 from ..earth.moving import observer_event
 from ..earth.observer import Observer
-from ..earth.rotation import gcrs_from_itrs
+from ..earth.rotation import orientation
 from ..earth.site import Site
 from ..ephemeris.bodies import body_id, body_name
 from ..errors import InvalidInput
@@ -29,9 +29,10 @@ from ..trajectory import Trajectory
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
 
-__all__ = ["End", "Moving", "Participant", "as_end"]
+__all__ = ["End", "Moving", "Participant", "Stand", "absolute", "as_end"]
 
 _EARTH: Final = 399
+_EARTH_FIGURE: Final = Figure(WGS84_A_M, float(WGS84_A_M * (1.0 - 1.0 / WGS84_INVERSE_FLATTENING)))
 _PLACES: Final = {
     0: "BARYCENTER",
     399: "GEOCENTER",
@@ -57,6 +58,17 @@ class Moving(Protocol):
 
 Participant: TypeAlias = "Site | SurfaceSite | Observer | Moving | str | int"
 """What a link may be given as its end: a body is a name or a NAIF number."""
+
+
+class Stand(NamedTuple):
+    """How an end stands on its body, on the ICRF axes."""
+
+    up: FloatArray
+    """Unit vector to the zenith, (..., 3)."""
+    pole: FloatArray
+    """Unit vector along the body's axis, (..., 3)."""
+    figure: Figure
+    """The body's ellipsoid."""
 
 
 @dataclass(frozen=True)
@@ -98,9 +110,14 @@ class End(ABC):
     def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         """Barycentric TDB-compatible offset from the anchor (m) and its rate (m/s), each (..., 3)."""
 
-    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
-        """Unit vector to the zenith, (..., 3), of an end on the ground; else None."""
+    def stand(self, tdb: Pair, reference: ReferenceData) -> Stand | None:
+        """How an end on the ground stands on its body; else None."""
         return None
+
+    @property
+    def uses_earth_orientation(self) -> bool:
+        """Whether the place of this end turns with the Earth."""
+        return False
 
 
 @dataclass(frozen=True)
@@ -142,13 +159,19 @@ class ObserverEnd(End):
         event = observer_event(tdb, reference, self.observer)
         return event.offset(), event.offset_rate(1.0 + reference.time_ephemeris.rate(tdb))
 
-    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
+    def stand(self, tdb: Pair, reference: ReferenceData) -> Stand | None:
         if not isinstance(self.observer, Site):
             return None
         lon, lat = np.radians(self.observer.lon_deg), np.radians(self.observer.lat_deg)
         normal = np.array([np.cos(lat) * np.cos(lon), np.cos(lat) * np.sin(lon), np.sin(lat)])
         tt = exact.add_seconds(tdb, reference.time_ephemeris.tt_minus_tdb_s(tdb))
-        return gcrs_from_itrs(normal, tt, reference)
+        axes = orientation(tt, reference)
+        return Stand(axes.celestial(normal), axes.celestial(np.array([0.0, 0.0, 1.0])), _EARTH_FIGURE)
+
+    @property
+    def uses_earth_orientation(self) -> bool:
+        # One that does not say is taken to be on the ground, as in chains.
+        return bool(getattr(self.observer, "uses_earth_orientation", True))
 
 
 @dataclass(frozen=True)
@@ -165,8 +188,8 @@ class SurfaceEnd(End):
         r, v = self.site.offset(tdb)
         return contracted(r, reference.ephemeris.state(self.anchor, tdb)[1]), v
 
-    def up(self, tdb: Pair, reference: ReferenceData) -> FloatArray | None:
-        return self.site.up(tdb)
+    def stand(self, tdb: Pair, reference: ReferenceData) -> Stand | None:
+        return Stand(self.site.up(tdb), self.site.pole(tdb), FIGURES[own_body(self.anchor)])
 
 
 @dataclass(frozen=True)
@@ -182,8 +205,12 @@ class MovingEnd(End):
     def offset(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         if self.anchor != 0 and isinstance(self.moving, Trajectory):
             return self.moving.state_from_center(tdb, reference)
-        position, velocity = self.moving.state_bcrs(tdb, reference)
-        return np.asarray(position, dtype=np.float64), np.asarray(velocity, dtype=np.float64)
+        state = self.moving.state_bcrs(tdb, reference)
+        return state if isinstance(self.moving, Trajectory) else _checked_state(state, self.name, np.shape(tdb[0]))
+
+    @property
+    def uses_earth_orientation(self) -> bool:
+        return bool(getattr(self.moving, "uses_earth_orientation", False))
 
 
 def as_end(participant: Any, role: str) -> End:
@@ -212,6 +239,26 @@ def as_end(participant: Any, role: str) -> End:
     )
 
 
+def _checked_state(state: Any, name: str, shape: tuple[int, ...]) -> tuple[FloatArray, FloatArray]:
+    """What a `state_bcrs` that is not ours gave back, as two vectors for each date."""
+    whole = (*shape, 3)
+    try:
+        position, velocity = (np.broadcast_to(np.asarray(part, dtype=np.float64), whole) for part in state)
+    except (TypeError, ValueError) as error:
+        raise InvalidInput(
+            f"state_bcrs of {name} must give back two float arrays of shape {whole}, position (m) and velocity (m/s): "
+            f"{error}"
+        ) from error
+    bad = ~(np.isfinite(position) & np.isfinite(velocity)).all(axis=-1)
+    if np.any(bad):
+        raise InvalidInput(
+            f"state_bcrs of {name} gave no finite position (m) and velocity (m/s) at {int(bad.sum())} of {bad.size} "
+            "dates; it must raise OutOfSpan where it knows none",
+            mask=np.asarray(bad),
+        )
+    return position, velocity
+
+
 def _span_of(participant: Any) -> tuple[float, float] | None:
     span = getattr(participant, "span", None)
     return None if span is None else (float(span[0]), float(span[1]))
@@ -226,19 +273,3 @@ def absolute(end: End, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray,
         place, speed = reference.ephemeris.state(end.anchor, tdb)
     offset, rate = end.offset(tdb, reference)
     return place, speed, offset, rate
-
-
-def elevation_rad(up: FloatArray, toward: FloatArray, velocity_m_s: FloatArray) -> FloatArray:
-    """Elevation at which an end on the ground sees the other, in its own frame (first-order aberration), no refraction.
-
-    Parameters
-    ----------
-    up : (..., 3) array
-        Unit vector to the zenith.
-    toward : (..., 3) array
-        Unit vector from this end to the other along the light path, barycentric.
-    velocity_m_s : (..., 3) array
-        Barycentric velocity of this end. Its sign is the caller's: + for light that comes in, - for light that leaves.
-    """
-    seen = toward + velocity_m_s / C_M_S
-    return np.asarray(np.arcsin(np.clip(dot(up, seen) / np.sqrt(dot(seen, seen)), -1.0, 1.0)))

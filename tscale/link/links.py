@@ -3,29 +3,30 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING, Any, Final, Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 import numpy.typing as npt
 
 from .. import exact
-from ..body_shape import own_body
-from ..ephemeris import PLANETARY_BODIES, body_id
-from ..errors import InvalidInput, TscaleError
-from ..exact import FloatArray, Pair
+from ..ephemeris import PLANETARY_BODIES
+from ..errors import InvalidInput
+from ..exact import BoolArray, FloatArray, IntArray, Pair
 from ..instants import Instants
+from ..tables.clock_arguments import checked_clocks
 from ..tables.reference import ReferenceData
+from .arguments import checked_instants, checked_options, checked_reference, with_turnaround
+from .batch import Batch, Failure, raise_failures, solve_batch
 from .dating import tdb_of
 from .ends import End, Participant, as_end
+from .obstacles import no_clear_path
 from .solution import LinkSolution, Terms, TwoWaySolution
-from .solve import Options, Solved, moved_mask, solve
+from .solve import Options
 
 if TYPE_CHECKING:
     from ..tables.clock_log import ClockLog
 
 __all__ = ["one_way", "two_way"]
-
-_CHUNK: Final = 8192
 
 
 def one_way(
@@ -57,11 +58,14 @@ def one_way(
         Logs that lead from UTC(k) or CLOCK(x) to UTC.
     bodies : sequence of str or int
         Bodies whose gravity delays the light and that may stand in its way. One whose centre is an end is left out.
+        The Earth and the Moon are two: their barycentre (3) is refused.
     second_order : bool
         Add the Sun's delay of second and third order (10 ns for a line that grazes the Sun).
     occultation : {"error", "ignore"}
         What to do where the line passes through a body (mean radius; the Sun's nominal one) or an end on the ground has
-        the other below its horizon: raise, or go on as if the way were clear; `occulted` of the solution tells which.
+        the other below its horizon (that of the ellipsoid under it, so that from a height h one sees the dip of about
+        sqrt(2 h/R) below the horizontal; no terrain, no refraction): raise, or go on as if the way were clear;
+        `occulted` of the solution tells which.
     tolerance_s : float
         The light time is found when Newton's step falls below this, or below the rounding of the positions (0.5 ps at
         Jupiter, 4 ps at Neptune).
@@ -85,6 +89,8 @@ def one_way(
     NotConverged
         Still moving after `max_iterations` (with the mask).
 
+    A mask names every link of the batch that fails in the way of the error raised.
+
     Notes
     -----
     Source: IERS Conventions (2010), section 11.2, with the additions in `delay`. All in TDB and TDB-compatible lengths.
@@ -93,10 +99,14 @@ def one_way(
     if given is None or (transmit is not None and receive is not None):
         raise InvalidInput("a link needs exactly one of transmit= and receive=, the dates of one of its events")
     ends = as_end(transmitter, "transmitter"), as_end(receiver, "receiver")
-    reference = _reference(reference)
-    known = tdb_of(_instants(given), ends[receive is not None], reference, clocks)
-    options = _options(bodies, second_order, occultation, tolerance_s, max_iterations)
-    return _solution(known, receive is not None, ends, reference, tuple(clocks), options)
+    given, logs, tables = checked_instants(given), checked_clocks(clocks), checked_reference(reference)
+    options = checked_options(bodies, second_order, occultation, tolerance_s, max_iterations)
+    met = receive is not None
+    known = tdb_of(given, ends[met], tables, logs)
+    batch = solve_batch(_flat(known), met, ends, tables, options)
+    what = f"links from {ends[0].name} to {ends[1].name}"
+    raise_failures([*batch.failures, *_refused([(batch, batch.rows)], given.shape, what, options)], given.shape)
+    return _solution(known, met, batch, ends, tables, logs, given)
 
 
 def two_way(
@@ -135,115 +145,82 @@ def two_way(
     if given is None or (transmit is not None and receive is not None):
         raise InvalidInput("a round trip needs exactly one of transmit= and receive=, dates of the station's events")
     near, far = as_end(station, "station"), as_end(target, "target")
-    reference = _reference(reference)
-    options = _options(bodies, second_order, occultation, tolerance_s, max_iterations)
-    clocks = tuple(clocks)
-    known, turnaround = _broadcast(tdb_of(_instants(given), near, reference, clocks), turnaround_s)
-    if receive is None:
-        up = _solution(known, False, (near, far), reference, clocks, options)
-        leaves = exact.add_seconds(up.receive.pair, turnaround)
-        down = _solution(leaves, False, (far, near), reference, clocks, options)
-    else:
-        down = _solution(known, True, (far, near), reference, clocks, options)
-        arrives = exact.add_seconds(down.transmit.pair, -turnaround)
-        up = _solution(arrives, True, (near, far), reference, clocks, options)
-    return TwoWaySolution(up, down, turnaround)
+    logs, tables = checked_clocks(clocks), checked_reference(reference)
+    options = checked_options(bodies, second_order, occultation, tolerance_s, max_iterations)
+    given, turnaround = with_turnaround(checked_instants(given), turnaround_s)
+    # From the leg that meets the date given to the other: backwards in time from a reception.
+    back = receive is not None
+    first_ends, second_ends = ((far, near), (near, far)) if back else ((near, far), (far, near))
+    known = tdb_of(given, near, tables, logs)
+    first = solve_batch(_flat(known), back, first_ends, tables, options)
+    if first.solved is None:
+        raise_failures(first.failures, given.shape)
+    wait = turnaround.reshape(-1)[first.rows]
+    turned = exact.add_seconds(first.other, -wait if back else wait)
+    second = solve_batch(turned, back, second_ends, tables, options)
+    failures = [*first.failures, *(Failure(error, first.rows[links]) for error, links in second.failures)]
+    what = f"round trips between {near.name} and {far.name}"
+    legs = [(first, first.rows), (second, first.rows[second.rows])]
+    raise_failures([*failures, *_refused(legs, given.shape, what, options)], given.shape)
+    turned = turned[0].reshape(given.shape), turned[1].reshape(given.shape)
+    one = _solution(known, back, first, first_ends, tables, logs, given)
+    two = _solution(turned, back, second, second_ends, tables, logs, None)
+    return TwoWaySolution(two, one, turnaround) if back else TwoWaySolution(one, two, turnaround)
 
 
-def _reference(reference: ReferenceData | None) -> ReferenceData:
-    if reference is None:
-        return ReferenceData.default()
-    if not isinstance(reference, ReferenceData):
-        raise InvalidInput(f"reference must be a ReferenceData, got {type(reference).__name__}")
-    return reference
-
-
-def _instants(t: Any) -> Instants:
-    if not isinstance(t, Instants):
-        raise InvalidInput(
-            f"the dates of a link are Instants, got {type(t).__name__}; make them with Instants.from_iso"
-        )
-    return t
-
-
-def _broadcast(known: Pair, turnaround_s: npt.ArrayLike) -> tuple[Pair, FloatArray]:
-    turnaround = np.asarray(turnaround_s, dtype=np.float64)
-    bad = ~(np.isfinite(turnaround) & (turnaround >= 0.0))
-    if np.any(bad):
-        raise InvalidInput(f"turnaround_s must be finite and 0 or more, got {turnaround_s!r}", mask=np.asarray(bad))
-    try:
-        whole, fraction, turnaround = np.broadcast_arrays(known[0], known[1], turnaround)
-    except ValueError as error:
-        raise InvalidInput(
-            f"turnaround_s of shape {turnaround.shape} does not go with dates of {known[0].shape}"
-        ) from error
-    return (whole, fraction), turnaround
-
-
-def _options(
-    bodies: Sequence[str | int], second_order: bool, occultation: str, tolerance_s: float, max_iterations: int
-) -> Options:
-    if occultation not in ("error", "ignore"):
-        raise InvalidInput(f'occultation must be "error" or "ignore", got {occultation!r}')
-    if isinstance(bodies, str):
-        raise InvalidInput(f"bodies is a sequence such as ('sun', 'jupiter'), got the text {bodies!r}")
-    numbers = [own_body(body_id(body)) for body in bodies]
-    if len(set(numbers)) < len(numbers):
-        raise InvalidInput(f"bodies names one body twice: {', '.join(map(str, bodies))}")
-    if not (np.isfinite(tolerance_s) and tolerance_s > 0.0):
-        raise InvalidInput(f"tolerance_s must be a positive number of seconds, got {tolerance_s!r}")
-    if max_iterations < 3:
-        raise InvalidInput(f"max_iterations must be 3 or more, got {max_iterations!r}")
-    return Options(tuple(bodies), bool(second_order), occultation == "ignore", float(tolerance_s), int(max_iterations))
+def _refused(
+    legs: Sequence[tuple[Batch, IntArray]], shape: tuple[int, ...], what: str, options: Options
+) -> list[Failure]:
+    """Links without a clear path, where that is an error; each leg with the links that its rows are."""
+    size = int(np.prod(shape, dtype=np.int64))
+    ways: dict[str, BoolArray] = {}
+    for batch, links in legs:
+        for words, mask in () if batch.solved is None else batch.solved.ways.items():
+            whole = ways.setdefault(words, np.zeros(size, dtype=np.bool_))
+            whole[links] |= mask
+    if options.ignore_occultation or not any(mask.any() for mask in ways.values()):
+        return []
+    error = no_clear_path(ways, what)
+    assert error.mask is not None
+    return [Failure(error, np.flatnonzero(error.mask))]
 
 
 def _solution(
     known: Pair,
     known_is_receive: bool,
+    batch: Batch,
     ends: tuple[End, End],
     reference: ReferenceData,
     clocks: tuple[ClockLog, ...],
-    options: Options,
+    given: Instants | None,
 ) -> LinkSolution:
-    """Solve in chunks, so that memory does not grow with the batch, and put the chunks together."""
+    """A batch of which nothing failed, in the shape of the dates."""
     shape = known[0].shape
-    whole, fraction = known[0].reshape(-1), known[1].reshape(-1)
-    parts: list[Solved] = []
-    for start in range(0, max(whole.size, 1), _CHUNK):
-        chunk = (whole[start : start + _CHUNK], fraction[start : start + _CHUNK])
-        try:
-            parts.append(solve(chunk, known_is_receive, *ends, reference, options))
-        except TscaleError as error:
-            if error.mask is not None and error.mask.shape == chunk[0].shape:
-                error.mask = moved_mask(error.mask, start, whole.size, shape)
-            raise
-    terms = {name: _joined([p.terms_s[name] for p in parts], shape) for name in parts[0].terms_s}
-    light = exact.from_seconds(np.zeros(shape))
-    for value in terms.values():
-        light = exact.add_seconds(light, value)
-    other = exact.subtract(known, light) if known_is_receive else exact.add(known, light)
+    solved, (whole, fraction) = batch.solved, batch.other
+    assert solved is not None
+    other = whole.reshape(shape), fraction.reshape(shape)
     sent, met = (other, known) if known_is_receive else (known, other)
     return LinkSolution(
         transmit=Instants._of(sent, "TDB", ends[0].place),
         receive=Instants._of(met, "TDB", ends[1].place),
-        ledger=Terms(terms),
-        range_m=_joined([p.range_m for p in parts], shape),
-        range_rate_m_s=_joined([p.range_rate_m_s for p in parts], shape),
-        light_time_rate=_joined([p.light_time_rate for p in parts], shape),
-        transmit_elevation_deg=_perhaps([p.transmit_elevation_deg for p in parts], shape),
-        receive_elevation_deg=_perhaps([p.receive_elevation_deg for p in parts], shape),
-        occulted=np.concatenate([p.occulted for p in parts]).reshape(shape),
-        iterations=max(p.iterations for p in parts),
+        ledger=Terms({name: value.reshape(shape) for name, value in solved.terms_s.items()}),
+        range_m=solved.range_m.reshape(shape),
+        range_rate_m_s=solved.range_rate_m_s.reshape(shape),
+        light_time_rate=solved.light_time_rate.reshape(shape),
+        transmit_elevation_deg=_perhaps(solved.transmit_elevation_deg, shape),
+        receive_elevation_deg=_perhaps(solved.receive_elevation_deg, shape),
+        occulted=solved.occulted.reshape(shape),
+        iterations=solved.iterations,
         _ends=ends,
         _reference=reference,
         _clocks=clocks,
+        _given=given,
     )
 
 
-def _joined(parts: Sequence[FloatArray], shape: tuple[int, ...]) -> FloatArray:
-    return np.concatenate(parts).reshape(shape)
+def _perhaps(value: FloatArray | None, shape: tuple[int, ...]) -> FloatArray | None:
+    return None if value is None else value.reshape(shape)
 
 
-def _perhaps(parts: Sequence[FloatArray | None], shape: tuple[int, ...]) -> FloatArray | None:
-    present = [part for part in parts if part is not None]
-    return _joined(present, shape) if present else None
+def _flat(pair: Pair) -> Pair:
+    return pair[0].reshape(-1), pair[1].reshape(-1)

@@ -9,9 +9,14 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from .. import exact
+from ..counts import tai_from_tt
 from ..errors import InvalidInput
 from ..exact import BoolArray, FloatArray, Pair
 from ..instants import Instants
+from ..scales import Scale
+from ..tables.common import FrozenArrays
+from ..tables.notes import leap_second_flags, orientation_flags, worded
+from ..transforms.barycentric import tt_from_tdb
 from .dating import dates_on
 from .ends import End
 
@@ -30,6 +35,9 @@ class Terms(Mapping[str, FloatArray]):
         for value in self._parts.values():
             value.flags.writeable = False
 
+    def __setstate__(self, state: Mapping[str, Mapping[str, FloatArray]]) -> None:
+        Terms.__init__(self, state["_parts"])
+
     def __getitem__(self, name: str) -> FloatArray:
         return self._parts[name]
 
@@ -44,7 +52,7 @@ class Terms(Mapping[str, FloatArray]):
 
 
 @dataclass(frozen=True, eq=False)
-class LinkSolution:
+class LinkSolution(FrozenArrays):
     """One-way links: light sent by the transmitter and met by the receiver. Arrays have the shape of the dates given.
 
     Attributes
@@ -82,6 +90,8 @@ class LinkSolution:
     _ends: tuple[End, End] = field(repr=False)
     _reference: ReferenceData = field(repr=False)
     _clocks: tuple[ClockLog, ...] = field(repr=False)
+    _given: Instants | None = field(repr=False)
+    """The dates as they were given, if those of this leg were."""
 
     @property
     def ends(self) -> tuple[str, str]:
@@ -122,9 +132,38 @@ class LinkSolution:
         """Dates of reception on another scale, at the receiver; see `transmit_on`."""
         return dates_on(self.receive.pair, scale, self._ends[1], self._reference, self._clocks)
 
+    @property
+    def notes(self) -> tuple[str, ...]:
+        """What a reader should know: Earth orientation predicted or held, dates past the leap-second table's expiry."""
+        return worded(self._flags())
+
+    def _flags(self) -> dict[str, BoolArray]:
+        """What each note says, and of which links of the flattened batch."""
+        found: dict[str, BoolArray] = {}
+        if self._given is not None:
+            kind = Scale.parse(self._given.scale)
+            if kind.utc_labels:
+                whole, fraction = self._given.ravel().pair
+                found |= leap_second_flags((whole - kind.label_offset_s, fraction), self._reference)
+        for end, event in zip(self._ends, (self.transmit, self.receive), strict=True):
+            if end.uses_earth_orientation:
+                # TT of the geocentre is 2 us from that of the event: nothing to rows of a day.
+                tt = tt_from_tdb(event.ravel().pair, self._reference)
+                found = _either(found, orientation_flags(tai_from_tt(tt), self._reference))
+        return found
+
     def table(self, row: int = 0) -> str:
-        """A readable account of one link (`row` counts along the flattened array)."""
+        """A readable account of one link (`row` counts along the flattened array), with its notes.
+
+        Raises
+        ------
+        InvalidInput
+            No whole number, or no such row.
+        """
         size = self.range_m.size
+        if isinstance(row, bool) or not hasattr(row, "__index__"):
+            raise InvalidInput(f"row is a whole number, got {row!r:.60}")
+        row = row.__index__()
         if not -size <= row < size:
             raise InvalidInput(f"row {row} is not among the {size} links of this solution")
         lines = [(name, decimal_text(exact.from_seconds(value.ravel()[row]))) for name, value in self.ledger.items()]
@@ -135,13 +174,13 @@ class LinkSolution:
         head += [f"receive   {self.receive.ravel()[row].to_iso(12)}  TDB  {self._ends[1].name}"]
         head += ["", f"{'term':<{width}}  {'seconds':>{digits}}", f"{'-' * width}  {'-' * digits}"]
         body = [f"{name:<{width}}  {text:>{digits}}" for name, text in lines]
-        return "\n".join(
-            [*head, *body, f"{'-' * width}  {'-' * digits}", f"{'light time':<{width}}  {total:>{digits}}"]
-        )
+        foot = [f"{'-' * width}  {'-' * digits}", f"{'light time':<{width}}  {total:>{digits}}"]
+        notes = [f"note: this link's instants {words}" for words, mask in self._flags().items() if mask[row]]
+        return "\n".join([*head, *body, *foot, *([""] if notes else []), *notes])
 
 
 @dataclass(frozen=True, eq=False)
-class TwoWaySolution:
+class TwoWaySolution(FrozenArrays):
     """Light from a station to a target and back.
 
     Attributes
@@ -212,9 +251,19 @@ class TwoWaySolution:
         return Terms(parts)
 
     @property
+    def notes(self) -> tuple[str, ...]:
+        """Notes of both legs; see `LinkSolution.notes`."""
+        return worded(_either(self.up._flags(), self.down._flags()))
+
+    @property
     def occulted(self) -> BoolArray:
         """Where either leg passes through a body or the ground."""
         return self.up.occulted | self.down.occulted
+
+
+def _either(one: dict[str, BoolArray], other: dict[str, BoolArray]) -> dict[str, BoolArray]:
+    """Flags set in either."""
+    return {**one, **{words: np.asarray(mask | one.get(words, False)) for words, mask in other.items()}}
 
 
 def decimal_text(value: Pair) -> str:

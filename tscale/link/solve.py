@@ -5,7 +5,6 @@ t_r - t_t = |x_r(t_r) - x_t(t_t)| / c + (gravitational delays)
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final, NamedTuple
 
@@ -15,11 +14,12 @@ from .. import exact
 from ..body_shape import own_body
 from ..constants import C_M_S
 from ..earth.frames import dot
-from ..ephemeris import body_id, body_name
+from ..ephemeris import body_name
 from ..errors import GeometryError, NotConverged
 from ..exact import BoolArray, FloatArray, Pair
 from .delay import Gravity, Ray, gravity
-from .ends import End, absolute, elevation_rad
+from .ends import End, absolute
+from .obstacles import apparent, below_horizon, elevation_rad
 
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
@@ -34,7 +34,7 @@ _GAUSS: Final = 0.5 / np.sqrt(3.0)
 class Options:
     """What a link takes into account, and when it is content."""
 
-    bodies: tuple[str | int, ...]
+    bodies: tuple[int, ...]
     second_order: bool
     ignore_occultation: bool
     tolerance_s: float
@@ -50,8 +50,17 @@ class Solved(NamedTuple):
     light_time_rate: FloatArray
     transmit_elevation_deg: FloatArray | None
     receive_elevation_deg: FloatArray | None
-    occulted: BoolArray
+    ways: dict[str, BoolArray]
+    """What may stand in the way, in words, and where it does."""
     iterations: int
+
+    @property
+    def occulted(self) -> BoolArray:
+        """Where anything stands in the way."""
+        found = np.zeros(self.range_m.shape, dtype=np.bool_)
+        for mask in self.ways.values():
+            found = found | mask
+        return found
 
 
 class _State(NamedTuple):
@@ -208,7 +217,7 @@ def _pull(
             at_ends.add(own_body(end.centre_of))
             if end.centre_of == 3:  # the centre of mass of Earth and Moon lies within the Earth
                 at_ends.add(399)
-    bodies = [body for body in options.bodies if own_body(body_id(body)) not in at_ends]
+    bodies = [body for body in options.bodies if own_body(body) not in at_ends]
     grounds = frozenset(own_body(end.ground) for end in (transmitter, receiver) if end.ground is not None)
     ray = Ray(sent, leg.rho / C_M_S, leg.transmit.x, leg.transmit.v, leg.receive.x, leg.receive.v)
     return gravity(ray, reference.ephemeris, bodies, second_order=options.second_order, clear=grounds)
@@ -228,10 +237,20 @@ def _finish(
 ) -> Solved:
     sent, met = (when, known) if known_is_receive else (known, when)
     along = leg.along
-    up_sent, up_met = transmitter.up(sent, reference), receiver.up(met, reference)
-    height_sent = None if up_sent is None else elevation_rad(up_sent, along, -leg.transmit.v)
-    height_met = None if up_met is None else elevation_rad(up_met, -along, leg.receive.v)
-    occulted = _occulted(pull, transmitter, receiver, height_sent, height_met, options)
+    ways = {f"the line passes through {body_name(body)}": mask for body, mask in pull.blocked.items()}
+    heights: list[FloatArray | None] = []
+    for end, far, state, when_, seen in (
+        (transmitter, receiver, leg.transmit, sent, apparent(along, -leg.transmit.v)),
+        (receiver, transmitter, leg.receive, met, apparent(-along, leg.receive.v)),
+    ):
+        stand = end.stand(when_, reference)
+        if stand is None:
+            heights.append(None)
+            continue
+        heights.append(np.degrees(elevation_rad(stand.up, seen)))
+        ways[f"{far.name} is below the horizon of {end.name}"] = below_horizon(
+            stand, state.offset, seen, leg.rho, other_on_ground=far.ground == end.ground
+        )
     # dt_t / dt_r from the light-time equation, then the rates that follow from it.
     out, inward = dot(along, leg.transmit.v), dot(along, leg.receive.v)
     ratio = (1.0 - inward / C_M_S - pull.by_receive) / (1.0 - out / C_M_S + pull.by_transmit)
@@ -242,41 +261,8 @@ def _finish(
         leg.rho,
         np.asarray(inward - out * ratio),
         np.asarray(light_time_rate),
-        None if height_sent is None else np.degrees(height_sent),
-        None if height_met is None else np.degrees(height_met),
-        occulted,
+        heights[0],
+        heights[1],
+        ways,
         iterations,
     )
-
-
-def _occulted(
-    pull: Gravity,
-    transmitter: End,
-    receiver: End,
-    height_sent: FloatArray | None,
-    height_met: FloatArray | None,
-    options: Options,
-) -> BoolArray:
-    ways = [(f"the line passes through {body_name(body)}", mask) for body, mask in pull.blocked.items()]
-    for end, far, height in ((transmitter, receiver, height_sent), (receiver, transmitter, height_met)):
-        if height is not None:
-            ways.append((f"{far.name} is below the horizon of {end.name}", height < 0.0))
-    # An empty batch, or bodies=(), leaves nothing to look at.
-    any_way = np.zeros(pull.total_s.shape, dtype=np.bool_)
-    for _, mask in ways:
-        any_way = any_way | mask
-    if np.any(any_way) and not options.ignore_occultation:
-        reasons = "; ".join(f"{words} ({int(mask.sum())})" for words, mask in ways if np.any(mask))
-        raise GeometryError(
-            f"{int(any_way.sum())} of {any_way.size} links from {transmitter.name} to {receiver.name} have no clear "
-            f'path: {reasons}. Leave them out (see the mask), or give occultation="ignore" to have them marked only',
-            mask=np.asarray(any_way),
-        )
-    return np.asarray(any_way)
-
-
-def moved_mask(error_mask: BoolArray, start: int, total: int, shape: Sequence[int]) -> BoolArray:
-    """A chunk's mask within the whole batch, in the shape that was asked for."""
-    mask = np.zeros(total, dtype=np.bool_)
-    mask[start : start + error_mask.size] = error_mask.reshape(-1)
-    return mask.reshape(tuple(shape))

@@ -4,18 +4,15 @@ from __future__ import annotations
 
 import hashlib
 import threading
-from collections.abc import Sequence
-from datetime import date
+from collections.abc import Iterable, Sequence
+from datetime import date, datetime
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, NamedTuple, TypeAlias, cast
-
-import numpy as np
+from typing import TYPE_CHECKING, Any, NoReturn, TypeAlias, cast
 
 from ..errors import InvalidInput, MissingPiece
 from ..formats.leap_seconds import LeapSeconds
-from ..instants import Instants
-from .common import mjd_date
 from .earth_orientation import EarthOrientation
+from .facts import TableFacts, facts_of
 from .tt_bipm import TTBIPM
 
 if TYPE_CHECKING:
@@ -25,22 +22,7 @@ if TYPE_CHECKING:
 __all__ = ["ReferenceData", "TableFacts"]
 
 File: TypeAlias = "str | Path"
-_PARTS = ("leap_seconds", "earth_orientation", "tt_bipm", "ephemeris")
-
-
-class TableFacts(NamedTuple):
-    """What there is to know of one table in use."""
-
-    table: str
-    name: str
-    start: str
-    end: str | None
-    issued: str | None
-    expires: str | None
-    age_days: int | None
-    """Days from `issued` to the day asked about; None where no day of issue is known."""
-    sha256: str
-    path: Path | None
+_PARTS = ("leap_seconds", "earth_orientation", "tt_bipm", "ephemeris", "time_ephemeris")
 
 
 class ReferenceData:
@@ -58,6 +40,10 @@ class ReferenceData:
         None by default: no such table is shipped.
     ephemeris : Ephemeris, optional
         Default `Ephemeris.default()`.
+    time_ephemeris : TimeEphemeris, optional
+        TT - TDB at the geocentre. By default that of `ephemeris`: integrated from it, and pinned where TT - TDB is
+        defined (T0, in 1977). A kernel that does not reach T0 is pinned to the shipped time ephemeris instead, in the
+        middle of their overlap; its name then says "anchored to" which.
 
     Raises
     ------
@@ -77,8 +63,9 @@ class ReferenceData:
         earth_orientation: EarthOrientation | None = None,
         tt_bipm: Sequence[TTBIPM] = (),
         ephemeris: Ephemeris | None = None,
+        time_ephemeris: TimeEphemeris | None = None,
     ) -> None:
-        tables = tuple(tt_bipm)
+        tables = _tables(tt_bipm)
         _check("leap_seconds", leap_seconds, LeapSeconds)
         _check("earth_orientation", earth_orientation, EarthOrientation)
         for table in tables:
@@ -86,6 +73,11 @@ class ReferenceData:
         if ephemeris is not None and not hasattr(ephemeris, "position"):
             raise InvalidInput(
                 f"ephemeris must be an Ephemeris, got {type(ephemeris).__name__}; use ReferenceData.load for a path"
+            )
+        if time_ephemeris is not None and not hasattr(time_ephemeris, "tt_minus_tdb_s"):
+            raise InvalidInput(
+                f"time_ephemeris must be a TimeEphemeris, got {type(time_ephemeris).__name__}; use ReferenceData.load "
+                "for a path"
             )
         scales = [table.scale for table in tables]
         if len(set(scales)) != len(scales):
@@ -95,6 +87,7 @@ class ReferenceData:
             "earth_orientation": earth_orientation,
             "tt_bipm": tables,
             "ephemeris": ephemeris,
+            "time_ephemeris": time_ephemeris,
         }
         object.__setattr__(self, "_given", given)
         object.__setattr__(self, "_made", {})
@@ -121,6 +114,8 @@ class ReferenceData:
         earth_orientation: File | EarthOrientation | None = None,
         tt_bipm: File | TTBIPM | Sequence[File | TTBIPM] | None = None,
         ephemeris: File | Ephemeris | None = None,
+        time_ephemeris: File | TimeEphemeris | None = None,
+        **unknown: NoReturn,
     ) -> ReferenceData:
         """Make a bundle from files, or tables at hand; those left out are the default ones.
 
@@ -128,28 +123,36 @@ class ReferenceData:
         ------
         DataFileError
             For a file that is missing, damaged or of another kind.
+        InvalidInput
+            For what is neither a table nor a path, and for a table that is not known by name.
         """
+        _check_names(unknown)
         leap = LeapSeconds.load(leap_seconds) if isinstance(leap_seconds, (str, Path)) else leap_seconds
         if isinstance(earth_orientation, (str, Path)):
             earth_orientation = EarthOrientation.load(earth_orientation, leap_seconds=leap)
-        if tt_bipm is None:
-            tt_bipm = ()
-        elif isinstance(tt_bipm, (str, Path, TTBIPM)):
-            tt_bipm = (tt_bipm,)
         tables = [
-            TTBIPM.load(table, leap_seconds=leap) if isinstance(table, (str, Path)) else table for table in tt_bipm
+            TTBIPM.load(table, leap_seconds=leap) if isinstance(table, (str, Path)) else table
+            for table in _tables(tt_bipm)
         ]
         if isinstance(ephemeris, (str, Path)):
             from ..ephemeris.kernel import Ephemeris
 
             ephemeris = Ephemeris.open(ephemeris)
-        return cls(leap_seconds=leap, earth_orientation=earth_orientation, tt_bipm=tables, ephemeris=ephemeris)
+        if isinstance(time_ephemeris, (str, Path)):
+            from ..ephemeris.time_ephemeris import TimeEphemeris
+
+            time_ephemeris = TimeEphemeris.open(time_ephemeris)
+        return cls(
+            leap_seconds=leap,
+            earth_orientation=earth_orientation,
+            tt_bipm=tables,
+            ephemeris=ephemeris,
+            time_ephemeris=time_ephemeris,
+        )
 
     def replace(self, **tables: Any) -> ReferenceData:
         """Return a bundle with some members (tables or paths, as for `load`) replaced; None means the default again."""
-        unknown = sorted(set(tables) - set(_PARTS))
-        if unknown:
-            raise InvalidInput(f"no table is called {', '.join(unknown)}; there are {', '.join(_PARTS)}")
+        _check_names(tables)
         return type(self).load(**{**self._given, **tables})
 
     # ---- members ---------------------------------------------------------------------------------
@@ -187,8 +190,14 @@ class ReferenceData:
 
     @property
     def time_ephemeris(self) -> TimeEphemeris:
-        """TT - TDB at the geocentre, integrated from this bundle's own ephemeris when first needed."""
-        return cast("TimeEphemeris", self._once("time_ephemeris", None))
+        """TT - TDB at the geocentre: as given, else integrated from this bundle's own ephemeris when first needed.
+
+        Raises
+        ------
+        OutOfSpan
+            For an ephemeris that neither reaches T0 (in 1977) nor overlaps the shipped time ephemeris, 1960 to 2060.
+        """
+        return cast("TimeEphemeris", self._once("time_ephemeris", self._given["time_ephemeris"]))
 
     def _once(self, part: str, given: Any) -> Any:
         """Return a member that is given, or made on first use; by one thread, while the others wait."""
@@ -209,50 +218,64 @@ class ReferenceData:
             from ..ephemeris.kernel import Ephemeris
 
             return Ephemeris.default()
-        from ..ephemeris.time_ephemeris import TimeEphemeris
+        from ..ephemeris.anchored import anchored_time_ephemeris
 
-        return TimeEphemeris.of(self.ephemeris)
+        return anchored_time_ephemeris(self.ephemeris)
 
     # ---- facts -----------------------------------------------------------------------------------
 
     @property
     def fingerprint(self) -> str:
-        """SHA-256 over the hashes of all tables: equal where two bundles give equal results."""
+        """SHA-256 over the hashes of all tables: two bundles in which it is equal give equal results."""
         parts = [self.leap_seconds.sha256, self.earth_orientation.sha256, self.ephemeris.sha256]
         parts += [f"{table.scale} {table.sha256}" for table in self.tt_bipm]
         parts += [f"GM {body} {value!r}" for body, value in sorted(self.ephemeris.given_gm_m3_s2.items())]
+        if self._given["time_ephemeris"] is not None:
+            parts.append(f"time ephemeris {self.time_ephemeris.sha256}")
         return hashlib.sha256("\n".join(parts).encode()).hexdigest()
 
     def describe(self, on: date | None = None) -> list[TableFacts]:
-        """Facts of every table, for a listing: name, span, dates, age in days on a day (default today), hash, file."""
-        today = date.today() if on is None else on
-        leap, eop, eph = self.leap_seconds, self.earth_orientation, self.ephemeris
-        expires = None if leap.expires_mjd is None else mjd_date(leap.expires_mjd)
-        facts = [
-            _facts("leap seconds", leap, mjd_date(leap.start_mjd), expires, expires, today),
-            _facts("Earth orientation", eop, mjd_date(eop.span[0]), mjd_date(eop.span[1]), None, today),
-        ]
-        facts += [
-            _facts(table.scale, table, mjd_date(table.span[0]), mjd_date(table.span[1]), None, today)
-            for table in self.tt_bipm
-        ]
-        for title, kernel in (("ephemeris", eph), ("time ephemeris", self.time_ephemeris)):
-            start, end = (str(Instants.from_seconds(int(np.ceil(s)), scale="TDB").to_iso(0))[:10] for s in kernel.span)
-            facts.append(_facts(title, kernel, start, end, None, today))
-        return facts
+        """Facts of every table, for a listing: name, span, dates, age in days on a day (default today), hash, file.
+
+        A table that cannot be read or made stands in the list with its `error`.
+        """
+        if on is not None and not isinstance(on, date):
+            raise InvalidInput(f"on must be a datetime.date, such as date(2025, 1, 31); got {on!r}")
+        today = date.today() if on is None else on.date() if isinstance(on, datetime) else on
+        return facts_of(
+            [
+                ("leap seconds", lambda: self.leap_seconds),
+                ("Earth orientation", lambda: self.earth_orientation),
+                *((table.scale, lambda table=table: table) for table in self.tt_bipm),
+                ("ephemeris", lambda: self.ephemeris),
+                ("time ephemeris", lambda: self.time_ephemeris),
+            ],
+            today,
+        )
 
     def __repr__(self) -> str:
         given = [f"{part}={value!r}" for part, value in self._given.items() if value]
         return f"ReferenceData({', '.join(given) or 'default tables'})"
 
 
-def _facts(title: str, table: Any, start: str, end: str | None, expires: str | None, today: date) -> TableFacts:
-    issued = getattr(table, "issued", None)
+def _tables(given: Any) -> tuple[Any, ...]:
+    """What was given as TT(BIPM), one or several, as a tuple."""
+    if given is None:
+        return ()
+    if isinstance(given, (str, Path, TTBIPM)):
+        return (given,)
     try:
-        age = (today - date.fromisoformat(issued)).days if issued else None
-    except ValueError:  # some issuers write a number of a bulletin here, not a day
-        age = None
-    return TableFacts(title, table.name, start, end, issued, expires, age, table.sha256, getattr(table, "path", None))
+        return tuple(given)
+    except TypeError as error:
+        raise InvalidInput(
+            f"tt_bipm must be TTBIPM tables, or their paths for ReferenceData.load; got {given!r}"
+        ) from error
+
+
+def _check_names(names: Iterable[str]) -> None:
+    unknown = sorted(set(names) - set(_PARTS))
+    if unknown:
+        raise InvalidInput(f"no table is called {', '.join(unknown)}; there are {', '.join(_PARTS)}")
 
 
 def _check(part: str, value: object, kind: type) -> None:

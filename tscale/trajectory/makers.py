@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-from typing import Any, Final, TypeAlias
 from pathlib import Path
+from typing import Any, Final, TypeAlias
 
 import numpy as np
 
 from ..constants import GM_M3_S2, L_B, L_G
 from ..ephemeris import Ephemeris, body_id, body_name
-from ..ephemeris.arguments import file_path
 from ..ephemeris.daf import read_container
 from ..ephemeris.segments import read_segments
 from ..errors import InvalidInput, MissingPiece
@@ -62,9 +61,7 @@ def states_parts(
     return counts.scale, geocentric, (piece,)
 
 
-def kepler_parts(
-    epoch: Instants, elements: dict[str, float], center: str | int, gm_m3_s2: float | None
-) -> Parts:
+def kepler_parts(epoch: Instants, elements: dict[str, float], center: str | int, gm_m3_s2: float | None) -> Parts:
     """See `Trajectory.from_kepler`; `elements` are a (m), e and four angles in degrees."""
     body = body_id(center)
     geocentric = body == EARTH
@@ -85,13 +82,14 @@ def kepler_parts(
         gm_m3_s2 = known[body] * (_GM_TT_PER_TDB if geocentric else 1.0)
     a_m, e, *angles = (number(value, name) for name, value in elements.items())
     at = (counts.pair[0].reshape(()), counts.pair[1].reshape(()))
-    orbit = KeplerOrbit(at, number(gm_m3_s2, "gm_m3_s2"), a_m * counts.length, e, *(float(x) for x in np.radians(angles)))
+    gm_m3_s2 = number(gm_m3_s2, "gm_m3_s2")
+    orbit = KeplerOrbit(at, gm_m3_s2, a_m * counts.length, e, *(float(x) for x in np.radians(angles)))
     return counts.scale, geocentric, (Piece(orbit, body, "ICRF", None, None),)
 
 
 def spk_parts(path: Any, target: int) -> tuple[str, NativeScale, bool, tuple[Piece, ...], Path]:
     """See `Trajectory.from_spk`; the name comes first and the path last."""
-    kernel = Ephemeris.open(file_path(path, "an SPK kernel"))
+    kernel = Ephemeris.open(path)
     number = body_id(target)
     pieces = segment_pieces(kernel, read_segments(read_container(kernel.path)), number)
     if not pieces:
