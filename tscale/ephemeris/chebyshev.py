@@ -205,7 +205,7 @@ class ChebyshevTable:
         Notes
         -----
         b_k = c_k + 2 s b_(k+1) - b_(k+2) for the value (Clenshaw 1955, Math. Tables Aids Comput. 9, 118) and its
-        derivative with respect to s, carried along.
+        derivative with respect to s, of which half is carried along: d_k = b_(k+1) + 2 s d_(k+1) - d_(k+2).
         """
         gather = self._gatherer(record)
         shape = (self.components, record.size)
@@ -216,7 +216,6 @@ class ChebyshevTable:
             if rate:
                 np.multiply(d1, twice, out=spare)
                 spare -= d2
-                spare += b1
                 spare += b1
                 d2, d1, spare = d1, spare, d2
             np.multiply(b1, twice, out=spare)
@@ -230,6 +229,7 @@ class ChebyshevTable:
             return spare, None
         d1 *= argument
         d1 -= d2
+        d1 *= 2.0
         d1 += b1
         d1 *= 2.0 / self.step_s
         return spare, d1

@@ -8,6 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from .. import exact
+from ..constants import DAY_S
 from ..errors import InvalidInput
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 from ..formats.leap_seconds import LeapSeconds
@@ -94,12 +95,28 @@ class EOPNodes(NamedTuple):
     """(n - 1, 2, 5): straight lines through the uncertainties."""
     status: npt.NDArray[np.int8]
     """(n,): 0 measured, 1 predicted."""
+    daily: bool
+    """Whether the rows are a day apart, give or take a step of UTC."""
 
     def within(self, tai: Pair) -> tuple[IntArray, FloatArray]:
         """Interval and seconds into it, of each instant or of the nearer end of the table."""
-        interval = np.clip(locate(self.tai, tai), 0, len(self.length_s) - 1)
-        elapsed_s = since((self.tai[0][interval], self.tai[1][interval]), tai)
-        return interval, np.clip(elapsed_s, 0.0, self.length_s[interval])
+        last = len(self.length_s) - 1
+        if not self.daily:
+            interval = np.clip(locate(self.tai, tai), 0, last)
+            elapsed_s = self._since(interval, tai)
+            return interval, np.clip(elapsed_s, 0.0, self.length_s[interval])
+        # Days of 86400 s, shifted by leap seconds: the day itself or a neighbour, found without a search.
+        interval = np.clip((tai[0] - self.tai[0][0]) // DAY_S, 0, last)
+        while True:
+            elapsed_s = self._since(interval, tai)
+            early = (elapsed_s < 0.0) & (interval > 0)
+            late = (self._since(interval + 1, tai) >= 0.0) & (interval < last)
+            if not (early.any() or late.any()):
+                return interval, np.clip(elapsed_s, 0.0, self.length_s[interval])
+            interval = interval + late - early
+
+    def _since(self, row: IntArray, tai: Pair) -> FloatArray:
+        return since((self.tai[0][row], self.tai[1][row]), tai)
 
     def ut1(self, interval: IntArray, elapsed_s: FloatArray) -> Pair:
         """UT1-TAI."""
@@ -179,7 +196,8 @@ def nodes_of(rows: EOPRows, leap_seconds: LeapSeconds, *, constant: bool = False
     sigmas = rows.sigmas * _TO_SI
     lines = np.stack([sigmas[:-1], np.diff(sigmas, axis=0)], axis=1)
     length_s = since((tai[0][:-1], tai[1][:-1]), (tai[0][1:], tai[1][1:]))
-    return EOPNodes(tai, length_s, base.astype(np.int64), powers, lines, rows.predicted.astype(np.int8))
+    daily = bool(np.all(np.abs(length_s - DAY_S) < 2.0))
+    return EOPNodes(tai, length_s, base.astype(np.int64), powers, lines, rows.predicted.astype(np.int8), daily)
 
 
 def _date(mjd: float) -> str:
