@@ -224,3 +224,20 @@ def test_the_table_of_a_ledger_is_that_of_its_row() -> None:
         assert float(total) == pytest.approx(ledger.total[row], abs=1e-13)
         assert float(roemer) == pytest.approx(ledger["Roemer delay"][row], abs=1e-13)
     assert abs(ledger["Roemer delay"][0] - ledger["Roemer delay"][1]) > 1.0
+
+
+def test_long_arrays_are_mapped_in_parts_with_the_same_result() -> None:
+    chain = tscale.chain("UTC", "TDB@BARYCENTER", site=SITE, source=SOURCE)
+    n = 150_001  # not a multiple of a part
+    t = tscale.Instants.from_seconds(np.linspace(0, 8e8, n).astype(np.int64), 0.5, scale="UTC")
+    out = chain(t)
+    for at in (0, 16_383, 16_384, n - 1):
+        assert out[at].minus(chain(t[at])) == 0.0
+    back = chain.inverse(out.reshape(n, 1))
+    assert back.shape == (n, 1)
+    assert np.max(np.abs(back.ravel().minus(t.at("TOPOCENTER")))) <= 1e-15
+    late = tscale.Instants.from_seconds(np.where(np.arange(n) % 70_000 == 69_999, 3_000_000_000, 0), 0.5, scale="TT")
+    with pytest.raises(OutOfSpan) as caught:
+        tscale.chain("TT", "TDB@GEOCENTER")(late)
+    assert caught.value.mask is not None
+    assert np.flatnonzero(caught.value.mask).tolist() == [69_999, 139_999]

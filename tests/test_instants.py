@@ -242,3 +242,14 @@ def test_neither_part_can_be_written() -> None:
     kept = tscale.Instants.from_seconds([1, 2], given, scale="TT")
     given[:] = 0.0
     assert kept.fraction.tolist() == [0.25, 0.5]
+
+
+def test_joining() -> None:
+    t = tscale.Instants.from_seconds(np.arange(7), 0.25, scale="TDB", place="BARYCENTER")
+    joined = tscale.Instants.concatenate([t[:4], t[4:], t[:0]])
+    assert (joined == t).all()
+    assert joined.place == "BARYCENTER"
+    with pytest.raises(tscale.errors.ScaleMismatch):
+        tscale.Instants.concatenate([t, t.at("GEOCENTER")])
+    with pytest.raises(tscale.errors.InvalidInput, match="ravel"):
+        tscale.Instants.concatenate([t, t[0]])

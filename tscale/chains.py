@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from typing import Any
+from collections.abc import Callable, Sequence
+from typing import Any, Final
 
 import numpy as np
 
 from .earth.observer import Observer
-from .errors import InvalidInput, ScaleMismatch
+from .errors import InvalidInput, ScaleMismatch, TscaleError
 from .exact import FloatArray
 from .instants import Instants
 from .ledger import Ledger, LedgerLine
@@ -21,6 +21,8 @@ from .tables.clock_log import ClockLog
 from .tables.reference import ReferenceData
 
 __all__ = ["Chain", "chain"]
+
+_BLOCK: Final = 16384
 
 
 class Chain:
@@ -47,14 +49,18 @@ class Chain:
 
     def __call__(self, t: Instants) -> Instants:
         """Map instants of the start node to the end node; shape is kept, the place is stamped."""
-        return self._walk(t, self._quick)[-1]
+        return _in_blocks(lambda part: self._walk(part, self._quick)[-1], t)
 
     def inverse(self, t: Instants) -> Instants:
         """Map instants of the end node back to the start node."""
-        t = _accept(t, self.end, "inverse of this chain")
-        for step in reversed(self._quick):
-            t = step.backward(t)
-        return t.at(self.start.place or t.place)
+
+        def back(part: Instants) -> Instants:
+            part = _accept(part, self.end, "inverse of this chain")
+            for step in reversed(self._quick):
+                part = step.backward(part)
+            return part.at(self.start.place or part.place)
+
+        return _in_blocks(back, t)
 
     def ledger(self, t: Instants) -> Ledger:
         """Every term of every step for every instant; they add up to the difference of the labels."""
@@ -126,6 +132,18 @@ class Chain:
 
     def __repr__(self) -> str:
         return f"<Chain {self}>"
+
+
+def _in_blocks(work: Callable[[Instants], Instants], t: Instants) -> Instants:
+    """Map long arrays part by part, so that memory stays bounded and the parts stay in the processor's cache."""
+    if not isinstance(t, Instants) or t.size <= 2 * _BLOCK:
+        return work(t)
+    flat = t.ravel()
+    try:
+        parts = [work(flat[i : i + _BLOCK]) for i in range(0, flat.size, _BLOCK)]
+    except TscaleError:
+        return work(t)  # which raises it again, with the mask of all
+    return Instants.concatenate(parts).reshape(*t.shape)
 
 
 def _accept(t: Instants, node: Node, what: str) -> Instants:

@@ -170,8 +170,10 @@ class Instants:
         if not parts:
             raise InvalidInput("nothing to concatenate: give at least one Instants")
         first = parts[0]
-        for other in parts[1:]:
+        for other in parts:
             first._same_kind(other, "join")
+            if other.ndim != 1:
+                raise InvalidInput(f"only one-dimensional Instants are joined, got shape {other.shape}; use .ravel()")
         pair = (np.concatenate([p._whole for p in parts]), np.concatenate([p._fraction for p in parts]))
         return cls._of(pair, first._scale, first._place)
 
@@ -284,6 +286,7 @@ class Instants:
     def minus_exact(self, other: Instants) -> Pair:
         """`self - other` in seconds of the scale as (int64, float64 in [0, 1))."""
         self._same_kind(other, "compare or subtract")
+        together(self._whole, other._whole)
         return exact.subtract(self.pair, other.pair)
 
     def minus(self, other: Instants) -> FloatArray:
@@ -298,7 +301,6 @@ class Instants:
                 f"cannot {verb} {self.node} and {other.node}: convert one with tscale.chain, "
                 "or state the place with .at(...)"
             )
-        together(self._whole, other._whole)
 
     def __add__(self, seconds: Seconds) -> Instants:
         return self.shifted(seconds)
