@@ -241,3 +241,16 @@ def test_long_arrays_are_mapped_in_parts_with_the_same_result() -> None:
         tscale.chain("TT", "TDB@GEOCENTER")(late)
     assert caught.value.mask is not None
     assert np.flatnonzero(caught.value.mask).tolist() == [69_999, 139_999]
+
+
+def test_one_warning_for_a_long_array_with_the_counts_of_all() -> None:
+    chain = tscale.chain("UTC", "TDB", site=SITE)
+    t = tscale.Instants.from_seconds(np.linspace(0, 1e9, 40_000).astype(np.int64), 0.5, scale="UTC")
+    with pytest.warns(tscale.ExtrapolationWarning) as caught:
+        chain(t)
+    held = int(np.count_nonzero(tscale.EarthOrientation.default().status(tscale.chain("UTC", "TAI")(t).pair) == 2))
+    assert [str(w.message).split(" instants")[0] for w in caught] == [f"{held} of 40000"]
+    assert caught[0].filename == __file__
+    with pytest.warns(tscale.ExtrapolationWarning) as caught:
+        tscale.chain("UTC", "TDB@BARYCENTER", site=SITE, source=SOURCE)(t[-1:])
+    assert len(caught) == 1

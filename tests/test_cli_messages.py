@@ -9,6 +9,7 @@ import pytest
 
 from tscale.cli.command import _located
 from tscale.cli.main import main
+from tscale.cli.streams import note
 
 EXAMPLES = Path(__file__).parents[1] / "examples"
 CLOCKS = ["--clock", str(EXAMPLES / "maser.csv"), "--clock", str(EXAMPLES / "utc_krl.csv")]
@@ -207,3 +208,12 @@ def test_places_are_said_once() -> None:
 def test_the_temporary_file_is_not_named(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     text = complaint(capsys, "convert", "t.csv", "/proc/x.csv", "--to", "TAI")
     assert text == "/proc/x.csv: No such file or directory"
+
+
+def test_messages_are_one_plain_line(capsys: pytest.CaptureFixture[str]) -> None:
+    note("a\nb\x0ec " + "9" * 5000, "error")
+    said = capsys.readouterr().err
+    assert said.count("\n") == 1
+    assert "a\\nb\\x0ec" in said
+    assert "(5000 characters)" in said
+    assert len(said) < 120

@@ -132,7 +132,7 @@ def test_long_names(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["convert", "in.csv", name, *TO_TAI]) == 0
     assert (folder / name).read_text(encoding="utf-8") == TAKEN
     assert main(["convert", "in.csv", "x" * 300, *TO_TAI]) == 2
-    assert f"{'x' * 300}: File name too long" in capsys.readouterr().err
+    assert "x... (300 characters): File name too long" in capsys.readouterr().err
 
 
 def line_within(stream: IO[bytes], seconds: float) -> bytes:

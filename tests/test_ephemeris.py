@@ -504,3 +504,13 @@ def test_default_is_one_value_for_all_threads() -> None:
         "assert len(found) == 16 and len(set(found)) == 1, found\n"
     )
     subprocess.run([sys.executable, "-W", "error", "-c", code], check=True, timeout=60)
+
+
+@pytest.mark.parametrize("words", [(0, 0), (2**29, 6), (-1, 6), (2, 7)])
+def test_a_damaged_count_of_descriptor_numbers_is_found_at_once(tmp_path: Path, words: tuple[int, int]) -> None:
+    content = bytearray(shipped_path("de440_1960_2060.bsp").read_bytes()[: 1024 * 40])
+    content[8:16] = struct.pack("<ii", *words)
+    path = tmp_path / "damaged.bsp"
+    path.write_bytes(content)
+    with pytest.raises(DataFileError, match=r"2 \+ 6"):
+        Ephemeris.open(path)

@@ -326,3 +326,39 @@ def test_arrays_of_a_solution_are_read_only(reference: tscale.ReferenceData, tmp
                 array[0] = 0
     wait[:] = 9.0
     assert trip.turnaround_s.tolist() == [1.0, 2.0, 3.0]
+
+
+def test_two_ends_of_one_name_keep_both_horizons() -> None:
+    ground = tscale.Site.from_geodetic("base", lon_deg=12.3, lat_deg=-33.0, height_m=900.0)
+    t = tscale.Instants.from_seconds(600_000_000 + 3600 * np.arange(48), 0.0, scale="TDB")
+    hidden = [
+        tscale.link.one_way(
+            transmitter=ground,
+            receiver=tscale.SurfaceSite(name, "moon", 10.0, 20.0, 100.0),
+            transmit=t,
+            occultation="ignore",
+        ).occulted
+        for name in ("base", "other")
+    ]
+    assert hidden[0].sum() > 10
+    assert (hidden[0] == hidden[1]).all()
+
+
+def test_ends_nearer_than_the_rounding_of_their_places_are_one_point() -> None:
+    t = tscale.Instants.from_iso("2024-03-01T00:00:00", scale="TDB")
+    near = tscale.Site.from_itrf("near", 4e6, 1e6, 4.8e6)
+    for distance_m in (0.0, 1e-9, 1e-5, 1e-4):
+        other = tscale.Site.from_itrf("other", 4e6 + distance_m, 1e6, 4.8e6)
+        with pytest.raises(tscale.errors.GeometryError, match="same point"):
+            tscale.link.one_way(transmitter=near, receiver=other, transmit=t, occultation="ignore")
+    other = tscale.Site.from_itrf("other", 4e6 + 1.0, 1e6, 4.8e6)
+    found = tscale.link.one_way(transmitter=near, receiver=other, transmit=t, occultation="ignore")
+    assert np.isfinite(found.light_time_rate)
+
+
+def test_a_long_batch_warns_once() -> None:
+    ground = tscale.Site.from_geodetic("ground", lon_deg=12.3, lat_deg=-33.0, height_m=900.0)
+    t = tscale.Instants.from_seconds(np.linspace(890_000_000, 900_000_000, 20_000).astype(np.int64), 0.0, scale="TDB")
+    with pytest.warns(tscale.ExtrapolationWarning) as caught:
+        tscale.link.one_way(transmitter=ground, receiver="mars", transmit=t, occultation="ignore")
+    assert [str(w.message).split(" instants")[0] for w in caught] == ["20000 of 20000"]

@@ -8,7 +8,7 @@ from typing import Any, Final
 import numpy as np
 
 from .earth.observer import Observer
-from .errors import InvalidInput, ScaleMismatch, TscaleError
+from .errors import InvalidInput, ScaleMismatch, TscaleError, gathered_extrapolations
 from .exact import FloatArray
 from .instants import Instants
 from .ledger import Ledger, LedgerLine
@@ -137,10 +137,12 @@ class Chain:
 def _in_blocks(work: Callable[[Instants], Instants], t: Instants) -> Instants:
     """Map long arrays part by part, so that memory stays bounded and the parts stay in the processor's cache."""
     if not isinstance(t, Instants) or t.size <= 2 * _BLOCK:
-        return work(t)
+        with gathered_extrapolations(repeats=True):
+            return work(t)
     flat = t.ravel()
     try:
-        parts = [work(flat[i : i + _BLOCK]) for i in range(0, flat.size, _BLOCK)]
+        with gathered_extrapolations(size=t.size):
+            parts = [_in_blocks(work, flat[i : i + _BLOCK]) for i in range(0, flat.size, _BLOCK)]
     except TscaleError:
         return work(t)  # which raises it again, with the mask of all
     return Instants.concatenate(parts).reshape(*t.shape)

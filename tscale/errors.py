@@ -9,6 +9,9 @@ from __future__ import annotations
 
 import sys
 import warnings
+from collections.abc import Iterator
+from contextlib import contextmanager
+from contextvars import ContextVar
 from pathlib import Path
 from typing import Any
 
@@ -26,6 +29,7 @@ __all__ = [
     "ScaleMismatch",
     "TextError",
     "TscaleError",
+    "gathered_extrapolations",
     "warn_extrapolation",
 ]
 
@@ -101,10 +105,58 @@ class ExtrapolationWarning(UserWarning):
     """
 
 
-def warn_extrapolation(message: str) -> None:
-    """Issue an `ExtrapolationWarning` at the line outside this package from which the call came."""
-    package = __name__.partition(".")[0]
+class _Gathered(dict[str, tuple[int, int, float]]):
+    """Warnings by text: how many instants, of how many, and the worst value."""
+
+    def __init__(self, repeats: bool) -> None:
+        super().__init__()
+        self._repeats = repeats
+
+    def take(self, text: str, count: int, size: int, worst: float) -> None:
+        known = self.get(text, (0, 0, 0.0))
+        if self._repeats:
+            self[text] = max(known[0], count), max(known[1], size), max(known[2], worst)
+        else:
+            self[text] = known[0] + count, known[1] + size, max(known[2], worst)
+
+
+_GATHERED: ContextVar[_Gathered | None] = ContextVar("gathered extrapolations", default=None)
+
+
+@contextmanager
+def gathered_extrapolations(*, size: int | None = None, repeats: bool = False) -> Iterator[None]:
+    """Say once, with the counts of all, what is extrapolated in the parts of one job; of its own thread alone.
+
+    Parameters
+    ----------
+    size : int, optional
+        Instants of the whole job, of which parts without a warning do not tell.
+    repeats : bool
+        The parts are passes over the same instants, so that counts are not added up.
+    """
+    outer, mine = _GATHERED.get(), _Gathered(repeats)
+    token = _GATHERED.set(mine)
+    try:
+        yield
+    finally:
+        _GATHERED.reset(token)
+    for text, (count, told, worst) in mine.items():
+        (_warn if outer is None else outer.take)(text, count, told if size is None else size, worst)
+
+
+def warn_extrapolation(text: str, count: int, size: int, worst: float = 0.0) -> None:
+    """Issue an `ExtrapolationWarning`, "COUNT of SIZE TEXT", in the name of whoever called the package.
+
+    `{worst}` in the text stands for the worst value of all.
+    """
+    gathered = _GATHERED.get()
+    (_warn if gathered is None else gathered.take)(text, count, size, worst)
+
+
+def _warn(text: str, count: int, size: int, worst: float) -> None:
+    inside = (__name__.partition(".")[0], "contextlib")
     level, frame = 2, sys._getframe(1)
-    while frame.f_back is not None and frame.f_globals.get("__name__", "").partition(".")[0] == package:
+    while frame.f_back is not None and frame.f_globals.get("__name__", "").partition(".")[0] in inside:
         level, frame = level + 1, frame.f_back
+    message = f"{count} of {size} {text.replace('{worst}', f'{worst:.2g}')}"
     warnings.warn(message, ExtrapolationWarning, stacklevel=level)

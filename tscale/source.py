@@ -54,7 +54,8 @@ class Source:
     def __post_init__(self) -> None:
         for item in fields(self)[:5]:
             value = getattr(self, item.name)
-            if isinstance(value, bool) or not isinstance(value, int | float | np.number) or not math.isfinite(value):
+            number = isinstance(value, int | float | np.number) and not isinstance(value, bool)
+            if not number or not abs(value) < 1e300:
                 raise InvalidInput(f"source {self.name!r}: {item.name} must be a finite number, got {value!r}")
         if abs(self.ra_deg) > 360.0:
             raise InvalidInput(

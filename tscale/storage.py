@@ -24,7 +24,7 @@ def read_toml(path: Path) -> dict[str, Any]:
         For a file that is missing, not UTF-8 or not TOML, with the path and, where it is known, the row.
     """
     try:
-        return tomllib.loads(path.read_text(encoding="utf-8"))
+        document = tomllib.loads(path.read_text(encoding="utf-8"))
     except OSError as error:
         raise DataFileError(f"cannot read {path}: {error.strerror or error}", path=path) from error
     except UnicodeDecodeError as error:
@@ -33,6 +33,19 @@ def read_toml(path: Path) -> dict[str, Any]:
         line = re.search(r"line (\d+)", str(error))
         row = int(line.group(1)) if line else None
         raise DataFileError(f"{path} is not TOML: {error}", path=path, row=row) from error
+    except ValueError as error:  # a whole number of thousands of digits
+        raise DataFileError(f"{path} holds a number that is too long: {error}", path=path) from error
+    if _too_large(document):
+        raise DataFileError(f"{path} holds a whole number beyond 1e300: numbers here are read as float64", path=path)
+    return document
+
+
+def _too_large(value: Any) -> bool:
+    if isinstance(value, dict):
+        return any(map(_too_large, value.values()))
+    if isinstance(value, list):
+        return any(map(_too_large, value))
+    return isinstance(value, int) and abs(value) > 10**300
 
 
 def toml_table(path: Path, name: str, needed: Sequence[str], allowed: Sequence[str]) -> dict[str, Any]:

@@ -64,7 +64,8 @@ def _run(args: argparse.Namespace) -> int:
         if sys.stdout is not None:
             sys.stdout.flush()
     except TscaleError as error:
-        message = re.sub(r" \(see (?:\.|the )mask\)", "", str(error))  # there is none to be seen here
+        # There is no mask to be seen here.
+        message = re.sub(r" \((?:see (?:\.|the )mask|the mask marks (?:it|them))\)", "", str(error))
         note(_located(message, error.path, error.row), "error")
         return _WRONG
     except BrokenPipeError:

@@ -34,6 +34,7 @@ _SUFFIX: Final = {"iso": "", "mjd": " (MJD)", "jd": " (JD)", "seconds": " (s)"}
 _OF_ONE: Final = (
     (r"^1 of 1 texts are not (date|decimal number)s; the first \(item 0\) is (['\"]).*?\2: ", r"is no \1: "),
     (r"^1 of 1 labels do not exist", "does not exist"),
+    (r"^1 of 1 events at (.+?) are ", r"the event at \1 is "),
     (r"^1 of 1 \w+ are ", "is "),
     (r"^1 of 1 \w+ lie ", "lies "),
     (r"^1 of 1 \w+ ", ""),

@@ -5,6 +5,7 @@ from __future__ import annotations
 import contextlib
 import io
 import os
+import re
 import stat
 import sys
 from collections.abc import Callable, Iterable, Iterator
@@ -93,6 +94,12 @@ def written(path: str) -> Iterator[TextIO]:
 
 
 def note(text: str, kind: str = "note") -> None:
-    """Say something on the error stream, if there is one."""
+    """Say something on the error stream, if there is one: one line, with long words shortened."""
     if sys.stderr is not None:
-        print(f"tscale: {kind}: {text}", file=sys.stderr)
+        print(f"tscale: {kind}: {_plain(text)}", file=sys.stderr)
+
+
+def _plain(text: str) -> str:
+    """Text of one line: control characters escaped, words out of somebody's file cut to 40 of their characters."""
+    text = "".join(c if c.isprintable() else c.encode("unicode_escape").decode() for c in text)
+    return re.sub(r"[^\s/\\:,;]{81,}", lambda word: f"{word[0][:40]}... ({len(word[0])} characters)", text)

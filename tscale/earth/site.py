@@ -234,7 +234,7 @@ def _number(site: str, what: str, value: Any) -> float:
         if isinstance(value, (bool, str)):
             raise TypeError("not a number")
         number = float(value)
-    except (TypeError, ValueError) as error:
+    except (TypeError, ValueError, OverflowError) as error:
         raise InvalidInput(f"site {site!r}: {what} must be a number, got {value!r}") from error
     if not math.isfinite(number):
         raise InvalidInput(f"site {site!r}: {what} must be finite, got {value!r}")

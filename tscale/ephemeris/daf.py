@@ -76,7 +76,8 @@ def read_container(path: Path) -> Container:
     try:
         size = path.stat().st_size
         with path.open("rb") as file:
-            header = file.read(8)
+            start = file.read(16)
+            header = start[:8]
             file.seek(0)
             if header not in (b"DAF/SPK ", b"NAIF/DAF"):
                 raise DataFileError(
@@ -85,12 +86,12 @@ def read_container(path: Path) -> Container:
                 )
             if size % 8:
                 raise _truncated(path, size, None)
-            daf = DAF(file)
-            if (daf.nd, daf.ni) != (2, 6):
+            # Looked at before the reader takes them for the length of its records.
+            if (2, 6) not in (struct.unpack(f"{order}ii", start[8:]) for order in "<>"):
                 raise DataFileError(
-                    f"{path} holds arrays with {daf.nd} + {daf.ni} descriptor numbers; an SPK kernel has 2 + 6",
-                    path=path,
+                    f"{path} is damaged, or no SPK kernel: its arrays must have 2 + 6 descriptor numbers", path=path
                 )
+            daf = DAF(file)
             if 8 * (daf.free - 1) > size:
                 raise _truncated(path, size, 8 * (daf.free - 1))
             # A damaged chain of descriptor records may run in a circle: no file holds more than these.

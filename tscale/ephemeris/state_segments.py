@@ -37,18 +37,19 @@ class StateSegment:
             f"{where} is damaged: its trailer does not fit its {words.size} words: fetch the file again",
             path=container.path,
         )
-        if words.size < 9 or not (np.isfinite(words[-2:]).all() and words[-2] >= 0 and words[-1] >= 1):
+        trailer = words[-2:]
+        if words.size < 9 or not (np.isfinite(trailer).all() and (trailer == np.floor(trailer)).all()):
+            raise damage
+        if not (0 <= trailer[0] <= words.size and 1 <= trailer[1] <= words.size):
             raise damage
         # The trailer gives the degree (Lagrange) or the window less one (Hermite): the same number of states.
         window, count = int(words[-2]) + 1, int(words[-1])
+        equal = array.data_type in _EQUAL
+        if words.size != (6 * count + 4 if equal else 7 * count + (count - 1) // _DIRECTORY_STEP + 2):
+            raise damage
         self._states = words[: 6 * count].reshape(-1, 6)
-        if array.data_type in _EQUAL:
-            expected = 6 * count + 4
-            self._epochs = words[-4] + words[-3] * np.arange(count)
-        else:
-            expected = 7 * count + (count - 1) // _DIRECTORY_STEP + 2
-            self._epochs = words[6 * count : 7 * count]
-        if words.size != expected or not (np.diff(self._epochs) > 0).all():
+        self._epochs = words[-4] + words[-3] * np.arange(count) if equal else words[6 * count : 7 * count]
+        if not (np.diff(self._epochs) > 0).all():
             raise damage
         self._window = min(window, count)
 

@@ -170,8 +170,10 @@ def warn_if_expired(kind: Scale, seconds: Pair, leap_seconds: LeapSeconds | None
     expired = int(np.count_nonzero(table.is_expired((seconds[0] - kind.label_offset_s, seconds[1]))))
     if expired:
         warn_extrapolation(
-            f"{expired} of {np.size(seconds[0])} {kind} labels are past the expiry of the leap-second table "
-            f"{table.name!r} on {day_words(table.expires_mjd or 0)}: they hold if no further leap second is announced"
+            f"{kind} labels are past the expiry of the leap-second table {table.name!r} on "
+            f"{day_words(table.expires_mjd or 0)}: they hold if no further leap second is announced",
+            expired,
+            int(np.size(seconds[0])),
         )
 
 

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Final, NamedTuple
 import numpy as np
 
 from .. import exact
-from ..errors import TscaleError
+from ..errors import TscaleError, gathered_extrapolations
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 from .ends import End
 from .solve import Options, Solved, solve
@@ -53,20 +53,22 @@ def solve_batch(
     parts: list[Solved] = []
     kept: list[IntArray] = []
     failures: list[Failure] = []
-    for start in range(0, max(whole.size, 1), _CHUNK):
-        rows = np.arange(start, min(start + _CHUNK, whole.size), dtype=np.int64)
-        # Only a batch without links is solved empty: ends that are not ours need not know of such.
-        while rows.size or not whole.size:
-            try:
-                parts.append(solve((whole[rows], fraction[rows]), known_is_receive, *ends, reference, options))
-                kept.append(rows)
-                break
-            except TscaleError as error:
-                bad = error.mask
-                if bad is None or bad.shape != rows.shape or not np.any(bad):
-                    raise
-                failures.append(Failure(error, rows[bad]))
-                rows = rows[~bad]
+    with gathered_extrapolations(size=whole.size):
+        for start in range(0, max(whole.size, 1), _CHUNK):
+            rows = np.arange(start, min(start + _CHUNK, whole.size), dtype=np.int64)
+            # Only a batch without links is solved empty: ends that are not ours need not know of such.
+            while rows.size or not whole.size:
+                try:
+                    with gathered_extrapolations(repeats=True):
+                        parts.append(solve((whole[rows], fraction[rows]), known_is_receive, *ends, reference, options))
+                    kept.append(rows)
+                    break
+                except TscaleError as error:
+                    bad = error.mask
+                    if bad is None or bad.shape != rows.shape or not np.any(bad):
+                        raise
+                    failures.append(Failure(error, rows[bad]))
+                    rows = rows[~bad]
     if not parts:
         none = np.zeros(0, dtype=np.int64)
         return Batch(None, none, (none, np.zeros(0)), failures)

@@ -144,7 +144,7 @@ def solve(
 
 def _content(leg: _Leg, options: Options) -> FloatArray:
     """Step below which the next one is not taken: the tolerance, or the rounding of the positions themselves."""
-    farthest = np.maximum(np.max(np.abs(leg.transmit.x), axis=-1), np.max(np.abs(leg.receive.x), axis=-1))
+    farthest = np.maximum(_largest(leg.transmit.x), _largest(leg.receive.x))
     return np.asarray(options.tolerance_s + 8.0 * np.spacing(farthest) / C_M_S)
 
 
@@ -181,12 +181,19 @@ def _leg(
         between = np.where(short[..., np.newaxis], near, between)
     line = between + (met.offset - sent.offset)
     rho = np.sqrt(dot(line, line))
-    if np.any(rho == 0.0):
+    # Nearer than 1 mm at 1 au the barycentric positions, of which the delays are made, are one point.
+    one_point = np.asarray(rho <= 32.0 * np.spacing(np.maximum(_largest(sent.x), _largest(met.x))))
+    if np.any(one_point):
         raise GeometryError(
-            f"{transmitter.name} and {receiver.name} are at the same point: a link needs two different ends",
-            mask=np.asarray(rho == 0.0),
+            f"{transmitter.name} and {receiver.name} are at the same point, to the rounding of their barycentric "
+            "places: a link needs two different ends",
+            mask=one_point,
         )
     return _Leg(sent, met, line, rho)
+
+
+def _largest(vectors: FloatArray) -> FloatArray:
+    return np.asarray(np.max(np.abs(vectors), axis=-1))
 
 
 def _between_anchors(
@@ -248,9 +255,9 @@ def _finish(
             heights.append(None)
             continue
         heights.append(np.degrees(elevation_rad(stand.up, seen)))
-        ways[f"{far.name} is below the horizon of {end.name}"] = below_horizon(
-            stand, state.offset, seen, leg.rho, other_on_ground=far.ground == end.ground
-        )
+        words = f"{far.name} is below the horizon of {end.name}"
+        hidden = below_horizon(stand, state.offset, seen, leg.rho, other_on_ground=far.ground == end.ground)
+        ways[words] = ways[words] | hidden if words in ways else hidden  # both ends may bear one name
     # dt_t / dt_r from the light-time equation, then the rates that follow from it.
     out, inward = dot(along, leg.transmit.v), dot(along, leg.receive.v)
     ratio = (1.0 - inward / C_M_S - pull.by_receive) / (1.0 - out / C_M_S + pull.by_transmit)

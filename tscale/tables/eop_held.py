@@ -35,8 +35,11 @@ def grow_sigmas(sigmas: FloatArray, past_s: FloatArray) -> None:
 def warn_held(past_s: FloatArray, name: str, end_mjd: int) -> None:
     """Say that values are held, in the name of whoever called the package."""
     warn_extrapolation(
-        f"{np.count_nonzero(past_s)} of {past_s.size} instants are past the end of the Earth orientation {name!r} on "
-        f"{mjd_date(end_mjd)}: the last values are held, UT1 known to {_ut1_sigma_s(past_s).max():.2g} s at the latest"
+        f"instants are past the end of the Earth orientation {name!r} on {mjd_date(end_mjd)}: the last values are "
+        "held, UT1 known to {worst} s at the latest",
+        int(np.count_nonzero(past_s)),
+        past_s.size,
+        float(_ut1_sigma_s(past_s).max()),
     )
 
 
