@@ -221,6 +221,7 @@ class _Work:
 
     def table(self) -> None:
         """Write the table, and the picture if one is asked for."""
+        from ..errors import gathered_extrapolations
         from .walk import add_notes, note_texts
 
         if self.args.plot:
@@ -230,7 +231,7 @@ class _Work:
         solutions = []
         notes: dict[str, list[int]] = {}
         rows = 0
-        with written(self.args.output) as target:
+        with gathered_extrapolations(), written(self.args.output) as target:
             for number, t in enumerate(blocks_of(self.args, self.first, self.reference)):
                 solution = self.solve(t)
                 self._write(target, solution, head=number == 0)
