@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import re
+import warnings
 from typing import TYPE_CHECKING, Any, Final, TextIO
 
 from .link_dates import blocks_of, date_of
@@ -221,7 +222,7 @@ class _Work:
 
     def table(self) -> None:
         """Write the table, and the picture if one is asked for."""
-        from ..errors import gathered_extrapolations
+        from ..errors import ExtrapolationWarning
         from .walk import add_notes, note_texts
 
         if self.args.plot:
@@ -231,7 +232,9 @@ class _Work:
         solutions = []
         notes: dict[str, list[int]] = {}
         rows = 0
-        with gathered_extrapolations(), written(self.args.output) as target:
+        with warnings.catch_warnings(), written(self.args.output) as target:
+            # The notes say the same, once for the whole table.
+            warnings.simplefilter("ignore", ExtrapolationWarning)
             for number, t in enumerate(blocks_of(self.args, self.first, self.reference)):
                 solution = self.solve(t)
                 self._write(target, solution, head=number == 0)
