@@ -46,9 +46,9 @@ class TopocentricTerms(NamedTuple):
     """TCB - TCG of an observer minus that of the geocentre, seconds."""
 
     first_s: FloatArray
-    """v_E.r_E / c^2, up to 2.1e-6 s on the ground."""
+    """v_E.X / c^2 of the geocentric vector X, up to 2.1e-6 s on the ground."""
     second_s: FloatArray
-    """(3 w_ext + v_E^2/2) v_E.r_E / c^4, up to 7e-14 s on the ground."""
+    """2 w_ext v_E.X / c^4, up to 4e-14 s on the ground."""
 
     @property
     def total_s(self) -> FloatArray:
@@ -86,8 +86,7 @@ class EarthAndSun(NamedTuple):
     def terms(self, r_gcrs_m: FloatArray) -> TopocentricTerms:
         """Topocentric terms of TCB - TCG for a geocentric vector; see `topocentric_terms`."""
         first = dot(self.earth_v_m_s, r_gcrs_m) * (_TCG_METRE / C_M_S**2)
-        speed2 = dot(self.earth_v_m_s, self.earth_v_m_s)
-        return TopocentricTerms(first, first * ((3.0 * self.potential_m2_s2 + 0.5 * speed2) / C_M_S**2))
+        return TopocentricTerms(first, first * (2.0 * self.potential_m2_s2 / C_M_S**2))
 
 
 class Event(NamedTuple):
@@ -134,8 +133,11 @@ def topocentric_terms(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray) -> 
 
     Notes
     -----
-    Of the external potential the Sun's alone is taken, and no vector potential: together 6e-17 s on the ground, 9e-15 s
-    at 1e9 m.
+    IAU 2000 B1.5 gives (1 + (3 w_ext + v_E^2/2)/c^2) v_E.r/c^2 of the barycentric r = x - x_E. By B1.3 (Soffel et al.
+    2003, AJ 126, 2687, eq. 58) v_E.r is (1 - (w_ext + v_E^2/2)/c^2) v_E.X of the geocentric X, which leaves 2 w_ext.
+
+    Of the external potential the Sun's alone is taken, and no vector potential; the Earth's acceleration in B1.3 is
+    left out: together 6e-17 s on the ground, and below 4e-14 s at 1e9 m.
     """
     return EarthAndSun.at(ephemeris, tdb).terms(r_gcrs_m)
 
@@ -157,7 +159,7 @@ def topocentric_rate(ephemeris: Ephemeris, tdb: Pair, r_gcrs_m: FloatArray, v_gc
             potential += pull
             acceleration += toward * (pull / distance**2)[..., np.newaxis]
     velocity = velocities[here]
-    second = (3.0 * potential + 0.5 * dot(velocity, velocity)) / _C2
+    second = 2.0 * potential / _C2
     return np.asarray((dot(acceleration, r_gcrs_m) + dot(velocity, v_gcrs_m_s)) * ((1.0 + second) / _C2))
 
 

@@ -14,7 +14,8 @@ the pole within the Earth (1e-6 m/s; 1e-5 m/s in the noisy rows of the 1960s) an
 polynomials that the Earth orientation table is interpolated with. At its rows, where two polynomials meet, the rate
 of the later one is given.
 
-The sub-daily tidal terms of chapters 5 and 8 are not part of this module.
+Tidal terms within a day (chapters 5 and 8) are part of the Earth orientation in use, if it was made with them
+(`EarthOrientation.with_sub_daily`).
 """
 
 from __future__ import annotations

@@ -19,6 +19,7 @@ from ..storage import write_atomically
 from .geodesy import Ellipsoid, geocentric_from_geodetic, geodetic_from_geocentric
 from .rotation import gcrs_state_from_itrs
 from .site_file import read_site, site_text
+from .tides import tidal_site_state
 
 if TYPE_CHECKING:
     from ..tables.reference import ReferenceData
@@ -52,6 +53,9 @@ class Site:
         W0 - W of the clock's reference point, m2/s2, if it was levelled.
     height_above_geoid_m : float or None
         Orthometric height, m, if known.
+    solid_tide : bool
+        Whether the Moon and the Sun move the site (see `tides`): up to 0.4 m, 1.3 ns in a wavefront. Coordinates stay
+        the tide-free ones of the ITRF; `gcrs` gives the place that the tide has moved. Default False.
 
     Raises
     ------
@@ -66,6 +70,7 @@ class Site:
     frame: str = field(default="ITRF", kw_only=True)
     geopotential_number_m2_s2: float | None = field(default=None, kw_only=True)
     height_above_geoid_m: float | None = field(default=None, kw_only=True)
+    solid_tide: bool = field(default=False, kw_only=True)
 
     def __post_init__(self) -> None:
         for what, text in (("name", self.name), ("frame", self.frame)):
@@ -89,6 +94,8 @@ class Site:
             value = getattr(self, what)
             if value is not None:
                 object.__setattr__(self, what, _number(self.name, what, value))
+        if not isinstance(self.solid_tide, bool):
+            raise InvalidInput(f"site {self.name!r}: solid_tide is True or False, got {self.solid_tide!r}")
         if not 1900.0 <= self.epoch_jyear <= 2200.0:
             raise InvalidInput(
                 f"site {self.name!r}: epoch_jyear is {self.epoch_jyear!r}; give a Julian year of 1900 to 2200, "
@@ -108,6 +115,7 @@ class Site:
         frame: str = "ITRF",
         geopotential_number_m2_s2: float | None = None,
         height_above_geoid_m: float | None = None,
+        solid_tide: bool = False,
     ) -> Site:
         """Build a site from its ITRF coordinates in metres; see the class for the rest."""
         return cls(
@@ -118,6 +126,7 @@ class Site:
             frame=frame,
             geopotential_number_m2_s2=geopotential_number_m2_s2,
             height_above_geoid_m=height_above_geoid_m,
+            solid_tide=solid_tide,
         )
 
     @classmethod
@@ -134,6 +143,7 @@ class Site:
         frame: str = "ITRF",
         geopotential_number_m2_s2: float | None = None,
         height_above_geoid_m: float | None = None,
+        solid_tide: bool = False,
     ) -> Site:
         """Build a site from east longitude, geodetic latitude (degrees) and height above the ellipsoid (m)."""
         lon = _number(name, "lon_deg", lon_deg)
@@ -147,6 +157,7 @@ class Site:
             frame=frame,
             geopotential_number_m2_s2=geopotential_number_m2_s2,
             height_above_geoid_m=height_above_geoid_m,
+            solid_tide=solid_tide,
         )
 
     @classmethod
@@ -173,6 +184,7 @@ class Site:
             "frame": self.frame,
             "geopotential_number_m2_s2": self.geopotential_number_m2_s2,
             "height_above_geoid_m": self.height_above_geoid_m,
+            "solid_tide": self.solid_tide or None,
         }
 
     @cached_property
@@ -196,7 +208,7 @@ class Site:
         return self._geodetic[2]
 
     def itrf_at(self, tt: Pair) -> FloatArray:
-        """ITRF position at TT counts, m: the position at the epoch carried by the velocity; (..., 3)."""
+        """ITRF position at TT counts, m: the position at the epoch carried by the velocity, free of tide; (..., 3)."""
         whole, fraction = np.broadcast_arrays(np.asarray(tt[0]), np.asarray(tt[1]))
         position = np.array(self.position_m)
         if not any(self.velocity_m_yr):
@@ -212,7 +224,7 @@ class Site:
         tt : Pair
             TT count, any shape.
         reference : ReferenceData
-            Its Earth orientation is used (IERS 2010 rotation: see `rotation`).
+            Its Earth orientation is used (IERS 2010 rotation: see `rotation`), and its ephemeris for the tide.
 
         Returns
         -------
@@ -223,9 +235,11 @@ class Site:
         Raises
         ------
         OutOfSpan
-            Where the Earth orientation table does not reach.
+            Where the Earth orientation table does not reach, or for the tide the ephemeris.
         """
         position = self.itrf_at(tt) if any(self.velocity_m_yr) else np.array(self.position_m)
+        if self.solid_tide:
+            return tidal_site_state(position, np.array(self.position_m), tt, reference)
         return gcrs_state_from_itrs(position, None, tt, reference)
 
 

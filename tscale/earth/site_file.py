@@ -11,6 +11,7 @@ Layout::
     frame = "ITRF2020"
     geopotential_number_m2_s2 = 1840.5
     height_above_geoid_m = 188.0
+    solid_tide = true                         # the Moon and the Sun move the site; false if left out
 """
 
 from __future__ import annotations
@@ -35,6 +36,7 @@ _OPTIONAL: Final = (
     "frame",
     "geopotential_number_m2_s2",
     "height_above_geoid_m",
+    "solid_tide",
 )
 _KEYS: Final = ("name", "itrf", "geodetic", *_OPTIONAL)
 
@@ -74,6 +76,8 @@ def site_text(facts: Mapping[str, Any]) -> str:
 
 
 def _toml(value: Any) -> str:
+    if isinstance(value, bool):
+        return str(value).lower()
     if isinstance(value, str):
         # Names are printable, and for printable text a JSON string is also a TOML basic string.
         return json.dumps(value, ensure_ascii=False)

@@ -12,13 +12,22 @@ import numpy as np
 from ..constants import L_B, L_G, T0_COUNT, TDB0_S
 from ..errors import OutOfSpan
 from ..exact import FloatArray, Pair
-from .bodies import PLANETARY_BODIES
+from .bodies import PLANETARY_BODIES, body_id, body_name
 from .chebyshev import ChebyshevTable, date_text, span_text
 from .coordinate_rate import coordinate_rate
 from .integrator import Progress, integrate_panels
 from .kernel import Ephemeris
 
-__all__ = ["PANEL_S", "T0_TDB", "Pin", "integrate_tt_minus_tdb", "pin_at_t0", "progress_bar", "reaches_t0"]
+__all__ = [
+    "PANEL_S",
+    "T0_TDB",
+    "Pin",
+    "integrate_tt_minus_tdb",
+    "panels_of",
+    "pin_at_t0",
+    "progress_bar",
+    "reaches_t0",
+]
 
 PANEL_S: Final = 4 * 86400.0
 """Longest panel, s: halving it moves the integral by less than 1e-4 ps over a century."""
@@ -68,7 +77,7 @@ def integrate_tt_minus_tdb(
     TT - T0 = (1 - L_G)(TCG - T0) (IAU 2000 B1.9) and TDB - T0 = (1 - L_B)(TCB - T0) + TDB0 (IAU 2006 B3) give, with
     f = 1 - dTCG/dTCB, d(TT - TDB)/dTDB = [(L_B - L_G) - f (1 - L_G)]/(1 - L_B).
     """
-    start_s, step_s, panels = _panels(ephemeris, panel_s)
+    start_s, step_s, panels = panels_of(ephemeris, panel_s)
     chosen = pin((start_s, start_s + panels * step_s))
 
     def rate(tdb: Pair) -> FloatArray:
@@ -106,21 +115,27 @@ def pin_at_t0(span: tuple[float, float]) -> Pin:
 
 def reaches_t0(ephemeris: Ephemeris) -> bool:
     """Whether the whole panels of a kernel reach T0, where TT - TDB is defined."""
-    start_s, step_s, panels = _panels(ephemeris, PANEL_S)
+    start_s, step_s, panels = panels_of(ephemeris, PANEL_S)
     return start_s <= T0_TDB[0] + T0_TDB[1] <= start_s + panels * step_s
 
 
-def _panels(ephemeris: Ephemeris, panel_s: float) -> tuple[float, float, int]:
-    """Start, length and number of the panels, edges on the record edges of the Earth's motion."""
+def panels_of(ephemeris: Ephemeris, panel_s: float, body: str | int = "earth") -> tuple[float, float, int]:
+    """Start, length and number of the panels, edges on the record edges of the motion of the Earth or another body.
+
+    Raises
+    ------
+    OutOfSpan
+        For a kernel shorter than one panel.
+    """
     span = ephemeris.span_of(PLANETARY_BODIES)
-    grid_s, record_s = ephemeris.record_grid("earth")
+    grid_s, record_s = ephemeris.record_grid(body)
     step_s = record_s / math.ceil(record_s / panel_s)
     start_s = grid_s + step_s * math.ceil((span[0] - grid_s) / step_s)
     panels = math.floor((span[1] - start_s) / step_s)
     if panels < 1:
         raise OutOfSpan(
             f"{ephemeris.name} covers only {span_text(span)} TDB; a time ephemeris needs {step_s / 86400.0:g} days "
-            "within one record of the Earth's motion: use a longer kernel"
+            f"within one record of the motion of {body_name(body_id(body))}: use a longer kernel"
         )
     return start_s, step_s, panels
 

@@ -16,8 +16,12 @@ from .leap_second_rows import FIRST_STEP, LeapRow, nanoseconds
 __all__ = ["LeapFile", "read_leap_file"]
 
 _NTP_TO_MJD: Final = 15020  # MJD of 1900-01-01, the origin of NTP seconds (RFC 5905, section 6)
+_ROWS_REACH_MJD: Final = 51179
 _MONTHS: Final = ("january", "february", "march", "april", "may", "june", "july", "august",
     "september", "october", "november", "december")  # fmt: skip
+
+
+_LIST_MARKS: Final = ("#$", "#@", "#h")
 
 
 class LeapFile(NamedTuple):
@@ -30,7 +34,8 @@ class LeapFile(NamedTuple):
 
 
 def read_leap_file(path: Path) -> LeapFile:
-    """Read `Leap_Second.dat` (IERS) or `leap-seconds.list` (IETF/IANA), told apart by the `#@` line of the latter.
+    """Read `Leap_Second.dat` (IERS) or `leap-seconds.list` (IETF/IANA), told apart by the `#$`, `#@` or `#h`
+    of the latter.
 
     Raises
     ------
@@ -41,10 +46,18 @@ def read_leap_file(path: Path) -> LeapFile:
     """
     try:
         content = path.read_bytes()
-        lines = content.decode().splitlines()
-    except (OSError, UnicodeDecodeError) as error:
+    except OSError as error:
         raise DataFileError(f"cannot read the leap-second table {path}: {error}", path=path) from error
-    is_list = any(line.startswith("#@") for line in lines)
+    try:
+        lines = content.decode("utf-8-sig").splitlines()
+    except UnicodeDecodeError as error:
+        damaged = content.count(b"\n", 0, error.start) + 1
+        raise DataFileError(
+            f"cannot read the leap-second table {path}, row {damaged}: {error}; it is no plain text, or damaged",
+            row=damaged,
+            path=path,
+        ) from error
+    is_list = any(line.startswith(_LIST_MARKS) for line in lines)
     expires, issued = _list_header(lines, path) if is_list else _dat_header(lines, path)
     rows: list[LeapRow] = []
     for number, line in enumerate(lines, start=1):
@@ -66,10 +79,8 @@ def read_leap_file(path: Path) -> LeapFile:
                 row=number,
                 path=path,
             )
-        if rows and row.mjd <= rows[-1].mjd:
-            raise DataFileError(
-                f"{path}, row {number}: MJD {row.mjd} does not follow {rows[-1].mjd}", row=number, path=path
-            )
+        if rows:
+            _check_step(rows[-1], row, number, path)
         rows.append(row)
     if not rows:
         raise DataFileError(
@@ -77,7 +88,36 @@ def read_leap_file(path: Path) -> LeapFile:
             "leap-seconds.list (IANA)",
             path=path,
         )
+    if rows[-1].mjd < _ROWS_REACH_MJD:
+        raise DataFileError(
+            f"{path}, row {len(lines)}: the last row is of MJD {rows[-1].mjd}, where the table has one of 1999-01-01 "
+            f"(MJD {_ROWS_REACH_MJD}) at least; the file is cut short",
+            row=len(lines),
+            path=path,
+        )
+    if expires is not None and expires <= rows[-1].mjd:
+        raise DataFileError(
+            f"{path}: the table expires on MJD {expires}, before its last step on MJD {rows[-1].mjd}; its head or its "
+            "rows are damaged",
+            path=path,
+        )
     return LeapFile(tuple(rows), expires, issued, hashlib.sha256(content).hexdigest())
+
+
+def _check_step(before: LeapRow, row: LeapRow, number: int, path: Path) -> None:
+    """Leap seconds are of one second, and come at the end of a month (ITU-R TF.460-6, annex 1, section 2.1)."""
+    complaint = ""
+    if row.mjd <= before.mjd:
+        complaint = f"MJD {row.mjd} does not follow {before.mjd}"
+    elif abs(row.tai_minus_utc_ns - before.tai_minus_utc_ns) != 10**9:
+        complaint = (
+            f"TAI - UTC goes from {before.tai_minus_utc_ns / 1e9:g} to {row.tai_minus_utc_ns / 1e9:g} s, where a leap "
+            "second is one second: a row is missing or damaged, or the rule is a later one"
+        )
+    elif (np.datetime64("1858-11-17", "D") + row.mjd).astype("datetime64[D]").item().day != 1:
+        complaint = f"MJD {row.mjd} is not the first day of a month"
+    if complaint:
+        raise DataFileError(f"{path}, row {number}: {complaint}", row=number, path=path)
 
 
 def _mjd_of(year: int, month: int, day: int) -> int:
@@ -114,30 +154,35 @@ def _dat_row(content: list[str]) -> LeapRow:
 def _list_header(lines: list[str], path: str | Path) -> tuple[int | None, str | None]:
     values: dict[str, tuple[int, str]] = {}
     for number, line in enumerate(lines, start=1):
-        if line[:2] in ("#@", "#$", "#h"):
+        if line.startswith(_LIST_MARKS):
             values[line[:2]] = (number, line[2:].strip())
+    missing = [mark for mark in _LIST_MARKS if mark not in values]
+    if missing:
+        raise DataFileError(
+            f"{path}: no line {' and '.join(missing)}, which a leap-seconds.list has (update, expiry, checksum): the "
+            "file is cut short; get a fresh copy",
+            row=len(lines),
+            path=path,
+        )
     for mark in ("#@", "#$"):
-        number, value = values.get(mark, (0, "0"))
+        number, value = values[mark]
         if not value.isdecimal():
             raise DataFileError(
                 f"{path}, row {number}: {mark} must be followed by NTP seconds, got {value!r}", row=number, path=path
             )
-    if "#h" in values and "#$" in values:
-        digits = values["#$"][1] + values["#@"][1]
-        digits += "".join("".join(line.partition("#")[0].split()) for line in lines)
-        expected = hashlib.sha1(digits.encode(), usedforsecurity=False).hexdigest()
-        number, words = values["#h"]
-        # Leading zeros of a word may be left out.
-        if "".join(word.zfill(8) for word in words.split()) != expected:
-            raise DataFileError(
-                f"{path}, row {number}: the checksum is not that of the rows; "
-                "the file is damaged or was edited: get a fresh copy",
-                row=number,
-                path=path,
-            )
-    issued = None
-    if "#$" in values:
-        issued = str(np.datetime64("1900-01-01", "s") + np.timedelta64(int(values["#$"][1]), "s"))[:10]
+    digits = values["#$"][1] + values["#@"][1]
+    digits += "".join("".join(line.partition("#")[0].split()) for line in lines)
+    expected = hashlib.sha1(digits.encode(), usedforsecurity=False).hexdigest()
+    number, words = values["#h"]
+    # Leading zeros of a word may be left out.
+    if "".join(word.zfill(8) for word in words.split()) != expected:
+        raise DataFileError(
+            f"{path}, row {number}: the checksum is not that of the rows; "
+            "the file is damaged or was edited: get a fresh copy",
+            row=number,
+            path=path,
+        )
+    issued = str(np.datetime64("1900-01-01", "s") + np.timedelta64(int(values["#$"][1]), "s"))[:10]
     return int(values["#@"][1]) // 86400 + _NTP_TO_MJD, issued
 
 

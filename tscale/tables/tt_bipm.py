@@ -22,11 +22,15 @@ from .common import FrozenArrays, as_pair, locate, mjd_date, read_file, rows_has
 __all__ = ["TTBIPM", "Extension"]
 
 _STEP_DAYS: Final = 10
-# Early rows lack the point after the MJD, and columns may touch; then three or four decimals tell where one ends.
+_LARGEST_STEP_US: Final = 2.0  # 0.8 us between the first rows, of 1975; since 1977 below 0.2
+# Early rows lack the point after the MJD, and columns may touch. Both have three or both four decimals, which tells
+# where one ends, and where a row was cut off.
 _ROW: Final = re.compile(
-    rb"\s*(\d{5})(?:\.\s*|\s+|(?=[-+]))(?:([-+]?\d*\.\d+)\s+([-+]?\d*\.\d+)|"
-    rb"([-+]?\d*\.\d{3})([-+]?\d*\.\d{3})|([-+]?\d*\.\d{4})([-+]?\d*\.\d{4}))\s*"
+    rb"\s*(\d{5})(?:\.\s*|\s+|(?=[-+]))"
+    rb"(?:[-+]?\d*\.\d{3}\s*([-+]?\d*\.\d{3})|[-+]?\d*\.\d{4}\s*([-+]?\d*\.\d{4}))\s*"
 )
+_BARE: Final = re.compile(rb"\s*\d{5}\.?(?:\s*[-+]?\d*\.\d+){2,}\s*")
+_NUMBERS: Final = re.compile(rb"[-+]?\d*\.\d{3,4}(?!\d)")
 _LIKE_A_ROW: Final = re.compile(rb"\s*\d{5}(?:\.\s|\.$|\s|$|\.?\s*[-+]?\d*\.\d)")
 _NAME: Final = re.compile(r"TTBIPM\.?(\d{2,4})", re.IGNORECASE)
 _RESOLUTION_S: Final = 1e-9
@@ -196,9 +200,14 @@ def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray]:
     for number, line in enumerate(content.splitlines(), 1):
         match = _ROW.fullmatch(line)
         if match is None:
-            if days and _LIKE_A_ROW.match(line):
+            # Before the first row prose may begin with a number, but not go on with two of a table's.
+            like = days or _BARE.fullmatch(line) or len(_NUMBERS.findall(line)) > 1
+            if like and _LIKE_A_ROW.match(line):
                 raise DataFileError(
-                    f"{path}, line {number}: a damaged row, {line.decode(errors='replace')!r}", row=number, path=path
+                    f"{path}, line {number}: a damaged row, {line.decode(errors='replace').strip()!r}; MJD and two "
+                    "numbers in us are read, both with three or both with four decimals",
+                    row=number,
+                    path=path,
                 )
             continue
         day = int(match[1])
@@ -209,8 +218,16 @@ def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray]:
                 row=number,
                 path=path,
             )
+        offset_us = float(match[2] or match[3])
+        if days and abs(offset_us - offsets[-1]) > _LARGEST_STEP_US:
+            raise DataFileError(
+                f"{path}, line {number}: TT(BIPM)-TAI moves from {offsets[-1]} to {offset_us} us, where ten days bring "
+                f"less than {_LARGEST_STEP_US:g}; a digit is wrong in this row or the one before",
+                row=number,
+                path=path,
+            )
         days.append(day)
-        offsets.append(float(next(text for text in (match[3], match[5], match[7]) if text is not None)))
+        offsets.append(offset_us)
     if len(days) < 2:
         raise DataFileError(
             f"{path} holds {len(days)} rows of MJD, TT(BIPM)-EAL, TT(BIPM)-TAI (us); two or more are needed", path=path

@@ -2,10 +2,10 @@
 
 All by IAU 2000 Resolution B1.5 and IAU 2006 Resolution B3:
 
-    TCB - TCG = D(TCB) + q,    q = v_E.r_E / c^2 + (3 w_ext + v_E^2/2) v_E.r_E / c^4
+    TCB - TCG = D(TCB) + q,    q = v_E.X / c^2 + 2 w_ext v_E.X / c^4
 
 where D is the integral at the geocentre, kept by `TimeEphemeris` as TT - TDB (a quantity of
-milliseconds, which float64 holds to 1e-19 s), and r_E the GCRS vector of the observer.
+milliseconds, which float64 holds to 1e-19 s), and X the GCRS vector of the observer (see `topocentric_terms`).
 """
 
 from __future__ import annotations
