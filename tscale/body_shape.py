@@ -17,7 +17,16 @@ import numpy as np
 from .constants import SUN_RADIUS_M
 from .exact import FloatArray, two_product
 
-__all__ = ["FIGURES", "MEAN_RADIUS_M", "ROTATIONS", "Angle", "Figure", "Rotation", "own_body"]
+__all__ = [
+    "FIGURES",
+    "MEAN_RADIUS_M",
+    "REFERENCE_POTENTIAL_M2_S2",
+    "ROTATIONS",
+    "Angle",
+    "Figure",
+    "Rotation",
+    "own_body",
+]
 
 _DAYS_PER_CENTURY: Final = 36525.0
 
@@ -55,6 +64,12 @@ FIGURES: Final[Mapping[int, Figure]] = MappingProxyType(
     }
 )
 """Reference ellipsoids of the solid bodies that `SurfaceSite` knows."""
+
+
+REFERENCE_POTENTIAL_M2_S2: Final[Mapping[int, float]] = MappingProxyType({4: 12654875.0, 301: 2821713.3})
+"""Gravity potential (with that of the rotation) on the reference equipotential surface of a body, m2/s2. Measured.
+Moon: the selenoid of Ardalan & Karimi 2014, Celest. Mech. Dyn. Astr. 118, 75 (reference from memory); Mars: the areoid,
+12654875 +-69, of Ardalan, Karimi & Grafarend 2009, Earth Moon Planets 106, 1 (from memory)."""
 
 
 class Angle(NamedTuple):

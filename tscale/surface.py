@@ -10,20 +10,22 @@ from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
 
-from .body_shape import FIGURES, ROTATIONS, Rotation, own_body
-from .constants import C_M_S, DAY_S
+from .body_shape import FIGURES, REFERENCE_POTENTIAL_M2_S2, ROTATIONS, Rotation, own_body
+from .constants import C_M_S, DAY_S, GM_M3_S2
 from .earth.frames import dot
+from .earth.moving import gcrs_state
 from .ephemeris.bodies import body_id, body_name
-from .errors import DataFileError, InvalidInput
+from .errors import DataFileError, InvalidInput, MissingPiece
 from .exact import FloatArray, Pair
 from .storage import toml_table
 
 if TYPE_CHECKING:
     from .tables.reference import ReferenceData
 
-__all__ = ["SurfaceSite"]
+__all__ = ["BodyCentre", "SurfaceSite"]
 
-_KEYS: Final = ("name", "body", "lon_deg", "lat_deg", "height_m")
+_KEYS: Final = ("name", "body", "lon_deg", "lat_deg", "height_m", "height_above_geoid_m", "potential_m2_s2")
+_LIMITS: Final = dict(zip(_KEYS[2:], (360.0, 90.0, 1e5, 1e5, 1e9), strict=True))
 
 
 @dataclass(frozen=True)
@@ -45,6 +47,13 @@ class SurfaceSite:
         Latitude of the ellipsoid's normal within +-90, degrees.
     height_m : float
         Height above the ellipsoid, m, within +-100 km.
+    height_above_geoid_m : float, optional
+        Height above the body's reference equipotential surface (selenoid, areoid), m, for the rate of a clock. If not
+        given `height_m` stands for it: the surfaces are up to 0.5 km apart on the Moon, 2 km on Mars, which is 9e-15
+        and 8e-14 in rate.
+    potential_m2_s2 : float, optional
+        Gravity potential of the place with that of the rotation, positive, m2/s2, where it has been measured;
+        instead of a height.
 
     Raises
     ------
@@ -57,6 +66,8 @@ class SurfaceSite:
     lon_deg: float
     lat_deg: float
     height_m: float = 0.0
+    height_above_geoid_m: float | None = None
+    potential_m2_s2: float | None = None
     _fixed_m: FloatArray = field(init=False, repr=False, compare=False)
     _up: FloatArray = field(init=False, repr=False, compare=False)
 
@@ -71,8 +82,10 @@ class SurfaceSite:
                 f"surface site {self.name!r}: no rotation elements for {body_name(number)}; known are {known}{hint}"
             )
         object.__setattr__(self, "body", number)
-        for what, limit in (("lon_deg", 360.0), ("lat_deg", 90.0), ("height_m", 1e5)):
+        for what, limit in _LIMITS.items():
             value: Any = getattr(self, what)
+            if value is None and what in _KEYS[5:]:
+                continue
             if (
                 isinstance(value, bool)
                 or not isinstance(value, int | float | np.integer | np.floating)
@@ -85,6 +98,15 @@ class SurfaceSite:
                     "check order and units"
                 )
             object.__setattr__(self, what, float(value))
+        if self.potential_m2_s2 is not None and self.height_above_geoid_m is not None:
+            raise InvalidInput(
+                f"surface site {self.name!r}: give height_above_geoid_m or potential_m2_s2, not both: each tells the "
+                "rate of a clock"
+            )
+        if self.potential_m2_s2 is not None and not self.potential_m2_s2 > 0.0:
+            raise InvalidInput(
+                f"surface site {self.name!r}: potential_m2_s2 is positive (GM/r and more), got {self.potential_m2_s2!r}"
+            )
         figure = FIGURES[own_body(number)]
         lon, lat = math.radians(self.lon_deg), math.radians(self.lat_deg)
         up = np.array([math.cos(lat) * math.cos(lon), math.cos(lat) * math.sin(lon), math.sin(lat)])
@@ -127,6 +149,47 @@ class SurfaceSite:
         """Unit vector along the body's axis of rotation, to its north, on the ICRF axes, (..., 3), at TDB counts."""
         return _turned(_rotation(self), np.array([0.0, 0.0, 1.0]), _pair(tdb))[0]
 
+    @property
+    def uses_earth_orientation(self) -> bool:
+        """False: the place does not turn with the Earth."""
+        return False
+
+    def gravity_potential_m2_s2(self) -> float:
+        """Gravity potential W of the place with that of the rotation, m2/s2, by which a clock there runs slow.
+
+        As given, else that of the body's reference surface (`body_shape.REFERENCE_POTENTIAL_M2_S2`) less the work up
+        to the height above it, along gravity GM/r^2 less the centrifugal part. The flattening and the lumps of the
+        body that this leaves out are below 0.3 % of that work: 1e-16 for a height of 1 km on Mars.
+
+        Raises
+        ------
+        MissingPiece
+            For a body without a published reference potential (Mercury, Venus).
+        """
+        if self.potential_m2_s2 is not None:
+            return self.potential_m2_s2
+        assert isinstance(self.body, int)
+        body = own_body(self.body)
+        if body not in REFERENCE_POTENTIAL_M2_S2:
+            raise MissingPiece(
+                f"surface site {self.name!r}: no reference potential is known for {body_name(self.body)}; known are "
+                f"those of {', '.join(body_name(n) for n in sorted(REFERENCE_POTENTIAL_M2_S2))}: give potential_m2_s2="
+            )
+        height = self.height_m if self.height_above_geoid_m is None else self.height_above_geoid_m
+        ground = float(np.linalg.norm(self._fixed_m - self.height_m * self._up))
+        # The prime meridian's rate is that of the rotation to 1e-4, and all of it is 1e-3 of gravity.
+        spin_rad_s = math.radians(ROTATIONS[body].w.polynomial_deg[1]) / DAY_S
+        across = spin_rad_s * math.cos(math.radians(self.lat_deg))
+        work = GM_M3_S2[body] * height / (ground * (ground + height)) - 0.5 * across**2 * height * (2 * ground + height)
+        return REFERENCE_POTENTIAL_M2_S2[body] - work
+
+    def gcrs(self, tt: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
+        """Geocentric position (m) and velocity (m/s) on the GCRS axes, TT-compatible, (..., 3), at TT counts.
+
+        So a place on another body is an observer, whose events have a TT (the Moon) or at least a TDB (all).
+        """
+        return gcrs_state(lambda tdb: self.state_bcrs(tdb, reference), _pair(tt), reference)
+
     def state_bcrs(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
         """Barycentric position (m) and velocity (m/s), TDB-compatible, each (..., 3), at TDB counts.
 
@@ -137,6 +200,31 @@ class SurfaceSite:
         centre, velocity = reference.ephemeris.state(self.body, tdb)
         r, v = self.offset(tdb)
         return centre + contracted(r, velocity), velocity + v
+
+
+@dataclass(frozen=True)
+class BodyCentre:
+    """The centre of a body as an observer, so that events there have a TT and a TDB."""
+
+    body: int
+
+    @property
+    def name(self) -> str:
+        """For ledgers and messages."""
+        return f"the centre of {body_name(self.body)}"
+
+    @property
+    def uses_earth_orientation(self) -> bool:
+        """False: the place does not turn with the Earth."""
+        return False
+
+    def state_bcrs(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
+        """Barycentric position (m) and velocity (m/s), TDB-compatible, each (..., 3), at TDB counts."""
+        return reference.ephemeris.state(self.body, _pair(tdb))
+
+    def gcrs(self, tt: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
+        """Geocentric position (m) and velocity (m/s) on the GCRS axes, TT-compatible, (..., 3), at TT counts."""
+        return gcrs_state(lambda tdb: self.state_bcrs(tdb, reference), _pair(tt), reference)
 
 
 def contracted(r_m: FloatArray, velocity_m_s: FloatArray) -> FloatArray:

@@ -37,7 +37,7 @@ _State = tuple[FloatArray, FloatArray]
 class Trajectory:
     """Positions and velocities of something that moves, at any date of a span.
 
-    Make one with `from_states`, `from_kepler`, `from_oem` or `from_spk`.
+    Make one with `from_states`, `from_kepler`, `from_oem`, `from_spk` or `from_flight`.
 
     A trajectory is *geocentric* (about the Earth, dated in TT, lengths TT-compatible, GCRS or ITRS axes) or else
     *barycentric* in kind (about any centre, ICRF axes, lengths TDB-compatible). Both kinds answer `gcrs` and
@@ -192,6 +192,23 @@ class Trajectory:
             If the kernel does not hold the target; the message lists what it holds.
         """
         return cls(*spk_parts(path, target))
+
+    @classmethod
+    def from_flight(
+        cls, path: str | os.PathLike[str], *, scale: str = "UTC", leap_seconds: LeapSeconds | None = None
+    ) -> Trajectory:
+        """Read way points from a CSV file of `instant`, `lon_deg`, `lat_deg` and `height_m`; see `flight` for the way.
+
+        Instants are ISO 8601 on `scale` (with `leap_seconds` for UTC), heights above the WGS84 ellipsoid.
+
+        Raises
+        ------
+        DataFileError
+            Damaged files, values out of range, instants that do not increase; with the line.
+        """
+        from .flight import read_flight
+
+        return cls(*read_flight(path, scale, leap_seconds))
 
     # ---- facts -----------------------------------------------------------------------------------
 

@@ -1,0 +1,248 @@
+"""Elapsed proper time: the rate of a clock integrated from a coincidence on, to 1e-18 of the time elapsed.
+
+Blocks of 8 days on either side of the coincidence are integrated when they are first needed, always whole and each by
+itself, and added up from the coincidence outward: what is found does not depend on what was asked before.
+"""
+
+from __future__ import annotations
+
+import math
+import threading
+from collections import OrderedDict
+from collections.abc import Iterator
+from contextlib import contextmanager
+from typing import Final
+
+import numpy as np
+
+from .. import exact
+from ..constants import L_G
+from ..earth.gravity.field import GravityField
+from ..earth.observer import Observer
+from ..ephemeris.chebyshev import broadcast_pair, date_text
+from ..errors import _GATHERED, OutOfSpan, _Gathered
+from ..exact import FloatArray, IntArray, Pair
+from ..tables.reference import ReferenceData
+from .proper_models import model_of, total_of
+from .proper_panels import Integral, integrate
+from .proper_reach import reach
+from .proper_tides import Tides, checked_tides
+from .proper_time import checked_gravity
+
+__all__ = ["SET_RATE", "ProperIntegral"]
+
+SET_RATE: Final = "set rate offset"
+"""Name of the term of a clock that is set to run fast or slow."""
+
+_BLOCK_S: Final = 8 * 86400
+_FIRST_PANEL_S: Final = 86400
+_BLOCKS_KEPT: Final = 256
+_SLACK_S: Final = 1e-9
+_TCG_PER_TT: Final = float(1 / (1 - L_G))
+_TCG_GAIN: Final = float(L_G / (1 - L_G))
+
+
+class ProperIntegral:
+    """Reading of a clock minus TT, both counted from a coincidence; with its terms. Safe between threads.
+
+    Parameters
+    ----------
+    observer : Observer
+        Site or trajectory.
+    anchor : Pair
+        TT count of the coincidence, scalar.
+    reference : ReferenceData
+    gravity, tides
+        See `rate_terms`.
+    rate_offset : float
+        Fractional frequency by which the clock is set fast.
+
+    Raises
+    ------
+    OutOfSpan
+        If the coincidence lies where the clock's rate is not known.
+    """
+
+    def __init__(
+        self,
+        observer: Observer,
+        anchor: Pair,
+        reference: ReferenceData,
+        *,
+        gravity: GravityField | None = None,
+        tides: Tides = True,
+        rate_offset: float = 0.0,
+    ) -> None:
+        self.observer = observer
+        self.anchor: Pair = (np.asarray(anchor[0], dtype=np.int64), np.asarray(anchor[1], dtype=np.float64))
+        self.reference = reference
+        self.model = model_of(observer, checked_gravity(gravity), checked_tides(tides))
+        self.rate_offset = rate_offset
+        self._reach = reach(
+            observer,
+            self.anchor,
+            reference,
+            needs_orientation=self.model.needs_orientation,
+            needs_ephemeris=self.model.needs_ephemeris,
+        )
+        self._lock = threading.Lock()
+        # Sums of blocks (high and low part) by the block that starts or ends there; blocks themselves can be made
+        # again.
+        zero = np.zeros(len(self.model.names) + 1)
+        self._sums: dict[int, tuple[FloatArray, FloatArray]] = {0: (zero, zero)}
+        self._blocks: OrderedDict[int, Integral] = OrderedDict()
+        if not (self._reach.first_s <= _SLACK_S and self._reach.last_s >= -_SLACK_S):
+            self._require_inside(self.anchor)
+
+    # ---- what is asked ---------------------------------------------------------------------------
+
+    def gained_s(self, tt: Pair) -> FloatArray:
+        """Elapsed reading less elapsed TT since the coincidence, s, at TT counts of any shape."""
+        high, low = self._evaluate(tt, slice(len(self.model.names), None))
+        return np.asarray(high[0] + low[0])
+
+    def terms_s(self, tt: Pair) -> dict[str, FloatArray]:
+        """Elapsed reading less elapsed TCG since the coincidence in parts, s; at TT counts of any shape."""
+        high, low = self._evaluate(tt, slice(0, len(self.model.names)))
+        parts = np.asarray((high + low) * _TCG_PER_TT)
+        found = dict(zip(self.model.names, parts, strict=True))
+        if self.rate_offset:
+            elapsed_s = exact.seconds(exact.subtract(tt, self.anchor)) * _TCG_PER_TT
+            found[SET_RATE] = np.asarray((elapsed_s + parts.sum(axis=0)) * self.rate_offset)
+        return found
+
+    def rate(self, tt: Pair) -> FloatArray:
+        """d(reading)/d(TT) - 1."""
+        return self._against_tt(total_of(self.model.terms(tt, self.reference)))
+
+    def tt_of_elapsed(self, elapsed: Pair) -> Pair:
+        """TT count at which the clock has gone on by `elapsed` since the coincidence; undoes `gained_s` to 0.1 fs.
+
+        Each round leaves 1e-9 of the error before it.
+        """
+        first = exact.add(self.anchor, elapsed)
+        tt = self._clipped(first)
+        for _ in range(5):
+            found = exact.add_seconds(first, -self.gained_s(tt))
+            step_s = np.max(np.abs(exact.seconds(exact.subtract(found, tt))), initial=0.0)
+            tt = self._clipped(found)
+            if step_s < 1e-12:
+                break
+        self._require_inside(found)
+        return found
+
+    # ---- blocks ----------------------------------------------------------------------------------
+
+    def _against_tt(self, y: FloatArray) -> FloatArray:
+        """d(reading)/d(TT) - 1 from d(tau)/d(TCG) - 1."""
+        per_tt = _TCG_GAIN + y * _TCG_PER_TT
+        return np.asarray(per_tt + self.rate_offset + per_tt * self.rate_offset)
+
+    def _evaluate(self, tt: Pair, rows: slice) -> tuple[FloatArray, FloatArray]:
+        """Integrals from the coincidence to TT counts, (rows, *shape), in two parts to be added."""
+        tt = broadcast_pair(tt)
+        self._require_inside(tt)
+        elapsed = exact.subtract(tt, self.anchor)
+        shape = elapsed[0].shape
+        number = (elapsed[0] // _BLOCK_S).reshape(-1)
+        if np.isfinite(self._reach.last_s) and self._reach.last_s > 0:
+            # The last date may be the first of a block of no length.
+            number = np.minimum(number, max(math.ceil(self._reach.last_s / _BLOCK_S) - 1, 0))
+        if np.isfinite(self._reach.first_s):
+            number = np.maximum(number, math.floor(self._reach.first_s / _BLOCK_S))
+        local_s = (elapsed[0].reshape(-1) - number * _BLOCK_S).astype(np.float64) + elapsed[1].reshape(-1)
+        count = len(range(*rows.indices(len(self.model.names) + 1)))
+        high, low = np.empty((count, number.size)), np.empty((count, number.size))
+        for block in _outward(number):
+            index = np.flatnonzero(number == block)
+            integral, (sum_high, sum_low) = self._block(block)
+            origin_s = max(self._reach.first_s - block * _BLOCK_S, 0.0)
+            value = integral.value(local_s[index] - origin_s, rows)
+            high[:, index] = sum_high[rows, None]
+            low[:, index] = sum_low[rows, None] + value
+        return high.reshape(count, *shape), low.reshape(count, *shape)
+
+    def _block(self, number: int) -> tuple[Integral, tuple[FloatArray, FloatArray]]:
+        """A block and what the integrals are at its start."""
+        with self._lock:
+            for before in range(number):  # the sum at the start of block n is that of blocks 0 to n - 1
+                if before + 1 not in self._sums:
+                    self._sums[before + 1] = _sum(self._sums[before], self._made(before).totals_s)
+            for after in range(-1, number - 1, -1):
+                if after not in self._sums:
+                    self._sums[after] = _sum(self._sums[after + 1], -self._made(after).totals_s)
+            return self._made(number), self._sums[number]
+
+    def _made(self, number: int) -> Integral:
+        if number in self._blocks:
+            self._blocks.move_to_end(number)
+            return self._blocks[number]
+        found = self._integrated(number)
+        self._blocks[number] = found
+        if len(self._blocks) > _BLOCKS_KEPT:
+            self._blocks.popitem(last=False)
+        return found
+
+    def _integrated(self, number: int) -> Integral:
+        """Integrate one block, cut at its seams and at the ends of what is known."""
+        start = exact.add(self.anchor, exact.normalise(number * _BLOCK_S, 0.0))
+        begin_s = max(self._reach.first_s - number * _BLOCK_S, 0.0)
+        end_s = min(self._reach.last_s - number * _BLOCK_S, float(_BLOCK_S))
+        seams_s = self._reach.seams_s - number * _BLOCK_S
+        edges = np.concatenate((np.arange(0.0, _BLOCK_S, _FIRST_PANEL_S), seams_s, [begin_s, end_s]))
+        edges = np.unique(edges[(edges >= begin_s) & (edges <= end_s)])
+        # Slivers that come of the same seam dated twice, 1 us apart at most, are not worth a panel.
+        edges = np.concatenate(([begin_s], edges[1:-1][np.diff(edges[:-1]) > 1e-5], [end_s]))
+
+        def rates(offset_s: FloatArray) -> FloatArray:
+            tt = exact.add_seconds(start, offset_s + begin_s)
+            terms = self.model.terms(tt, self.reference)
+            return np.stack((*terms.values(), self._against_tt(total_of(terms))))
+
+        with _quiet():
+            return integrate(rates, edges - begin_s, self.observer.name)
+
+    # ---- ends ------------------------------------------------------------------------------------
+
+    def _clipped(self, tt: Pair) -> Pair:
+        since_s = exact.seconds(exact.subtract(tt, self.anchor))
+        for end_s, past in ((self._reach.first_s, since_s < self._reach.first_s), (self._reach.last_s, None)):
+            outside = since_s > end_s if past is None else past
+            if np.any(outside):
+                limit = exact.add_seconds(self.anchor, end_s)
+                tt = (np.where(outside, limit[0], tt[0]), np.where(outside, limit[1], tt[1]))
+        return tt
+
+    def _require_inside(self, tt: Pair) -> None:
+        since_s = exact.seconds(exact.subtract(tt, self.anchor))
+        bad = np.asarray((since_s < self._reach.first_s - _SLACK_S) | (since_s > self._reach.last_s + _SLACK_S))
+        if np.any(bad):
+            ends = [float(exact.seconds(exact.add_seconds(self.anchor, x))) for x in self._reach[:2] if np.isfinite(x)]
+            words = " to ".join(date_text(end) for end in ends)
+            raise OutOfSpan(
+                f"{int(np.count_nonzero(bad))} of {bad.size} dates of the clock at {self.observer.name} lie where its "
+                f"trajectory, the Earth orientation or the ephemeris does not reach ({words} TT, without a gap from "
+                "the coincidence on): leave them out (see the mask), or give what reaches them",
+                mask=bad,
+            )
+
+
+@contextmanager
+def _quiet() -> Iterator[None]:
+    """Say nothing of Earth orientation that is held: at the nodes of a quadrature, dates that no caller gave, it costs
+    1e-19 in rate; the step's notes tell of the dates that were given.
+    """
+    token = _GATHERED.set(_Gathered(False))
+    try:
+        yield
+    finally:
+        _GATHERED.reset(token)
+
+
+def _outward(number: IntArray) -> list[int]:
+    return sorted(set(number.tolist()), key=abs)
+
+
+def _sum(sums: tuple[FloatArray, FloatArray], more: FloatArray) -> tuple[FloatArray, FloatArray]:
+    high, error = exact.two_sum(sums[0], more)
+    return np.asarray(high), np.asarray(sums[1] + error)
