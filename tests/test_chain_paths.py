@@ -40,7 +40,8 @@ def test_the_whole_path_from_a_clock(clocks: list[tscale.ClockLog]) -> None:
     assert ledger["UTC - UTC(KST)"] == pytest.approx(-0.6e-9, abs=1e-11)
     assert "CLOCK(maser)" in ledger.table()
     sigma = chain.uncertainty_s(readings)
-    assert sigma["CLOCK(maser)"] == pytest.approx(1e-9, rel=1e-9, abs=0)
+    # Both comparisons are known to 1 ns, by errors of their own, of which 9/20 and 11/20 are taken.
+    assert sigma["CLOCK(maser)"] == pytest.approx(np.hypot(9, 11) / 20 * 1e-9, rel=1e-9, abs=0)
     assert chain.sigma_s(readings) == pytest.approx(np.sqrt(sum(v**2 for v in sigma.values())), rel=1e-12, abs=0)
 
 
@@ -209,7 +210,8 @@ def test_an_orbit_owes_nothing_to_earth_orientation() -> None:
     )
     t = tscale.Instants.from_iso(["1961-06-01T00:00:00", "2040-01-01T00:00:00"], scale="TT")
     chain = tscale.chain("TT", "TDB@BARYCENTER", site=orbit, source=SOURCE)
-    assert set(chain.uncertainty_s(t)) == {"time ephemeris"}
+    assert "time ephemeris" in chain.uncertainty_s(t)
+    assert not any("orientation" in name for name in chain.uncertainty_s(t))
     assert not any("orientation" in note for note in chain.notes(t))
     assert np.max(np.abs(chain.ledger(t).total)) < 520.0
 

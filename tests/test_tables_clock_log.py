@@ -310,7 +310,7 @@ def test_names(tmp_path: Path) -> None:
 
 def test_options_and_rows_are_checked(tmp_path: Path) -> None:
     epoch = Instants.from_seconds([0, 100], scale="UTC")
-    with pytest.raises(InvalidInput, match="'linear' or 'step'"):
+    with pytest.raises(InvalidInput, match="'linear', 'step' or 'cubic'"):
         ClockLog.load(write(tmp_path, HEADER + ROWS), interpolation="spline")  # type: ignore[arg-type]
     with pytest.raises(InvalidInput, match="max_gap_s"):
         ClockLog.load(write(tmp_path, HEADER + ROWS), max_gap_s=0.0)

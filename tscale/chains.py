@@ -3,10 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from typing import Any, Final
+from dataclasses import replace
+from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
 
+from .budget.assumptions import DEFAULT, Assumptions
+from .budget.contribution import Contribution, Omission, by_source, gathered
 from .earth.observer import Observer
 from .errors import InvalidInput, ScaleMismatch, TscaleError, gathered_extrapolations
 from .exact import FloatArray
@@ -19,6 +22,11 @@ from .step import Step
 from .tables.clock_arguments import checked_clocks, kind_words
 from .tables.clock_log import ClockLog
 from .tables.reference import ReferenceData
+
+if TYPE_CHECKING:
+    from .budget import Budget
+    from .compiled import CompiledChain
+    from .provenance import Provenance
 
 __all__ = ["Chain", "chain"]
 
@@ -87,19 +95,35 @@ class Chain:
             total = total + rate + total * rate
         return np.asarray(total)
 
-    def uncertainty_s(self, t: Instants) -> dict[str, FloatArray]:
-        """Standard uncertainties by source, seconds, in the order of the chain.
+    def replaced(self, **pieces: Any) -> Chain:
+        """The same ends, joined with other pieces: `reference`, `site`, `clocks`, `source`, `second_order`."""
+        if "clocks" in pieces:
+            pieces = {**pieces, "clocks": checked_clocks(pieces["clocks"]), "free": ()}
+        return Chain(self.start, self.end, replace(self._supplies, **pieces))
 
-        Sources: the comparison logs, UT1 and pole of the Earth orientation, TT(BIPM), the time ephemeris.
-        The ephemeris and the direction of a source are taken as given. So is the mean rate of the time
-        ephemeris, which is uncertain by 2e-17 (IERS Conventions 2010, Table 1.1: 0.6 ns a year from 1977), because
-        all who use one ephemeris share it.
+    def contributions(self, t: Instants, assumptions: Assumptions = DEFAULT) -> list[Contribution]:
+        """Every input quantity of every step with its uncertainty and its sensitivity; see `tscale.budget`.
+
+        A quantity that two steps share stands once: its sensitivities add with their signs. The rates of the steps that
+        follow, 1e-4 at most in a wavefront, are left out of the sensitivities.
         """
-        found: dict[str, FloatArray] = {}
-        for step, before in zip(self.steps, self._walk(t, self.steps), strict=False):
-            for name, value in step.uncertainty_s(before).items():
-                found[name] = np.hypot(found[name], value) if name in found else np.asarray(value)
-        return found
+        with gathered_extrapolations(repeats=True):
+            stations = self._walk(t, self.steps)
+            found = [step.contributed(at, assumptions) for step, at in zip(self.steps, stations, strict=False)]
+        return gathered(part for parts in found for part in parts)
+
+    def omissions(self, assumptions: Assumptions = DEFAULT) -> tuple[Omission, ...]:
+        """What the contributions leave out, and why."""
+        return tuple(dict.fromkeys(item for step in self.steps for item in step.omissions(assumptions)))
+
+    def uncertainty_s(self, t: Instants) -> dict[str, FloatArray]:
+        """Standard uncertainties by source, seconds, in the order of the chain: those of `budget` by default.
+
+        Sources: the comparison logs, UT1 and pole of the Earth orientation, TT(BIPM), the time ephemeris, and the
+        effects that the models leave out. What the caller alone can state - the place, the source's direction, the
+        ephemeris - is not in it; give it to `budget`, which lists what is not included.
+        """
+        return dict(by_source(self.contributions(t)))
 
     def sigma_s(self, t: Instants) -> FloatArray:
         """Combined standard uncertainty, seconds: the root of the summed squares of `uncertainty_s`."""
@@ -114,6 +138,24 @@ class Chain:
         for step, before in zip(self.steps, self._walk(t, self.steps), strict=False):
             found.extend(step.notes(before))
         return tuple(dict.fromkeys(found))
+
+    def budget(self, t: Instants, **options: Any) -> Budget:
+        """The uncertainty budget (GUM) of the result at instants of the start node; see `tscale.budget.budget_of`."""
+        from .budget import budget_of
+
+        return budget_of(self, t, **options)
+
+    def provenance(self, t: Instants | None = None) -> Provenance:
+        """Which tables, logs, models and versions the results are made of; see `tscale.provenance.provenance_of`."""
+        from .provenance import provenance_of
+
+        return provenance_of(self, t)
+
+    def compile(self, start: str | Instants, stop: str | Instants, *, tolerance_s: float = 1e-13) -> CompiledChain:
+        """The whole chain as certified polynomials between two dates; see `tscale.compiled.compile_chain`."""
+        from .compiled import compile_chain
+
+        return compile_chain(self, start, stop, tolerance_s=tolerance_s)
 
     def _walk(self, t: Instants, steps: Sequence[Step]) -> list[Instants]:
         """The instants at every node of the path."""
@@ -177,7 +219,7 @@ def chain(
     start, end : str
         Nodes `SCALE` or `SCALE@PLACE`. A start without place is at TOPOCENTER if a site is given, else at
         the end's place; an end without place is where the start is.
-    site : Site or Trajectory, optional
+    site : Site, SurfaceSite or Trajectory, optional
         The observer; needed for steps that depend on where the event is.
     clocks : sequence of ClockLog
         Comparison logs that tie CLOCK(...) and UTC(...) scales together.
@@ -209,7 +251,7 @@ def chain(
 def _check_pieces(site: Any, source: Any, reference: Any) -> None:
     if site is not None and not isinstance(site, Observer):
         raise InvalidInput(
-            f"site= takes a Site or a Trajectory, got {kind_words(site)}; read a file with Site.load(path)"
+            f"site= takes a Site, a SurfaceSite or a Trajectory, got {kind_words(site)}; read a file with Site.load(path)"
         )
     if source is not None and not isinstance(source, Source):
         raise InvalidInput(f"source= takes a Source, got {kind_words(source)}; make one with Source(ra_deg, dec_deg)")

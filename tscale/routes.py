@@ -6,20 +6,23 @@ import heapq
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import partial
-from typing import Final
+from typing import Any, Final
 
 from . import edges
+from .clocks.proper_clock import ProperClock
 from .earth.observer import Observer
 from .errors import MissingPiece
 from .scales import Node, Scale
 from .source import Source
 from .step import Step
+from .surface import BodyCentre
 from .tables.clock_log import ClockLog
 from .tables.reference import ReferenceData
 
 __all__ = ["Supplies", "route", "shortened"]
 
-_EARTHLY: Final = (None, "TOPOCENTER", "GEOCENTER")
+_DATED_IN_TT: Final = (None, "TOPOCENTER", "GEOCENTER", "SELENOCENTER")
+_MOON: Final = BodyCentre(301)
 
 
 @dataclass(frozen=True)
@@ -31,6 +34,15 @@ class Supplies:
     clocks: tuple[ClockLog, ...] = ()
     source: Source | None = None
     second_order: bool = False
+    free: tuple[ProperClock, ...] = ()
+
+    def __post_init__(self) -> None:
+        # Clocks of both kinds come in one list; a free one brings its place with it.
+        given: tuple[Any, ...] = (*self.clocks, *self.free)
+        object.__setattr__(self, "clocks", tuple(clock for clock in given if isinstance(clock, ClockLog)))
+        object.__setattr__(self, "free", tuple(clock for clock in given if not isinstance(clock, ClockLog)))
+        if self.site is None and self.free:
+            object.__setattr__(self, "site", self.free[0].observer)
 
 
 def shortened(steps: Sequence[Step], supplies: Supplies) -> list[Step]:
@@ -47,7 +59,7 @@ def shortened(steps: Sequence[Step], supplies: Supplies) -> list[Step]:
                 place = nodes[0].place
                 if place is None or tuple(node.scale.name for node in nodes) != scales:
                     continue
-                observer = supplies.site if place == "TOPOCENTER" else None
+                observer = _observer_at(place, supplies)
                 step = edges.tt_barycentric_step(onward[-1], place, observer, supplies.reference)
                 found[i : i + width] = [step if scales == onward else step.reversed()]
                 break
@@ -72,6 +84,9 @@ def route(first: Node, last: Node, supplies: Supplies) -> list[Step]:
     MissingPiece
         When no path exists; names the pieces with which there would be one.
     """
+    if supplies.free and first.place is None and last.place is None:
+        # The site came with a clock: what happens, happens there.
+        first, last = Node(first.scale, "TOPOCENTER"), Node(last.scale, "TOPOCENTER")
     path = _cheapest(first, last, _edges(first, last, supplies))
     if path is None:
         raise MissingPiece(_no_way(first, last))
@@ -101,7 +116,8 @@ def _edges(first: Node, last: Node, supplies: Supplies) -> list[_Edge]:
 
     for place in places:
         offer("TCB", "TDB", place, partial(edges.tcb_tdb_step, place))
-        if place not in _EARTHLY:
+        found.extend(_lunar(place, supplies))
+        if place not in _DATED_IN_TT:
             continue
         for name in ("UTC", "TT", "GPS", "GST", "BDT"):
             offer("TAI", name, place, partial(edges.fixed_step, "TAI", name, place, reference))
@@ -111,7 +127,8 @@ def _edges(first: Node, last: Node, supplies: Supplies) -> list[_Edge]:
         for table in reference.tt_bipm:
             offer("TAI", table.scale, place, partial(edges.tt_bipm_step, place, table))
         for log in supplies.clocks:
-            offer(log.scale, log.reference, place, partial(edges.clock_step, place, log))
+            offer(log.scale, log.reference, place, partial(edges.clock_step, place, log, reference))
+        found.extend(_proper(place, clock, supplies) for clock in supplies.free)
         found.extend(_unsupplied(first, last, place, supplies))
         if place == "TOPOCENTER" and site is None:
             offer(
@@ -130,26 +147,67 @@ def _edges(first: Node, last: Node, supplies: Supplies) -> list[_Edge]:
                 "TCB and TDB depend on where the event is: give site=, or write the place, as in TDB@GEOCENTER",
             )
         else:
-            observer = site if place == "TOPOCENTER" else None
+            observer = _observer_at(place, supplies)
             offer("TCG", "TCB", place, partial(edges.tcg_tcb_step, place, observer, reference))
-        if "BARYCENTER" in places and place is not None:
+        if "BARYCENTER" in places and place not in (None, "SELENOCENTER"):
             found.append(_wavefront(place, supplies))
     return found
+
+
+def _observer_at(place: str | None, supplies: Supplies) -> Observer | None:
+    """Who is at a place; None at the geocentre."""
+    return supplies.site if place == "TOPOCENTER" else _MOON if place == "SELENOCENTER" else None
 
 
 def _node(scale: str, place: str | None) -> Node:
     return Node(Scale.parse(scale), place)
 
 
+def _lunar(place: str | None, supplies: Supplies) -> list[_Edge]:
+    """TCL, at the places where the events near the Moon and the Earth are."""
+    start, end = _node("TCL", place), _node("TCB", place)
+    if place is None:
+        missing = "TCL depends on where the event is (128 us): give site=, or write the place, as in TCL@SELENOCENTER"
+    elif place == "TOPOCENTER" and supplies.site is None:
+        missing = "TCL at TOPOCENTER depends on where the observer is (128 us): give site="
+    elif place in ("SELENOCENTER", "GEOCENTER", "TOPOCENTER"):
+        return [_Edge(start, end, partial(edges.tcl_tcb_step, place, supplies.site, supplies.reference))]
+    else:
+        return []
+    return [_Edge(start, end, None, missing)]
+
+
+def _proper(place: str | None, clock: ProperClock, supplies: Supplies) -> _Edge:
+    """The proper time of a free clock, at the clock."""
+    start, end = _node(clock.scale, place), _node("TCG" if clock.dates_own_event else "TDB", place)
+    if place != "TOPOCENTER":
+        return _Edge(start, end, None, f"{clock.scale} dates events at the clock: write {clock.scale}@TOPOCENTER")
+    if supplies.site != clock.observer:
+        here = getattr(supplies.site, "name", "none")
+        missing = (
+            f"{clock.scale} is the time of a clock at {clock.observer.name}, and the chain is at {here}: give "
+            "site= the clock's observer, or leave it out"
+        )
+        return _Edge(start, end, None, missing)
+    return _Edge(start, end, partial(edges.proper_step, place, clock, supplies.reference))
+
+
 def _unsupplied(first: Node, last: Node, place: str | None, supplies: Supplies) -> list[_Edge]:
     """Edges to named realisations for which no log or table was given."""
     have = {log.scale for log in supplies.clocks} | {table.scale for table in supplies.reference.tt_bipm}
+    have |= {clock.scale for clock in supplies.free}
     # The reference of a log that was given is itself in need of a log, unless it is UTC.
     named = {first.scale.name, last.scale.name} | {log.reference for log in supplies.clocks}
     found = []
     for name in sorted(named - have):
         scale = Scale.parse(name)
-        if scale.realisation is None or scale.family == "PROPER":
+        if scale.realisation is None:
+            continue
+        if scale.family == "PROPER":
+            missing = (
+                f"no clock for {name}: give one with clocks=[ProperClock({scale.realisation!r}, observer, coincidence)]"
+            )
+            found.append(_Edge(Node(scale, place), _node("TCG", place), None, missing))
             continue
         if scale.family == "TT":
             missing = f"no table for {name}: give it with ReferenceData.load(tt_bipm=path)"

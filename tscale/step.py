@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TypeAlias
 
 import numpy as np
 
 from . import exact
+from .budget.assumptions import DEFAULT, Assumptions
+from .budget.contribution import Contribution, Omission, by_source
 from .exact import FloatArray, Pair
 from .instants import Instants
 from .scales import Node
@@ -20,6 +22,10 @@ Terms: TypeAlias = Mapping[str, Pair]
 
 def _no_uncertainty(before: Instants) -> Mapping[str, FloatArray]:
     return {}
+
+
+def _no_omissions(assumptions: Assumptions) -> tuple[Omission, ...]:
+    return ()
 
 
 def _no_notes(before: Instants) -> tuple[str, ...]:
@@ -46,9 +52,15 @@ class Step:
     rate : callable
         From the instants before and after to d(after)/d(before) - 1 of the counts.
     uncertainty_s : callable
-        From the instants before to the standard uncertainties of the step by source, s.
+        From the instants before to the standard uncertainties of the step by source, s; made from `contributions`
+        where these are given.
     notes : callable
         From the instants before to what a reader should know: values predicted or extrapolated.
+    contributions : callable or None
+        From the instants before and the assumptions to the input quantities of the step with their uncertainties,
+        sensitivities and correlations. None: `uncertainty_s` is all there is to say; see `contributed`.
+    omissions : callable
+        From the assumptions to what the step's contributions leave out, and why.
     """
 
     start: Node
@@ -61,9 +73,30 @@ class Step:
     rate: Callable[[Instants, Instants], FloatArray]
     uncertainty_s: Callable[[Instants], Mapping[str, FloatArray]] = _no_uncertainty
     notes: Callable[[Instants], tuple[str, ...]] = _no_notes
+    contributions: Callable[[Instants, Assumptions], Sequence[Contribution]] | None = None
+    omissions: Callable[[Assumptions], Sequence[Omission]] = _no_omissions
+
+    def __post_init__(self) -> None:
+        given = self.contributions
+        if given is not None and self.uncertainty_s is _no_uncertainty:
+            object.__setattr__(self, "uncertainty_s", lambda before: by_source(given(before, DEFAULT)))
+
+    def contributed(self, before: Instants, assumptions: Assumptions = DEFAULT) -> Sequence[Contribution]:
+        """Contributions to the uncertainty of the instants after the step.
+
+        Of a step that states standard uncertainties alone, each is an input of its own that all instants share: the
+        cautious reading, by which nothing is averaged away.
+        """
+        if self.contributions is not None:
+            return self.contributions(before, assumptions)
+        one = np.ones(before.shape)
+        return [
+            Contribution(source, source, "s", one, np.broadcast_to(np.asarray(sigma, dtype=np.float64), before.shape))
+            for source, sigma in self.uncertainty_s(before).items()
+        ]
 
     def reversed(self) -> Step:
-        """The same step the other way: terms change sign, the rate is inverted, uncertainties stay."""
+        """The same step the other way: terms and sensitivities change sign, the rate is inverted."""
         return Step(
             start=self.end,
             end=self.start,
@@ -75,6 +108,10 @@ class Step:
             rate=lambda before, after: _inverse_rate(self.rate(after, before)),
             uncertainty_s=lambda before: self.uncertainty_s(self.backward(before)),
             notes=lambda before: self.notes(self.backward(before)),
+            contributions=lambda before, assumptions: [
+                part.negated() for part in self.contributed(self.backward(before), assumptions)
+            ],
+            omissions=self.omissions,
         )
 
     def __str__(self) -> str:

@@ -7,9 +7,13 @@ from typing import Final
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S, EARTH_ANGULAR_VELOCITY_RAD_S, L_B, L_G
+from ..budget.assumptions import Assumptions
+from ..budget.contribution import Contribution, Omission
+from ..budget.correlation import Exponential
+from ..budget.directions import EARTH_DELAY_S, sun_left_out, wavefront_contributions, wavefront_omissions
+from ..budget.places import left_out, place_contributions, place_omissions, turns_with_earth
+from ..constants import C_M_S, JULIAN_YEAR_S, L_B, L_G
 from ..counts import tai_from_tt
-from ..earth.frames import dot
 from ..earth.moving import observer_event
 from ..earth.observer import Observer
 from ..exact import FloatArray, Pair
@@ -29,9 +33,10 @@ _TCB_GAIN: Final = float(L_B / (1 - L_B))
 
 _NAMED: Final = {"sun": "the Sun", "moon": "the Moon", "earth": "the Earth"}
 
-TIME_EPHEMERIS_SIGMA_S: Final = 2e-10
-"""Standard uncertainty of TT - TDB at the geocentre, s: rms difference from an independently integrated
-planetary ephemeris (type B)."""
+_MEAN_RATE: Final = Omission(
+    "mean rate of the time ephemeris",
+    "shared by all who use one ephemeris: 2e-17, 0.6 ns a year from 1977 (IERS Conventions 2010, Table 1.1)",
+)
 
 
 def tcb_tdb_step(place: str | None) -> Step:
@@ -75,17 +80,21 @@ def tcg_tcb_step(place: str, observer: Observer | None, reference: ReferenceData
             )
         return np.asarray(-tcg_per_tcb / (1.0 + tcg_per_tcb))
 
-    def uncertainty_s(before: Instants) -> dict[str, FloatArray]:
-        found = {"time ephemeris": np.full(before.shape, TIME_EPHEMERIS_SIGMA_S)}
-        if observer is not None and _turns_with_earth(observer):
-            tt = geocentric.tt_from_tcg(before.pair)
+    def contributions(before: Instants, assumptions: Assumptions) -> list[Contribution]:
+        tt = geocentric.tt_from_tcg(before.pair)
+        found = _time_ephemeris(tt, reference, assumptions)
+        if observer is not None:
             near = exact.add_seconds(tt, -reference.time_ephemeris.tt_minus_tdb_s(tt))
             _, velocity = reference.ephemeris.state("earth", near)
-            found |= _orientation_sigma_s(tt, observer.gcrs(tt, reference)[0], velocity / C_M_S, reference)
+            r_m, _ = observer.gcrs(tt, reference)
+            found += place_contributions(observer, tt, r_m, velocity / C_M_S**2, reference, assumptions)
         return found
 
+    def omissions(assumptions: Assumptions) -> list[Omission]:
+        return [_MEAN_RATE] if observer is None else [_MEAN_RATE, *place_omissions(observer, assumptions)]
+
     def notes(before: Instants) -> tuple[str, ...]:
-        if observer is None or not _turns_with_earth(observer):
+        if observer is None or not turns_with_earth(observer):
             return ()
         return orientation_notes(tai_from_tt(geocentric.tt_from_tcg(before.pair)), reference)
 
@@ -98,7 +107,8 @@ def tcg_tcb_step(place: str, observer: Observer | None, reference: ReferenceData
         backward=lambda t: barycentric.tcb_to_tcg(t, reference, observer),
         terms=terms,
         rate=rate,
-        uncertainty_s=uncertainty_s,
+        contributions=contributions,
+        omissions=omissions,
         notes=notes,
     )
 
@@ -141,15 +151,34 @@ def wavefront_step(
     def parts(before: Instants) -> wavefront.WavefrontTerms:
         return wavefront.wavefront_terms(before.pair, reference, source, observer, second_order=second_order)
 
-    def uncertainty_s(before: Instants) -> dict[str, FloatArray]:
-        if observer is None or not _turns_with_earth(observer):
-            return {}
-        event = observer_event(before.pair, reference, observer)
-        return _orientation_sigma_s(event.tt, event.r_gcrs_m, source.direction(before.pair), reference)
+    earthly = observer is None or getattr(observer, "geocentric", True)
+
+    def contributions(before: Instants, assumptions: Assumptions) -> list[Contribution]:
+        tdb, found = before.pair, []
+        toward = source.direction(tdb)
+        if observer is not None and earthly:
+            event = observer_event(tdb, reference, observer)
+            x_m, sun_m, sun_v_m_s = event.bcrs_position(), event.bodies.sun_m, event.bodies.sun_v_m_s
+            found += place_contributions(observer, event.tt, event.r_gcrs_m, toward / C_M_S, reference, assumptions)
+        else:
+            x_m, _, sun_m, sun_v_m_s = wavefront.observer_state(tdb, reference, observer, with_velocity=False)
+            if observer is not None:
+                found += place_contributions(observer, tdb, x_m, toward / C_M_S, reference, assumptions)
+        found += wavefront_contributions(tdb, x_m, source, assumptions, earthly=earthly)
+        if assumptions.truncation and not second_order:
+            found.append(sun_left_out(x_m, sun_m, sun_v_m_s, toward, reference))
+        if assumptions.truncation and observer is not None and earthly:
+            name = "gravitational delay of the Earth, left out"
+            found.append(left_out(name, name, "s", np.ones(before.shape), EARTH_DELAY_S))
+        return found
+
+    def omissions(assumptions: Assumptions) -> list[Omission]:
+        found = [] if observer is None else place_omissions(observer, assumptions)
+        return [*found, *wavefront_omissions(source, assumptions, earthly=earthly)]
 
     def notes(before: Instants) -> tuple[str, ...]:
         found: tuple[str, ...] = ()
-        if observer is not None and _turns_with_earth(observer):
+        if observer is not None and turns_with_earth(observer):
             found = orientation_notes(tai_from_tt(barycentric.tt_from_tdb(before.pair, reference, observer)), reference)
         hidden = wavefront.hidden_by(before.pair, reference, source, observer)
         counts = {_NAMED.get(body, body): int(np.count_nonzero(mask)) for body, mask in hidden.items()}
@@ -166,25 +195,25 @@ def wavefront_step(
         backward=lambda t: wavefront.barycenter_to_observer(t, reference, source, observer, second_order=second_order),
         terms=lambda before, after: parts(before).exact(),
         rate=lambda before, after: parts(before).rate,
-        uncertainty_s=uncertainty_s,
+        contributions=contributions,
+        omissions=omissions,
         notes=notes,
     )
 
 
-def _turns_with_earth(observer: Observer) -> bool:
-    """Whether the observer's place depends on Earth orientation; one that does not say is taken to be on the ground."""
-    return bool(getattr(observer, "uses_earth_orientation", True))
-
-
-def _orientation_sigma_s(
-    tt: Pair, r_m: FloatArray, weight: FloatArray, reference: ReferenceData
-) -> dict[str, FloatArray]:
-    """Uncertainty of weight.r/c of a place that turns with the Earth: that of UT1 along its motion, and of the pole."""
-    values = reference.earth_orientation.at(tai_from_tt(tt))
-    along = (weight[..., 1] * r_m[..., 0] - weight[..., 0] * r_m[..., 1]) * (EARTH_ANGULAR_VELOCITY_RAD_S / C_M_S)
-    pole = values.x_sigma_rad**2 + values.y_sigma_rad**2 + values.dx_sigma_rad**2 + values.dy_sigma_rad**2
-    size = np.sqrt(dot(r_m, r_m) * dot(weight, weight)) / C_M_S
-    return {
-        "Earth orientation, UT1": np.asarray(np.abs(along) * values.ut1_sigma_s),
-        "Earth orientation, pole": np.asarray(np.sqrt(pole) * size),
-    }
+def _time_ephemeris(tt: Pair, reference: ReferenceData, assumptions: Assumptions) -> list[Contribution]:
+    """The uncertainty of TT - TDB at the geocentre, which enters TCB - TCG with its sign reversed."""
+    shape = np.shape(tt[0])
+    at_s = np.asarray(np.ravel(tt[0]) + np.ravel(tt[1]), dtype=np.float64)
+    return [
+        Contribution(
+            source="time ephemeris",
+            quantity="TT - TDB at the geocentre",
+            unit="s",
+            sensitivity=np.full(shape, -1.0),
+            sigma=np.full(shape, assumptions.time_ephemeris_sigma_s),
+            value=reference.time_ephemeris.tt_minus_tdb_s(tt),
+            correlation=Exponential(at_s, JULIAN_YEAR_S),
+            handle=("time_ephemeris", 0),
+        )
+    ]

@@ -7,10 +7,14 @@ from typing import Final
 import numpy as np
 
 from .. import exact
-from ..constants import C_M_S, L_B
+from ..budget.assumptions import Assumptions
+from ..budget.contribution import Contribution, Omission
+from ..budget.correlation import Exponential
+from ..budget.places import place_contributions, place_omissions, turns_with_earth
+from ..constants import C_M_S, JULIAN_YEAR_S, L_B
 from ..counts import tai_from_tt, tdb_from_tcb
 from ..earth.moving import tt_from_tdb_at_geocentre
-from ..earth.observer import Observer
+from ..earth.observer import Observer, nearest_inside
 from ..exact import FloatArray
 from ..instants import Instants
 from ..scales import Node, Scale
@@ -19,7 +23,6 @@ from ..surface import SurfaceSite
 from ..tables.notes import orientation_notes
 from ..tables.reference import ReferenceData
 from ..transforms import body_events, lunar
-from .barycentric import TIME_EPHEMERIS_SIGMA_S, _orientation_sigma_s, _turns_with_earth
 from .common import count_difference
 
 __all__ = ["tcl_tcb_step"]
@@ -61,21 +64,37 @@ def tcl_tcb_step(place: str, observer: Observer | None, reference: ReferenceData
         tcl_per_tdb = body_events.body_time_rate(tdb, lunar.MOON, reference, where)
         return np.asarray((_TCB_GAIN - tcl_per_tdb) / (1.0 + tcl_per_tdb))
 
-    def uncertainty_s(before: Instants) -> dict[str, FloatArray]:
-        found = {"time ephemeris of the Moon": np.full(before.shape, TIME_EPHEMERIS_SIGMA_S)}
+    def contributions(before: Instants, assumptions: Assumptions) -> list[Contribution]:
+        at_s = np.asarray(np.ravel(before.whole) + np.ravel(before.fraction), dtype=np.float64)
+        integral = Contribution(
+            source="time ephemeris of the Moon",
+            quantity="TCL - TCB at the selenocentre",
+            unit="s",
+            sensitivity=np.full(before.shape, -1.0),
+            sigma=np.full(before.shape, assumptions.time_ephemeris_sigma_s),
+            correlation=Exponential(at_s, JULIAN_YEAR_S),
+        )
+        found = [integral]
         if not isinstance(where, Observer):
             return found
         tdb = lunar.tdb_from_tcl(before.pair, reference, where)
         _, velocity = reference.ephemeris.state("moon", tdb)
         if isinstance(where, SurfaceSite):
-            found["place on the Moon"] = np.linalg.norm(velocity, axis=-1) * (_SURFACE_SIGMA_M / C_M_S**2)
-        elif _turns_with_earth(where):
-            tt = tt_from_tdb_at_geocentre(tdb, reference)
-            found |= _orientation_sigma_s(tt, where.gcrs(tt, reference)[0], velocity / C_M_S, reference)
-        return found
+            speed = np.linalg.norm(velocity, axis=-1) / C_M_S**2
+            sigma = np.full(before.shape, _SURFACE_SIGMA_M)
+            place = Contribution("place on the Moon", f"place of {where.name} along the Moon's way", "m", speed, sigma)
+            return [*found, place]
+        tt = tt_from_tdb_at_geocentre(tdb, reference)
+        r_m, _ = where.gcrs(nearest_inside(where, tt), reference)
+        return found + place_contributions(where, tt, r_m, velocity / C_M_S**2, reference, assumptions)
+
+    def omissions(assumptions: Assumptions) -> list[Omission]:
+        if not isinstance(where, Observer) or isinstance(where, SurfaceSite):
+            return []
+        return place_omissions(where, assumptions)
 
     def notes(before: Instants) -> tuple[str, ...]:
-        if not isinstance(where, Observer) or isinstance(where, SurfaceSite) or not _turns_with_earth(where):
+        if not isinstance(where, Observer) or isinstance(where, SurfaceSite) or not turns_with_earth(where):
             return ()
         tdb = lunar.tdb_from_tcl(before.pair, reference, where)
         return orientation_notes(tai_from_tt(tt_from_tdb_at_geocentre(tdb, reference)), reference)
@@ -90,6 +109,7 @@ def tcl_tcb_step(place: str, observer: Observer | None, reference: ReferenceData
         backward=lambda t: lunar.tcb_to_tcl(t, reference, where),
         terms=terms,
         rate=rate,
-        uncertainty_s=uncertainty_s,
+        contributions=contributions,
+        omissions=omissions,
         notes=notes,
     )

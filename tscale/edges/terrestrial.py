@@ -7,12 +7,18 @@ from typing import Final
 import numpy as np
 
 from .. import exact
+from ..budget.assumptions import Assumptions
+from ..budget.comparisons import clock_contributions, clock_omissions
+from ..budget.contribution import Contribution
+from ..budget.places import left_out
+from ..budget.rows import orientation_rows, tt_bipm_contributions
 from ..constants import L_G
 from ..exact import FloatArray, Pair
 from ..instants import Instants
 from ..scales import Node, Scale
 from ..step import Step, Terms
 from ..tables.clock_log import ClockLog
+from ..tables.clock_nominal import label_difference
 from ..tables.notes import leap_second_notes, orientation_notes
 from ..tables.reference import ReferenceData
 from ..tables.tt_bipm import TTBIPM
@@ -89,8 +95,21 @@ def tt_tcg_step(place: str | None) -> Step:
     )
 
 
+_UT1_TIDES_S: Final = 9e-5
+"""Largest variation of UT1 within a day by tides, s (IERS Conventions 2010, section 8.2)."""
+
+
 def ut1_step(place: str | None, reference: ReferenceData) -> Step:
     """TAI to UT1."""
+    table = reference.earth_orientation
+
+    def contributions(before: Instants, assumptions: Assumptions) -> list[Contribution]:
+        rows, one = orientation_rows(table, before.pair, assumptions), np.ones(before.shape)
+        found = rows.contributions(0, "Earth orientation, UT1", "s", one)
+        if assumptions.truncation and not table.sub_daily:
+            name = "tides in UT1 within a day, left out"
+            found.append(left_out(name, name, "s", one, _UT1_TIDES_S))
+        return found
 
     def rate(before: Instants, after: Instants) -> FloatArray:
         return reference.earth_orientation.ut1_rate(before.pair)
@@ -104,7 +123,7 @@ def ut1_step(place: str | None, reference: ReferenceData) -> Step:
         backward=lambda t: terrestrial.ut1_to_tai(t, reference.earth_orientation),
         terms=lambda before, after: {"UT1 - TAI": count_difference(before, after)},
         rate=rate,
-        uncertainty_s=lambda before: {"UT1": reference.earth_orientation.at(before.pair).ut1_sigma_s},
+        contributions=contributions,
         notes=lambda before: orientation_notes(before.pair, reference),
     )
 
@@ -124,15 +143,16 @@ def tt_bipm_step(place: str | None, table: TTBIPM) -> Step:
         backward=lambda t: terrestrial.tt_bipm_to_tai(t, table),
         terms=terms,
         rate=lambda before, after: table.rate(before.pair),
-        uncertainty_s=lambda before: {table.scale: np.broadcast_to(table.uncertainty_s(before.pair), before.shape)},
+        contributions=lambda before, assumptions: tt_bipm_contributions(table, before.pair),
     )
 
 
-def clock_step(place: str | None, log: ClockLog) -> Step:
+def clock_step(place: str | None, log: ClockLog, reference: ReferenceData) -> Step:
     """A clock's reading to the scale it was compared with."""
 
     def terms(before: Instants, after: Instants) -> Terms:
-        return {f"{log.reference} - {log.scale}": count_difference(before, after)}
+        shift = label_difference(before, after, reference.leap_seconds)
+        return {f"{log.reference} - {log.scale}": shift}
 
     return Step(
         start=Node(Scale.parse(log.scale), place),
@@ -143,5 +163,7 @@ def clock_step(place: str | None, log: ClockLog) -> Step:
         backward=lambda t: terrestrial.reference_to_clock(t, log),
         terms=terms,
         rate=lambda before, after: log.rate(after.pair),
-        uncertainty_s=lambda before: {log.scale: log.uncertainty_s(log.to_reference(before.pair))},
+        contributions=lambda before, assumptions: clock_contributions(log, log.to_reference(before.pair), assumptions),
+        omissions=lambda assumptions: clock_omissions(log),
+        notes=lambda before: log.notes(log.to_reference(before.pair)),
     )

@@ -4,8 +4,18 @@ from __future__ import annotations
 
 from ..formats.leap_seconds import LeapSeconds
 from .clock_log import ClockLog
+from .clock_noise import ClockNoise
 from .earth_orientation import EarthOrientation, EOPMotion, EOPValues
 from .reference import ReferenceData
 from .tt_bipm import TTBIPM
 
-__all__ = ["TTBIPM", "ClockLog", "EOPMotion", "EOPValues", "EarthOrientation", "LeapSeconds", "ReferenceData"]
+__all__ = [
+    "TTBIPM",
+    "ClockLog",
+    "ClockNoise",
+    "EOPMotion",
+    "EOPValues",
+    "EarthOrientation",
+    "LeapSeconds",
+    "ReferenceData",
+]

@@ -3,33 +3,38 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Sequence
-from dataclasses import dataclass
-from itertools import pairwise
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Literal
 
-import numpy as np
 import numpy.typing as npt
 
-from .. import exact
-from ..errors import InvalidInput, OutOfSpan
-from ..exact import FloatArray, IntArray, Pair
+from ..errors import InvalidInput
+from ..exact import Pair
 from ..formats.leap_seconds import LeapSeconds
 from ..instants import Instants
-from .clock_curve import ClockCurve, Found
 from .clock_files import parse_clock_file
-from .clock_rows import ClockRows, Interpolation, check_forwards, checked_curve, clock_scale, reference_scale
-from .common import FrozenArrays, as_pair, rows_hash, utc_text
+from .clock_joining import joinable, joined_curve
+from .clock_map import ClockMap
+from .clock_noise import ClockNoise
+from .clock_nominal import Nominal
+from .clock_prediction import Forecast, forecast
+from .clock_rows import Interpolation, checked_curve, given_rows
+
+if TYPE_CHECKING:
+    from .clock_report import ClockReport
 
 __all__ = ["ClockLog"]
 
 
 @dataclass(frozen=True, eq=False, repr=False)
-class ClockLog(FrozenArrays):
+class ClockLog(ClockMap):
     """Offsets of a clock from a reference scale, known at comparisons and interpolated between them.
 
-    Make one with `load`, `from_rows` or `joined`. Both scales are labelled like UTC: UTC, UTC(laboratory), CLOCK(name).
+    Make one with `load`, `from_rows` or `joined`. The clock is labelled like UTC; the reference is UTC,
+    UTC(laboratory), CLOCK(name), or TAI, TT, TT(realisation) or a satellite-navigation time, with the nominal
+    difference of the labels taken out (see `clock_nominal`).
 
     Attributes
     ----------
@@ -39,29 +44,28 @@ class ClockLog(FrozenArrays):
         The scale it was compared with.
     name : str
         Shown in messages and provenance.
-    interpolation : {"linear", "step"}
+    interpolation : {"linear", "step", "cubic"}
         Linear: the offset runs straight from one comparison to the next. Step: it holds until the next, then jumps.
+        Cubic: it runs with a continuous rate, by piecewise cubic Bessel interpolation (see `clock_bends`).
     sha256 : str
         Of the file's bytes, or of the rows.
     path : pathlib.Path or None
         The file.
+    marks : tuple of LogMark
+        Rows that are not used, resets and rate steps, as the rows say.
+    noise : ClockNoise or None
+        What the clock wanders between comparisons, if it is known.
 
     Notes
     -----
-    Nothing is extrapolated, and nothing is interpolated across a gap: an empty offset in the file, or comparisons
-    further apart than `max_gap_s`. The comparisons at either side of a gap can themselves be used.
+    Nothing is extrapolated (but see `predicted`), and nothing is interpolated across a gap: an empty offset in the
+    file, comparisons further apart than `max_gap_s`, or a reset of unknown size. The comparisons at either side of a
+    gap can themselves be used.
 
-    With steps a clock set forward skips readings, and one set back shows some twice. Neither kind belongs to one
-    instant of the reference, so `to_reference` refuses both, with the mask.
+    With steps, and at resets, a clock set forward skips readings, and one set back shows some twice. Neither kind
+    belongs to one instant of the reference, so `to_reference` refuses both, with the mask. A reset leaves the rate
+    alone: cubics run on through it. They turn a corner at a rate step.
     """
-
-    scale: str
-    reference: str
-    name: str
-    interpolation: Interpolation
-    sha256: str
-    path: Path | None
-    _curve: ClockCurve
 
     @classmethod
     def load(
@@ -69,11 +73,13 @@ class ClockLog(FrozenArrays):
         path: str | Path,
         *,
         name: str | None = None,
-        interpolation: Interpolation = "linear",
+        interpolation: Interpolation | None = None,
         max_gap_s: float | None = None,
+        nominal: Nominal | None = None,
         leap_seconds: LeapSeconds | None = None,
     ) -> ClockLog:
-        """Read a CSV file with columns `epoch`, `offset_s`, `uncertainty_s` and, if wanted, `reference` and `clock`.
+        """Read a CSV file with columns `epoch`, `offset_s`, `uncertainty_s` and, if wanted, `reference`, `clock`,
+        `nominal`, `interpolation`, `max_gap_s`, `use`, `reset_s` and `rate_step`.
 
         Parameters
         ----------
@@ -81,10 +87,12 @@ class ClockLog(FrozenArrays):
             The file; `clock_files` tells its layout.
         name : str, optional
             The clock, before any `clock` column: `maser`, `CLOCK(maser)` or `UTC(KST)`. Default: the file's name.
-        interpolation : {"linear", "step"}
-            See the class.
+        interpolation : {"linear", "step", "cubic"}
+            See the class. Default: what the file says, else linear.
         max_gap_s : float, optional
-            Comparisons further apart than this leave a gap.
+            Comparisons further apart than this leave a gap. Default: what the file says, else any.
+        nominal : {"removed", "included"}, optional
+            Where the reference is not labelled like UTC and the file has no such column: see `clock_nominal`.
         leap_seconds : LeapSeconds, optional
             For reading the epochs.
 
@@ -95,9 +103,10 @@ class ClockLog(FrozenArrays):
             or doubled, references that differ, a clock that would run backwards.
         """
         path = Path(path)
-        rows = parse_clock_file(path, name, leap_seconds)
+        rows = parse_clock_file(path, name, leap_seconds, nominal)
         curve = checked_curve(rows, path.name, path, interpolation, max_gap_s)
-        return cls(rows.scale, rows.reference, path.name, interpolation, rows.sha256, path, curve)
+        kind = interpolation or rows.interpolation or "linear"
+        return cls(rows.scale, rows.reference, path.name, kind, rows.sha256, path, curve, rows.marks)
 
     @classmethod
     def from_rows(
@@ -108,8 +117,13 @@ class ClockLog(FrozenArrays):
         uncertainty_s: npt.ArrayLike = 0.0,
         *,
         missing: npt.ArrayLike = False,
+        use: npt.ArrayLike = True,
+        reset_s: npt.ArrayLike = 0.0,
+        rate_step: npt.ArrayLike = False,
+        nominal: Nominal | None = None,
         interpolation: Interpolation = "linear",
         max_gap_s: float | None = None,
+        leap_seconds: LeapSeconds | None = None,
     ) -> ClockLog:
         """Make a log from comparisons at hand.
 
@@ -125,162 +139,141 @@ class ClockLog(FrozenArrays):
             Standard uncertainties.
         missing : bool array
             True where a comparison failed: a gap.
+        use : bool array
+            False for a comparison that is to be left out, an outlier: no gap.
+        reset_s : float array
+            By how much the clock was set forward at the epoch, where the offset is that after; NaN for a reset of
+            unknown size, zero for none.
+        rate_step : bool array
+            True where the clock's rate was changed at the epoch.
+        nominal : {"removed", "included"}, optional
+            Needed where the reference is not labelled like UTC: see `clock_nominal`.
         """
-        count = epoch.shape
-        if len(count) != 1:
-            raise InvalidInput(f"comparisons are a one-dimensional list of instants, got shape {count}")
-        try:
-            given: tuple[Any, ...] = (0, offset_s)
-            if isinstance(offset_s, tuple) and len(offset_s) == 2 and np.asarray(offset_s[0]).dtype.kind in "iu":
-                given = offset_s
-            parts = [np.broadcast_to(np.asarray(part, dtype=np.float64), count) for part in (*given, uncertainty_s)]
-            failed = np.array(np.broadcast_to(np.asarray(missing, dtype=np.bool_), count))
-        except (TypeError, ValueError) as error:
-            raise InvalidInput(
-                f"offsets, uncertainties and gaps must be numbers, as many as epochs: {error}"
-            ) from error
-        bad = ~failed & (~np.isfinite(parts).all(axis=0) | (parts[2] < 0.0))
-        if bad.any():
-            raise InvalidInput(
-                "offsets must be finite and uncertainties zero or more; flag failures with missing=", mask=bad
-            )
-        whole, fraction, sigma = (np.where(failed, 0.0, part) for part in parts)
-        offset = exact.normalise(whole.astype(np.int64), fraction)
-        sha256 = rows_hash(*epoch.pair, *offset, failed, sigma)
-        scale, reference = clock_scale(clock).name, reference_scale(epoch.scale).name
-        rows = ClockRows(scale, reference, epoch, offset, failed, sigma, [], sha256)
-        curve = checked_curve(rows, scale, None, interpolation, max_gap_s)
-        return cls(scale, reference, scale, interpolation, sha256, None, curve)
+        rows = given_rows(
+            clock, epoch, offset_s, uncertainty_s, missing, use, reset_s, rate_step, nominal, leap_seconds
+        )
+        curve = checked_curve(rows, rows.scale, None, interpolation, max_gap_s)
+        return cls(rows.scale, rows.reference, rows.scale, interpolation, rows.sha256, None, curve, rows.marks)
 
     @classmethod
-    def joined(cls, logs: Sequence[ClockLog]) -> ClockLog:
-        """Join logs of one clock against one reference; from the end of one to the start of the next is a gap.
+    def joined(
+        cls, logs: Sequence[ClockLog], *, within_s: float = 0.0, overlap: Literal["error", "last"] = "error"
+    ) -> ClockLog:
+        """Join logs of one clock against one reference.
+
+        Parameters
+        ----------
+        logs : sequence of ClockLog
+            Any order, unless they overlap.
+        within_s : float
+            From the end of one to the start of the next is a gap, unless they are no more than this apart, s: then they
+            go on into each other as if they were one file.
+        overlap : {"error", "last"}
+            Logs that overlap are an error, or the last given holds where they do, as a later issue.
 
         Raises
         ------
         InvalidInput
-            For logs of different clocks, references or interpolations, or that overlap.
+            For logs of different clocks, references, interpolations or noise, that overlap, or that are predicted.
         """
-        if not logs:
-            raise InvalidInput("nothing to join: give at least one ClockLog")
-        first = logs[0]
-        for log in logs[1:]:
-            for part in ("scale", "reference", "interpolation"):
-                if getattr(log, part) != getattr(first, part):
-                    raise InvalidInput(
-                        f"cannot join {first.name!r} and {log.name!r}: {part} is {getattr(first, part)!r} and "
-                        f"{getattr(log, part)!r}; logs that are joined have the same"
-                    )
-        ordered = sorted(logs, key=lambda log: (log.span.whole[0], log.span.fraction[0]))
-        for before, after in pairwise(ordered):
-            if not before.span[1] < after.span[0]:
-                raise InvalidInput(
-                    f"{before.name!r} (to {before._ends()[1]}) and {after.name!r} (from {after._ends()[0]}) overlap; "
-                    f"cut one, so that each comparison of {first.scale} is in one log"
-                )
-        curves = [log._curve for log in ordered]
-        reference, offset = (
-            _joined_pairs([getattr(curve, part) for curve in curves]) for part in ("reference", "offset")
-        )
-        sigma, gap = (np.concatenate([getattr(curve, part) for curve in curves]) for part in ("sigma_s", "gap"))
-        curve = ClockCurve.of(reference, offset, sigma, gap, first.interpolation == "step")
-        check_forwards(curve, first.scale, [], None)
+        first = joinable(logs)[0]
+        curve = joined_curve(logs, within_s, overlap)
+        by_time = sorted(logs, key=lambda log: (log.span.whole[0], log.span.fraction[0]))
+        # With overlaps the order given matters, else it does not.
+        ordered = by_time if overlap == "error" else list(logs)
         sha256 = hashlib.sha256(" ".join(log.sha256 for log in ordered).encode()).hexdigest()
         name = " + ".join(log.name for log in ordered)
-        return cls(first.scale, first.reference, name, first.interpolation, sha256, None, curve)
+        marks = tuple(mark for log in ordered for mark in log.marks)
+        return cls(first.scale, first.reference, name, first.interpolation, sha256, None, curve, marks, first.noise)
 
-    # ---- facts -----------------------------------------------------------------------------------
+    @staticmethod
+    def inspect(
+        source: str | Path | Sequence[Mapping[str, str]],
+        *,
+        nominal: Nominal | None = None,
+        max_gap_s: float | None = None,
+        threshold: float = 6.0,
+        leap_seconds: LeapSeconds | None = None,
+    ) -> ClockReport:
+        """Look a log over and report all that is odd in it, at once; see `clock_inspection.inspect_log`."""
+        from .clock_inspection import inspect_log
 
-    @property
-    def span(self) -> Instants:
-        """First and last comparison, on the reference scale."""
-        whole, fraction = self._curve.reference
-        return Instants._of((whole[[0, -1]], fraction[[0, -1]]), self.reference)
+        return inspect_log(source, nominal=nominal, max_gap_s=max_gap_s, threshold=threshold, leap_seconds=leap_seconds)
 
-    @property
-    def issued(self) -> str:
-        """Date of the last comparison."""
-        return self._ends()[1][:10]
+    # ---- past the comparisons --------------------------------------------------------------------
 
-    def __len__(self) -> int:
-        return len(self._curve.gap)
+    def with_noise(self, noise: ClockNoise) -> ClockLog:
+        """The same log, whose uncertainty between comparisons holds what a clock of this noise wanders there."""
+        if self.interpolation == "step":
+            raise InvalidInput(
+                f"{self.name!r} is a step log, which says that the clock holds between comparisons; load it as linear "
+                "or cubic to give it noise"
+            )
+        return replace(self, noise=noise)
 
-    def __repr__(self) -> str:
-        start, end = self._ends()
-        return f"<ClockLog {self.name!r} {self.scale} by {self.reference}, {len(self)} comparisons, {start} to {end}>"
+    def predicted(
+        self,
+        noise: ClockNoise,
+        *,
+        fit_s: float,
+        until: str | Instants | None = None,
+        start: str | Instants | None = None,
+        drift: bool = False,
+    ) -> ClockLog:
+        """Give the same log going on past its last comparison, or back before its first, with growing uncertainty.
 
-    # ---- the map ---------------------------------------------------------------------------------
+        The offset goes on from the last comparison along the straight line through it and the first comparison of the
+        last `fit_s` seconds (the best there is for white frequency noise), with `drift` along the parabola through
+        these two and the one nearest half way. Its uncertainty is that of the comparisons, taken as independent of each
+        other, and of what the clock wanders from the line by its noise; a drift that is left out is not in it.
 
-    def to_clock(self, reference: Pair) -> Pair:
-        """What the clock reads at counts of the reference scale.
+        Parameters
+        ----------
+        noise : ClockNoise
+            Levels of the clock.
+        fit_s : float
+            Length of the stretch at the end (and the start) of the log that the rate is taken from, s.
+        until, start : str or Instants
+            Where the log is to end, and to start: an instant of the reference scale, or its ISO 8601 label.
+        drift : bool
+            Take the clock's drift from the stretch too.
 
         Raises
         ------
-        OutOfSpan
-            Outside the comparisons or in a gap, with the mask.
+        InvalidInput
+            For a stretch with too few comparisons, a rate step, a reset of unknown size or the seam of two logs.
+
+        Warns
+        -----
+        ExtrapolationWarning
+            By the log that is returned, when it maps instants past the comparisons.
         """
-        at, index = self._at_reference(reference)
-        return self._curve.to_clock(at, index)
+        if until is None and start is None:
+            raise InvalidInput("say until when to predict: until=, or start= for before the first comparison")
+        if self.is_predicted:
+            raise InvalidInput(f"{self.name!r} is predicted already; start from the log of the comparisons")
+        if not 0.0 < fit_s < float("inf"):
+            raise InvalidInput(f"fit_s is a length of time above zero, got {fit_s!r}")
+        noisy = self.with_noise(noise)
+        curve = self._curve
+        found: list[Forecast] = []
+        if until is not None:
+            curve, ahead = forecast(curve, self.name, self._instant(until), fit_s, drift, after=True)
+            found.append(ahead)
+        if start is not None:
+            curve, back = forecast(curve, self.name, self._instant(start), fit_s, drift, after=False)
+            found = [Forecast(ahead.interval + 1, ahead.nodes + 1) for ahead in found] + [back]
+        if curve.backwards().any():
+            raise InvalidInput(f"{self.scale} would run backwards within the prediction; take the rate from elsewhere")
+        digest = f"{self.sha256} {noise} {fit_s} {drift} {[curve.reference[0][[0, -1]], curve.reference[1][[0, -1]]]}"
+        sha256 = hashlib.sha256(digest.encode()).hexdigest()
+        return replace(noisy, sha256=sha256, _curve=curve, _forecasts=tuple(found))
 
-    def to_reference(self, reading: Pair) -> Pair:
-        """Counts of the reference scale at readings of the clock: inverse of `to_clock` within 0.2 fs.
-
-        Raises
-        ------
-        OutOfSpan
-            Outside the comparisons, in a gap, or for a reading that a step skipped or showed twice; with the mask.
-        """
-        at = as_pair(reading)
-        found = self._curve.find_clock(at)
-        self._check(found, "readings")
-        return self._curve.to_reference(at, found.interval)
-
-    def offset(self, reference: Pair) -> Pair:
-        """Clock minus reference at counts of the reference scale, as (whole s, fraction); errors as `to_clock`."""
-        return self._curve.offset_at(*self._at_reference(reference))
-
-    def uncertainty_s(self, reference: Pair) -> FloatArray:
-        """Give the standard uncertainty of the offset at counts of the reference scale, s; errors as `to_clock`.
-
-        Linear logs: straight between those of the two comparisons, taking their errors to go together. Step logs: that
-        of the last comparison. What the clock itself wanders between comparisons is not in it.
-        """
-        return self._curve.sigma_at(*self._at_reference(reference))
-
-    def rate(self, reference: Pair) -> FloatArray:
-        """d(reference)/d(clock) - 1 at counts of the reference scale: zero in a step log; errors as `to_clock`."""
-        slope = self._curve.slope(self._at_reference(reference)[1])
-        return np.asarray(-slope / (1.0 + slope))
-
-    # ---- inside ----------------------------------------------------------------------------------
-
-    def _at_reference(self, reference: Pair) -> tuple[Pair, IntArray]:
-        at = as_pair(reference)
-        found = self._curve.find_reference(at)
-        self._check(found, "instants")
-        return at, found.interval
-
-    def _ends(self) -> tuple[str, str]:
-        whole, fraction = self.span.pair
-        return utc_text((whole[0], fraction[0])), utc_text((whole[1], fraction[1]))
-
-    def _check(self, found: Found, what: str) -> None:
-        bad = found.bad
-        if not bad.any():
-            return
-        start, end = self._ends()
-        reasons = {
-            f"outside the comparisons ({start} to {end} {self.reference})": found.outside,
-            "in a gap between comparisons": found.gap,
-            "skipped or shown twice where the clock was stepped": found.jump,
-        }
-        listed = ", ".join(f"{np.count_nonzero(mask)} {reason}" for reason, mask in reasons.items() if mask.any())
-        raise OutOfSpan(
-            f"{np.count_nonzero(bad)} of {bad.size} {what} cannot be dated with the log {self.name!r} of "
-            f"{self.scale}: {listed}; add comparisons, or leave them out (see .mask)",
-            mask=bad,
-        )
-
-
-def _joined_pairs(pairs: Sequence[Pair]) -> Pair:
-    return np.concatenate([pair[0] for pair in pairs]), np.concatenate([pair[1] for pair in pairs])
+    def _instant(self, end: str | Instants) -> Pair:
+        """One instant of the reference, as a text or as itself."""
+        at = Instants.from_iso(end, self.reference) if isinstance(end, str) else end
+        if not isinstance(at, Instants) or at.scale != self.reference or at.shape not in ((), (1,)):
+            raise InvalidInput(
+                f"the end of a prediction is one instant of {self.reference}, or its ISO 8601 label, got {end!r:.80}"
+            )
+        return at.pair[0].reshape(()), at.pair[1].reshape(())

@@ -4,47 +4,76 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from pathlib import Path
-from typing import Literal, NamedTuple, TypeAlias
+from typing import Any, Final, Literal, NamedTuple, TypeAlias, get_args
 
 import numpy as np
+import numpy.typing as npt
 
+from .. import exact
 from ..errors import DataFileError, InvalidInput
-from ..exact import BoolArray, FloatArray, Pair
+from ..exact import BoolArray, FloatArray, IntArray, Pair
+from ..formats.leap_seconds import LeapSeconds
 from ..instants import Instants
 from ..scales import Scale
 from .clock_curve import ClockCurve
-from .common import since
+from .clock_nominal import Nominal, check_nominal, nominal_count, reference_scale, without_nominal
+from .common import rows_hash, since
 
-__all__ = ["ClockRows", "Interpolation", "check_forwards", "checked_curve", "clock_scale", "reference_scale"]
+__all__ = [
+    "ClockRows",
+    "Interpolation",
+    "LogMark",
+    "check_forwards",
+    "check_options",
+    "checked_curve",
+    "clock_scale",
+    "given_rows",
+]
 
-Interpolation: TypeAlias = Literal["linear", "step"]
-_KINDS = ("linear", "step")
+Interpolation: TypeAlias = Literal["linear", "step", "cubic"]
+
+
+_LARGEST_BEND_S: Final = 0.5
+"""Of the ends of a cubic; beyond a few times this it would not close to 1 fs. Its swing is at most a quarter."""
+
+
+class LogMark(NamedTuple):
+    """Something that a log says of one of its rows."""
+
+    kind: str
+    """`not used`, `reset` or `rate step`."""
+    epoch: str
+    """As the file writes it."""
+    row: int | None
+    """Line of the file, from 1; place among the rows given, from 0; None where it is not known."""
+    size_s: float | None
+    """Of a reset, where it is known."""
 
 
 class ClockRows(NamedTuple):
-    """Comparisons of one clock, in the order of the file."""
+    """Comparisons of one clock, in the order of the file, without those that are not to be used."""
 
     scale: str
     reference: str
     epoch: Instants
     offset: Pair
-    """Clock minus reference; zero where missing."""
+    """Clock minus reference, with nominal differences removed; zero where missing."""
     missing: BoolArray
     uncertainty_s: FloatArray
     row: list[int]
     """Line of each row in the file, from 1."""
     sha256: str
-
-
-def reference_scale(name: str) -> Scale:
-    """Look a reference up: UTC, UTC(k) or CLOCK(x), else `InvalidInput` that says why."""
-    scale = Scale.parse(name)
-    if scale.family not in ("UTC", "CLOCK"):
-        raise InvalidInput(
-            f"a clock is compared with UTC, UTC(laboratory) or CLOCK(name), got {name!r}: both sides of a comparison "
-            f"carry labels with leap seconds; turn the epochs into UTC labels first"
-        )
-    return scale
+    reset: Pair
+    """By how much the clock was set forward at this epoch."""
+    broken: BoolArray
+    """Where it was set by an unknown amount."""
+    corner: BoolArray
+    """Where its rate was changed."""
+    marks: tuple[LogMark, ...]
+    interpolation: Interpolation | None = None
+    """What the file itself asks for."""
+    max_gap_s: float | None = None
+    """The same."""
 
 
 def clock_scale(name: str) -> Scale:
@@ -61,14 +90,23 @@ def clock_scale(name: str) -> Scale:
     return scale
 
 
-def checked_curve(
-    rows: ClockRows, name: str, path: Path | None, interpolation: Interpolation, max_gap_s: float | None
-) -> ClockCurve:
-    """Lay the rows out, or say which of them does not fit."""
-    if interpolation not in _KINDS:
-        raise InvalidInput(f"interpolation is 'linear' or 'step', got {interpolation!r}")
+def check_options(interpolation: Interpolation, max_gap_s: float | None) -> None:
+    """Raise `InvalidInput` for a kind of interpolation or a gap that cannot be."""
+    kinds = get_args(Interpolation)
+    if interpolation not in kinds:
+        *most, last = (repr(kind) for kind in kinds)
+        raise InvalidInput(f"interpolation is {', '.join(most)} or {last}, got {interpolation!r}")
     if max_gap_s is not None and not max_gap_s > 0.0:
         raise InvalidInput(f"max_gap_s is a length of time above zero, got {max_gap_s!r}")
+
+
+def checked_curve(
+    rows: ClockRows, name: str, path: Path | None, interpolation: Interpolation | None, max_gap_s: float | None
+) -> ClockCurve:
+    """Lay the rows out, or say which of them does not fit; what is None is as the rows say."""
+    interpolation = interpolation or rows.interpolation or "linear"
+    max_gap_s = rows.max_gap_s if max_gap_s is None else max_gap_s
+    check_options(interpolation, max_gap_s)
     if rows.scale == rows.reference:
         raise InvalidInput(f"{rows.scale} is compared with itself; name the clock and its reference apart", path=path)
     epoch = rows.epoch.pair
@@ -87,10 +125,120 @@ def checked_curve(
     gap = np.append(np.diff(kept) > 1, True)
     if max_gap_s is not None:
         gap[:-1] |= since((reference[0][:-1], reference[1][:-1]), (reference[0][1:], reference[1][1:])) > max_gap_s
+    # What happened at failed comparisons falls to the next that did not fail.
+    before = np.append(0, kept[:-1] + 1)
+    broken = np.append(np.logical_or.reduceat(rows.broken, before)[1:], True)
+    reset = _summed(rows.reset, before, kept)
+    if interpolation != "step":  # a step log jumps there as at every comparison
+        gap |= broken
     offset = (rows.offset[0][kept], rows.offset[1][kept])
-    curve = ClockCurve.of(reference, offset, rows.uncertainty_s[kept], gap, interpolation == "step")
+    corner = np.logical_or.reduceat(rows.corner, before)
+    # Before a reset at the very first comparison the clock was another one.
+    corner[0] |= bool(rows.broken[: kept[0] + 1].any()) or bool(reset[0][0] != 0) or bool(reset[1][0] != 0.0)
+    curve = ClockCurve.of(
+        reference,
+        exact.add(offset, nominal_count(rows.reference)),
+        rows.uncertainty_s[kept],
+        gap,
+        interpolation,
+        reset=reset,
+        broken=broken,
+        corner=corner,
+    )
     check_forwards(curve, rows.scale, [rows.row[place] for place in kept] if rows.row else [], path)
     return curve
+
+
+def given_rows(
+    clock: str,
+    epoch: Instants,
+    offset_s: npt.ArrayLike | Pair,
+    uncertainty_s: npt.ArrayLike,
+    missing: npt.ArrayLike,
+    used: npt.ArrayLike,
+    reset_s: npt.ArrayLike,
+    rate_step: npt.ArrayLike,
+    nominal: Nominal | None,
+    leap_seconds: LeapSeconds | None,
+) -> ClockRows:
+    """Check comparisons that come as arrays; the arguments are those of `ClockLog.from_rows`."""
+    count = epoch.shape
+    if len(count) != 1:
+        raise InvalidInput(f"comparisons are a one-dimensional list of instants, got shape {count}")
+    scale, reference = clock_scale(clock).name, reference_scale(epoch.scale).name
+    check_nominal(reference, nominal)
+    try:
+        given: tuple[Any, ...] = (0, offset_s)
+        if isinstance(offset_s, tuple) and len(offset_s) == 2 and np.asarray(offset_s[0]).dtype.kind in "iu":
+            given = offset_s
+        parts = [np.broadcast_to(np.asarray(part, np.float64), count) for part in (*given, uncertainty_s, reset_s)]
+        flags = [np.array(np.broadcast_to(np.asarray(part, np.bool_), count)) for part in (missing, used, rate_step)]
+    except (TypeError, ValueError) as error:
+        raise InvalidInput(f"offsets, uncertainties and gaps must be numbers, as many as epochs: {error}") from error
+    failed, kept, corner = flags
+    bad = kept & ~failed & (~np.isfinite(parts[:3]).all(axis=0) | (parts[2] < 0.0))
+    if bad.any():
+        raise InvalidInput(
+            "offsets must be finite and uncertainties zero or more; flag failures with missing=", mask=bad
+        )
+    lost = ~kept & ((parts[3] != 0.0) | corner)
+    if lost.any() or np.isinf(parts[3]).any():
+        raise InvalidInput(
+            "resets and rate steps are finite (or NaN, for a reset of unknown size) and stand on rows that are used",
+            mask=lost | np.isinf(parts[3]),
+        )
+    broken = np.isnan(parts[3])
+    reset_s = np.where(broken, 0.0, parts[3])
+    whole, fraction, sigma = (np.where(failed | ~kept, 0.0, part) for part in parts[:3])
+    offset = exact.normalise(whole.astype(np.int64), fraction)
+    extras = [kept, parts[3], corner] if not kept.all() or parts[3].any() or corner.any() else []
+    sha256 = rows_hash(*epoch.pair, *offset, failed, sigma, *extras)
+    if nominal == "included":
+        offset, large = without_nominal(offset, epoch.pair, reference, leap_seconds or LeapSeconds.default())
+        large &= ~failed & kept
+        if large.any():
+            raise InvalidInput(f"these offsets from {reference} do not hold the nominal difference", mask=large)
+    marks = [
+        LogMark(kind, text, place, size)
+        for place, text in _dates(epoch, ~kept | (parts[3] != 0.0) | corner, leap_seconds)
+        for kind, there, size in (
+            ("not used", not kept[place], None),
+            ("reset", parts[3][place] != 0.0, None if broken[place] else float(parts[3][place])),
+            ("rate step", corner[place], None),
+        )
+        if there
+    ]
+    picked = np.flatnonzero(kept)
+    return ClockRows(
+        scale,
+        reference,
+        epoch[picked],
+        (offset[0][picked], offset[1][picked]),
+        failed[picked],
+        sigma[picked],
+        [],
+        sha256,
+        exact.from_seconds(reset_s[picked]),
+        broken[picked],
+        corner[picked],
+        tuple(marks),
+    )
+
+
+def _dates(epoch: Instants, wanted: BoolArray, leap_seconds: LeapSeconds | None) -> list[tuple[int, str]]:
+    places = np.flatnonzero(wanted)
+    texts = epoch[places].to_iso(0, leap_seconds=leap_seconds)
+    return [(int(place), str(text)) for place, text in zip(places, texts, strict=True)]
+
+
+def _summed(pair: Pair, first: IntArray, last: IntArray) -> Pair:
+    """Sums over runs of rows that end with `last`; nearly always one row each."""
+    total = (pair[0][last], pair[1][last])
+    for extra in range(1, int(np.max(last - first, initial=0)) + 1):
+        more = last - extra >= first
+        place = np.maximum(last - extra, 0)
+        total = exact.add(total, (np.where(more, pair[0][place], 0), np.where(more, pair[1][place], 0.0)))
+    return total
 
 
 def _complaint(text: str, bad: BoolArray, lines: Sequence[int], path: Path | None) -> DataFileError | InvalidInput:
@@ -101,7 +249,17 @@ def _complaint(text: str, bad: BoolArray, lines: Sequence[int], path: Path | Non
 
 
 def check_forwards(curve: ClockCurve, scale: str, lines: Sequence[int], path: Path | None) -> None:
-    """Raise unless every comparison is read later on the clock than the one before."""
+    """Raise unless every comparison is read later on the clock than the one before, and cubics stay near the line."""
+    if curve.bend is not None:
+        wild = ~curve.gap & (np.maximum(np.abs(curve.bend.start_s), np.abs(curve.bend.end_s)) > _LARGEST_BEND_S)
+        if wild.any():
+            raise _complaint(
+                "the cubic from this comparison to the next swings out by more than 0.1 s: the rates on either side "
+                "are too far apart; interpolate linearly, or mark a rate step or a gap",
+                wild,
+                lines,
+                path,
+            )
     bad = curve.backwards()
     if bad.any():
         raise _complaint(
