@@ -164,7 +164,7 @@ def test_other_files(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert text.startswith("s.toml:1 is not TOML")
     (folder / "l.dat").write_text("# rows\nnonsense\n")
     assert complaint(capsys, "data", "--leap-seconds", "l.dat").startswith("l.dat:2: 'nonsense' is not a row")
-    (folder / "x.txt").write_text("".join(f" {53000 + 10 * i}  32.0 27.0\n" for i in range(3)))
+    (folder / "x.txt").write_text("".join(f" {53000 + 10 * i}  32.0000 27.0000\n" for i in range(3)))
     text = complaint(capsys, "data", "--tt-bipm", "x.txt")
     assert "rename the file as the BIPM does, to TTBIPM.23" in text
     assert "name='BIPM23'" in text

@@ -81,7 +81,7 @@ def test_one_clock_with_two_references(folder: Path, capsys: pytest.CaptureFixtu
 
 def test_pieces_that_no_step_reads_are_noted(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     write("in.csv", "2025-03-05")
-    rows = "".join(f" {60000 + 10 * i}  32.0 27.0\n" for i in range(99))
+    rows = "".join(f" {60000 + 10 * i}  32.0000 27.0000\n" for i in range(99))
     Path("TTBIPM.23").write_text(rows)
     pieces = [*SITE, *SOURCE, "--clock", MASER, "--tt-bipm", "TTBIPM.23"]
     idle = ["maser.csv", "TTBIPM.23", "site.toml", "source.toml"]

@@ -31,3 +31,8 @@ def test_arrival_times_are_flat(tmp_path: Path) -> None:
 
 def test_convert_readings(tmp_path: Path) -> None:
     assert "TDB@BARYCENTER" in output("convert_readings.py", tmp_path)
+
+
+def test_a_cluster_gives_the_bytes_of_one_process(tmp_path: Path) -> None:
+    text = output("on_a_cluster.py", tmp_path, "--readings", "300000")
+    assert "300000 readings; the same bytes as in this process alone: True" in text

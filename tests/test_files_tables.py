@@ -19,7 +19,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 import tscale
-from tscale.errors import DataFileError, InvalidInput
+from tscale.errors import DataFileError, InvalidInput, TextError
 from tscale.files.arrow_columns import date_columns, fields, find_dates, instants_of
 from tscale.files.stream import in_order, map_blocks
 from tscale.files.tables import convert_table
@@ -81,7 +81,7 @@ def test_a_file_keeps_its_columns_and_gains_the_dates_of_the_chain(tmp_path: Pat
         CHAIN, source, tmp_path / f"out{ending}", threads=threads, rows=600, progress=lambda a, b: seen.append((a, b))
     )
     after = load(tmp_path / f"out{ending}")
-    assert done == (t.size, 0, "TDB@GEOCENTER")
+    assert done == (t.size, 0, ("TDB@GEOCENTER_whole_s", "TDB@GEOCENTER_fraction_s"))
     assert seen[-1] == (t.size, t.size)
     assert len(seen) > 5
     assert after.select(before.column_names).equals(before)
@@ -105,10 +105,13 @@ def test_files_of_a_folder_are_one_table_in_the_order_of_their_names(tmp_path: P
 class _Broken:
     """A chain that fails after some blocks."""
 
-    start, end, sha256 = CHAIN.start, CHAIN.end, "the same chain"
+    start, end = CHAIN.start, CHAIN.end
 
     def __init__(self, blocks: int) -> None:
         self.left = blocks
+
+    def to_bytes(self) -> bytes:
+        return b"the same chain"
 
     def __call__(self, t: tscale.Instants) -> tscale.Instants:
         if self.left == 0:
@@ -235,6 +238,7 @@ def test_columns_are_chosen_by_name_and_contradictions_refused(tmp_path: Path) -
     with pytest.raises(InvalidInput, match="nothing says which scale"):
         instants_of(plain)
     assert instants_of(plain, node=Node.parse("TT@GEOCENTER")).place == "GEOCENTER"
+    assert instants_of(plain, node=Node.parse("TT@GEOCENTER")).whole.tolist() == [1]
     with pytest.raises(DataFileError, match=r"'x_whole_s' is double, dates need int64"):
         find_dates(pa.table({"x_whole_s": [1.0], "x_fraction_s": [0.25]}).schema)
     mixed = pa.schema([fields("x", Node.parse("UTC"))[0], fields("x", Node.parse("TAI"))[1]])
@@ -245,6 +249,49 @@ def test_columns_are_chosen_by_name_and_contradictions_refused(tmp_path: Path) -
         find_dates(pa.schema([moved, plain.schema.field(1)]))
     with pytest.raises(InvalidInput, match=r"must end in \.parquet, \.arrow, \.feather"):
         convert_table(CHAIN, tmp_path / "events.txt", tmp_path / "out.parquet")
+
+
+def test_timestamps_and_texts_are_dates_too(tmp_path: Path) -> None:
+    t = tscale.Instants.from_iso(["2016-12-31T23:59:59.250", "2017-01-01T00:00:00.125"], "UTC")
+    stamps = pa.array(t.to_iso(3).astype("datetime64[ms]"))
+    plain = pa.table({"stamp": stamps, "text": t.to_iso(9).tolist(), "other": [1.0, 2.0]})
+    for column in ("stamp", "text"):
+        convert_table(CHAIN, save(plain, tmp_path / "in.parquet"), tmp_path / "out.parquet", column=column)
+        assert same(instants_of(load(tmp_path / "out.parquet"), "TDB@GEOCENTER"), CHAIN(t))
+    assert find_dates(plain.schema).name == "stamp"
+    zoned = pa.table({"stamp": stamps.cast(pa.timestamp("us", tz="Pacific/Auckland"))})
+    assert same(instants_of(zoned), t)  # Arrow keeps UTC, whatever the zone
+    with pytest.raises(InvalidInput, match="are UTC by their metadata, not TAI"):
+        instants_of(zoned, node=Node.parse("TAI"))
+    with pytest.raises(InvalidInput, match="nothing says which scale"):
+        instants_of(plain)
+    with pytest.raises(DataFileError, match="column 'other' is double"):
+        find_dates(plain.schema, "other")
+    wrong = pa.table({"text": ["2017-01-01"] * 70 + ["2017-02-30"]})
+    with pytest.raises(TextError, match="2017-02-30") as caught:
+        convert_table(CHAIN, save(wrong, tmp_path / "in.parquet"), tmp_path / "o.parquet", column="text", rows=50)
+    assert caught.value.row == 71
+
+
+def test_terms_sigmas_and_rates_are_columns_on_request(tmp_path: Path) -> None:
+    t = events(300)
+    chains = [CHAIN, tscale.chain("UTC", "TT@GEOCENTER")]
+    source = save(table(t), tmp_path / "in.parquet")
+    convert_table(chains, source, tmp_path / "out.parquet", result=["tdb", "tt"], ledger=True, sigma=True, rate=True)
+    after = load(tmp_path / "out.parquet")
+    assert same(instants_of(after, "tt"), chains[1](t))
+    assert np.array_equal(after["tdb_sigma_s"], CHAIN.sigma_s(t))
+    assert np.array_equal(after["tdb_rate"], CHAIN.rate(t))
+    ledger = CHAIN.ledger(t)
+    for term, value in ledger.items():
+        assert np.array_equal(after[f"tdb: {term} (s)"], value)
+    assert after["tt: TT - TAI (s)"].unique().to_pylist() == [32.184]
+    with pytest.raises(InvalidInput, match="each of 2 columns"):
+        convert_table(chains, source, tmp_path / "out.parquet", result="tdb")
+    with pytest.raises(InvalidInput, match="start at one node"):
+        convert_table([CHAIN, tscale.chain("TAI", "TT@GEOCENTER")], source, tmp_path / "out.parquet")
+    with pytest.raises(InvalidInput, match="no terms and no uncertainties"):
+        convert_table(_Broken(-1), source, tmp_path / "out.parquet", ledger=True)
 
 
 def test_results_come_in_order_and_errors_in_their_turn() -> None:

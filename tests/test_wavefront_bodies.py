@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from contextlib import closing
 from decimal import Decimal, localcontext
 
 import numpy as np
@@ -73,6 +74,41 @@ def test_each_delay_by_hand(reference: tscale.ReferenceData, body: str) -> None:
     found = float(wavefront_terms(T.pair, reference, SOURCE).terms_s[f"minus Shapiro delay, {body}"])
     assert abs(expected) > 1e-14
     assert found == pytest.approx(expected, rel=1e-14, abs=1e-19)
+
+
+def test_roemer_delay_from_the_coefficients_of_the_kernel(reference: tscale.ReferenceData) -> None:
+    # k.x/c with the Chebyshev records of the kernel (type 2: NAIF SPK Required Reading) summed in 40 digits, read by
+    # jplephem. In float64 a position at 1 au rounds to 0.1 ps; the parts that are summed apart leave 0.01 ps each.
+    from jplephem.spk import SPK
+
+    from tscale.ephemeris.shipped import DEFAULT_KERNEL, shipped_path
+
+    start = int(T.whole)
+    worst = 0.0
+    with localcontext() as context, closing(SPK.open(shipped_path(DEFAULT_KERNEL))) as kernel:
+        context.prec = 40
+        ra, dec = math.radians(SOURCE.ra_deg), math.radians(SOURCE.dec_deg)
+        k = decimals(np.array([math.cos(dec) * math.cos(ra), math.cos(dec) * math.sin(ra), math.sin(dec)]))
+        k = [part / length(k) for part in k]
+        for number in range(40):
+            count = start + 3_456_789 * number
+            x = [Decimal(0)] * 3
+            for center, target in ((0, 3), (3, 399)):
+                segment = kernel[center, target]
+                first_jd, step_days, coefficients = segment.load_array()
+                first_s, step_s = round((first_jd - 2451545.0) * 86400), round(step_days * 86400)
+                record = int((count - first_s) // step_s)
+                s = (Decimal(count) - Decimal(first_s + record * step_s)) / Decimal(step_s) * 2 - 1
+                for axis in range(3):
+                    before, now = Decimal(0), Decimal(0)
+                    for c in coefficients[axis, record, :0:-1]:
+                        before, now = now, 2 * s * now - before + Decimal(float(c))
+                    x[axis] += (s * now - before + Decimal(float(coefficients[axis, record, 0]))) * 1000
+            expected = dot(k, x) / C_M_S
+            terms = wavefront_terms((np.array(count), np.array(0.0)), reference, SOURCE)
+            found = Decimal(float(terms.terms_s["Roemer delay"])) + Decimal(float(terms.beyond_s))
+            worst = max(worst, abs(float(found - expected)))
+    assert worst < 2e-14
 
 
 def test_second_order_at_right_angles() -> None:

@@ -7,15 +7,13 @@ workers. Blocks are mapped alone, in order, and give the same bytes wherever the
 
 from __future__ import annotations
 
-import pickle
-from hashlib import sha256
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from .errors import InvalidInput, MissingPiece
 from .exact import FloatArray, IntArray
-from .files.stream import Mapping, evaluator
+from .files.stream import Mapping, evaluator, mapping_digest
 
 if TYPE_CHECKING:
     import dask.array as da
@@ -116,8 +114,7 @@ def _dask(module: str) -> Any:
 def _shared(mapping: Mapping) -> Any:
     """The mapping as one value of the graph, under a name that tells what it is."""
     evaluator(mapping)  # refuses what is no mapping, here and not on a worker
-    digest = getattr(mapping, "sha256", None) or sha256(pickle.dumps(mapping)).hexdigest()
-    return _dask("dask").delayed(mapping, pure=True, name=f"tscale-{digest}", traverse=False)
+    return _dask("dask").delayed(mapping, pure=True, name=f"tscale-{mapping_digest(mapping)}", traverse=False)
 
 
 def _block(whole: IntArray, fraction: FloatArray, mapping: Mapping) -> Any:

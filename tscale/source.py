@@ -99,13 +99,18 @@ class Source:
         rate_per_s : (3,) array
             mu, per second of TDB.
         """
+        toward, moved, rate = self.motion_apart(tdb)
+        return toward + moved, rate
+
+    def motion_apart(self, tdb: Pair) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """Place at the epoch (3,), what has been added to it (..., 3), and rate; see `motion`."""
         ra, dec = math.radians(self.ra_deg), math.radians(self.dec_deg)
         toward = np.array([math.cos(dec) * math.cos(ra), math.cos(dec) * math.sin(ra), math.sin(dec)])
         east = np.array([-math.sin(ra), math.cos(ra), 0.0])
         north = np.array([-math.sin(dec) * math.cos(ra), -math.sin(dec) * math.sin(ra), math.cos(dec)])
         rate = (east * self.pm_ra_cosdec_mas_yr + north * self.pm_dec_mas_yr) * (_RAD_PER_MAS / JULIAN_YEAR_S)
         elapsed_s = exact.seconds(exact.subtract(tdb, self._epoch.pair))
-        return toward + elapsed_s[..., np.newaxis] * rate, rate
+        return toward, elapsed_s[..., np.newaxis] * rate, rate
 
     def direction(self, tdb: Pair) -> FloatArray:
         """Unit vector (..., 3) from the barycentre to the source at a barycentric TDB count."""

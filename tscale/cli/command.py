@@ -17,12 +17,12 @@ from types import FrameType
 from typing import Any, Final
 
 from .. import __version__
-from . import convert, data, link
+from . import compiling, convert, data, link, plot, report, what_if
 from .streams import note
 
 __all__ = ["COMMANDS", "parser", "run"]
 
-COMMANDS: Final = (convert, data, link)
+COMMANDS: Final = (convert, data, link, what_if, plot, report, compiling)
 
 _DONE: Final = 0
 _WRONG: Final = 2  # as argparse does for arguments it refuses

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import json
 import re
 import sys
 import warnings
@@ -18,6 +19,7 @@ from ..errors import DataFileError, ExtrapolationWarning, OutOfSpan, TextError, 
 from ..files.date_text import fixed_decimals, read_dates, write_dates
 from ..files.delimited import DelimitedReader, RowBlock, delimiter_hint, encode_row
 from ..instants import Instants
+from ..provenance import provenance_of
 from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
 from .streams import Input, is_standard_output
@@ -167,8 +169,20 @@ class Conversion:
                 path=self.reader.name,
             )
         end = self.reader.newline
-        target.write("".join(line + end for line in self.reader.preamble))
+        made = self._provenance_lines() if self.args.provenance else []
+        target.write("".join(line + end for line in (*made, *self.reader.preamble)))
         target.write(self.delimiter.join([self.reader.header_text, encode_row(names, self.delimiter)]) + end)
+
+    def _provenance_lines(self) -> list[str]:
+        """What the results are made of; lines that several chains share stand once."""
+        return list(dict.fromkeys(line for chain in self.chains for line in provenance_of(chain).header()))
+
+    def provenance_json(self) -> str:
+        """The same as JSON, with the notes on the rows."""
+        results = {end: provenance_of(chain).to_dict() for end, chain in zip(self.ends, self.chains, strict=True)}
+        return json.dumps(
+            {"results": results, "rows": self.rows, "notes": self.notes()}, sort_keys=True, indent=2, allow_nan=False
+        )
 
     def _on_its_line(self, error: TscaleError, block: RowBlock) -> TscaleError:
         """The same error with the line of the first row at fault, in words that speak of this row alone."""

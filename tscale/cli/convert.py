@@ -6,8 +6,10 @@ import argparse
 import sys
 from typing import Any, Final
 
-from .options import add_observer, add_tables, clocks_of, observer_of, reference_of, source_of, start_of
+from .convert_table import is_table, run_table
+from .options import add_observer, add_tables
 from .streams import is_standard_output, note, opened, standard_output, written
+from .supplies import supplied
 
 __all__ = ["add_parser", "run"]
 
@@ -23,6 +25,10 @@ behind them. Lines that begin with # and blank lines are copied, a mark of byte 
 the first one does (CRLF, or else LF). OUTPUT is renamed into place when all went well, so it may be INPUT itself. On
 the standard output and in a pipe rows appear as they come in; the exit status tells whether all were done.
 
+INPUT may also be a Parquet or Arrow table (.parquet, .arrow, .feather), or a folder of such. Its dates are a column
+NAME in two, NAME_whole_s (int64) and NAME_fraction_s (float64), timestamps, or texts; results are two columns each.
+OUTPUT is a table too, or a folder that is filled part by part: work broken off goes on there where it was.
+
 Layouts of dates: iso is ISO 8601 with up to 18 decimals; mjd and jd are decimal numbers, read and written digit by
 digit, with a UTC day that ends with a leap second 86401 s long; seconds counts from 2000-01-01T12:00:00 of the scale.
 
@@ -36,13 +42,6 @@ examples:
   tscale convert readings.csv out.csv --clock maser.csv --clock utc_krl.csv --site site.toml --to TCB --to TDB --ledger
   tscale convert - - --input-format mjd --from TT --to TDB@GEOCENTER < dates.csv
 """
-
-_OPTION_FOR: Final = {
-    "site=": "--site FILE (or --orbit FILE)",
-    "source=": "--source FILE (or --ra and --dec)",
-    "clocks=": "--clock FILE",
-    "tt_bipm=": "--tt-bipm FILE",
-}
 
 
 def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
@@ -64,7 +63,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
         help="what the dates are (default: UTC, or the clock of --clock that is no other's reference)",
     )
     parser.add_argument(
-        "--to", dest="ends", metavar="NODE", action="append", required=True, help="what is wanted; repeatable"
+        "--to", dest="ends", metavar="NODE", action="append", default=[], help="what is wanted; repeatable"
     )
     parser.add_argument("--ledger", action="store_true", help="add a column for every term, in seconds")
     parser.add_argument(
@@ -75,6 +74,12 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
         action="store_true",
         help="add d(result)/d(reading) - 1: for a signal, a frequency at the start is 1 + rate times that at the end",
     )
+    parser.add_argument(
+        "--provenance",
+        action="store_true",
+        help="put comment lines at the head of OUTPUT: steps, tables with checksums, versions",
+    )
+    parser.add_argument("--provenance-file", metavar="FILE", help="write the same to FILE, as JSON")
     add_observer(parser)
     text = parser.add_argument_group("text")
     text.add_argument("--column", metavar="NAME", help="column with the dates (default: the first)")
@@ -84,6 +89,15 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     text.add_argument(
         "--digits", metavar="N", type=int, help="decimals written, to 18 (12 of a second, 17 of a day: 1 ps)"
     )
+    tables = parser.add_argument_group("Parquet and Arrow tables")
+    tables.add_argument(
+        "--compiled",
+        metavar="FILE",
+        action="append",
+        default=[],
+        help="a chain compiled by `tscale compile`, in place of --from and --to; needs no tables. Repeatable",
+    )
+    tables.add_argument("--threads", metavar="N", type=int, default=1, help="blocks worked on at once (%(default)s)")
     text.add_argument("--no-progress", action="store_true", help="no progress bar")
     text.add_argument("--quiet", action="store_true", help="no summary; notes on the error stream")
     add_tables(parser)
@@ -92,45 +106,42 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Convert a file."""
-    from ..chains import chain
-    from ..errors import InvalidInput, MissingPiece
+    from ..errors import InvalidInput
     from ..files import DelimitedReader
     from ..files.date_text import default_digits
     from ..files.delimited import delimiter_of
     from ..formats.decimals import check_digits
     from .conversion import Conversion
 
+    if not (args.ends or args.compiled):
+        raise InvalidInput("say what is wanted with --to NODE, such as --to TDB")
+    if is_table(args.input):
+        return run_table(args)
+    if args.compiled or args.threads != 1:
+        raise InvalidInput("--compiled and --threads are for tables that end in .parquet, .arrow or .feather")
     digits = default_digits(args.output_format) if args.digits is None else check_digits(args.digits)
     if len(set(args.ends)) != len(args.ends):
         raise InvalidInput(f"each --to is given once; got {', '.join(args.ends)}")
+    if args.provenance_file is not None and args.provenance_file in (args.input, args.output):
+        raise InvalidInput(
+            f"--provenance-file {args.provenance_file} is the input or the output; give it a name of its own"
+        )
     if not (args.input and args.output):
         raise InvalidInput("INPUT and OUTPUT are names of files, or - for the standard streams; one given is empty")
     # Asked for before any work, so that a closed one is found out first.
     to_stream = is_standard_output(args.output)
     report = sys.stderr if args.quiet or to_stream else standard_output()
-    reference = reference_of(args)
-    clocks = clocks_of(args, reference)
-    site, source = observer_of(args, reference), source_of(args)
-    start = args.start if args.start is not None else start_of(clocks)
-    supplies: dict[str, Any] = {
-        "site": site,
-        "clocks": clocks,
-        "source": source,
-        "reference": reference,
-        "second_order": args.second_order,
-    }
-    try:
-        chains = [chain(start, end, **supplies) for end in args.ends]
-    except MissingPiece as error:
-        options = [option for word, option in _OPTION_FOR.items() if word in str(error)]
-        hint = f" (on the command line: {', '.join(options)})" if options else ""
-        raise MissingPiece(f"{error}{hint}") from error
+    given = supplied(args)
+    chains = given.chains(args.ends)
     with opened(args.input) as source_lines:
         delimiter = delimiter_of(args.delimiter)
         reader = DelimitedReader(source_lines.lines, source_lines.name, column=args.column, delimiter=delimiter)
-        work = Conversion(args, source_lines, reader, chains, clocks, site, digits)
+        work = Conversion(args, source_lines, reader, chains, given.clocks, given.site, digits)
         with written(args.output) as target:
             work.copy(target)
+    if args.provenance_file is not None:
+        with written(args.provenance_file) as target:
+            target.write(work.provenance_json() + "\n")
     if args.quiet:
         for text in work.notes():
             note(text)

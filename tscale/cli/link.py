@@ -101,7 +101,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     )
     parser.add_argument("--digits", metavar="N", type=int, default=12, help="decimals of the dates (%(default)s)")
     add_tables(parser)
-    parser.set_defaults(run=run, interpolation="linear", max_gap_s=None)
+    parser.set_defaults(run=run, interpolation=None, max_gap_s=None)
 
 
 def run(args: argparse.Namespace) -> int:

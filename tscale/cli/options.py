@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 import argparse
+import os
 from collections.abc import Sequence
+from dataclasses import replace
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from ..earth.site import Site
     from ..source import Source
+    from ..surface import SurfaceSite
     from ..tables.clock_log import ClockLog
     from ..tables.reference import ReferenceData
     from ..trajectory import Trajectory
@@ -31,12 +35,28 @@ def add_tables(parser: argparse.ArgumentParser) -> None:
     group.add_argument(
         "--tt-bipm", metavar="FILE", action="append", default=[], help="BIPM table of TT(BIPMyy); repeatable"
     )
+    group.add_argument(
+        "--sub-daily",
+        action="store_true",
+        help="add the tidal variations of Earth rotation within a day to the table (IERS 2010; 3 cm, 0.1 ns)",
+    )
 
 
 def add_observer(parser: argparse.ArgumentParser) -> None:
     """Add the options that say where the clock is, how it was compared, and where the signal comes from."""
     group = parser.add_argument_group("observer, clock and source")
-    group.add_argument("--site", metavar="FILE", help="TOML file with a [site] table; needed for TCB and TDB there")
+    group.add_argument(
+        "--site",
+        metavar="FILE",
+        help="TOML file with a [site] table, or a [surface] table for a place on the Moon or a planet; needed for TCB "
+        "and TDB there",
+    )
+    group.add_argument(
+        "--solid-tide",
+        action="store_true",
+        help="let the site move with the tide of the solid Earth (IERS 2010; 0.4 m, 1.3 ns), as `solid_tide = true` in "
+        "its file does",
+    )
     group.add_argument(
         "--orbit",
         metavar="FILE",
@@ -49,13 +69,13 @@ def add_observer(parser: argparse.ArgumentParser) -> None:
         action="append",
         default=[],
         help="comparison log, CSV with epoch, offset_s (clock minus reference), uncertainty_s, reference, clock; "
-        "repeatable: CLOCK(x) by UTC(k), UTC(k) by UTC. Logs of one clock are joined",
+        "repeatable: CLOCK(x) by UTC(k), UTC(k) by UTC. Logs of one clock are joined. FILE:LAB takes UTC(LAB) out of a "
+        "BIPM Circular T",
     )
     group.add_argument(
         "--interpolation",
-        choices=("linear", "step"),
-        default="linear",
-        help="between comparisons of a log (default: %(default)s)",
+        choices=("linear", "cubic", "step"),
+        help="between comparisons of a log (default: what the log says, else linear)",
     )
     group.add_argument(
         "--max-gap-s", metavar="S", type=float, help="no interpolation between comparisons further apart than this"
@@ -74,23 +94,29 @@ def reference_of(args: argparse.Namespace) -> ReferenceData:
     """Build the tables that `add_tables` asked for."""
     from ..tables.reference import ReferenceData
 
-    return ReferenceData.load(
+    reference = ReferenceData.load(
         leap_seconds=args.leap_seconds,
         earth_orientation=args.earth_orientation,
         tt_bipm=args.tt_bipm,
         ephemeris=args.ephemeris,
         time_ephemeris=args.time_ephemeris,
     )
+    if args.sub_daily:
+        reference = reference.replace(earth_orientation=reference.earth_orientation.with_sub_daily())
+    return reference
 
 
-def observer_of(args: argparse.Namespace, reference: ReferenceData) -> Site | Trajectory | None:
+def observer_of(args: argparse.Namespace, reference: ReferenceData) -> Site | SurfaceSite | Trajectory | None:
     """Read the site or the orbit, if one is given."""
     from ..errors import InvalidInput
+    from ..storage import read_toml
 
     if args.orbit is not None:
         from ..trajectory import Trajectory
         from .link_ends import end_of
 
+        if args.solid_tide:
+            raise InvalidInput("--solid-tide is for a --site; an --orbit does not stand on the ground")
         if args.site is not None:
             raise InvalidInput("give the observer by --site FILE or by --orbit FILE, not by both")
         orbit = end_of(args.orbit, reference)
@@ -100,10 +126,19 @@ def observer_of(args: argparse.Namespace, reference: ReferenceData) -> Site | Tr
             )
         return orbit
     if args.site is None:
+        if args.solid_tide:
+            raise InvalidInput("--solid-tide moves a site: give it by --site FILE")
         return None
+    if "surface" in read_toml(Path(args.site)):
+        from ..surface import SurfaceSite
+
+        if args.solid_tide:
+            raise InvalidInput(f"--solid-tide is of the Earth; {args.site} is a place on another body")
+        return SurfaceSite.load(args.site)
     from ..earth.site import Site
 
-    return Site.load(args.site)
+    site = Site.load(args.site)
+    return replace(site, solid_tide=True) if args.solid_tide else site
 
 
 def source_of(args: argparse.Namespace) -> Source | None:
@@ -136,7 +171,7 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
 
     found: dict[str, list[tuple[str, ClockLog]]] = {}
     for path in args.clock:
-        log = ClockLog.load(
+        log = _circular(path, reference) or ClockLog.load(
             path,
             interpolation=args.interpolation,
             max_gap_s=args.max_gap_s,
@@ -151,6 +186,16 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
             )
         others.append((path, log))
     return [logs[0][1] if len(logs) == 1 else ClockLog.joined([log for _, log in logs]) for logs in found.values()]
+
+
+def _circular(path: str, reference: ReferenceData) -> ClockLog | None:
+    """The laboratory's log of a circular given as FILE:LAB; None for anything else."""
+    file, colon, laboratory = path.rpartition(":")
+    if not colon or not laboratory or os.path.exists(path) or not os.path.isfile(file):
+        return None
+    from ..tables.circular_t import read_circular
+
+    return read_circular(file, laboratory, leap_seconds=reference.leap_seconds)
 
 
 def start_of(clocks: Sequence[ClockLog]) -> str:

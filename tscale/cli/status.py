@@ -9,9 +9,11 @@ import numpy.typing as npt
 
 from .. import exact
 from ..constants import TT_MINUS_TAI
+from ..counts import tdb_from_tcb
 from ..earth.observer import Observer
 from ..exact import BoolArray, Pair
 from ..instants import Instants
+from ..provenance.tables_read import reads_ephemeris
 from ..scales import Node
 from ..step import Step
 from ..tables.reference import ReferenceData
@@ -30,7 +32,7 @@ def uses_orientation(step: Step, site: Observer | None) -> bool:
     if "UT1" in names:
         return True
     at_site = "TOPOCENTER" in (step.start.place, step.end.place) and getattr(site, "uses_earth_orientation", True)
-    return at_site and (step.start.place != step.end.place or names == {"TCG", "TCB"})
+    return at_site and reads_ephemeris(step)
 
 
 def status_codes(
@@ -65,7 +67,10 @@ def _tai(node: Node, at: Instants) -> Pair | None:
     name = node.scale.name
     if name == "TAI":
         return at.pair
-    if name == "TCG" or (name == "TDB" and node.place != "BARYCENTER"):
-        tt = geocentric.tt_from_tcg(at.pair) if name == "TCG" else at.pair
+    if node.place == "BARYCENTER":
+        return None
+    near = {"TCG": geocentric.tt_from_tcg, "TCB": tdb_from_tcb}
+    if name in near or name == "TDB":
+        tt = near[name](at.pair) if name in near else at.pair
         return exact.subtract(tt, exact.normalise(*TT_MINUS_TAI))
     return None

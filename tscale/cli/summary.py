@@ -3,24 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Protocol
 
 from ..chains import Chain
 from ..earth.observer import Observer
 from ..instants import Instants
+from ..provenance.tables_read import reads_ephemeris, tables_of
 from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
-from .status import uses_orientation
 
 __all__ = ["longest", "summary", "tables_used", "unused"]
-
-
-class _Table(Protocol):
-    @property
-    def name(self) -> str: ...
-
-    @property
-    def sha256(self) -> str: ...
 
 
 def longest(chains: Sequence[Chain]) -> list[Chain]:
@@ -33,27 +24,16 @@ def longest(chains: Sequence[Chain]) -> list[Chain]:
     ]
 
 
-def tables_used(
-    chains: Sequence[Chain], clocks: Sequence[ClockLog], reference: ReferenceData, site: Observer | None = None
-) -> list[tuple[str, str]]:
-    """(table, its name and hash) for the tables that the steps of these chains read."""
-    steps = [step for chain in chains for step in chain.steps]
-    ends = {frozenset((step.start.scale.name, step.end.scale.name)) for step in steps}
-    nodes = {node for chain in chains for node in (chain.start, chain.end)} | {step.end for step in steps}
-    names = {node.scale.name for node in nodes}
-    moved = any(step.start.place != step.end.place for step in steps)
-    integral = moved or frozenset(("TCG", "TCB")) in ends
-    found: list[tuple[str, _Table]] = [
-        (f"{log.scale} by {log.reference}", log) for log in clocks if frozenset((log.scale, log.reference)) in ends
+def tables_used(chains: Sequence[Chain], clocks: Sequence[ClockLog]) -> list[tuple[str, str]]:
+    """(table, its name and hash) for the logs and the tables that the steps of these chains read."""
+    ends = {frozenset((step.start.scale.name, step.end.scale.name)) for chain in chains for step in chain.steps}
+    found = [
+        (f"{log.scale} by {log.reference}", log.name, log.sha256)
+        for log in clocks
+        if frozenset((log.scale, log.reference)) in ends
     ]
-    if any(node.scale.utc_labels for node in nodes):
-        found.append(("leap seconds", reference.leap_seconds))
-    if any(uses_orientation(step, site) for step in steps):
-        found.append(("Earth orientation", reference.earth_orientation))
-    found += [(table.scale, table) for table in reference.tt_bipm if table.scale in names]
-    if integral:
-        found += [("ephemeris", reference.ephemeris), ("time ephemeris", reference.time_ephemeris)]
-    return [(title, f"{table.name}  (SHA-256 {table.sha256[:12]})") for title, table in found]
+    found += [(table.table, table.name, table.sha256) for chain in chains for table in tables_of(chain)]
+    return [(title, f"{name}  (SHA-256 {sha256[:12]})") for title, name, sha256 in dict.fromkeys(found)]
 
 
 def unused(
@@ -71,8 +51,9 @@ def unused(
     idle = [log.name for log in clocks if frozenset((log.scale, log.reference)) not in ends]
     idle += [table.name for table in reference.tt_bipm if table.scale not in scales]
     moved = [step for step in steps if step.start.place != step.end.place]
-    placed = moved + [step for step in steps if {step.start.scale.name, step.end.scale.name} == {"TCG", "TCB"}]
-    if site is not None and not any("TOPOCENTER" in (step.start.place, step.end.place) for step in placed):
+    if site is not None and not any(
+        reads_ephemeris(step) and "TOPOCENTER" in (step.start.place, step.end.place) for step in steps
+    ):
         idle.append(site)
     if source is not None and not moved:
         idle.append(source)
@@ -109,7 +90,7 @@ def summary(
             lines += ["", *("  " + line for line in table)]
     lines.append("")
     lines += [f"note: {note}" for note in notes]
-    used = tables_used(chains, clocks, reference, site)
+    used = tables_used(chains, clocks)
     wide = max((len(title) for title, _ in used), default=0)
     lines += [f"table: {title:<{wide}}  {name}" for title, name in used]
     lines.append(f"{rows} rows: {source} -> {target}")

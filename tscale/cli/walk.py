@@ -9,6 +9,7 @@ from typing import Final, NamedTuple
 
 import numpy as np
 
+from ..budget.contribution import by_source
 from ..chains import Chain
 from ..earth.observer import Observer
 from ..exact import FloatArray, Pair
@@ -74,12 +75,10 @@ class Walk:
 
     def sigma_s(self) -> list[FloatArray]:
         """Combined standard uncertainty of each chain, seconds."""
-        squares = {
-            path: sum((np.square(value) for value in step.uncertainty_s(before).values()), np.zeros(before.shape))
-            for path, (step, before, _) in self.passed.items()
-        }
+        found = {path: step.contributed(before) for path, (step, before, _) in self.passed.items()}
+        sources = [by_source(part for path in taken for part in found[path]) for taken in self._paths]
         none = np.zeros(self._start.shape)
-        return [np.sqrt(sum((squares[path] for path in taken), none)) for taken in self._paths]
+        return [np.sqrt(sum((np.square(value) for value in each.values()), none)) for each in sources]
 
     def statuses(self, reference: ReferenceData, site: Observer | None) -> list[list[str]]:
         """For each chain what the result of each row rests on, in the words of `status`."""

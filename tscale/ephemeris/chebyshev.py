@@ -207,6 +207,22 @@ class ChebyshevTable:
         b_k = c_k + 2 s b_(k+1) - b_(k+2) for the value (Clenshaw 1955, Math. Tables Aids Comput. 9, 118) and its
         derivative with respect to s, of which half is carried along: d_k = b_(k+1) + 2 s d_(k+1) - d_(k+2).
         """
+        value, slope, gather = self._recurrence(record, argument, rate)
+        value += gather(0)
+        return value, slope
+
+    def evaluate_apart(self, record: npt.NDArray[np.intp], argument: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """The constant of each record, exact, and what changes over it, each (components, n): not yet added up.
+
+        The second part is smaller than the sum, and so is its rounding.
+        """
+        value, _, gather = self._recurrence(record, argument, rate=False)
+        return np.array(gather(0)), value
+
+    def _recurrence(
+        self, record: npt.NDArray[np.intp], argument: FloatArray, rate: bool
+    ) -> tuple[FloatArray, FloatArray | None, Any]:
+        """Value without the constant, derivative per second, and what gathers coefficients."""
         gather = self._gatherer(record)
         shape = (self.components, record.size)
         twice = 2.0 * argument
@@ -224,15 +240,14 @@ class ChebyshevTable:
             b2, b1, spare = b1, spare, b2
         np.multiply(b1, argument, out=spare)
         spare -= b2
-        spare += gather(0)
         if not rate:
-            return spare, None
+            return spare, None, gather
         d1 *= argument
         d1 -= d2
         d1 *= 2.0
         d1 += b1
         d1 *= 2.0 / self.step_s
-        return spare, d1
+        return spare, d1, gather
 
     def _gatherer(self, record: npt.NDArray[np.intp]) -> Any:
         """Return a function that gives coefficient k of every instant, (components, n)."""

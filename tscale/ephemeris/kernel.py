@@ -18,15 +18,14 @@ from ..exact import FloatArray, Pair
 from .arguments import file_path
 from .bodies import body_id, body_name
 from .chebyshev import CHUNK, broadcast_pair, span_text
+from .chunk import Chunk
 from .daf import check_sha256, file_sha256, mass_parameters, read_container
 from .paths import Leg, Part, Paths
-from .segments import Located, Segment, read_segments
+from .segments import read_segments
 from .shipped import DEFAULT_KERNEL, shipped_path
 
 __all__ = ["Ephemeris"]
 
-_KM_M = 1e3
-_Motion = tuple[FloatArray, FloatArray | None]
 _OPENING: Final = threading.Lock()
 
 
@@ -209,6 +208,28 @@ class Ephemeris:
         """Positions (m) and velocities (m/s), each (targets, ..., 3), of several bodies; see `positions`."""
         return self._states(tuple(targets), tdb, center, rate=True)
 
+    def position_apart_km(self, target: str | int, tdb: Pair) -> tuple[FloatArray, FloatArray]:
+        """Barycentric position in two parts that are not yet added up, each (..., 3), km as the kernel has it.
+
+        The first is constant over a record and exact, the second smaller: what is summed apart with both keeps a tenth
+        of the rounding of a position at 1 au (0.1 ps of light time). Errors as `position`.
+        """
+        number = body_id(target)
+        self._need((number,))
+        whole, fraction = broadcast_pair(tdb)
+        shape = (*whole.shape, 3)
+        (parts,) = self._plans([number], 0, whole + fraction)
+        whole, fraction = whole.reshape(-1), fraction.reshape(-1)
+        constant, rest = np.zeros((whole.size, 3)), np.empty((whole.size, 3))
+        for i in range(0, whole.size, CHUNK):
+            chunk = slice(i, i + CHUNK)
+            for mask, legs in parts:
+                picked = chunk if mask is None else i + np.flatnonzero(mask[chunk])
+                some = Chunk(whole[picked], fraction[picked], False)
+                first, second = some.apart(self._paths, legs)
+                constant[picked], rest[picked] = first.T, second.T
+        return constant.reshape(shape), rest.reshape(shape)
+
     def _states(
         self, targets: tuple[str | int, ...], tdb: Pair, center: str | int, rate: bool
     ) -> tuple[FloatArray, FloatArray]:
@@ -222,14 +243,14 @@ class Ephemeris:
         velocities = np.empty((len(numbers) if rate else 0, whole.size, 3))
         for i in range(0, whole.size, CHUNK):
             chunk = slice(i, i + CHUNK)
-            every = _Chunk(whole[chunk], fraction[chunk], rate)
+            every = Chunk(whole[chunk], fraction[chunk], rate)
             for k, parts in enumerate(plans):
                 for mask, legs in parts:
                     picked: slice | npt.NDArray[np.intp] = chunk
                     some = every
                     if mask is not None:
                         picked = i + np.flatnonzero(mask[chunk])
-                        some = _Chunk(whole[picked], fraction[picked], rate)
+                        some = Chunk(whole[picked], fraction[picked], rate)
                     position, velocity = some.sum(self._paths, legs)
                     positions[k, picked] = position.T
                     if velocity is not None:
@@ -254,49 +275,6 @@ class Ephemeris:
                 )
             plans.append(parts)
         return plans
-
-
-class _Chunk:
-    """A few thousand instants and what has been evaluated at them so far."""
-
-    def __init__(self, whole: npt.NDArray[np.int64], fraction: FloatArray, rate: bool) -> None:
-        self._whole, self._fraction, self._rate = whole, fraction, rate
-        self._located: Located = {}
-        self._done: dict[tuple[int, int], _Motion] = {}
-
-    def sum(self, paths: Paths, legs: tuple[Leg, ...]) -> _Motion:
-        """Position in m and velocity in m/s along a path, (3, n)."""
-        shape = (3, self._whole.size)
-        position, velocity = np.zeros(shape), np.zeros(shape) if self._rate else None
-        for leg in legs:
-            pair = leg.target, leg.center
-            if pair not in self._done:
-                self._done[pair] = self._leg(paths.segments(leg))
-            step, speed = self._done[pair]
-            position += leg.sign * step
-            if velocity is not None and speed is not None:
-                velocity += leg.sign * speed
-        position *= _KM_M
-        if velocity is not None:
-            velocity *= _KM_M
-        return position, velocity
-
-    def _leg(self, segments: list[Segment]) -> _Motion:
-        if len(segments) == 1:
-            return segments[0].evaluate(self._whole, self._fraction, self._rate, self._located)
-        count = self._whole + self._fraction
-        position = np.empty((3, count.size))
-        velocity = np.empty_like(position) if self._rate else None
-        left = np.ones(count.size, dtype=np.bool_)
-        for segment in segments:
-            mine = left & (count >= segment.start_s) & (count <= segment.end_s)
-            if mine.any():
-                step, speed = segment.evaluate(self._whole[mine], self._fraction[mine], self._rate, {})
-                position[:, mine] = step
-                if velocity is not None and speed is not None:
-                    velocity[:, mine] = speed
-                left &= ~mine
-        return position, velocity
 
 
 @lru_cache(maxsize=1)

@@ -96,6 +96,16 @@ class ChebyshevSegment:
         state, _ = self.table.evaluate(record, argument, rate=False)
         return state[:3], state[3:]
 
+    def evaluate_apart(
+        self, whole: npt.NDArray[np.int64], fraction: FloatArray, located: Located
+    ) -> tuple[FloatArray, FloatArray]:
+        """Position in km in the two parts of `ChebyshevTable.evaluate_apart`, each (3, n)."""
+        grid = self.table.grid
+        if grid not in located:
+            located[grid] = self.table.locate(whole, fraction)
+        constant, rest = self.table.evaluate_apart(*located[grid])
+        return constant[:3], rest[:3]
+
 
 class ForeignSegment:
     """A segment of a data type that is not understood: an error as soon as it is needed, not before."""

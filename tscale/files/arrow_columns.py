@@ -1,12 +1,13 @@
 """Instants as two columns of an Arrow or Parquet table, whole seconds and fraction, bit for bit (needs pyarrow).
 
 A column of dates NAME is two columns: `NAME_whole_s` (int64) and `NAME_fraction_s` (float64, in [0, 1)), seconds since
-2000-01-01T12:00:00 of the scale. The metadata of both fields say which scale and place, and which part each is.
+2000-01-01T12:00:00 of the scale. The metadata of both fields say which scale and place, and which part each is. Columns
+of timestamps and of ISO 8601 texts are read too; what they are labels of has to be said.
 """
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any, Final, NamedTuple
+from typing import TYPE_CHECKING, Any, Final, Literal, NamedTuple
 
 import numpy as np
 
@@ -14,11 +15,14 @@ from ..errors import DataFileError, InvalidInput, MissingPiece
 from ..exact import Pair
 from ..instants import Instants
 from ..scales import Node, Scale, check_place
+from ..timecodes.dates import from_datetime64
 
 if TYPE_CHECKING:
     import pyarrow as pa
 
-__all__ = ["DateColumn", "arrow", "date_columns", "fields", "find_dates", "instants_of", "pair_of"]
+    from ..formats.leap_seconds import LeapSeconds
+
+__all__ = ["DateColumn", "agreed", "arrow", "date_columns", "fields", "find_dates", "instants_of", "pair_of"]
 
 ORIGIN: Final = "2000-01-01T12:00:00"
 _WHOLE: Final = "_whole_s"
@@ -38,10 +42,10 @@ class DateColumn(NamedTuple):
     """Where the dates of a table stand, and what they are."""
 
     name: str
-    whole: int
-    fraction: int
+    kind: Literal["counts", "timestamps", "texts"]
+    indices: tuple[int, ...]
     node: Node | None
-    """Scale and place by the metadata, None where they say nothing."""
+    """Scale and place by the metadata (UTC for timestamps with a time zone), None where they say nothing."""
 
 
 def fields(name: str, node: Node) -> tuple[pa.Field, pa.Field]:
@@ -73,32 +77,48 @@ def find_dates(schema: pa.Schema, name: str | None = None) -> DateColumn:
     DataFileError
         Columns of another type, or metadata that contradict each other or name another origin.
     """
-    there = [
+    pa = arrow()
+    pairs = [
         field.name.removesuffix(_WHOLE)
         for field in schema
         if field.name.endswith(_WHOLE) and schema.get_field_index(field.name.removesuffix(_WHOLE) + _FRACTION) >= 0
     ]
-    listed = ", ".join(dict.fromkeys(there)) or "none"
+    stamps = [field.name for field in schema if pa.types.is_timestamp(field.type)]
+    there = list(dict.fromkeys([*pairs, *stamps]))
+    listed = ", ".join(there) or "none"
     if name is None:
         if len(there) != 1:
             raise InvalidInput(
                 f"the table has {len(there)} columns of dates ({listed}); name the one to be read. A column of dates "
-                f"NAME is two, NAME{_WHOLE} (int64) and NAME{_FRACTION} (float64)"
+                f"NAME is two, NAME{_WHOLE} (int64) and NAME{_FRACTION} (float64), or one of timestamps"
             )
         name = there[0]
+    if name not in pairs:
+        return _single(schema, name, listed)
     whole, fraction = (schema.get_field_index(name + ending) for ending in (_WHOLE, _FRACTION))
-    if min(whole, fraction) < 0:
-        raise InvalidInput(
-            f"the table has no column of dates {name!r} (there: {listed}); it would be two columns, {name}{_WHOLE} "
-            f"(int64) and {name}{_FRACTION} (float64), each once"
-        )
-    pa = arrow()
     for index, kind in ((whole, pa.int64()), (fraction, pa.float64())):
         if schema.field(index).type != kind:
             raise DataFileError(
                 f"column {schema.field(index).name!r} is {schema.field(index).type}, dates need {kind}: cast it"
             )
-    return DateColumn(name, whole, fraction, _node(name, [schema.field(whole), schema.field(fraction)]))
+    return DateColumn(name, "counts", (whole, fraction), _node(name, [schema.field(whole), schema.field(fraction)]))
+
+
+def _single(schema: pa.Schema, name: str, listed: str) -> DateColumn:
+    """A column of timestamps or of texts."""
+    pa = arrow()
+    index = schema.get_field_index(name)
+    if index < 0:
+        raise InvalidInput(
+            f"the table has no column of dates {name!r} (there: {listed}); it would be two columns, {name}{_WHOLE} "
+            f"(int64) and {name}{_FRACTION} (float64), or one of timestamps or ISO 8601 texts"
+        )
+    kind = schema.field(index).type
+    if pa.types.is_timestamp(kind):
+        return DateColumn(name, "timestamps", (index,), None if kind.tz is None else Node.parse("UTC"))
+    if pa.types.is_string(kind) or pa.types.is_large_string(kind):
+        return DateColumn(name, "texts", (index,), None)
+    raise DataFileError(f"column {name!r} is {kind}; dates are two columns of counts, timestamps or texts")
 
 
 def _node(name: str, pair: list[Any]) -> Node | None:
@@ -115,16 +135,20 @@ def _node(name: str, pair: list[Any]) -> Node | None:
     return Node(Scale.parse(found["time_scale"].pop()), check_place(found["place"].pop() if found["place"] else None))
 
 
-def pair_of(batch: pa.RecordBatch | pa.Table, column: DateColumn) -> Pair:
-    """The two parts as numpy arrays, without a copy where Arrow allows.
+def pair_of(
+    batch: pa.RecordBatch | pa.Table, column: DateColumn, scale: str, leap_seconds: LeapSeconds | None = None
+) -> Pair:
+    """The dates as counts of a scale; those that are counts without a copy where Arrow allows.
 
     Raises
     ------
     DataFileError
         Rows without a date, or with a fraction outside [0, 1), with the mask.
+    TextError
+        Texts that are no dates, and labels that do not exist, with the mask.
     """
     parts = []
-    for index in (column.whole, column.fraction):
+    for index in column.indices:
         values = batch.column(index)
         if values.null_count:
             mask = np.asarray(values.is_null())
@@ -135,6 +159,10 @@ def pair_of(batch: pa.RecordBatch | pa.Table, column: DateColumn) -> Pair:
                 row=int(np.argmax(mask)) + 1,
             )
         parts.append(values.to_numpy() if hasattr(values, "num_chunks") else values.to_numpy(zero_copy_only=False))
+    if column.kind == "timestamps":
+        return from_datetime64(parts[0], scale, leap_seconds=leap_seconds).pair
+    if column.kind == "texts":
+        return Instants.from_iso(parts[0].astype(np.str_), scale, leap_seconds=leap_seconds).pair
     whole, fraction = parts
     # Two passes without a mask; a NaN fails the comparison.
     if fraction.size and not (fraction.min() >= 0.0 and fraction.max() < 1.0):
@@ -147,7 +175,13 @@ def pair_of(batch: pa.RecordBatch | pa.Table, column: DateColumn) -> Pair:
     return whole, fraction
 
 
-def instants_of(table: pa.RecordBatch | pa.Table, name: str | None = None, *, node: Node | None = None) -> Instants:
+def instants_of(
+    table: pa.RecordBatch | pa.Table,
+    name: str | None = None,
+    *,
+    node: Node | None = None,
+    leap_seconds: LeapSeconds | None = None,
+) -> Instants:
     """Read the dates of a table.
 
     Parameters
@@ -157,6 +191,8 @@ def instants_of(table: pa.RecordBatch | pa.Table, name: str | None = None, *, no
         Column of dates; may be left out if there is one.
     node : Node, optional
         Scale and place, for columns whose metadata do not say; must not contradict metadata that do.
+    leap_seconds : LeapSeconds, optional
+        For timestamps and texts of UTC.
 
     Raises
     ------
@@ -164,10 +200,12 @@ def instants_of(table: pa.RecordBatch | pa.Table, name: str | None = None, *, no
         As `find_dates` and `pair_of`; dates whose scale nobody says.
     """
     column = find_dates(table.schema, name)
-    return Instants._of(pair_of(table, column), *_agreed(column, node))
+    scale, place = agreed(column, node)
+    return Instants._of(pair_of(table, column, scale.name, leap_seconds), scale, place)
 
 
-def _agreed(column: DateColumn, node: Node | None) -> tuple[Scale, str | None]:
+def agreed(column: DateColumn, node: Node | None) -> tuple[Scale, str | None]:
+    """Scale and place by the metadata and by what the caller says."""
     said = column.node
     if said is None:
         if node is None:

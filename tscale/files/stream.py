@@ -5,14 +5,16 @@ from __future__ import annotations
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import Future, ThreadPoolExecutor
+from hashlib import sha256
 from typing import Any, Protocol, TypeAlias, runtime_checkable
 
 from ..errors import InvalidInput
 from ..exact import Pair
 from ..instants import Instants
+from ..provenance import provenance_of
 from ..scales import Node
 
-__all__ = ["Evaluator", "Mapping", "evaluator", "in_order", "map_blocks"]
+__all__ = ["Evaluator", "Mapping", "evaluator", "in_order", "map_blocks", "mapping_digest"]
 
 Evaluator: TypeAlias = Callable[[Pair], Pair]
 
@@ -45,6 +47,15 @@ def evaluator(mapping: Mapping) -> Evaluator:
         return lambda pair: evaluate(*pair)
     scale, place = mapping.start.scale, mapping.start.place
     return lambda pair: mapping(Instants._of(pair, scale, place)).pair
+
+
+def mapping_digest(mapping: Mapping) -> str:
+    """SHA-256 of what determines the results of a mapping: the bytes of a compiled one, the provenance of a chain."""
+    content: Any = getattr(mapping, "to_bytes", None)
+    if content is not None:
+        return sha256(content()).hexdigest()
+    chain: Any = mapping
+    return str(provenance_of(chain).digest)
 
 
 def map_blocks(mapping: Mapping, blocks: Iterable[Pair], *, threads: int = 1) -> Iterator[Pair]:

@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
 
 from ..errors import DataFileError, InvalidInput
 from ..storage import write_atomically
-from .stream import Mapping, in_order
+from .stream import Mapping, in_order, mapping_digest
 from .table_files import TableReader, table_kind, table_writer
 
 if TYPE_CHECKING:
@@ -32,12 +32,14 @@ class PartFolder:
         A folder with files that are not ours.
     """
 
-    def __init__(self, path: Path, reader: TableReader, mapping: Mapping, part_rows: int, columns: list[str]) -> None:
+    def __init__(
+        self, path: Path, reader: TableReader, mappings: Sequence[Mapping], part_rows: int, columns: list[str]
+    ) -> None:
         self._path, self._reader, self._part_rows = path, reader, part_rows
         job = {
             "columns": columns,
             "input": reader.digest,
-            "mapping": _digest(mapping),
+            "mappings": [mapping_digest(mapping) for mapping in mappings],
             "part_rows": part_rows,
             "rows": reader.rows,
         }
@@ -125,13 +127,3 @@ class PartFolder:
 
 def _temporary(file: Path) -> bool:
     return file.name.startswith(".") and file.suffix == ".part" and table_kind(file) is None
-
-
-def _digest(mapping: Mapping) -> str:
-    """What tells that a mapping gives the same bytes as before."""
-    known: Any = getattr(mapping, "sha256", None)
-    if known is not None:
-        return str(known)
-    from ..provenance import provenance_of
-
-    return str(provenance_of(mapping).digest)

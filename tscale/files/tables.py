@@ -7,18 +7,20 @@ so that work broken off goes on where it was.
 from __future__ import annotations
 
 import os
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Final, NamedTuple
 
-from ..errors import DataFileError, InvalidInput
-from ..scales import Node
-from .arrow_columns import DateColumn, arrow, fields, find_dates, pair_of
-from .stream import Evaluator, Mapping, evaluator, in_order
+from ..errors import InvalidInput, TscaleError
+from .added_columns import Added, added_columns
+from .arrow_columns import DateColumn, agreed, arrow, find_dates, pair_of
+from .stream import Mapping, in_order
 from .table_files import TableReader, table_kind, table_writer
 
 if TYPE_CHECKING:
     import pyarrow as pa
+
+    from ..formats.leap_seconds import LeapSeconds
 
 __all__ = ["Converted", "convert_table"]
 
@@ -33,27 +35,31 @@ class Converted(NamedTuple):
     """Rows of the whole output."""
     found: int
     """Rows that were there already, from work that was broken off."""
-    column: str
-    """Column of dates that was added."""
+    columns: tuple[str, ...]
+    """Columns that were added."""
 
 
 def convert_table(
-    mapping: Mapping,
+    mapping: Mapping | Sequence[Mapping],
     source: str | os.PathLike[str],
     target: str | os.PathLike[str],
     *,
     column: str | None = None,
-    result: str | None = None,
+    result: str | Sequence[str] | None = None,
+    ledger: bool = False,
+    sigma: bool = False,
+    rate: bool = False,
+    leap_seconds: LeapSeconds | None = None,
     threads: int = 1,
     rows: int = ROWS,
     progress: Callable[[int, int], None] | None = None,
 ) -> Converted:
-    """Add a column of converted dates to a table, and copy all others as they are.
+    """Add columns of converted dates to a table, and copy all others as they are.
 
     Parameters
     ----------
-    mapping : Chain or CompiledChain
-        Takes the dates of `column`.
+    mapping : Chain or CompiledChain, or several from one start
+        Take the dates of `column`.
     source : path
         A file that ends in .parquet, .arrow or .feather (Arrow IPC), or a folder of such files, taken in the order of
         their names.
@@ -62,9 +68,15 @@ def convert_table(
         parts of `rows` x 16 rows appear as they are done. Called again with the same arguments after a break, the
         parts that are there are kept.
     column : str, optional
-        Column of dates, as two columns (see `arrow_columns`); may be left out if there is one.
-    result : str, optional
-        Name of the new column of dates, by default the end node of the mapping.
+        Column of dates: two columns of counts (see `arrow_columns`), timestamps, or ISO 8601 texts. May be left out if
+        there is one of the first two kinds.
+    result : str or sequence of str, optional
+        Names of the new columns of dates, by default the end nodes of the mappings.
+    ledger, sigma, rate : bool
+        Add a column for every term, for the standard uncertainty of each result, and for d(result)/d(date) - 1; the
+        first two need chains that are not compiled.
+    leap_seconds : LeapSeconds, optional
+        For reading timestamps and texts of UTC.
     threads : int
         Blocks that are mapped at the same time.
     rows : int
@@ -80,23 +92,25 @@ def convert_table(
     InvalidInput
         For names of other endings, a column that is not there, and one that is there already.
     TscaleError
-        Whatever the mapping raises: nothing is left behind of a file, and of a folder the parts done so far.
+        Whatever the mapping raises, with the row (from 1): nothing is left behind of a file, and of a folder the parts
+        done so far.
     """
     if not isinstance(rows, int) or rows < 1:
         raise InvalidInput(f"rows must be a whole number from 1, got {rows!r}")
+    mappings = list(mapping) if isinstance(mapping, Sequence) else [mapping]
+    names = None if result is None else [result] if isinstance(result, str) else list(result)
     reader = TableReader(source)
     given = find_dates(reader.schema, column)
-    _check_node(given, mapping.start)
-    name = str(mapping.end) if result is None else result
-    added = fields(name, mapping.end)
-    for field in added:
-        if reader.schema.get_field_index(field.name) >= 0 or field.name in reader.schema.names:
-            raise InvalidInput(f"the table has a column {field.name!r} already; name the new one otherwise (result=)")
+    added = added_columns(mappings, names, ledger=ledger, sigma=sigma, rate=rate)
+    agreed(given, mappings[0].start)
     schema = reader.schema
-    for field in added:
+    for field in added.fields:
+        if field.name in schema.names:
+            raise InvalidInput(f"the table has a column {field.name!r} already; name the new one otherwise (result=)")
         schema = schema.append(field)
-    work = _worker(evaluator(mapping), given, schema)
+    work = _worker(added, given, schema, leap_seconds)
     target = Path(target)
+    columns = tuple(field.name for field in added.fields)
     if table_kind(target) is not None:
         done = 0
         with table_writer(target, schema) as writer:
@@ -105,34 +119,30 @@ def convert_table(
                 done += batch.num_rows
                 if progress is not None:
                     progress(done, reader.rows)
-        return Converted(done, 0, name)
+        return Converted(done, 0, columns)
     from .table_parts import PartFolder
 
-    folder = PartFolder(target, reader, mapping, rows * 16, [given.name, name])
-    return Converted(*folder.fill(schema, work, rows, threads, progress), name)
-
-
-def _check_node(column: DateColumn, start: Node) -> None:
-    said = column.node
-    if said is not None and (said.scale != start.scale or (said.place and start.place and said.place != start.place)):
-        raise InvalidInput(f"the dates {column.name!r} are {said} by their metadata; this chain takes {start}")
+    folder = PartFolder(target, reader, mappings, rows * 16, [given.name, *columns])
+    return Converted(*folder.fill(schema, work, rows, threads, progress), columns)
 
 
 def _worker(
-    evaluate: Evaluator, column: DateColumn, schema: pa.Schema
+    added: Added, column: DateColumn, schema: pa.Schema, leap_seconds: LeapSeconds | None
 ) -> Callable[[tuple[int, pa.RecordBatch]], pa.RecordBatch]:
-    """What puts the converted dates behind the columns of a batch, given with the number of its first row."""
+    """What puts the new columns behind those of a batch, given with the number of its first row."""
     module = arrow()
 
     def work(item: tuple[int, pa.RecordBatch]) -> pa.RecordBatch:
         first, batch = item
         try:
-            whole, fraction = evaluate(pair_of(batch, column))
-        except DataFileError as error:
+            new = added.make(pair_of(batch, column, added.start.scale.name, leap_seconds))
+        except TscaleError as error:
+            if error.row is None and error.mask is not None and error.mask.shape == (batch.num_rows,):
+                error.row = int(error.mask.argmax()) + 1
             if error.row is not None:
                 error.row += first
             raise
-        columns = [*batch.columns, module.array(whole), module.array(fraction)]
+        columns = [*batch.columns, *(module.array(values) for values in new)]
         return module.RecordBatch.from_arrays(columns, schema=schema)
 
     return work

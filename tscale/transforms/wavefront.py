@@ -22,7 +22,8 @@ km, 0.1 ns).
 
 from __future__ import annotations
 
-from typing import Final, NamedTuple, Protocol, runtime_checkable
+from fractions import Fraction
+from typing import Any, Final, NamedTuple, Protocol, TypeAlias, runtime_checkable
 
 import numpy as np
 
@@ -128,12 +129,40 @@ def observer_state(
         x = x + v * ahead_s[..., np.newaxis]
         sun, sun_velocity = reference.ephemeris.state("sun", tdb)
         return x, v, sun, sun_velocity
+    return _near_earth(tdb, reference, observer, with_velocity, loose)[0]
+
+
+_State: TypeAlias = tuple[FloatArray, FloatArray, FloatArray, FloatArray]
+
+
+def _near_earth(
+    tdb: Pair, reference: ReferenceData, observer: Observer, with_velocity: bool, loose: bool
+) -> tuple[_State, FloatArray]:
+    """What `observer_state` gives of an observer near the Earth, and the vector from the geocentre, m."""
     event = observer_event(tdb, reference, observer, loose=loose)
-    if with_velocity:
-        x, v = event.bcrs_state(1.0 + reference.time_ephemeris.rate(tdb))
-    else:
-        x, v = event.bcrs_position(), event.bodies.earth_v_m_s + event.v_gcrs_m_s
-    return x, v, event.bodies.sun_m, event.bodies.sun_v_m_s
+    offset = event.offset()
+    own = event.offset_rate(1.0 + reference.time_ephemeris.rate(tdb)) if with_velocity else event.v_gcrs_m_s
+    return (
+        event.bodies.earth_m + offset,
+        event.bodies.earth_v_m_s + own,
+        event.bodies.sun_m,
+        event.bodies.sun_v_m_s,
+    ), offset
+
+
+def _roemer_m(toward: FloatArray, turned: FloatArray, parts: tuple[FloatArray, FloatArray, FloatArray]) -> Any:
+    """k.x as a sum of two floats, m: k in the parts `toward` (3,) and `turned`, x in km, km and m.
+
+    The product of the constant parts, up to 1.5e11 m, is taken without rounding; all others are smaller.
+    """
+    constant_km, rest_km, near_m = parts
+    product, error = exact.two_product(toward, constant_km)
+    first, slip = exact.two_sum(product[..., 0], product[..., 1])
+    total, more = exact.two_sum(first, product[..., 2])
+    small = dot(toward, rest_km) + dot(turned, constant_km + rest_km)
+    small = small + (error[..., 0] + error[..., 1] + error[..., 2] + slip + more)
+    high, low = exact.two_product(total, 1e3)
+    return exact.two_sum(high, low + (1e3 * small + dot(toward + turned, near_m)))
 
 
 def wavefront_terms(
@@ -169,21 +198,36 @@ def wavefront_terms(
     loose : bool
         See `earth.moving.observer_event`; for dates that are still being sought.
     """
-    # A barycentric position rounds to 0.1 ps. So that a date and the same date found on the way back, 1e-16 s apart,
-    # see the same rounding, all is evaluated on the nearest of a grid of 1 us and carried on in a straight line.
+    # What is left of the rounding of positions is 0.01 ps. So that a date and the one found on the way back, 1e-16
+    # s apart, see the same of it, all is evaluated on the nearest of a grid of 1 us and carried on in a straight line.
     grid = np.round(tdb[1] * _GRID_PER_S) / _GRID_PER_S
     beyond_s = tdb[1] - grid
     tdb = exact.normalise(tdb[0], grid)
-    x, v, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=with_rate, loose=loose)
+    if observer is None or (isinstance(observer, Barycentric) and not observer.geocentric):
+        x, v, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=with_rate, loose=loose)
+        near = np.zeros(3) if observer is None else x
+    else:
+        (x, v, sun, sun_velocity), near = _near_earth(tdb, reference, observer, with_rate, loose)
+    far = (near * 0.0, near * 0.0) if near is x else reference.ephemeris.position_apart_km("earth", tdb)
     # The direction is the one at the barycentric date; the first guess of that date is good to 4e-7 s
     # even for the largest proper motion known, and a microsecond moves no direction by 1e-17 rad.
     guess = source.direction(tdb)
     at_bary = exact.add_seconds(tdb, dot(guess, x) / C_M_S)
-    place, place_rate = source.motion(at_bary)
+    toward, moved, place_rate = source.motion_apart(at_bary)
+    place = toward + moved
     length = np.sqrt(dot(place, place))[..., np.newaxis]
     k = place / length
-    along, along_v = dot(k, x), dot(k, v)
-    terms: dict[str, FloatArray] = {ROEMER: along / C_M_S}
+    # k - toward without the rounding of k; `toward` is a unit vector but for its own rounding.
+    beyond_unit = float(sum(Fraction(float(part)) ** 2 for part in toward) - 1)
+    excess = (2.0 * dot(moved, toward) + dot(moved, moved) + beyond_unit)[..., np.newaxis]
+    turned = moved - place * (excess / (length * (1.0 + length)))
+    along, left_m = _roemer_m(toward, turned, (*far, near))
+    along_v = dot(k, v)
+    along_v_s = along_v / C_M_S
+    roemer_s = along / C_M_S
+    product, error = exact.two_product(roemer_s, C_M_S)
+    left_s = ((along - product) - error + left_m) / C_M_S
+    terms: dict[str, FloatArray] = {ROEMER: roemer_s}
     rate = np.zeros_like(along)
     if with_rate:
         k_rate = (place_rate - k * dot(k, np.broadcast_to(place_rate, k.shape))[..., np.newaxis]) / length
@@ -210,7 +254,7 @@ def wavefront_terms(
     )
     terms |= delays
     rate = rate + delay_rate if with_rate else rate
-    return WavefrontTerms(terms, np.asarray(rate), np.asarray(along_v * beyond_s / C_M_S))
+    return WavefrontTerms(terms, np.asarray(rate), np.asarray(along_v_s * beyond_s + left_s))
 
 
 def hidden_by(
