@@ -19,7 +19,7 @@ from .routes import Supplies, route, shortened
 from .scales import Node
 from .source import Source
 from .step import Step
-from .tables.clock_arguments import checked_clocks, kind_words
+from .tables.clock_arguments import FreeClock, checked_clocks, kind_words
 from .tables.clock_log import ClockLog
 from .tables.reference import ReferenceData
 
@@ -207,7 +207,7 @@ def chain(
     end: str,
     *,
     site: Observer | None = None,
-    clocks: Sequence[ClockLog] = (),
+    clocks: Sequence[ClockLog | FreeClock] = (),
     source: Source | None = None,
     reference: ReferenceData | None = None,
     second_order: bool = False,
@@ -220,9 +220,10 @@ def chain(
         Nodes `SCALE` or `SCALE@PLACE`. A start without place is at TOPOCENTER if a site is given, else at
         the end's place; an end without place is where the start is.
     site : Site, SurfaceSite or Trajectory, optional
-        The observer; needed for steps that depend on where the event is.
-    clocks : sequence of ClockLog
-        Comparison logs that tie CLOCK(...) and UTC(...) scales together.
+        The observer; needed for steps that depend on where the event is. Without it a PROPER(name) at either end
+        brings that of its clock.
+    clocks : sequence of ClockLog and ProperClock
+        Comparison logs that tie CLOCK(...) and UTC(...) scales together, and clocks that keep PROPER(name).
     source : Source, optional
         Needed to carry a wavefront to another place.
     reference : ReferenceData, optional
@@ -240,6 +241,9 @@ def chain(
     logs = checked_clocks(clocks)
     _check_pieces(site, source, reference)
     first, last = Node.parse(start), Node.parse(end)
+    if site is None:  # a clock that keeps its own proper time says where it is
+        ends = (first.scale.name, last.scale.name)
+        site = next((clock.observer for clock in logs if isinstance(clock, FreeClock) and clock.scale in ends), None)
     if first.place is None:
         first = Node(first.scale, "TOPOCENTER" if site is not None else last.place)
     if last.place is None:
@@ -251,7 +255,8 @@ def chain(
 def _check_pieces(site: Any, source: Any, reference: Any) -> None:
     if site is not None and not isinstance(site, Observer):
         raise InvalidInput(
-            f"site= takes a Site, a SurfaceSite or a Trajectory, got {kind_words(site)}; read a file with Site.load(path)"
+            f"site= takes a Site, a SurfaceSite or a Trajectory, got {kind_words(site)}; read a file "
+            "with Site.load(path)"
         )
     if source is not None and not isinstance(source, Source):
         raise InvalidInput(f"source= takes a Source, got {kind_words(source)}; make one with Source(ra_deg, dec_deg)")

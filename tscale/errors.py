@@ -30,6 +30,7 @@ __all__ = [
     "TextError",
     "TscaleError",
     "gathered_extrapolations",
+    "unsaid_extrapolations",
     "warn_extrapolation",
 ]
 
@@ -142,6 +143,16 @@ def gathered_extrapolations(*, size: int | None = None, repeats: bool = False) -
         _GATHERED.reset(token)
     for text, (count, told, worst) in mine.items():
         (_warn if outer is None else outer.take)(text, count, told if size is None else size, worst)
+
+
+@contextmanager
+def unsaid_extrapolations() -> Iterator[None]:
+    """Say nothing of what is extrapolated at dates that no caller gave; of its own thread alone."""
+    token = _GATHERED.set(_Gathered(False))
+    try:
+        yield
+    finally:
+        _GATHERED.reset(token)
 
 
 def warn_extrapolation(text: str, count: int, size: int, worst: float = 0.0) -> None:

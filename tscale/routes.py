@@ -37,12 +37,10 @@ class Supplies:
     free: tuple[ProperClock, ...] = ()
 
     def __post_init__(self) -> None:
-        # Clocks of both kinds come in one list; a free one brings its place with it.
+        # Clocks of both kinds come in one list.
         given: tuple[Any, ...] = (*self.clocks, *self.free)
         object.__setattr__(self, "clocks", tuple(clock for clock in given if isinstance(clock, ClockLog)))
         object.__setattr__(self, "free", tuple(clock for clock in given if not isinstance(clock, ClockLog)))
-        if self.site is None and self.free:
-            object.__setattr__(self, "site", self.free[0].observer)
 
 
 def shortened(steps: Sequence[Step], supplies: Supplies) -> list[Step]:
@@ -84,9 +82,6 @@ def route(first: Node, last: Node, supplies: Supplies) -> list[Step]:
     MissingPiece
         When no path exists; names the pieces with which there would be one.
     """
-    if supplies.free and first.place is None and last.place is None:
-        # The site came with a clock: what happens, happens there.
-        first, last = Node(first.scale, "TOPOCENTER"), Node(last.scale, "TOPOCENTER")
     path = _cheapest(first, last, _edges(first, last, supplies))
     if path is None:
         raise MissingPiece(_no_way(first, last))

@@ -24,12 +24,15 @@ from ..step import Step, Terms
 from ..tables.notes import orientation_notes
 from ..tables.reference import ReferenceData
 from ..transforms import barycentric, geocentric, wavefront
+from ..transforms.proper_scales import tdb_per_tt
 from .common import count_difference
 
 __all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "wavefront_step"]
 
 
 _TCB_GAIN: Final = float(L_B / (1 - L_B))
+_TCB_GAIN_ON_TCG: Final = float((L_B - L_G) / (1 - L_B))
+"""dTCB/dTCG - 1 where TDB and TT run alike."""
 
 _NAMED: Final = {"sun": "the Sun", "moon": "the Moon", "earth": "the Earth"}
 
@@ -70,15 +73,8 @@ def tcg_tcb_step(place: str, observer: Observer | None, reference: ReferenceData
         }
 
     def rate(before: Instants, after: Instants) -> FloatArray:
-        tdb = barycentric.tdb_from_tcb(after.pair)
-        # TCG - TCB at the geocentre from TT - TDB: (1 - L_G)(1 - f) = (1 - L_B)(1 + P').
-        gain = reference.time_ephemeris.rate(tdb)
-        tcg_per_tcb = (gain * float(1 - L_B) - float(L_B - L_G)) / float(1 - L_G)
-        if observer is not None:
-            tcg_per_tcb = tcg_per_tcb - barycentric.topocentric_rate(
-                reference.ephemeris, tdb, *observer.gcrs(geocentric.tt_from_tcg(before.pair), reference)
-            )
-        return np.asarray(-tcg_per_tcb / (1.0 + tcg_per_tcb))
+        of_tdb = tdb_per_tt(observer, geocentric.tt_from_tcg(before.pair), reference)
+        return np.asarray(of_tdb + _TCB_GAIN_ON_TCG + of_tdb * _TCB_GAIN_ON_TCG)
 
     def contributions(before: Instants, assumptions: Assumptions) -> list[Contribution]:
         tt = geocentric.tt_from_tcg(before.pair)
@@ -124,11 +120,7 @@ def tt_barycentric_step(end: str, place: str, observer: Observer | None, referen
         return barycentric.tdb_to_tt(t if end == "TDB" else barycentric.tcb_to_tdb(t), reference, observer)
 
     def rate(before: Instants, after: Instants) -> FloatArray:
-        tdb = after.pair if end == "TDB" else barycentric.tdb_from_tcb(after.pair)
-        gain = reference.time_ephemeris.rate(tdb)
-        if observer is not None:
-            gain = gain - barycentric.topocentric_rate(reference.ephemeris, tdb, *observer.gcrs(before.pair, reference))
-        of_tdb = -gain / (1.0 + gain)
+        of_tdb = tdb_per_tt(observer, before.pair, reference)
         return np.asarray(of_tdb if end == "TDB" else of_tdb + _TCB_GAIN + of_tdb * _TCB_GAIN)
 
     return Step(

@@ -13,7 +13,7 @@ from ..ephemeris import PLANETARY_BODIES
 from ..errors import InvalidInput
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 from ..instants import Instants
-from ..tables.clock_arguments import checked_clocks
+from ..tables.clock_arguments import checked_logs
 from ..tables.reference import ReferenceData
 from .arguments import checked_instants, checked_options, checked_reference, with_turnaround
 from .batch import Batch, Failure, raise_failures, solve_batch
@@ -99,7 +99,7 @@ def one_way(
     if given is None or (transmit is not None and receive is not None):
         raise InvalidInput("a link needs exactly one of transmit= and receive=, the dates of one of its events")
     ends = as_end(transmitter, "transmitter"), as_end(receiver, "receiver")
-    given, logs, tables = checked_instants(given), checked_clocks(clocks), checked_reference(reference)
+    given, logs, tables = checked_instants(given), checked_logs(clocks), checked_reference(reference)
     options = checked_options(bodies, second_order, occultation, tolerance_s, max_iterations)
     met = receive is not None
     known = tdb_of(given, ends[met], tables, logs)
@@ -145,7 +145,7 @@ def two_way(
     if given is None or (transmit is not None and receive is not None):
         raise InvalidInput("a round trip needs exactly one of transmit= and receive=, dates of the station's events")
     near, far = as_end(station, "station"), as_end(target, "target")
-    logs, tables = checked_clocks(clocks), checked_reference(reference)
+    logs, tables = checked_logs(clocks), checked_reference(reference)
     options = checked_options(bodies, second_order, occultation, tolerance_s, max_iterations)
     given, turnaround = with_turnaround(checked_instants(given), turnaround_s)
     # From the leg that meets the date given to the other: backwards in time from a reception.

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from . import barycentric, body_events, geocentric, lunar, planetary, shapiro, terrestrial, wavefront
+from . import barycentric, body_events, geocentric, lunar, planetary, proper_time, shapiro, terrestrial, wavefront
 from .barycentric import tcb_to_tcg, tcb_to_tdb, tcg_to_tcb, tdb_to_tcb, tdb_to_tt, topocentric_terms, tt_to_tdb
 from .geocentric import tcg_to_tt, tt_to_tcg
 from .terrestrial import (
@@ -25,6 +25,7 @@ __all__ = [
     "lunar",
     "observer_to_barycenter",
     "planetary",
+    "proper_time",
     "reference_to_clock",
     "shapiro",
     "tai_to_tt_bipm",

@@ -9,8 +9,6 @@ from __future__ import annotations
 import math
 import threading
 from collections import OrderedDict
-from collections.abc import Iterator
-from contextlib import contextmanager
 from typing import Final
 
 import numpy as np
@@ -20,7 +18,7 @@ from ..constants import L_G
 from ..earth.gravity.field import GravityField
 from ..earth.observer import Observer
 from ..ephemeris.chebyshev import broadcast_pair, date_text
-from ..errors import _GATHERED, OutOfSpan, _Gathered
+from ..errors import NotConverged, OutOfSpan, unsaid_extrapolations
 from ..exact import FloatArray, IntArray, Pair
 from ..tables.reference import ReferenceData
 from .proper_models import model_of, total_of
@@ -38,6 +36,8 @@ _BLOCK_S: Final = 8 * 86400
 _FIRST_PANEL_S: Final = 86400
 _BLOCKS_KEPT: Final = 256
 _SLACK_S: Final = 1e-9
+_SLIVER_S: Final = 1e-8
+_MOST_ROUNDS: Final = 12
 _TCG_PER_TT: Final = float(1 / (1 - L_G))
 _TCG_GAIN: Final = float(L_G / (1 - L_G))
 
@@ -99,7 +99,11 @@ class ProperIntegral:
     def gained_s(self, tt: Pair) -> FloatArray:
         """Elapsed reading less elapsed TT since the coincidence, s, at TT counts of any shape."""
         high, low = self._evaluate(tt, slice(len(self.model.names), None))
-        return np.asarray(high[0] + low[0])
+        gained_s = np.asarray(high[0] + low[0])
+        if not self.rate_offset:
+            return gained_s
+        elapsed_s = exact.seconds(exact.subtract(tt, self.anchor))
+        return np.asarray(gained_s + self.rate_offset * (elapsed_s + gained_s))
 
     def terms_s(self, tt: Pair) -> dict[str, FloatArray]:
         """Elapsed reading less elapsed TCG since the coincidence in parts, s; at TT counts of any shape."""
@@ -113,30 +117,33 @@ class ProperIntegral:
 
     def rate(self, tt: Pair) -> FloatArray:
         """d(reading)/d(TT) - 1."""
-        return self._against_tt(total_of(self.model.terms(tt, self.reference)))
+        per_tt = _against_tt(total_of(self.model.terms(tt, self.reference)))
+        return np.asarray(per_tt + self.rate_offset + per_tt * self.rate_offset)
 
     def tt_of_elapsed(self, elapsed: Pair) -> Pair:
         """TT count at which the clock has gone on by `elapsed` since the coincidence; undoes `gained_s` to 0.1 fs.
 
-        Each round leaves 1e-9 of the error before it.
+        Each round leaves of the error before it as much as the rate is.
+
+        Raises
+        ------
+        OutOfSpan
+            Where the clock's rate is not known, with the mask.
         """
         first = exact.add(self.anchor, elapsed)
         tt = self._clipped(first)
-        for _ in range(5):
+        enough_s = 1e-17 / (1e-7 + abs(self.rate_offset))
+        for _ in range(_MOST_ROUNDS):
             found = exact.add_seconds(first, -self.gained_s(tt))
-            step_s = np.max(np.abs(exact.seconds(exact.subtract(found, tt))), initial=0.0)
-            tt = self._clipped(found)
-            if step_s < 1e-12:
-                break
-        self._require_inside(found)
-        return found
+            nearer = self._clipped(found)
+            step_s = np.max(np.abs(exact.seconds(exact.subtract(nearer, tt))), initial=0.0)
+            tt = nearer
+            if step_s < enough_s:
+                self._require_inside(found)
+                return found
+        raise NotConverged(f"readings of the clock at {self.observer.name} still move by {step_s:.3g} s of TT")
 
     # ---- blocks ----------------------------------------------------------------------------------
-
-    def _against_tt(self, y: FloatArray) -> FloatArray:
-        """d(reading)/d(TT) - 1 from d(tau)/d(TCG) - 1."""
-        per_tt = _TCG_GAIN + y * _TCG_PER_TT
-        return np.asarray(per_tt + self.rate_offset + per_tt * self.rate_offset)
 
     def _evaluate(self, tt: Pair, rows: slice) -> tuple[FloatArray, FloatArray]:
         """Integrals from the coincidence to TT counts, (rows, *shape), in two parts to be added."""
@@ -145,11 +152,11 @@ class ProperIntegral:
         elapsed = exact.subtract(tt, self.anchor)
         shape = elapsed[0].shape
         number = (elapsed[0] // _BLOCK_S).reshape(-1)
-        if np.isfinite(self._reach.last_s) and self._reach.last_s > 0:
-            # The last date may be the first of a block of no length.
-            number = np.minimum(number, max(math.ceil(self._reach.last_s / _BLOCK_S) - 1, 0))
+        # A date at an end may fall on the edge of a block of which nothing, or a sliver of roundings, is inside.
+        if np.isfinite(self._reach.last_s):
+            number = np.minimum(number, math.ceil((self._reach.last_s - _SLIVER_S) / _BLOCK_S) - 1)
         if np.isfinite(self._reach.first_s):
-            number = np.maximum(number, math.floor(self._reach.first_s / _BLOCK_S))
+            number = np.maximum(number, math.floor((self._reach.first_s + _SLIVER_S) / _BLOCK_S))
         local_s = (elapsed[0].reshape(-1) - number * _BLOCK_S).astype(np.float64) + elapsed[1].reshape(-1)
         count = len(range(*rows.indices(len(self.model.names) + 1)))
         high, low = np.empty((count, number.size)), np.empty((count, number.size))
@@ -197,9 +204,10 @@ class ProperIntegral:
         def rates(offset_s: FloatArray) -> FloatArray:
             tt = exact.add_seconds(start, offset_s + begin_s)
             terms = self.model.terms(tt, self.reference)
-            return np.stack((*terms.values(), self._against_tt(total_of(terms))))
+            return np.stack((*terms.values(), _against_tt(total_of(terms))))
 
-        with _quiet():
+        # Earth orientation that is held costs 1e-19 at a node of a quadrature; notes tell of the dates that were given.
+        with unsaid_extrapolations():
             return integrate(rates, edges - begin_s, self.observer.name)
 
     # ---- ends ------------------------------------------------------------------------------------
@@ -227,16 +235,9 @@ class ProperIntegral:
             )
 
 
-@contextmanager
-def _quiet() -> Iterator[None]:
-    """Say nothing of Earth orientation that is held: at the nodes of a quadrature, dates that no caller gave, it costs
-    1e-19 in rate; the step's notes tell of the dates that were given.
-    """
-    token = _GATHERED.set(_Gathered(False))
-    try:
-        yield
-    finally:
-        _GATHERED.reset(token)
+def _against_tt(y: FloatArray) -> FloatArray:
+    """d(tau)/d(TT) - 1 from d(tau)/d(TCG) - 1."""
+    return np.asarray(_TCG_GAIN + y * _TCG_PER_TT)
 
 
 def _outward(number: IntArray) -> list[int]:

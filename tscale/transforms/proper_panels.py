@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import Final
+from typing import Final, TypeAlias
 
 import numpy as np
 from numpy.polynomial import chebyshev, legendre
@@ -25,9 +25,13 @@ TOLERANCE: Final = 1e-19
 
 _NODES: Final = 12
 _MOST_HALVINGS: Final = 40
+_AT_ONCE: Final = 4096
+_MOST_PANELS: Final = 2**16
 
-Rates = Callable[[FloatArray], FloatArray]
+Rates: TypeAlias = Callable[[FloatArray], FloatArray]
 """From offsets (...) in seconds to rates (rows, ...)."""
+_Panels: TypeAlias = tuple[FloatArray, FloatArray, FloatArray]
+"""Starts, lengths, and rates at the nodes."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -50,9 +54,12 @@ class Integral:
     totals_s: FloatArray
 
     def value(self, offset_s: FloatArray, rows: slice) -> FloatArray:
-        """Integrals from the first panel's start to offsets (n,): (rows, n), seconds; by Clenshaw's recurrence."""
+        """Integrals from the first panel's start to offsets (n,): (rows, n), seconds; by Clenshaw's recurrence.
+
+        Past the ends, by roundings, they keep their value there.
+        """
         panel = np.clip(np.searchsorted(self.starts_s, offset_s, side="right") - 1, 0, self.starts_s.size - 1)
-        argument = 2.0 * (offset_s - self.starts_s[panel]) / self.lengths_s[panel] - 1.0
+        argument = np.clip(2.0 * (offset_s - self.starts_s[panel]) / self.lengths_s[panel] - 1.0, -1.0, 1.0)
         series = self.coefficients[panel, rows].transpose(2, 1, 0)
         b1 = b2 = np.zeros(series.shape[1:])
         for k in range(len(series) - 1, 0, -1):
@@ -96,32 +103,46 @@ def integrate(rates: Rates, edges_s: FloatArray, what: str) -> Integral:
     NotConverged
         When a rate jumps, so that halving does not help.
     """
-    node, to_halves, to_integral = _matrices()
+    kept: list[_Panels] = []
+    for i in range(0, edges_s.size - 1, _AT_ONCE):
+        kept.extend(_refined(rates, edges_s[i : i + _AT_ONCE + 1], what))
+    return _joined(kept)
+
+
+def _refined(rates: Rates, edges_s: FloatArray, what: str) -> list[_Panels]:
+    """Halve the panels between some edges until each is done."""
+    node, to_halves, _ = _matrices()
     starts, lengths = edges_s[:-1], np.diff(edges_s)
 
     def at_nodes(starts: FloatArray, lengths: FloatArray) -> FloatArray:
         return rates(starts[:, None] + (node + 1.0) * (0.5 * lengths[:, None]))
 
     values = at_nodes(starts, lengths)
-    kept: list[tuple[FloatArray, FloatArray, FloatArray]] = []
+    kept: list[_Panels] = []
     for _ in range(_MOST_HALVINGS):
         half_starts = np.stack((starts, starts + 0.5 * lengths), axis=1).ravel()
         half_lengths = np.repeat(0.5 * lengths, 2)
         found = at_nodes(half_starts, half_lengths)
         foretold = (values @ to_halves.T).reshape(found.shape)
-        # Of rates of 1e-8 the last digits are rounding, which no halving removes.
-        allowed = np.maximum(TOLERANCE, 64.0 * np.finfo(np.float64).eps * np.abs(found).max(axis=(1, 2), keepdims=True))
-        off = (np.abs(foretold - found) > allowed).any(axis=(0, 2)).reshape(-1, 2).any(axis=1)
-        again = np.repeat(off, 2)
+        # The last digits of a rate are rounding, which no halving removes.
+        rounding = 1024.0 * np.finfo(np.float64).eps * np.abs(found).max(axis=(1, 2), keepdims=True)
+        off = np.abs(foretold - found) > np.maximum(TOLERANCE, rounding)
+        again = np.repeat(off.any(axis=(0, 2)).reshape(-1, 2).any(axis=1), 2)
         kept.append((half_starts[~again], half_lengths[~again], found[:, ~again]))
         if not again.any():
-            break
+            return kept
         starts, lengths, values = half_starts[again], half_lengths[again], found[:, again]
-    else:
-        raise NotConverged(
-            f"the rate of {what} cannot be integrated to {TOLERANCE:g}: it jumps {starts[0]:.6f} s after the start of "
-            "its panel; give a trajectory whose velocity goes with its positions (method='hermite')"
-        )
+        if starts.size > _MOST_PANELS:
+            break
+    raise NotConverged(
+        f"the rate of {what} cannot be integrated to {TOLERANCE:g}: it jumps or is rough {starts[0]:.6f} s after the "
+        "start of its first panel; give a trajectory whose velocity goes with its positions (method='hermite')"
+    )
+
+
+def _joined(kept: list[_Panels]) -> Integral:
+    """Panels (starts, lengths, rates at nodes) in their order, as one integral."""
+    _, _, to_integral = _matrices()
     all_starts = np.concatenate([part[0] for part in kept])
     order = np.argsort(all_starts, kind="stable")
     all_starts = all_starts[order]
