@@ -154,8 +154,28 @@ def _collect(whole: Any, pieces: tuple[Any, ...]) -> Pair:
     return normalise(whole + carry.astype(np.int64), (total - carry) + error)
 
 
+def bare(values: Any, unit: str) -> Any:
+    """Values as bare numbers of a unit, which is not dropped in silence.
+
+    A quantity of a general library converts itself (`to_value(unit)`); numpy's own differences of dates are refused.
+    """
+    convert = getattr(values, "to_value", None)
+    if convert is not None:
+        try:
+            return convert(unit)
+        except (TypeError, ValueError) as error:
+            raise InvalidInput(f"{values!r:.60} cannot be given in {unit}: {error}") from error
+    if getattr(getattr(values, "dtype", None), "kind", None) in ("m", "M"):
+        raise InvalidInput(
+            f"numbers of {unit} are needed, got {values.dtype}: divide differences by np.timedelta64(1, 's'), read "
+            "dates with tscale.timecodes.from_datetime64"
+        )
+    return values
+
+
 def checked_parts(whole: Any, fraction: Any) -> Pair:
     """Broadcast a whole and a fractional part, or say which of them is wrong."""
+    whole, fraction = bare(whole, "s"), bare(fraction, "s")
     whole_array = np.asarray(whole)
     if whole_array.dtype.kind == "f":
         # Integral floats are exact up to 2**53; anything else has lost or mixed in a fraction already.

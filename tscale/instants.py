@@ -308,7 +308,7 @@ class Instants:
     def __sub__(self, other: Instants | float) -> FloatArray | Instants:
         if isinstance(other, Instants):
             return self.minus(other)
-        return self.shifted(-np.asarray(other, dtype=np.float64))
+        return self.shifted(-exact.checked_parts(0, other)[1])
 
     def __eq__(self, other: object) -> BoolArray:  # type: ignore[override]
         if not isinstance(other, Instants):

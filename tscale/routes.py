@@ -6,6 +6,7 @@ import heapq
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import partial
+from itertools import pairwise
 from typing import Any, Final
 
 from . import edges
@@ -61,7 +62,21 @@ def shortened(steps: Sequence[Step], supplies: Supplies) -> list[Step]:
                 step = edges.tt_barycentric_step(onward[-1], place, observer, supplies.reference)
                 found[i : i + width] = [step if scales == onward else step.reversed()]
                 break
-    return found
+    return _with_wavefront(found, supplies)
+
+
+def _with_wavefront(steps: list[Step], supplies: Supplies) -> list[Step]:
+    """The same path with TT at an observer near the Earth to TDB at the barycentre as one step."""
+    observer, source = supplies.site, supplies.source
+    if observer is None or source is None or not getattr(observer, "geocentric", True):
+        return steps
+    near, far = Node(Scale.parse("TT"), "TOPOCENTER"), Node(Scale.parse("TDB"), "BARYCENTER")
+    for i, (one, two) in enumerate(pairwise(steps)):
+        for start, end in ((near, far), (far, near)):
+            if (one.start, two.end) == (start, end) and one.end == Node(Scale.parse("TDB"), "TOPOCENTER"):
+                step = edges.tt_wavefront_step(observer, source, supplies.reference, supplies.second_order)
+                return [*steps[:i], step if start == near else step.reversed(), *steps[i + 2 :]]
+    return steps
 
 
 @dataclass(frozen=True)

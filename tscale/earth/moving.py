@@ -83,6 +83,12 @@ class EarthAndSun(NamedTuple):
         """Derivative of the topocentric terms, (A_E.r + v_E.v)/c^2, to 2e-15 on the ground."""
         return np.asarray((dot(self.acceleration_m_s2, r_gcrs_m) + dot(self.earth_v_m_s, v_gcrs_m_s)) / C_M_S**2)
 
+    def moved(self, seconds: FloatArray) -> EarthAndSun:
+        """Both bodies some microseconds later, in a straight line; potential and velocities stay."""
+        step = np.asarray(seconds)[..., np.newaxis]
+        earth_m, sun_m = self.earth_m + self.earth_v_m_s * step, self.sun_m + self.sun_v_m_s * step
+        return self._replace(earth_m=earth_m, sun_m=sun_m)
+
     def terms(self, r_gcrs_m: FloatArray) -> TopocentricTerms:
         """Topocentric terms of TCB - TCG for a geocentric vector; see `topocentric_terms`."""
         first = dot(self.earth_v_m_s, r_gcrs_m) * (_TCG_METRE / C_M_S**2)
@@ -96,6 +102,15 @@ class Event(NamedTuple):
     r_gcrs_m: FloatArray
     v_gcrs_m_s: FloatArray
     bodies: EarthAndSun
+
+    def moved(self, seconds: FloatArray, *, of_bodies: bool = False) -> Event:
+        """The event some microseconds later, in a straight line; with `of_bodies` only the bodies are moved."""
+        bodies = self.bodies.moved(seconds)
+        if of_bodies:
+            return self._replace(bodies=bodies)
+        step = np.asarray(seconds)
+        tt, r = exact.add_seconds(self.tt, step), self.r_gcrs_m + self.v_gcrs_m_s * step[..., np.newaxis]
+        return self._replace(tt=tt, r_gcrs_m=r, bodies=bodies)
 
     def offset(self) -> FloatArray:
         """Barycentric vector from the geocentre, m, TDB-compatible."""

@@ -5,7 +5,7 @@ Each returns a `Step` bound to its places, tables and observer; none does any wo
 
 from __future__ import annotations
 
-from .barycentric import tcb_tdb_step, tcg_tcb_step, tt_barycentric_step, wavefront_step
+from .barycentric import tcb_tdb_step, tcg_tcb_step, tt_barycentric_step, tt_wavefront_step, wavefront_step
 from .lunar import tcl_tcb_step
 from .proper import proper_step
 from .terrestrial import clock_step, fixed_step, tt_bipm_step, tt_tcg_step, ut1_step
@@ -20,6 +20,7 @@ __all__ = [
     "tt_barycentric_step",
     "tt_bipm_step",
     "tt_tcg_step",
+    "tt_wavefront_step",
     "ut1_step",
     "wavefront_step",
 ]

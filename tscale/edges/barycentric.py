@@ -27,7 +27,7 @@ from ..transforms import barycentric, geocentric, wavefront
 from ..transforms.proper_scales import tdb_per_tt
 from .common import count_difference
 
-__all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "wavefront_step"]
+__all__ = ["tcb_tdb_step", "tcg_tcb_step", "tt_barycentric_step", "tt_wavefront_step", "wavefront_step"]
 
 
 _TCB_GAIN: Final = float(L_B / (1 - L_B))
@@ -190,6 +190,30 @@ def wavefront_step(
         contributions=contributions,
         omissions=omissions,
         notes=notes,
+    )
+
+
+def tt_wavefront_step(observer: Observer, source: Source, reference: ReferenceData, second_order: bool) -> Step:
+    """TT at an observer near the Earth to TDB at the barycentre in one go, for speed: the place is looked up once."""
+    dating = tt_barycentric_step("TDB", "TOPOCENTER", observer, reference)
+    carrying = wavefront_step("TOPOCENTER", observer, source, reference, second_order)
+
+    def rate(before: Instants, after: Instants) -> FloatArray:
+        between = dating.forward(before)
+        one, two = dating.rate(before, between), carrying.rate(between, after)
+        return np.asarray(one + two + one * two)
+
+    return Step(
+        start=dating.start,
+        end=carrying.end,
+        title=carrying.title,
+        source=f"{dating.source}; {carrying.source}",
+        forward=lambda t: wavefront.observer_tt_to_barycenter(
+            t, reference, source, observer, second_order=second_order
+        ),
+        backward=lambda t: dating.backward(carrying.backward(t)),
+        terms=lambda before, after: {"TDB - TT": count_difference(before, after)},
+        rate=rate,
     )
 
 

@@ -8,7 +8,7 @@ import numpy as np
 
 from ..constants import MJD_J2000
 from ..errors import InvalidInput
-from ..exact import BoolArray, FloatArray, IntArray, Pair
+from ..exact import BoolArray, FloatArray, IntArray, Pair, bare
 
 __all__ = ["Label", "days", "finite", "first_item", "integers", "label", "pair", "together"]
 
@@ -42,7 +42,7 @@ def integers(values: Any, what: str, advice: str) -> IntArray:
 
 def days(values: Any) -> IntArray:
     """Day numbers as int64."""
-    array = integers(values, "a day number", "split a date into (day, fraction) and pass them apart")
+    array = integers(bare(values, "d"), "a day number", "split a date into (day, fraction) and pass them apart")
     if array.size and (int(array.min()) < -_MOST_DAYS or int(array.max()) > _MOST_DAYS):
         mask = np.asarray((array < -_MOST_DAYS) | (array > _MOST_DAYS))
         raise InvalidInput("day numbers must lie within 1e14 of 0: the seconds must fit an int64", mask=mask)

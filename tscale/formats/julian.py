@@ -14,7 +14,7 @@ import numpy as np
 import numpy.typing as npt
 
 from ..errors import InvalidInput
-from ..exact import FloatArray, IntArray, normalise, two_product, two_sum
+from ..exact import FloatArray, IntArray, bare, normalise, two_product, two_sum
 from .checks import Label, days, finite, together
 from .checks import label as checked
 from .labels import DayLength
@@ -99,7 +99,7 @@ def label_from_jd(day: npt.ArrayLike, fraction: npt.ArrayLike, day_length: DayLe
 
 
 def _fractions(fraction: Any) -> FloatArray:
-    part = finite(fraction, "fractions of a day")
+    part = finite(bare(fraction, "d"), "fractions of a day")
     far = np.asarray(np.abs(part) > _MOST)
     if np.any(far):
         raise InvalidInput("fractions of a day must be below 2**46; put whole days into the day number", mask=far)

@@ -4,18 +4,19 @@ from __future__ import annotations
 
 import hashlib
 import re
-from fractions import Fraction
 from pathlib import Path
 from typing import Final, NamedTuple
 
 import numpy as np
 
 from ..errors import DataFileError
-from .leap_second_rows import FIRST_STEP, LeapRow, nanoseconds
+from .gregorian import date_from_mjd
+from .leap_second_rows import FIRST_STEP, LeapRow, exact_number, nanoseconds
 
 __all__ = ["LeapFile", "read_leap_file"]
 
 _NTP_TO_MJD: Final = 15020  # MJD of 1900-01-01, the origin of NTP seconds (RFC 5905, section 6)
+_NTP_DIGITS: Final = 12
 _ROWS_REACH_MJD: Final = 51179
 _MONTHS: Final = ("january", "february", "march", "april", "may", "june", "july", "august",
     "september", "october", "november", "december")  # fmt: skip
@@ -114,7 +115,7 @@ def _check_step(before: LeapRow, row: LeapRow, number: int, path: Path) -> None:
             f"TAI - UTC goes from {before.tai_minus_utc_ns / 1e9:g} to {row.tai_minus_utc_ns / 1e9:g} s, where a leap "
             "second is one second: a row is missing or damaged, or the rule is a later one"
         )
-    elif (np.datetime64("1858-11-17", "D") + row.mjd).astype("datetime64[D]").item().day != 1:
+    elif date_from_mjd(row.mjd)[2] != 1:
         complaint = f"MJD {row.mjd} is not the first day of a month"
     if complaint:
         raise DataFileError(f"{path}, row {number}: {complaint}", row=number, path=path)
@@ -144,7 +145,7 @@ def _dat_header(lines: list[str], path: str | Path) -> tuple[int | None, str | N
 def _dat_row(content: list[str]) -> LeapRow:
     if len(content) != 5:
         raise ValueError("expected MJD, day, month, year, TAI-UTC")
-    mjd = Fraction(content[0])
+    mjd = exact_number(content[0])
     day, month, year = (int(part) for part in content[1:4])
     if mjd != _mjd_of(year, month, day):
         raise ValueError(f"MJD and date disagree: {year:04d}-{month:02d}-{day:02d} is MJD {_mjd_of(year, month, day)}")
@@ -166,9 +167,11 @@ def _list_header(lines: list[str], path: str | Path) -> tuple[int | None, str | 
         )
     for mark in ("#@", "#$"):
         number, value = values[mark]
-        if not value.isdecimal():
+        if not (value.isdecimal() and len(value) <= _NTP_DIGITS):
             raise DataFileError(
-                f"{path}, row {number}: {mark} must be followed by NTP seconds, got {value!r}", row=number, path=path
+                f"{path}, row {number}: {mark} must be followed by NTP seconds, got {value!r:.60}",
+                row=number,
+                path=path,
             )
     digits = values["#$"][1] + values["#@"][1]
     digits += "".join("".join(line.partition("#")[0].split()) for line in lines)
@@ -187,7 +190,7 @@ def _list_header(lines: list[str], path: str | Path) -> tuple[int | None, str | 
 
 
 def _list_row(content: list[str]) -> LeapRow:
-    if len(content) != 2:
+    if len(content) != 2 or len(content[0]) > _NTP_DIGITS:
         raise ValueError("expected NTP seconds and TAI-UTC")
     day, rest = divmod(int(content[0]), 86400)
     if rest:

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from decimal import Decimal, InvalidOperation
 from fractions import Fraction
 from typing import Any, Final, NamedTuple
 
 from ..errors import InvalidInput
 
-__all__ = ["DRIFT_ROWS", "FIRST_STEP", "LeapRow", "day_number", "nanoseconds", "row_of"]
+__all__ = ["DRIFT_ROWS", "FIRST_STEP", "LeapRow", "day_number", "exact_number", "nanoseconds", "row_of"]
 
 
 class LeapRow(NamedTuple):
@@ -54,15 +55,29 @@ FIRST_STEP: Final = LeapRow(41317, 10_000_000_000, 41317)
 """TAI - UTC from 1972-01-01."""
 
 
+_LARGEST_S: Final = 10**9
+
+
 def nanoseconds(seconds: Any, what: str) -> int:
     """Seconds as an exact whole number of ns; a float counts as the shortest decimal that means it."""
+    value = exact_number(seconds)
+    if value is None or abs(value) > _LARGEST_S or (value * 10**9).denominator != 1:
+        raise InvalidInput(
+            f"{what} must be a finite, whole number of nanoseconds and at most {_LARGEST_S} s, got {seconds!r:.60} s"
+        )
+    return int(value * 10**9)
+
+
+def exact_number(number: Any) -> Fraction | None:
+    """A number or its text, exactly; None for what is none, or has hundreds of digits."""
+    if isinstance(number, int | Fraction):
+        return Fraction(number)
     try:
-        value = Fraction(str(seconds)) * 10**9
-    except (ValueError, ZeroDivisionError):
-        value = None
-    if value is None or value.denominator != 1:
-        raise InvalidInput(f"{what} must be a finite, whole number of nanoseconds, got {seconds!r} s")
-    return int(value)
+        value = Decimal(str(number))
+    except InvalidOperation:
+        return None
+    # An exponent of some digits would make a fraction of a billion of them.
+    return Fraction(value) if value.is_finite() and abs(value.adjusted()) < 100 else None
 
 
 def day_number(mjd: Any) -> int | None:

@@ -1,93 +1,96 @@
-"""Instants from and to `astropy.time.Time`: both sides keep a date in two parts, and neither adds them up."""
+"""Instants, sites and sources from and to astropy's `Time`, `EarthLocation` and `SkyCoord`."""
 
 from __future__ import annotations
 
-import importlib
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
-from ..errors import InvalidInput, MissingPiece, ScaleMismatch
+from ..earth.site import Site
+from ..errors import InvalidInput
 from ..instants import Instants
+from ..source import Source
+from . import astropy_places, astropy_time
+from .optional import needed
 
 if TYPE_CHECKING:
     from ..formats.leap_seconds import LeapSeconds
 
 __all__ = ["from_astropy", "to_astropy"]
 
-_SCALES: Final = {
-    "utc": "UTC",
-    "tai": "TAI",
-    "tt": "TT",
-    "tcg": "TCG",
-    "tcb": "TCB",
-    "tdb": "TDB",
-    "ut1": "UT1",
-}
-_NAMES: Final = {ours: theirs for theirs, ours in _SCALES.items()}
 
-
-def from_astropy(time: Any, place: str | None = None, *, leap_seconds: LeapSeconds | None = None) -> Instants:
-    """Read an astropy `Time` of any shape and of scale utc, tai, tt, tcg, tcb, tdb or ut1.
-
-    Its two parts `jd1` and `jd2` are read exactly; UTC days that end with a leap second are 86401 s long on both
-    sides. `Time.location` is where astropy puts the observer when it converts, no part of the date, and is let be.
+def from_astropy(
+    value: Any,
+    place: str | None = None,
+    *,
+    leap_seconds: LeapSeconds | None = None,
+    name: str | None = None,
+    epoch: str | None = None,
+    drop_radial_velocity: bool = False,
+) -> Any:
+    """Read an astropy `Time` as Instants, an `EarthLocation` as a Site, or a `SkyCoord` as a Source.
 
     Parameters
     ----------
-    time : astropy.time.Time
+    value : Time, EarthLocation or SkyCoord
+        A `Time` of any shape and of scale utc, tai, tt, tcg, tcb, tdb or ut1; one location; one direction in any frame
+        that astropy turns into ICRS.
     place : str or None
-        Place to state: `TOPOCENTER`, `GEOCENTER`, `BARYCENTER` ...
+        Place to state with a `Time`: `TOPOCENTER`, `GEOCENTER`, `BARYCENTER` ...
     leap_seconds : LeapSeconds, optional
-        For UTC.
+        For a `Time` of UTC.
+    name : str, optional
+        Of the site or the source; by default what astropy calls it (`info.name`).
+    epoch : str, optional
+        Of a `SkyCoord` without `obstime`: ISO 8601, TDB.
+    drop_radial_velocity : bool
+        Leave a radial velocity out, which a Source has not.
 
     Returns
     -------
-    Instants
-        Of the same shape.
+    Instants, Site or Source
+        A `Time` is read exactly: its two parts say a date to 5 ps, Instants hold it to 0.1 fs. A site has astropy's
+        metres to the bit, a source its degrees (within one rounding where astropy has to turn or convert).
 
     Raises
     ------
     MissingPiece
         Without astropy.
     InvalidInput
-        For anything but a `Time`, for the scale `local`, and for masked or non-finite dates (with the mask).
+        For anything else; the scale `local`; masked or non-finite dates (with the mask); several locations or
+        directions; a source with proper motion and no date, or with a radial velocity.
     OutOfSpan
         For UTC before the leap-second table.
 
     Notes
     -----
+    `Time.location` is where astropy puts the observer when it converts, no part of the date, and is let be.
+
     On the few days of 1961 to 1971 that end with a step of some 0.1 s, ERFA (and astropy with it) takes the length of
     the day to 3 ns only: there the same two parts mean labels up to 3 ns apart.
     """
-    kind = _time_class()
-    if not isinstance(time, kind):
-        raise InvalidInput(f"from_astropy reads an astropy Time, got {type(time).__name__}")
-    if time.scale not in _SCALES:
-        raise InvalidInput(f"astropy's scale {time.scale!r} names no time scale; allowed are {', '.join(_SCALES)}")
-    masked = np.broadcast_to(np.asarray(time.mask, dtype=np.bool_), time.shape)
-    if masked.any():
-        raise InvalidInput(
-            f"{int(np.count_nonzero(masked))} of {masked.size} dates are masked; leave them out (see .mask)",
-            mask=masked.copy(),
-        )
-    first, second = np.array(time.jd1, dtype=np.float64), np.array(time.jd2, dtype=np.float64)
-    whole = np.floor(first)
-    if np.any(first != whole):
-        raise InvalidInput("jd1 of this Time holds parts of a day; make it anew with Time(t.jd1, t.jd2, format='jd')")
-    return Instants.from_jd(whole, second, _SCALES[time.scale], place, leap_seconds=leap_seconds)
+    coordinates = needed("astropy.coordinates") if type(value).__module__.startswith("astropy.coord") else None
+    if coordinates is not None and isinstance(value, coordinates.EarthLocation):
+        return astropy_places.site_of(value, name)
+    if coordinates is not None and isinstance(value, coordinates.SkyCoord):
+        return astropy_places.source_of(value, name, epoch, drop_radial_velocity)
+    if not isinstance(value, needed("astropy.time").Time):
+        raise InvalidInput(f"from_astropy reads an astropy Time, EarthLocation or SkyCoord, got {type(value).__name__}")
+    return astropy_time.instants_of(value, place, leap_seconds)
 
 
-def to_astropy(t: Instants, *, leap_seconds: LeapSeconds | None = None) -> Any:
-    """Write an astropy `Time` of the same shape.
+def to_astropy(value: Instants | Site | Source, *, leap_seconds: LeapSeconds | None = None) -> Any:
+    """Write Instants as an astropy `Time` of the same shape, a Site as an `EarthLocation`, a Source as a `SkyCoord`.
 
-    Two float64 of days hold less than `Instants`: the date is rounded to 5 ps. The place is no part of an astropy
-    `Time`; keep it beside a barycentric date.
+    A `Time` is two float64 of days, each rounded to nearest: half a unit of the last place is 2.4 ps at midnight, and
+    nothing within a second of noon. What was read from a `Time` goes back to the same two numbers. The place is no
+    part of a `Time`: keep it beside a barycentric date.
+
+    An `EarthLocation` has no velocity: it is where the site is at its own epoch. A `SkyCoord` is ICRS, with proper
+    motion, with `obstime` at the source's epoch, and with a distance where there is a parallax.
 
     Parameters
     ----------
-    t : Instants
-        Of scale UTC, TAI, TT, TCG, TCB, TDB or UT1.
+    value : Instants, Site or Source
+        Instants of scale UTC, TAI, TT, TCG, TCB, TDB or UT1.
     leap_seconds : LeapSeconds, optional
         For UTC; the default table is the one that astropy knows.
 
@@ -98,19 +101,10 @@ def to_astropy(t: Instants, *, leap_seconds: LeapSeconds | None = None) -> Any:
     ScaleMismatch
         For a scale that astropy does not have; convert with `tscale.chain` first.
     """
-    kind = _time_class()
-    if t.scale not in _NAMES:
-        raise ScaleMismatch(
-            f"astropy has no scale {t.scale}; it has {', '.join(_NAMES)}. "
-            f"Convert first, as in tscale.chain({t.scale!r}, 'TAI')"
-        )
-    day, fraction = t.to_mjd(leap_seconds=leap_seconds)
-    # JD = MJD + 2400000.5: whole days in the one part, and what is left, from -0.5 to 0.5, in the other.
-    return kind(day + 2400001.0, fraction - 0.5, format="jd", scale=_NAMES[t.scale])
-
-
-def _time_class() -> Any:
-    try:
-        return importlib.import_module("astropy.time").Time
-    except ImportError as error:
-        raise MissingPiece("this needs the package astropy: pip install 'tscale[astropy]'") from error
+    if isinstance(value, Site):
+        return astropy_places.location_of(value)
+    if isinstance(value, Source):
+        return astropy_places.sky_coord_of(value)
+    if not isinstance(value, Instants):
+        raise InvalidInput(f"to_astropy writes Instants, a Site or a Source, got {type(value).__name__}")
+    return astropy_time.time_of(value, leap_seconds)

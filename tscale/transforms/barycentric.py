@@ -17,7 +17,16 @@ import numpy as np
 from .. import exact
 from ..counts import tcb_from_tdb, tcg_from_tt, tdb_from_tcb, tt_from_tcg
 from ..earth.frames import dot
-from ..earth.moving import TT_PER_TCG, TopocentricTerms, observer_event, topocentric_rate, topocentric_terms
+from ..earth.moving import (
+    TT_PER_TCG,
+    EarthAndSun,
+    Event,
+    TopocentricTerms,
+    observer_event,
+    tdb_from_tt_at_geocentre,
+    topocentric_rate,
+    topocentric_terms,
+)
 from ..earth.observer import Observer
 from ..errors import ScaleMismatch
 from ..exact import FloatArray, Pair
@@ -28,6 +37,7 @@ from .terrestrial import require_scale
 __all__ = [
     "GEOCENTRIC_LIMIT_M",
     "TopocentricTerms",
+    "event_from_tt",
     "tcb_from_tdb",
     "tcb_to_tcg",
     "tcb_to_tdb",
@@ -70,19 +80,25 @@ def tdb_from_tt(tt: Pair, reference: ReferenceData, observer: Observer | None = 
     ScaleMismatch
         For an observer more than `GEOCENTRIC_LIMIT_M` from the Earth.
     """
-    table = reference.time_ephemeris
-    if observer is not None:
-        r_m, _ = observer.gcrs(tt, reference)
-        # v_E moves by 1e-5 m/s in the 2 ms between TT and TDB: 1e-15 s in the terms, so P comes first.
-        near = exact.add_seconds(tt, -table.tt_minus_tdb_s(tt))
-        _require_near_earth(r_m, observer)
-        terms = topocentric_terms(reference.ephemeris, near, r_m)
-        if np.any(np.abs(terms.total_s) > 1e-5):  # far from the ground the terms themselves move the date they are for
-            near = exact.add_seconds(near, terms.total_s)
-            terms = topocentric_terms(reference.ephemeris, near, r_m)
-        tt = exact.add_seconds(tt, TT_PER_TCG * terms.total_s)
-    value, rate = table.tt_minus_tdb_and_rate(tt)
-    return exact.add_seconds(tt, -value / (1.0 + rate))
+    if observer is None:
+        return tdb_from_tt_at_geocentre(tt, reference)
+    return event_from_tt(tt, reference, observer)[0]
+
+
+def event_from_tt(tt: Pair, reference: ReferenceData, observer: Observer) -> tuple[Pair, Event]:
+    """TDB count of an event dated in TT at an observer, as `tdb_from_tt`, and the event: its place and bodies."""
+    r_m, v_m_s = observer.gcrs(tt, reference)
+    _require_near_earth(r_m, observer)
+    # v_E moves by 1e-5 m/s in the 2 ms between TT and TDB: 1e-15 s in the terms, so P comes first.
+    near = exact.add_seconds(tt, -reference.time_ephemeris.tt_minus_tdb_s(tt))
+    bodies = EarthAndSun.at(reference.ephemeris, near)
+    terms = bodies.terms(r_m)
+    if np.any(np.abs(terms.total_s) > 1e-5):  # far from the ground the terms themselves move the date they are for
+        near = exact.add_seconds(near, terms.total_s)
+        bodies = EarthAndSun.at(reference.ephemeris, near)
+        terms = bodies.terms(r_m)
+    tdb = tdb_from_tt_at_geocentre(exact.add_seconds(tt, TT_PER_TCG * terms.total_s), reference)
+    return tdb, Event(tt, r_m, v_m_s, bodies).moved(exact.seconds(exact.subtract(tdb, near)), of_bodies=True)
 
 
 def tt_from_tdb(tdb: Pair, reference: ReferenceData, observer: Observer | None = None) -> Pair:

@@ -23,7 +23,7 @@ km, 0.1 ns).
 from __future__ import annotations
 
 from fractions import Fraction
-from typing import Any, Final, NamedTuple, Protocol, TypeAlias, runtime_checkable
+from typing import Final, NamedTuple
 
 import numpy as np
 
@@ -31,8 +31,8 @@ from .. import exact
 from ..body_shape import MEAN_RADIUS_M
 from ..constants import C_M_S
 from ..earth.frames import dot
-from ..earth.moving import observer_event
-from ..earth.observer import SLACK_S, Observer
+from ..earth.moving import Event
+from ..earth.observer import Observer
 from ..earth.site import Site
 from ..ephemeris import body_id
 from ..errors import NotConverged
@@ -40,6 +40,8 @@ from ..exact import BoolArray, FloatArray, Pair
 from ..instants import Instants
 from ..source import Source
 from ..tables.reference import ReferenceData
+from .barycentric import event_from_tt
+from .observer_place import Barycentric, near_earth, observer_state, roemer_m
 from .shapiro import Ray, passage, shapiro_terms
 from .terrestrial import require_scale
 
@@ -50,6 +52,7 @@ __all__ = [
     "hidden_by",
     "observer_state",
     "observer_to_barycenter",
+    "observer_tt_to_barycenter",
     "wavefront_terms",
 ]
 
@@ -59,24 +62,6 @@ DELAYING_BODIES: Final = ("sun", "mercury", "venus", "mars", "jupiter", "saturn"
 ROEMER: Final = "Roemer delay"
 
 _GRID_PER_S: Final = 2.0**20
-
-
-@runtime_checkable
-class Barycentric(Protocol):
-    """A trajectory; one that is not geocentric is followed in the barycentric frame alone."""
-
-    @property
-    def geocentric(self) -> bool:
-        """Whether its own vectors are geocentric."""
-        ...
-
-    def state_bcrs(self, tdb: Pair, reference: ReferenceData) -> tuple[FloatArray, FloatArray]:
-        """Barycentric position (m) and velocity (m/s)."""
-        ...
-
-    def clip_tdb(self, tdb: Pair, reference: ReferenceData) -> Pair:
-        """TDB counts moved into its span."""
-        ...
 
 
 class WavefrontTerms(NamedTuple):
@@ -102,69 +87,6 @@ class WavefrontTerms(NamedTuple):
         return t
 
 
-def observer_state(
-    tdb: Pair,
-    reference: ReferenceData,
-    observer: Observer | None,
-    *,
-    with_velocity: bool = True,
-    loose: bool = False,
-) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Barycentric place and velocity of the observer (None: the geocentre), and the Sun's state.
-
-    Returns
-    -------
-    x_m, v_m_s, sun_m, sun_v_m_s : (..., 3) arrays
-        TDB-compatible BCRS, m and m/s; without `with_velocity` v is good to 1e-4 m/s only.
-    """
-    if observer is None:
-        (earth, sun), (velocity, sun_velocity) = reference.ephemeris.states(("earth", "sun"), tdb)
-        return earth, velocity, sun, sun_velocity
-    if isinstance(observer, Barycentric) and not observer.geocentric:
-        asked = observer.clip_tdb(tdb, reference)
-        ahead_s = exact.seconds(exact.subtract(tdb, asked))
-        if not loose and np.any(np.abs(ahead_s) > SLACK_S):
-            asked = tdb  # which raises
-        x, v = observer.state_bcrs(asked, reference)
-        x = x + v * ahead_s[..., np.newaxis]
-        sun, sun_velocity = reference.ephemeris.state("sun", tdb)
-        return x, v, sun, sun_velocity
-    return _near_earth(tdb, reference, observer, with_velocity, loose)[0]
-
-
-_State: TypeAlias = tuple[FloatArray, FloatArray, FloatArray, FloatArray]
-
-
-def _near_earth(
-    tdb: Pair, reference: ReferenceData, observer: Observer, with_velocity: bool, loose: bool
-) -> tuple[_State, FloatArray]:
-    """What `observer_state` gives of an observer near the Earth, and the vector from the geocentre, m."""
-    event = observer_event(tdb, reference, observer, loose=loose)
-    offset = event.offset()
-    own = event.offset_rate(1.0 + reference.time_ephemeris.rate(tdb)) if with_velocity else event.v_gcrs_m_s
-    return (
-        event.bodies.earth_m + offset,
-        event.bodies.earth_v_m_s + own,
-        event.bodies.sun_m,
-        event.bodies.sun_v_m_s,
-    ), offset
-
-
-def _roemer_m(toward: FloatArray, turned: FloatArray, parts: tuple[FloatArray, FloatArray, FloatArray]) -> Any:
-    """k.x as a sum of two floats, m: k in the parts `toward` (3,) and `turned`, x in km, km and m.
-
-    The product of the constant parts, up to 1.5e11 m, is taken without rounding; all others are smaller.
-    """
-    constant_km, rest_km, near_m = parts
-    product, error = exact.two_product(toward, constant_km)
-    first, slip = exact.two_sum(product[..., 0], product[..., 1])
-    total, more = exact.two_sum(first, product[..., 2])
-    small = dot(toward, rest_km) + dot(turned, constant_km + rest_km)
-    small = small + (error[..., 0] + error[..., 1] + error[..., 2] + slip + more)
-    high, low = exact.two_product(total, 1e3)
-    return exact.two_sum(high, low + (1e3 * small + dot(toward + turned, near_m)))
-
-
 def wavefront_terms(
     tdb: Pair,
     reference: ReferenceData,
@@ -175,6 +97,7 @@ def wavefront_terms(
     second_order: bool = False,
     with_rate: bool = True,
     loose: bool = False,
+    event: Event | None = None,
 ) -> WavefrontTerms:
     """Every term of t_bary - t_obs for a wavefront met by an observer at TDB dates `tdb`.
 
@@ -197,6 +120,8 @@ def wavefront_terms(
         Whether the rate is wanted: it costs a fifth of the whole.
     loose : bool
         See `earth.moving.observer_event`; for dates that are still being sought.
+    event : Event, optional
+        What is at the observer at `tdb`, if it is known already; for one near the Earth.
     """
     # What is left of the rounding of positions is 0.01 ps. So that a date and the one found on the way back, 1e-16
     # s apart, see the same of it, all is evaluated on the nearest of a grid of 1 us and carried on in a straight line.
@@ -207,7 +132,8 @@ def wavefront_terms(
         x, v, sun, sun_velocity = observer_state(tdb, reference, observer, with_velocity=with_rate, loose=loose)
         near = np.zeros(3) if observer is None else x
     else:
-        (x, v, sun, sun_velocity), near = _near_earth(tdb, reference, observer, with_rate, loose)
+        here = None if event is None else event.moved(-beyond_s)
+        (x, v, sun, sun_velocity), near = near_earth(tdb, reference, observer, with_rate, loose, here)
     far = (near * 0.0, near * 0.0) if near is x else reference.ephemeris.position_apart_km("earth", tdb)
     # The direction is the one at the barycentric date; the first guess of that date is good to 4e-7 s
     # even for the largest proper motion known, and a microsecond moves no direction by 1e-17 rad.
@@ -221,7 +147,7 @@ def wavefront_terms(
     beyond_unit = float(sum(Fraction(float(part)) ** 2 for part in toward) - 1)
     excess = (2.0 * dot(moved, toward) + dot(moved, moved) + beyond_unit)[..., np.newaxis]
     turned = moved - place * (excess / (length * (1.0 + length)))
-    along, left_m = _roemer_m(toward, turned, (*far, near))
+    along, left_m = roemer_m(toward, turned, (*far, near))
     along_v = dot(k, v)
     along_v_s = along_v / C_M_S
     roemer_s = along / C_M_S
@@ -293,6 +219,18 @@ def observer_to_barycenter(
     require_scale(t, "TDB")
     terms = wavefront_terms(t.pair, reference, source, observer, second_order=second_order, with_rate=False)
     return Instants._of(terms.later(t.pair), "TDB", "BARYCENTER")
+
+
+def observer_tt_to_barycenter(
+    t: Instants, reference: ReferenceData, source: Source, observer: Observer, *, second_order: bool = False
+) -> Instants:
+    """TT of an event at an observer near the Earth -> TDB at the barycentre: `tt_to_tdb` and then
+    `observer_to_barycenter`, with the observer's place looked up once.
+    """
+    require_scale(t, "TT")
+    tdb, event = event_from_tt(t.pair, reference, observer)
+    terms = wavefront_terms(tdb, reference, source, observer, second_order=second_order, with_rate=False, event=event)
+    return Instants._of(terms.later(tdb), "TDB", "BARYCENTER")
 
 
 def barycenter_to_observer(

@@ -2,29 +2,26 @@
 
 from __future__ import annotations
 
-import io
 import os
 from collections.abc import Sequence
-from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
 import numpy.typing as npt
 
-from .errors import InvalidInput, MissingPiece
-from .exact import FloatArray
-from .link import LinkSolution, TwoWaySolution
-from .storage import write_atomically
+from ..errors import InvalidInput
+from ..exact import FloatArray
+from ..link import LinkSolution, TwoWaySolution
+from .common import check_picture, figure_of, plain, save_figure
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from .instants import Instants
+    from ..instants import Instants
 
-__all__ = ["check_picture", "link_figure", "save_link_picture"]
+__all__ = ["link_figure", "save_link_picture"]
 
-_KINDS: Final = (".png", ".pdf", ".svg")
 _PULL: Final = "Shapiro delay, "
 _SHOWN_FROM_S: Final = 1e-14  # a line that never rises above this tells nothing
 # After Okabe and Ito, whose colours are told apart with any colour vision; one for each body.
@@ -43,18 +40,6 @@ _COLOURS: Final = {
 }
 _STYLES: Final = {"second order": "--", "third order": ":"}
 _LENGTHS: Final = ((1e-9, "ns"), (1e-6, "\u00b5s"), (1e-3, "ms"), (1.0, "s"))
-
-
-def check_picture(path: str | os.PathLike[str]) -> Path:
-    """Say early what would stop a picture: no matplotlib, or an ending that is not .png, .pdf or .svg."""
-    target = Path(path)
-    if target.suffix.lower() not in _KINDS:
-        raise InvalidInput(f"{path} cannot be a picture: the name must end in {', '.join(_KINDS)}")
-    try:
-        import matplotlib  # noqa: F401
-    except ImportError as error:
-        raise MissingPiece("pictures need matplotlib: pip install 'tscale[plot]'") from error
-    return target
 
 
 def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: str = "") -> Figure:
@@ -80,10 +65,6 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
     MissingPiece
         matplotlib is not installed.
     """
-    check_picture("figure.png")
-    from matplotlib import dates as ticks
-    from matplotlib.figure import Figure
-
     parts: list[Any] = list(solution) if isinstance(solution, Sequence) else [solution]
     if not parts or sum(part.occulted.size for part in parts) < 2:
         raise InvalidInput("a picture of a link needs two dates or more")
@@ -95,7 +76,7 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
     def joined(pick: Any) -> FloatArray:
         return np.concatenate([np.asarray(pick(part)).reshape(-1) for part in parts])[order]
 
-    figure = Figure(figsize=(9.0, 8.2), layout="constrained", dpi=120)
+    figure = figure_of(9.0, 8.2)
     top, middle, bottom = figure.subplots(3, 1, sharex=True, height_ratios=(1.0, 1.0, 1.7))
     total = joined(lambda part: part.round_trip_s if both else part.light_time_s)
     _line(top, dates, *_scaled(total), "round trip" if both else "light time")
@@ -120,6 +101,8 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
             )
         top.plot([], [], color="0.8", linewidth=8.0, label="path blocked by a body or the ground")
         top.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize="small", borderaxespad=0.2)
+    from matplotlib import dates as ticks
+
     untyped: Any = ticks
     locator = untyped.AutoDateLocator(minticks=4, maxticks=8)
     bottom.xaxis.set_major_locator(locator)
@@ -128,7 +111,7 @@ def link_figure(solution: LinkSolution | TwoWaySolution | Sequence[Any], title: 
     bottom.set_xlabel(f"date of transmission (TDB), from {str(dates[0])[:10]}")
     near, far = (parts[0].up if both else parts[0]).ends
     title = title or f"{near} to {far}{' and back' if both else ''}"
-    top.set_title(title, loc="left", fontsize="medium", fontweight="bold")
+    top.set_title(plain(title), loc="left", fontsize="medium", fontweight="bold")
     figure.align_ylabels([top, middle, bottom])
     return figure
 
@@ -137,13 +120,8 @@ def save_link_picture(
     solution: LinkSolution | TwoWaySolution | Sequence[Any], path: str | os.PathLike[str], title: str = ""
 ) -> None:
     """Write `link_figure` to a file (.png, .pdf or .svg) that takes its name only when it is whole."""
-    target = check_picture(path)
-    if not target.parent.is_dir():
-        raise InvalidInput(f"{path} cannot be written: there is no folder {target.parent}; make it first")
-    figure = link_figure(solution, title)
-    picture = io.BytesIO()
-    figure.savefig(picture, format=target.suffix.lower()[1:])
-    write_atomically(target, picture.getvalue())
+    check_picture(path)
+    save_figure(link_figure(solution, title), path)
 
 
 def _dates(t: Instants) -> npt.NDArray[Any]:

@@ -1,0 +1,147 @@
+"""The file of a compiled chain: a zip archive of numpy arrays and a JSON header, sealed with a SHA-256.
+
+Members are stored, not deflated, with fixed dates and attributes, so that equal content gives equal bytes on every
+machine. The archive's comment holds the SHA-256 of every byte before it: a bit that is changed anywhere, and bytes that
+are cut off or added, are found before anything is read. `numpy.load` opens the file too.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import io
+import json
+import zipfile
+from pathlib import Path
+from typing import Any, Final
+
+import numpy as np
+import numpy.typing as npt
+
+from ..errors import DataFileError, TscaleError
+from ..exact import Pair
+from ..scales import Node
+from .certificate import Certificate
+from .piece_table import PieceTable
+
+__all__ = ["FORMAT", "VERSION", "from_bytes", "to_bytes"]
+
+FORMAT: Final = "tscale compiled chain"
+VERSION: Final = 1
+
+_SEAL: Final = b"tscale compiled chain sha256 "
+_DIGITS: Final = 64
+_HEADER: Final = "header.json"
+_WAYS: Final = ("forward", "inverse")
+_ARRAYS: Final = {
+    "start_whole": np.dtype("<i8"),
+    "start_fraction": np.dtype("<f8"),
+    "center": np.dtype("<i8"),
+    "shift_s": np.dtype("<i8"),
+    "powers": np.dtype("<f8"),
+}
+
+_Made = tuple[Node, Node, tuple[Pair, Pair], tuple[PieceTable, PieceTable], Certificate]
+
+
+def to_bytes(
+    start: Node, end: Node, span: tuple[Pair, Pair], tables: tuple[PieceTable, PieceTable], facts: Certificate
+) -> bytes:
+    """The content of a file."""
+    ways: dict[str, Any] = {}
+    members: list[tuple[str, bytes]] = []
+    for way, table, ends in zip(_WAYS, tables, span, strict=True):
+        ways[way] = {
+            "origin": table.origin,
+            "cell_s": table.cell_s,
+            "first": [int(ends[0][0]), float(ends[1][0]).hex()],
+            "last": [int(ends[0][1]), float(ends[1][1]).hex()],
+        }
+        for name, kind in _ARRAYS.items():
+            members.append((f"{way}_{name}.npy", _npy(np.asarray(getattr(table, name)).astype(kind))))
+    header = {
+        "format": FORMAT,
+        "version": VERSION,
+        "start": str(start),
+        "end": str(end),
+        "ways": ways,
+        "certificate": facts.to_dict(),
+    }
+    text = json.dumps(header, indent=1, sort_keys=True, ensure_ascii=True, allow_nan=False).encode()
+    members.insert(0, (_HEADER, text))
+    buffer = io.BytesIO()
+    with zipfile.ZipFile(buffer, "w", zipfile.ZIP_STORED, allowZip64=True) as archive:
+        for name, content in members:
+            info = zipfile.ZipInfo(name, (1980, 1, 1, 0, 0, 0))
+            info.create_system, info.external_attr = 3, 0o644 << 16
+            archive.writestr(info, content)
+        archive.comment = _SEAL + b"0" * _DIGITS
+    body = buffer.getvalue()[:-_DIGITS]
+    return body + hashlib.sha256(body).hexdigest().encode()
+
+
+def from_bytes(content: bytes, path: Path) -> _Made:
+    """Read the content of a file.
+
+    Raises
+    ------
+    DataFileError
+        For anything but the bytes that `to_bytes` made, and for a newer version.
+    """
+    body, digest = content[:-_DIGITS], content[-_DIGITS:]
+    if not content.startswith(b"PK") or not body.endswith(_SEAL):
+        raise DataFileError(
+            f"{path} is not a compiled chain, or is cut short: give a file that CompiledChain.save wrote", path=path
+        )
+    if hashlib.sha256(body).hexdigest().encode() != digest:
+        raise DataFileError(
+            f"{path} is damaged: its bytes do not have the SHA-256 it was sealed with; copy it again or compile anew",
+            path=path,
+        )
+    try:
+        with zipfile.ZipFile(io.BytesIO(content)) as archive:
+            header = json.loads(archive.read(_HEADER))
+            if header["format"] != FORMAT:
+                raise ValueError(f"format {header['format']!r}")
+            if header["version"] > VERSION:
+                raise DataFileError(
+                    f"{path} is of version {header['version']}, and this package reads up to {VERSION}: upgrade tscale",
+                    path=path,
+                )
+            tables = tuple(_table(archive, way, header["ways"][way]) for way in _WAYS)
+        spans = tuple(_ends(header["ways"][way]) for way in _WAYS)
+        facts = Certificate.from_dict(header["certificate"])
+        nodes = Node.parse(header["start"]), Node.parse(header["end"])
+    except DataFileError:
+        raise
+    except (KeyError, ValueError, TypeError, AttributeError, zipfile.BadZipFile, TscaleError) as error:
+        raise DataFileError(
+            f"{path} is sealed but is not a compiled chain that can be read: {error}", path=path
+        ) from error
+    return *nodes, (spans[0], spans[1]), (tables[0], tables[1]), facts
+
+
+def _npy(array: npt.NDArray[Any]) -> bytes:
+    buffer = io.BytesIO()
+    np.lib.format.write_array(buffer, np.ascontiguousarray(array), version=(1, 0), allow_pickle=False)
+    return buffer.getvalue()
+
+
+def _table(archive: zipfile.ZipFile, way: str, facts: dict[str, Any]) -> PieceTable:
+    arrays: list[Any] = []
+    for name, kind in _ARRAYS.items():
+        array = np.lib.format.read_array(io.BytesIO(archive.read(f"{way}_{name}.npy")), allow_pickle=False)
+        if array.dtype != kind or array.ndim != (2 if name == "powers" else 1):
+            raise ValueError(f"{way}_{name} is {array.dtype} of {array.ndim} dimensions")
+        arrays.append(array.astype(kind.newbyteorder("=")))
+    if len({array.shape[-1] for array in arrays}) != 1 or arrays[0].shape[0] < 3:
+        raise ValueError(f"columns of {way} differ in length")
+    starts, fractions, centers, shifts, powers = arrays
+    return PieceTable(starts, fractions, centers, shifts, powers, int(facts["origin"]), int(facts["cell_s"]))
+
+
+def _ends(facts: dict[str, Any]) -> Pair:
+    ends = facts["first"], facts["last"]
+    return (
+        np.array([int(end[0]) for end in ends], dtype=np.int64),
+        np.array([float.fromhex(end[1]) for end in ends]),
+    )
