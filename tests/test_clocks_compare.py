@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import pickle
+
 import numpy as np
 import pytest
 
@@ -223,3 +225,16 @@ def test_a_height_by_numbers_agrees() -> None:
     found = tscale.compare_clocks(at_height(3500.0), at_height(250.0), START, STOP, tides=False)
     # Second order is 2.5e-22, and TT for TCG 7e-10 of the whole.
     assert found.rate == pytest.approx(number / C2, abs=1e-21)
+
+
+def test_a_comparison_can_be_sent_to_another_process() -> None:
+    a, b = (
+        tscale.Site.from_geodetic(name, 10.0, 45.0, height, height_above_geoid_m=height - 48.0)
+        for name, height in (("low", 100.0), ("high", 2000.0))
+    )
+    start, stop = tscale.Instants.from_iso(["2025-01-01", "2025-01-03"], "UTC")
+    found = tscale.compare_clocks(a, b, start, stop)
+    again = pickle.loads(pickle.dumps(found))
+    t = start.shifted(np.linspace(0.0, 172800.0, 7))
+    assert np.array_equal(again.series_s(t), found.series_s(t))
+    assert again.ledger == found.ledger

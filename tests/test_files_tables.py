@@ -259,6 +259,8 @@ def test_timestamps_and_texts_are_dates_too(tmp_path: Path) -> None:
         convert_table(CHAIN, save(plain, tmp_path / "in.parquet"), tmp_path / "out.parquet", column=column)
         assert same(instants_of(load(tmp_path / "out.parquet"), "TDB@GEOCENTER"), CHAIN(t))
     assert find_dates(plain.schema).name == "stamp"
+    viewed = pa.table({"text": plain["text"].cast(pa.string_view())})  # as polars writes it
+    assert same(instants_of(viewed, "text", node=Node.parse("UTC")), t)
     zoned = pa.table({"stamp": stamps.cast(pa.timestamp("us", tz="Pacific/Auckland"))})
     assert same(instants_of(zoned), t)  # Arrow keeps UTC, whatever the zone
     with pytest.raises(InvalidInput, match="are UTC by their metadata, not TAI"):

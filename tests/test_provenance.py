@@ -260,3 +260,21 @@ def test_convert_keeps_its_files_apart(tmp_path: Path, capsys: pytest.CaptureFix
     assert main(["convert", str(EXAMPLES / "readings.csv"), out, *OPTIONS, "--provenance-file", out]) == 2
     assert "a name of its own" in capsys.readouterr().err
     assert not Path(out).exists()
+
+
+def test_an_orbit_of_a_kernel_can_be_told() -> None:
+    from tscale.ephemeris.shipped import shipped_path
+
+    source = tscale.Source(10.0, 20.0)
+    digests = {
+        tscale.chain(
+            "TDB",
+            "TDB@BARYCENTER",
+            site=tscale.Trajectory.from_spk(shipped_path("de440_1960_2060.bsp"), target=target),
+            source=source,
+        )
+        .provenance()
+        .digest
+        for target in (301, 301, 399)
+    }
+    assert len(digests) == 2

@@ -116,14 +116,16 @@ def _single(schema: pa.Schema, name: str, listed: str) -> DateColumn:
     kind = schema.field(index).type
     if pa.types.is_timestamp(kind):
         return DateColumn(name, "timestamps", (index,), None if kind.tz is None else Node.parse("UTC"))
-    if pa.types.is_string(kind) or pa.types.is_large_string(kind):
+    views = getattr(pa.types, "is_string_view", lambda kind: False)  # since pyarrow 16
+    if pa.types.is_string(kind) or pa.types.is_large_string(kind) or views(kind):
         return DateColumn(name, "texts", (index,), None)
     raise DataFileError(f"column {name!r} is {kind}; dates are two columns of counts, timestamps or texts")
 
 
 def _node(name: str, pair: list[Any]) -> Node | None:
-    said = [{k.decode(): v.decode() for k, v in (field.metadata or {}).items()} for field in pair]
-    found = {key: {text[key] for text in said if key in text} for key in ("time_scale", "place", "time_origin", "unit")}
+    said = [{k: v.decode("utf-8", "replace") for k, v in (field.metadata or {}).items()} for field in pair]
+    keys = ("time_scale", "place", "time_origin", "unit")
+    found = {key: {text[key.encode()] for text in said if key.encode() in text} for key in keys}
     for key, values in found.items():
         if len(values) > 1:
             raise DataFileError(f"the two columns of {name!r} contradict each other: {key} is {' and '.join(values)}")

@@ -10,6 +10,7 @@ import csv
 import time
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
+from functools import partial
 from typing import Final
 
 from ..errors import DataFileError, InvalidInput
@@ -18,6 +19,8 @@ __all__ = ["DelimitedReader", "RowBlock", "delimiter_hint", "delimiter_of", "enc
 
 _NAMED_DELIMITERS: Final = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "\\t": "\t"}
 _LONGEST_WAIT_S: Final = 0.25
+_LONGEST_ROW: Final = 1 << 24
+"""Characters; what is longer is no row, and may have no end."""
 
 
 def delimiter_of(text: str) -> str:
@@ -175,7 +178,10 @@ class DelimitedReader:
 
     def _feed(self, stream: Iterable[str]) -> Iterator[str]:
         """Lines for the parser; comments and blank lines between rows are set aside."""
-        for line in stream:
+        size = 0
+        # A line without an end would else be read until memory is.
+        read = getattr(stream, "readline", None)
+        for line in stream if read is None else iter(partial(read, _LONGEST_ROW + 1), ""):
             self._line += 1
             self._check(line)
             if self._line == 1:
@@ -188,9 +194,16 @@ class DelimitedReader:
                     continue
                 self._start = self._line
                 self._fresh = False
-                self._raw = [line]
+                self._raw, size = [line], len(line)
             else:
                 self._raw.append(line)
+                size += len(line)
+            if size > _LONGEST_ROW:
+                raise DataFileError(
+                    f"this row has more than {_LONGEST_ROW} characters; is a quote left open, or is the file no text?",
+                    path=self.name,
+                    row=self._start,
+                )
             yield line
 
     def _check(self, line: str) -> None:

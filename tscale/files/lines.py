@@ -9,6 +9,8 @@ import select
 from collections import deque
 from typing import Final, Protocol
 
+from ..errors import DataFileError
+
 __all__ = ["ERRORS", "LiveLines"]
 
 ERRORS: Final = "surrogateescape"
@@ -16,6 +18,7 @@ ERRORS: Final = "surrogateescape"
 
 _CHUNK: Final = 65536
 _WAIT_S: Final = 0.02
+_LONGEST_LINE: Final = 1 << 24
 
 
 class _Bytes(Protocol):
@@ -31,6 +34,11 @@ class LiveLines:
     ----------
     stream : binary stream
         With `read1`, which returns what there is.
+
+    Raises
+    ------
+    DataFileError
+        While reading, for a line of 2**24 characters.
     """
 
     def __init__(self, stream: _Bytes) -> None:
@@ -38,6 +46,7 @@ class LiveLines:
         self._decode = codecs.getincrementaldecoder("utf-8")(ERRORS).decode
         self._lines: deque[str] = deque()
         self._parts: list[str] = []  # of the line that has no end yet
+        self._size = 0
         self._open = True
 
     def __iter__(self) -> LiveLines:
@@ -67,7 +76,11 @@ class LiveLines:
         half = bool(self._parts) and self._parts[-1].endswith("\r")
         if self._open and not half and "\n" not in text and "\r" not in text:
             self._parts.append(text)
+            self._size += len(text)
+            if self._size > _LONGEST_LINE:
+                raise DataFileError(f"the input has a line of more than {_LONGEST_LINE} characters: it is no table")
             return
+        self._size = 0
         lines = list(io.StringIO("".join([*self._parts, text]), newline=""))
         # A carriage return may be the first half of an end, so it waits for the next character too.
         whole = not self._open or not lines or lines[-1].endswith("\n")

@@ -139,11 +139,14 @@ def _opened(path: Path) -> Iterator[Any]:
     pa = arrow()
     try:
         source = (_Parquet if table_kind(path) == "parquet" else _Ipc)(path)
+        _ = source.schema.names  # decoded here, where it can be said which file is at fault
     except (OSError, pa.ArrowException) as error:
         raise DataFileError(f"cannot read {path} as a table: {_first_line(error)}", path=path) from error
+    except UnicodeDecodeError as error:
+        raise DataFileError(f"{path} is damaged: a column's name is no UTF-8 text ({error})", path=path) from error
     try:
         yield source
-    except pa.ArrowException as error:
+    except (OSError, pa.ArrowException) as error:
         raise DataFileError(f"{path} is damaged: {_first_line(error)}; fetch or make it again", path=path) from error
     finally:
         source.close()

@@ -25,6 +25,7 @@ from ..errors import DataFileError, InvalidInput, TscaleError
 from ..exact import BoolArray, FloatArray, Pair
 from ..formats.leap_seconds import LeapSeconds
 from ..instants import Instants
+from ..storage import read_bytes
 from .dates import NativeScale, counts_of, since
 from .makers import EARTH
 from .pieces import Piece
@@ -157,7 +158,7 @@ class _Table(NamedTuple):
 def _cells(path: Path) -> _Table:
     """Cells by column, and the line of each row."""
     try:
-        content = path.read_bytes()
+        content = read_bytes(path)
     except OSError as error:
         raise DataFileError(f"cannot read the flight {path}: {error.strerror or error}", path=path) from error
     try:

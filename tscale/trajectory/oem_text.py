@@ -11,8 +11,11 @@ import numpy as np
 
 from ..errors import DataFileError
 from ..exact import FloatArray
+from ..storage import read_bytes
 
 __all__ = ["OEMSegment", "read_segments"]
+
+_LARGEST: Final = 1 << 30
 
 _VERSIONS: Final = ("1.0", "2.0", "3.0")
 _HEADER: Final = ("CREATION_DATE", "ORIGINATOR", "CLASSIFICATION", "MESSAGE_ID")
@@ -95,7 +98,7 @@ def read_segments(path: Path) -> list[OEMSegment]:
         With the line.
     """
     try:
-        content = path.read_bytes()
+        content = read_bytes(path, _LARGEST)
         text = content.decode("utf-8-sig")
     except (OSError, UnicodeDecodeError) as error:
         raise DataFileError(f"cannot read the orbit ephemeris message {path}: {error}", path=path) from error

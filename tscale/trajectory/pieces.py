@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from hashlib import sha256
 from typing import TYPE_CHECKING, Final, Literal, Protocol, TypeAlias
 
 import numpy as np
@@ -101,6 +102,13 @@ class SegmentMotion:
         self._segment = segment
         self._kernel = kernel
         self._top = top
+
+    @property
+    def sha256(self) -> str:
+        """Hash of what the motion is: the kernel, and which segment of it."""
+        segment = self._segment
+        facts = (self._kernel.sha256, segment.target, segment.center, segment.start_s, segment.end_s, self._top)
+        return sha256(repr(facts).encode()).hexdigest()
 
     def state(self, count: Pair) -> tuple[FloatArray, FloatArray]:
         """See `Motion.state`; the bodies above end where the segment does, so counts are moved to its ends."""

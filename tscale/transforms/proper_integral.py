@@ -9,7 +9,7 @@ from __future__ import annotations
 import math
 import threading
 from collections import OrderedDict
-from typing import Final
+from typing import Any, Final
 
 import numpy as np
 
@@ -73,6 +73,7 @@ class ProperIntegral:
         tides: Tides = True,
         rate_offset: float = 0.0,
     ) -> None:
+        self._given = (observer, anchor, reference, gravity, tides, rate_offset)
         self.observer = observer
         self.anchor: Pair = (np.asarray(anchor[0], dtype=np.int64), np.asarray(anchor[1], dtype=np.float64))
         self.reference = reference
@@ -93,6 +94,10 @@ class ProperIntegral:
         self._blocks: OrderedDict[int, Integral] = OrderedDict()
         if not (self._reach.first_s <= _SLACK_S and self._reach.last_s >= -_SLACK_S):
             self._require_inside(self.anchor)
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        # What was summed is made again; it comes out the same.
+        return _rebuilt, self._given
 
     # ---- what is asked ---------------------------------------------------------------------------
 
@@ -233,6 +238,17 @@ class ProperIntegral:
                 "the coincidence on): leave them out (see the mask), or give what reaches them",
                 mask=bad,
             )
+
+
+def _rebuilt(
+    observer: Observer,
+    anchor: Pair,
+    reference: ReferenceData,
+    gravity: GravityField | None,
+    tides: Tides,
+    rate_offset: float,
+) -> ProperIntegral:
+    return ProperIntegral(observer, anchor, reference, gravity=gravity, tides=tides, rate_offset=rate_offset)
 
 
 def _against_tt(y: FloatArray) -> FloatArray:
