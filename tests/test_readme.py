@@ -80,7 +80,7 @@ def test_python_blocks(monkeypatch: pytest.MonkeyPatch) -> None:
             assert printed.endswith(end)
             assert end or printed == start
             shown += 1
-    assert shown == 3
+    assert shown == 4
     assert isinstance(names["scenario"], tscale.ReferenceData)
 
 
