@@ -36,3 +36,12 @@ def test_convert_readings(tmp_path: Path) -> None:
 def test_a_cluster_gives_the_bytes_of_one_process(tmp_path: Path) -> None:
     text = output("on_a_cluster.py", tmp_path, "--readings", "300000")
     assert "300000 readings; the same bytes as in this process alone: True" in text
+
+
+def test_compare_clocks(tmp_path: Path) -> None:
+    text = output("compare_clocks.py", tmp_path, "--plot", "flight.png")
+    assert "and the ridge is 580.20 m above the bay, u = 0.05 m" in text
+    # IS-GPS-200: -4.4647e-10. arXiv 2406.16147: 56.0256 us a day.
+    assert "set it to -4.4647e-10" in text
+    assert "56.0252 us a day on TT" in text
+    assert (tmp_path / "flight.png").read_bytes().startswith(b"\x89PNG")

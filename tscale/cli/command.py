@@ -17,17 +17,53 @@ from types import FrameType
 from typing import Any, Final
 
 from .. import __version__
-from . import compiling, convert, data, link, plot, report, what_if
+from . import (
+    budgeting,
+    clock,
+    compiling,
+    completion,
+    convert,
+    crosscheck,
+    data,
+    events,
+    inspection,
+    link,
+    plot,
+    report,
+    what_if,
+)
 from .streams import note
 
 __all__ = ["COMMANDS", "parser", "run"]
 
-COMMANDS: Final = (convert, data, link, what_if, plot, report, compiling)
+COMMANDS: Final = (
+    convert,
+    events,
+    link,
+    clock,
+    compiling,
+    what_if,
+    budgeting,
+    plot,
+    report,
+    crosscheck,
+    inspection,
+    data,
+    completion,
+)
 
 _DONE: Final = 0
 _WRONG: Final = 2  # as argparse does for arguments it refuses
 _BY_SIGNAL: Final = 128  # what a shell adds to the number of the signal that ended a program
 _SIGPIPE: Final = 13
+
+_EPILOG: Final = """\
+`tscale COMMAND --help` tells the rest, with examples. --project FILE names site, clocks, source and tables once for all
+commands; --json gives what is said to programs.
+
+Exit status: 0 done; 1 done, and what was looked at is not in order; 2 not done (one line on the error stream says why,
+and no output file is left); 130 and the like by a signal.
+"""
 
 
 def parser() -> argparse.ArgumentParser:
@@ -35,13 +71,15 @@ def parser() -> argparse.ArgumentParser:
     top = argparse.ArgumentParser(
         prog="tscale",
         description="Carry clock readings through topocentric, geocentric and barycentric coordinate times, and back.",
-        epilog="Exit status: 0 done, 2 not done (one line on the error stream says why; no output file is left).",
+        epilog=_EPILOG,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
     top.add_argument("--version", action="version", version=f"tscale {__version__}")
     subparsers = top.add_subparsers(dest="command", metavar="COMMAND", required=True)
     for command in COMMANDS:
         command.add_parser(subparsers)
+    top.set_defaults(whole=top)  # for the completion of shells
     return top
 
 
@@ -58,8 +96,10 @@ def run(arguments: Sequence[str] | None) -> int:
 def _run(args: argparse.Namespace) -> int:
     # numpy comes with the errors, and `--help` does without it.
     from ..errors import TscaleError
+    from .project import with_project
 
     try:
+        args = with_project(args)
         status = args.run(args)
         if sys.stdout is not None:
             sys.stdout.flush()
