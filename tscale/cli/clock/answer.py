@@ -5,13 +5,13 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, NamedTuple
 
-from .clock_ends import ClockEnd
-from .clock_levelling import Levelling
-from .clock_orbit import BodySummary, OrbitSummary
-from .clock_rates import Found, Model
+from .ends import ClockEnd
+from .levelling import Levelling
+from .orbit import BodySummary, OrbitSummary
+from .rates import Found, Model
 
 if TYPE_CHECKING:
-    from .clock_budget import RateBudget
+    from .budget import RateBudget
 
 __all__ = ["Answer"]
 

@@ -8,12 +8,12 @@ from collections.abc import Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
-from .clock_ends import ClockEnd
-from .clock_quantities import Line, correlation, quantities_of
-from .clock_rates import Found, Model
+from .ends import ClockEnd
+from .quantities import Line, correlation, quantities_of
+from .rates import Found, Model
 
 if TYPE_CHECKING:
-    from ..budget.gum import Evaluation
+    from ...budget.gum import Evaluation
 
 __all__ = ["RateBudget", "add_uncertainties", "budget_of", "stated"]
 
@@ -55,7 +55,7 @@ def stated(args: argparse.Namespace, option: str, clocks: int) -> list[float | N
     InvalidInput
         Texts that are no numbers of zero or more, or another count of them.
     """
-    from ..errors import InvalidInput
+    from ...errors import InvalidInput
 
     text = getattr(args, option.replace("-", "_"))
     if text is None:
@@ -85,8 +85,8 @@ def budget_of(args: argparse.Namespace, ends: Sequence[ClockEnd], found: Found, 
     InvalidInput
         For uncertainties that do not go with these clocks.
     """
-    from ..budget.gum import evaluate
-    from ..errors import InvalidInput
+    from ...budget.gum import evaluate
+    from ...errors import InvalidInput
 
     number = len(ends)
     potentials, heights, speeds = (

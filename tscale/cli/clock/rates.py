@@ -5,16 +5,16 @@ from __future__ import annotations
 import re
 from typing import TYPE_CHECKING, Any, NamedTuple
 
-from .clock_ends import ClockEnd
-from .clock_span import Span
+from .ends import ClockEnd
+from .span import Span
 
 if TYPE_CHECKING:
-    from ..clocks import ClockComparison, ProperClock, RateLedger
-    from ..earth.gravity.field import GravityField
-    from ..earth.observer import Observer
-    from ..exact import FloatArray, Pair
-    from ..tables.reference import ReferenceData
-    from ..transforms.proper_tides import Tides
+    from ...clocks import ClockComparison, ProperClock, RateLedger
+    from ...earth.gravity.field import GravityField
+    from ...earth.observer import Observer
+    from ...exact import FloatArray, Pair
+    from ...tables.reference import ReferenceData
+    from ...transforms.proper_tides import Tides
 
 __all__ = ["Found", "Model", "of_one", "of_two"]
 
@@ -61,11 +61,11 @@ def of_one(end: ClockEnd, span: Span, model: Model) -> Found:
     """The rate of a clock against a coordinate time, and what it gains on that."""
     import numpy as np
 
-    from .. import exact
-    from ..clocks import proper_ledger
-    from ..clocks.arguments import as_ticking
-    from ..clocks.dates import tt_at
-    from ..transforms.proper_integral import ProperIntegral
+    from ... import exact
+    from ...clocks import proper_ledger
+    from ...clocks.arguments import as_ticking
+    from ...clocks.dates import tt_at
+    from ...transforms.proper_integral import ProperIntegral
 
     reference, against = model.reference, model.against
     clock = _set(end, span, model)
@@ -111,8 +111,8 @@ def of_two(a: ClockEnd, b: ClockEnd, span: Span, model: Model) -> Found:
     """The rate of clock a less that of clock b, and what a gains on b."""
     import numpy as np
 
-    from ..clocks import compare_clocks, proper_ledger
-    from ..transforms.proper_models import total_of
+    from ...clocks import compare_clocks, proper_ledger
+    from ...transforms.proper_models import total_of
 
     words: dict[str, Any] = {"gravity": model.gravity, "tides": model.tides, "reference": model.reference}
     clock = _set(a, span, model)
@@ -137,8 +137,8 @@ def of_two(a: ClockEnd, b: ClockEnd, span: Span, model: Model) -> Found:
 
 def _set(end: ClockEnd, span: Span, model: Model) -> Observer | ProperClock:
     """The clock, set fast if that is asked for."""
-    from ..clocks import ProperClock
-    from ..transforms.proper_models import is_near_earth
+    from ...clocks import ProperClock
+    from ...transforms.proper_models import is_near_earth
 
     if not model.set_offset:
         return end.observer
@@ -154,9 +154,9 @@ def _set(end: ClockEnd, span: Span, model: Model) -> Observer | ProperClock:
 
 def _on(against: str, tt: Pair, own: Observer | None, observer: Any, reference: ReferenceData) -> Pair:
     """Counts of a coordinate time at the clock's events."""
-    from ..counts import tcb_from_tdb, tcg_from_tt
-    from ..transforms.barycentric import tdb_from_tt
-    from ..transforms.lunar import tcl_from_tdb
+    from ...counts import tcb_from_tdb, tcg_from_tt
+    from ...transforms.barycentric import tdb_from_tt
+    from ...transforms.lunar import tcl_from_tdb
 
     if against == "TCG":
         return tcg_from_tt(tt)

@@ -8,16 +8,16 @@ import re
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any, Final
 
-from .clock_answer import Answer
-from .clock_budget import add_uncertainties, budget_of
-from .clock_ends import FORMS, ClockEnd, clock_end
-from .clock_levelling import add_measured, checked_measured, levelled, with_potentials
-from .options import add_tables, reference_of
-from .streams import is_standard_output, note, standard_output, written
+from ..options import add_tables, reference_of
+from ..streams import is_standard_output, note, standard_output, written
+from .answer import Answer
+from .budget import add_uncertainties, budget_of
+from .ends import FORMS, ClockEnd, clock_end
+from .levelling import add_measured, checked_measured, levelled, with_potentials
 
 if TYPE_CHECKING:
-    from .clock_orbit import OrbitSummary
-    from .clock_rates import Found, Model
+    from .orbit import OrbitSummary
+    from .rates import Found, Model
 
 __all__ = ["add_parser", "run"]
 
@@ -52,7 +52,7 @@ examples:
   tscale clock upper.toml lower.toml --start 2025-03-01 --stop 2025-03-08 --measured 1.652e-15 --measured-sigma 6e-18
   tscale clock flight.csv laboratory.toml --height-sigma 30,0.03 --speed-sigma 2,0 --plot flight.png
   tscale clock satellite.toml --start 2025-03-01 --stop 2025-03-11 --nominal-frequency 10.23e6
-  tscale clock moon_base.toml --start 2025-01-01 --stop 2026-01-01 --json moon_base.json
+  tscale clock moon_base.toml --start 2025-01-01 --stop 2026-01-01 --json > moon_base.json
 """
 )
 
@@ -88,7 +88,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
         "--nominal-frequency", metavar="HZ", type=float, help="of a clock in orbit, to tell what it is set to"
     )
     parser.add_argument("--output", metavar="FILE", help="CSV file of the rate by terms and the time gained, by date")
-    parser.add_argument("--json", metavar="FILE", help="write everything to FILE, as JSON (- for the standard output)")
+    parser.add_argument("--json", action="store_true", help="everything as JSON, in place of the text")
     parser.add_argument("--plot", metavar="FILE", help="picture: PNG, PDF or SVG (needs matplotlib)")
     physics = parser.add_argument_group("gravity and tides")
     physics.add_argument("--gravity", metavar="FILE", help="Earth's gravity field, ICGEM .gfc (default: J2 to J6)")
@@ -104,10 +104,10 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Tell the rate of one clock, or of two."""
-    from ..errors import InvalidInput, MissingPiece, OutOfSpan
-    from .clock_orbit import body_summary, orbit_summary
-    from .clock_rates import of_one, of_two
-    from .clock_span import span_of
+    from ...errors import InvalidInput, MissingPiece, OutOfSpan
+    from .orbit import body_summary, orbit_summary
+    from .rates import of_one, of_two
+    from .span import span_of
 
     _check(args)
     reference = reference_of(args)
@@ -132,18 +132,23 @@ def run(args: argparse.Namespace) -> int:
     answer = Answer(given, found, model, _texts(found, model), budget, orbits, bodies, levelling)
     # What goes to files first: where one cannot be written there is no other output either.
     _write(args, answer)
-    if args.json is None or not is_standard_output(args.json):
-        print(_told(args, answer))
+    print(_json(answer) if args.json else _told(args, answer))
     return 0
+
+
+def _json(answer: Answer) -> str:
+    from .json import document
+
+    return json.dumps(document(answer), indent=2)
 
 
 def _check(args: argparse.Namespace) -> None:
     """What can be said before any work."""
-    from ..errors import InvalidInput
+    from ...errors import InvalidInput
 
     standard_output()
     if args.plot is not None:
-        from ..plots import check_picture
+        from ...plots import check_picture
 
         check_picture(args.plot)
     if args.max_degree is not None and args.gravity is None:
@@ -154,10 +159,10 @@ def _check(args: argparse.Namespace) -> None:
 
 def _model(args: argparse.Namespace, ends: Sequence[ClockEnd], reference: Any) -> Model:
     """What rates are taken by, with a word on what is not used."""
-    from ..earth.gravity import HarmonicField
-    from ..errors import InvalidInput
-    from ..transforms.proper_time import geopotential_number_of
-    from .clock_rates import Model
+    from ...earth.gravity import HarmonicField
+    from ...errors import InvalidInput
+    from ...transforms.proper_time import geopotential_number_of
+    from .rates import Model
 
     field = None
     if args.gravity is not None:
@@ -174,7 +179,7 @@ def _model(args: argparse.Namespace, ends: Sequence[ClockEnd], reference: Any) -
 def _check_nominal(args: argparse.Namespace, orbits: Sequence[OrbitSummary | None]) -> None:
     import math
 
-    from ..errors import InvalidInput
+    from ...errors import InvalidInput
 
     if args.nominal_frequency is None:
         return
@@ -192,8 +197,8 @@ def _texts(found: Found, model: Model) -> tuple[str, str]:
 
 
 def _write(args: argparse.Namespace, answer: Answer) -> None:
-    from ..errors import InvalidInput
-    from .clock_json import document, write_rows
+    from ...errors import InvalidInput
+    from .json import write_rows
 
     if answer.budget is None and (args.output is not None or args.plot is not None):
         raise InvalidInput(
@@ -205,15 +210,11 @@ def _write(args: argparse.Namespace, answer: Answer) -> None:
     if args.output is not None:
         with written(args.output) as target:
             write_rows(target, answer.found, answer.model)
-    if args.json is not None:
-        text = json.dumps(document(answer), indent=2)
-        with written(args.json) as target:
-            target.write(text + "\n")
 
 
 def _draw(path: str, found: Found) -> None:
-    from ..clocks import ClockComparison
-    from ..plots import save_clock_picture, save_rate_picture
+    from ...clocks import ClockComparison
+    from ...plots import save_clock_picture, save_rate_picture
 
     if isinstance(found.drawn, ClockComparison):
         save_clock_picture(found.drawn, found.span.dates, path)
@@ -222,7 +223,7 @@ def _draw(path: str, found: Found) -> None:
 
 
 def _told(args: argparse.Namespace, answer: Answer) -> str:
-    from .clock_text import body_text, budget_text, head_text, levelling_text, orbit_text, rate_text
+    from .text import body_text, budget_text, head_text, levelling_text, orbit_text, rate_text
 
     found = answer.found
     parts = [head_text(answer.ends, found, answer.dates)]

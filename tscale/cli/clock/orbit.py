@@ -5,11 +5,11 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING, Any, Final, NamedTuple, cast
 
-from .clock_ends import ClockEnd
-from .clock_rates import Found, Model
+from .ends import ClockEnd
+from .rates import Found, Model
 
 if TYPE_CHECKING:
-    from ..transforms.planetary import Compared, SurfaceClockSummary
+    from ...transforms.planetary import Compared, SurfaceClockSummary
 
 __all__ = ["BodySummary", "OrbitSummary", "body_summary", "orbit_summary"]
 
@@ -56,10 +56,10 @@ def orbit_summary(end: ClockEnd, found: Found, model: Model) -> OrbitSummary | N
     """Summary of an orbit; None for a path that is none (a flight, a hyperbola, a site)."""
     import numpy as np
 
-    from ..clocks import eccentricity_term_s, j2_term_s, orbit_rate
-    from ..clocks.dates import tt_at
-    from ..constants import EARTH_GM_TT_M3_S2 as GM
-    from ..trajectory.kepler import KeplerOrbit
+    from ...clocks import eccentricity_term_s, j2_term_s, orbit_rate
+    from ...clocks.dates import tt_at
+    from ...constants import EARTH_GM_TT_M3_S2 as GM
+    from ...trajectory.kepler import KeplerOrbit
 
     if end.kind != "orbit":
         return None
@@ -99,11 +99,11 @@ def body_summary(end: ClockEnd, found: Found, model: Model) -> BodySummary | Non
 
     There is none for clocks elsewhere, against TCG or TCL, and where the ephemeris does not reach over one of them.
     """
-    from ..body_shape import own_body
-    from ..clocks.dates import tt_at
-    from ..constants import DAY_S
-    from ..instants import Instants
-    from ..transforms.planetary import surface_clock_summary
+    from ...body_shape import own_body
+    from ...clocks.dates import tt_at
+    from ...constants import DAY_S
+    from ...instants import Instants
+    from ...transforms.planetary import surface_clock_summary
 
     if end.kind != "surface" or model.against in ("TCG", "TCL"):
         return None

@@ -7,14 +7,14 @@ from decimal import Decimal, InvalidOperation
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
-from .clock_ends import ClockEnd
-from .link_dates import date_of
+from ..link_dates import date_of
+from .ends import ClockEnd
 
 if TYPE_CHECKING:
     import argparse
 
-    from ..instants import Instants
-    from ..tables.reference import ReferenceData
+    from ...instants import Instants
+    from ...tables.reference import ReferenceData
 
 __all__ = ["Span", "span_of"]
 
@@ -40,8 +40,8 @@ def span_of(args: argparse.Namespace, ends: Sequence[ClockEnd], reference: Refer
     """
     import numpy as np
 
-    from .. import exact
-    from ..errors import InvalidInput
+    from ... import exact
+    from ...errors import InvalidInput
 
     if (args.start is None) != (args.stop is None):
         raise InvalidInput("--start and --stop belong together: give both")
@@ -73,10 +73,10 @@ def _covered(args: argparse.Namespace, ends: Sequence[ClockEnd]) -> tuple[Instan
     """First and last date that all trajectories cover, on the scale asked for if that runs with theirs."""
     import numpy as np
 
-    from ..counts import fixed_count
-    from ..errors import InvalidInput
-    from ..instants import Instants
-    from ..scales import Scale
+    from ...counts import fixed_count
+    from ...errors import InvalidInput
+    from ...instants import Instants
+    from ...scales import Scale
 
     found: dict[str, list[tuple[Any, Any]]] = {}
     for end in ends:
@@ -110,7 +110,7 @@ def _order(pair: Any) -> tuple[int, float]:
 
 def _step(text: str) -> Fraction:
     """The step; its size is looked at before it becomes a ratio, which for 1e999999999 would never be done."""
-    from ..errors import InvalidInput
+    from ...errors import InvalidInput
 
     try:
         step = Decimal(text)

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from typing import Any, TextIO
 
-from .clock_answer import Answer
-from .clock_ends import ClockEnd
-from .clock_orbit import BodySummary, OrbitSummary
-from .clock_rates import Found, Model
+from .answer import Answer
+from .ends import ClockEnd
+from .orbit import BodySummary, OrbitSummary
+from .rates import Found, Model
 
 __all__ = ["document", "write_rows"]
 

@@ -5,13 +5,13 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Final
 
-from .clock_ends import ClockEnd
-from .clock_levelling import Levelling
-from .clock_orbit import BodySummary, OrbitSummary
-from .clock_rates import Found
+from .ends import ClockEnd
+from .levelling import Levelling
+from .orbit import BodySummary, OrbitSummary
+from .rates import Found
 
 if TYPE_CHECKING:
-    from .clock_budget import RateBudget
+    from .budget import RateBudget
 
 __all__ = ["body_text", "budget_text", "head_text", "levelling_text", "orbit_text", "rate_text", "size_of"]
 
@@ -227,7 +227,7 @@ def _columns(
     rows: Sequence[Sequence[str]], rules: Sequence[int] = (), left: Sequence[int] = (0,), gap: str = "  "
 ) -> list[str]:
     """Aligned columns, with rules before the rows of those numbers."""
-    from ..budget.table import aligned
+    from ...budget.table import aligned
 
     lines = aligned(rows, left)
     widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]

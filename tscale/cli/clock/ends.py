@@ -6,8 +6,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Final, Literal, NamedTuple, TypeAlias
 
 if TYPE_CHECKING:
-    from ..earth.observer import Observer
-    from ..tables.reference import ReferenceData
+    from ...earth.observer import Observer
+    from ...tables.reference import ReferenceData
 
 __all__ = ["FORMS", "ClockEnd", "clock_end"]
 
@@ -40,12 +40,12 @@ class ClockEnd(NamedTuple):
 
 def clock_end(text: str, reference: ReferenceData) -> ClockEnd:
     """Read a clock; see `FORMS`."""
-    from ..earth.site import Site
-    from ..errors import InvalidInput
-    from ..surface import SurfaceSite
-    from ..trajectory import Trajectory
-    from ..transforms.proper_models import is_near_earth
-    from .link_ends import end_of
+    from ...earth.site import Site
+    from ...errors import InvalidInput
+    from ...surface import SurfaceSite
+    from ...trajectory import Trajectory
+    from ...transforms.proper_models import is_near_earth
+    from ..link_ends import end_of
 
     path = Path(text)
     if path.suffix.lower() == ".csv":

@@ -8,12 +8,12 @@ from collections.abc import Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any, NamedTuple
 
-from .clock_ends import ClockEnd
-from .clock_quantities import REAL_GRAVITY_M_S2
-from .clock_rates import Found, Model
+from .ends import ClockEnd
+from .quantities import REAL_GRAVITY_M_S2
+from .rates import Found, Model
 
 if TYPE_CHECKING:
-    from .clock_budget import RateBudget
+    from .budget import RateBudget
 
 __all__ = ["Levelling", "add_measured", "checked_measured", "levelled", "with_potentials"]
 
@@ -52,7 +52,7 @@ def checked_measured(args: argparse.Namespace, ends: Sequence[ClockEnd]) -> None
     InvalidInput
         Half of it, values that cannot be, clocks that are not two sites.
     """
-    from ..errors import InvalidInput
+    from ...errors import InvalidInput
 
     if (args.measured is None) != (args.measured_sigma is None):
         raise InvalidInput("--measured and --measured-sigma belong together: give both, as fractions such as 4.1e-17")
@@ -78,7 +78,7 @@ def with_potentials(ends: Sequence[ClockEnd], model: Model) -> tuple[list[ClockE
 
     The height above the ellipsoid stands in; off by 100 m it moves tides and second order by 1e-21.
     """
-    from ..transforms.proper_time import geopotential_number_of
+    from ...transforms.proper_time import geopotential_number_of
 
     known, found = True, []
     for end in ends:
@@ -104,10 +104,10 @@ def levelled(args: argparse.Namespace, given: Sequence[ClockEnd], found: Found, 
     budget : RateBudget or None
         Of the predicted rate; None if there is none.
     """
-    from ..clocks import height_from_frequency
-    from ..constants import C_M_S
-    from ..earth.gravity.normal import height_above_geoid_m
-    from ..transforms.proper_time import geopotential_number_of
+    from ...clocks import height_from_frequency
+    from ...constants import C_M_S
+    from ...earth.gravity.normal import height_above_geoid_m
+    from ...transforms.proper_time import geopotential_number_of
 
     levels = [found.ledger[name] for name in ("kinematic", "gravitational")]
     rest = (found.accumulated_s - sum(levels)) / found.duration_s

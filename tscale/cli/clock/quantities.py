@@ -5,11 +5,11 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING, Any, Final, NamedTuple, TypeAlias
 
-from .clock_ends import ClockEnd
-from .clock_rates import Found, Model
+from .ends import ClockEnd
+from .rates import Found, Model
 
 if TYPE_CHECKING:
-    from ..budget.gum import Quantity
+    from ...budget.gum import Quantity
 
 __all__ = ["REAL_GRAVITY_M_S2", "Line", "correlation", "local_gravity_m_s2", "quantities_of"]
 
@@ -75,10 +75,10 @@ def local_gravity_m_s2(end: ClockEnd, found: Found, model: Model) -> float:
     """
     import numpy as np
 
-    from ..body_shape import own_body
-    from ..constants import EARTH_GM_TT_M3_S2, GM_M3_S2
-    from ..earth.gravity.normal import GRS80
-    from ..errors import InvalidInput
+    from ...body_shape import own_body
+    from ...constants import EARTH_GM_TT_M3_S2, GM_M3_S2
+    from ...earth.gravity.normal import GRS80
+    from ...errors import InvalidInput
 
     observer: Any = end.observer
     if end.kind == "site":
@@ -97,7 +97,7 @@ def local_gravity_m_s2(end: ClockEnd, found: Found, model: Model) -> float:
 
 
 def _states(end: ClockEnd, found: Found, model: Model) -> tuple[Any, Any]:
-    from ..clocks.dates import tt_at
+    from ...clocks.dates import tt_at
 
     own = end.observer if end.kind != "spacecraft" else None
     return end.observer.gcrs(tt_at(found.span.dates, own, model.reference), model.reference)
@@ -107,9 +107,9 @@ def _on_the_ground(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas) -
     """A site: levelled, or in a gravity field."""
     import numpy as np
 
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S
-    from ..transforms.proper_time import geopotential_number_of
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S
+    from ...transforms.proper_time import geopotential_number_of
 
     site: Any = end.observer
     number = geopotential_number_of(site)
@@ -152,8 +152,8 @@ def _about_the_earth(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas)
     """A flight or an orbit about the Earth."""
     import numpy as np
 
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S
 
     r_m, v_m_s = _states(end, found, model)
     distance, speed = (float(np.mean(np.linalg.norm(x, axis=-1))) for x in (r_m, v_m_s))
@@ -178,9 +178,9 @@ def _about_the_earth(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas)
 
 def _on_a_body(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas) -> _Known:
     """A place on the Moon or a planet."""
-    from ..body_shape import REFERENCE_POTENTIAL_M2_S2, own_body
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S
+    from ...body_shape import REFERENCE_POTENTIAL_M2_S2, own_body
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S
 
     site: Any = end.observer
     body, gravity = own_body(site.body), local_gravity_m_s2(end, found, model)
@@ -213,9 +213,9 @@ def _through_space(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas) -
     """A spacecraft about anything but the Earth."""
     import numpy as np
 
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S
-    from ..transforms.barycentric import tdb_from_tt
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S
+    from ...transforms.barycentric import tdb_from_tt
 
     left = ["gravity of bodies beyond their masses: not part of the model"]
     if sigmas[1] is not None:
@@ -226,7 +226,7 @@ def _through_space(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas) -
     if sigmas[2] is None:
         left.append("speed along the path: not stated; give --speed-sigma")
     else:
-        from ..clocks.dates import tt_at
+        from ...clocks.dates import tt_at
 
         observer: Any = end.observer
         tdb = tdb_from_tt(tt_at(found.span.dates, None, model.reference), model.reference)
@@ -246,16 +246,16 @@ _OF_KIND: Final = {
 
 
 def _potential(number: float | None, sigma: float) -> Line:
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S
 
     name = "geopotential number" if number is not None else "potential, to be added"
     return Line(Quantity(name, number or 0.0, sigma, unit="m2/s2"), 1.0 / C_M_S**2)
 
 
 def _within(name: str, half_width_m2_s2: float) -> Line:
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S
 
     return Line(Quantity.within(name, 0.0, half_width_m2_s2, unit="m2/s2"), 1.0 / C_M_S**2)
 
@@ -264,8 +264,8 @@ def _field_left_out(model: Model, radius_m: float) -> Line:
     """What a gravity field to some degree leaves out at a distance: the rms over a sphere by Kaula's rule."""
     import numpy as np
 
-    from ..budget.gum import Quantity
-    from ..constants import C_M_S, EARTH_FIELD_RADIUS_M, EARTH_GM_TT_M3_S2
+    from ...budget.gum import Quantity
+    from ...constants import C_M_S, EARTH_FIELD_RADIUS_M, EARTH_GM_TT_M3_S2
 
     top = getattr(model.gravity, "max_degree", None)
     n = np.arange(2.0, _LAST_DEGREE)
@@ -281,8 +281,8 @@ def _largest_tide_m2_s2(end: ClockEnd, found: Found, model: Model) -> float:
     """Size of the tide that was left out, from the model itself."""
     import numpy as np
 
-    from ..clocks import proper_ledger
-    from ..constants import C_M_S
+    from ...clocks import proper_ledger
+    from ...constants import C_M_S
 
     dates = found.span.dates[:: max(1, found.span.dates.size // 500)]
     terms = proper_ledger(end.observer, dates, "TCG", gravity=model.gravity, reference=model.reference)
