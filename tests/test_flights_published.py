@@ -39,7 +39,7 @@ def gained_ns(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.Ca
     Path("home.toml").write_text(HOME)
 
     def run(*words: str) -> tuple[float, float]:
-        assert entry.main(["clock", *words, "--json", "-"]) == 0
+        assert entry.main(["clock", *words, "--json"]) == 0
         found = json.loads(capsys.readouterr().out)
         return found["accumulated_s"] * 1e9, found["accumulated_sigma_s"] * 1e9
 
