@@ -64,7 +64,7 @@ BOTH = ("ridge.toml", "bay.toml", *MARCH)
         (("orbit.toml", *MARCH, "--nominal-frequency", "-1e7"), "above zero"),
         ((*BOTH, "--output", "-"), "--output takes the name of a file"),
         ((*BOTH, "--plot", "picture.txt"), "the name must end in"),
-        ((*BOTH, "--json", "nowhere/x.json"), "nowhere"),
+        ((*BOTH, "--output", "nowhere/x.csv"), "nowhere"),
         (
             ("hut.toml", "bay.toml", *MARCH, "--measured", "1e-15", "--measured-sigma", "1e-17", "--plot", "x.png"),
             "the potential of a site is not known",

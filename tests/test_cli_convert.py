@@ -281,3 +281,16 @@ def test_the_walk_meets_each_step_once(reference: tscale.ReferenceData) -> None:
             np.testing.assert_array_equal(exact.seconds(walk.terms()[name]), value)
     steps = [step for step, _, _ in walk.passed.values()]
     assert len({(str(s.start), str(s.end)) for s in steps}) == len(steps)
+
+
+def test_cells_for_spreadsheets(tmp_path: Path) -> None:
+    source, out = tmp_path / "in.csv", tmp_path / "out.csv"
+    source.write_text("seen,n\n2025-03-03T12:21:00.639426798458,1\n")
+    assert main(["convert", str(source), str(out), "--to", "TAI", "--output-format", "spreadsheet", "--quiet"]) == 0
+    assert (
+        out.read_text().splitlines()[1] == '2025-03-03T12:21:00.639426798458,1,"=""2025-03-03T12:21:37.639426798458"""'
+    )
+    again = tmp_path / "again.csv"
+    words = ["--column", "TAI", "--from", "TAI", "--to", "UTC", "--input-format", "spreadsheet", "--quiet"]
+    assert main(["convert", str(out), str(again), *words]) == 0
+    assert again.read_text().splitlines()[1].endswith(",2025-03-03T12:21:00.639426798458")

@@ -3,9 +3,14 @@
 from __future__ import annotations
 
 import os
+import re
 import subprocess
 import sys
 from pathlib import Path
+
+import pytest
+
+from tscale.cli.main import main
 
 ROOT = Path(__file__).parent.parent
 
@@ -45,3 +50,38 @@ def test_compare_clocks(tmp_path: Path) -> None:
     assert "set it to -4.4647e-10" in text
     assert "56.0252 us a day on TT" in text
     assert (tmp_path / "flight.png").read_bytes().startswith(b"\x89PNG")
+
+
+def test_walk_to_a_pulsar(tmp_path: Path) -> None:
+    text = output("walk_pulsar.py", tmp_path)
+    rms = re.search(r"residuals ([\d.]+) ns rms", text)
+    assert rms is not None
+    assert 45.0 < float(rms[1]) < 55.0  # 50 ns were put in
+    assert os.listdir(tmp_path) == []
+
+
+def test_walk_along_a_link(tmp_path: Path) -> None:
+    text = output("walk_link.py", tmp_path)
+    delay = re.search(r"([\d.]+) us at (2026-01-\d\d)", text)
+    assert delay is not None
+    # Mars is in conjunction on 2026-01-09, 0.94 deg from the Sun (almanac, from memory). Closed form, one way, with
+    # the distances of that day: 2 GM/c^3 ln(4 * 0.983 au * 1.45 au / (0.983 au sin 0.94 deg)^2) = 98.1 us.
+    assert delay[2] == "2026-01-09"
+    assert float(delay[1]) == pytest.approx(98.1, rel=0, abs=0.5)
+    assert os.listdir(tmp_path) == []
+
+
+def test_walk_through_a_cross_check(tmp_path: Path) -> None:
+    text = output("walk_crosscheck.py", tmp_path)
+    assert "leap second of 2017-01-01 (MJD 57754) left out" in text
+    assert "what is left is noise" in text
+
+
+def test_the_project_of_the_examples(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    given = [str(ROOT / "examples" / "readings.csv"), "--project", str(ROOT / "examples" / "project.toml")]
+    assert main(["budget", *given, "--to", "TDB@BARYCENTER"]) == 0
+    text = capsys.readouterr().out
+    assert "CLOCK(maser) - UTC(KRL), wander between comparisons" in text.partition("not included")[0]
+    assert "tide of the solid Earth, left out" not in text
+    words = ["convert", given[0], str(tmp_path / "out.csv"), *given[1:], "--to", "TDB@BARYCENTER", "--sigma"]
+    assert main(words) == 0

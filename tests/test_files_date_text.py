@@ -133,7 +133,7 @@ def test_negative_numbers() -> None:
 
 
 def test_defaults_and_refusals() -> None:
-    assert [default_digits(layout) for layout in LAYOUTS] == [12, 17, 17, 12]
+    assert [default_digits(layout) for layout in LAYOUTS] == [12, 17, 17, 12, 12]
     t = read_dates(["2025-01-01T00:00:00 "], "iso", "TT")
     assert write_dates(t, "mjd") == ["60676.00000000000000000"]
     with pytest.raises(InvalidInput, match="iso, mjd, jd, seconds"):
@@ -154,3 +154,13 @@ def test_nul_characters_are_refused(layout: str) -> None:
             read_dates([good, text], layout, "TT")
         assert caught.value.mask is not None
         assert caught.value.mask.tolist() == [False, True]
+
+
+def test_a_spreadsheet_keeps_what_is_wrapped() -> None:
+    t = Instants.from_iso(["2016-12-31T23:59:60.123456789012", "2025-03-03T12:00:00"], "UTC")
+    texts = write_dates(t, "spreadsheet")
+    assert texts[0] == '="2016-12-31T23:59:60.123456789012"'
+    assert np.all(read_dates(texts, "spreadsheet", "UTC") == t)
+    assert np.all(read_dates([" " + text[2:-1] for text in texts], "spreadsheet", "UTC") == t)
+    with pytest.raises(TextError):
+        read_dates(['="2025-03-03'], "spreadsheet", "UTC")

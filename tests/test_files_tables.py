@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import csv
 import os
 import signal
 import subprocess
@@ -261,7 +262,7 @@ def test_timestamps_and_texts_are_dates_too(tmp_path: Path) -> None:
     assert find_dates(plain.schema).name == "stamp"
     viewed = pa.table({"text": plain["text"].cast(pa.string_view())})  # as polars writes it
     assert same(instants_of(viewed, "text", node=Node.parse("UTC")), t)
-    zoned = pa.table({"stamp": stamps.cast(pa.timestamp("us", tz="Pacific/Auckland"))})
+    zoned = pa.table({"stamp": stamps.cast(pa.timestamp("us", tz="Etc/GMT-12"))})
     assert same(instants_of(zoned), t)  # Arrow keeps UTC, whatever the zone
     with pytest.raises(InvalidInput, match="are UTC by their metadata, not TAI"):
         instants_of(zoned, node=Node.parse("TAI"))
@@ -273,6 +274,64 @@ def test_timestamps_and_texts_are_dates_too(tmp_path: Path) -> None:
     with pytest.raises(TextError, match="2017-02-30") as caught:
         convert_table(CHAIN, save(wrong, tmp_path / "in.parquet"), tmp_path / "o.parquet", column="text", rows=50)
     assert caught.value.row == 71
+
+
+def test_text_and_tables_cross(tmp_path: Path) -> None:
+    t = events(3000)
+    text = tmp_path / "in.csv"
+    rows = "".join(f"{date},{i},x{i % 3}\n" for i, date in enumerate(t.to_iso(12)))
+    text.write_text("# of an invented instrument\nseen,count,kind\n" + rows)
+    read = tscale.Instants.from_iso(t.to_iso(12), "UTC")
+    convert_table(CHAIN, text, tmp_path / "out.parquet", rows=700)
+    after = load(tmp_path / "out.parquet")
+    assert same(instants_of(after, "TDB@GEOCENTER"), CHAIN(read))
+    assert after["count"].to_pylist() == list(range(3000))
+    convert_table(CHAIN, tmp_path / "out.parquet", tmp_path / "out.csv", column="seen", result="again", rows=900)
+    lines = list(csv.reader((tmp_path / "out.csv").read_text().splitlines()))
+    assert lines[0] == ["seen", "count", "kind", "TDB@GEOCENTER", "again"]
+    assert [line[3:] for line in lines[1:]] == [[str(date)] * 2 for date in CHAIN(read).to_iso(12)]
+    with pytest.raises(InvalidInput, match=r"out\.txt is no table by its name"):
+        convert_table(CHAIN, text, tmp_path / "out.txt")
+    text.write_text("# only this\n")
+    with pytest.raises(DataFileError, match="has no header"):
+        convert_table(CHAIN, text, tmp_path / "out.parquet")
+    text.write_text("seen,n\n2020-01-01,1\n2020-01-02,1,3\n")
+    with pytest.raises(DataFileError, match="Expected 2 columns, got 3"):
+        convert_table(CHAIN, text, tmp_path / "out.parquet")
+
+
+def test_dictionaries_of_blocks_may_differ(tmp_path: Path) -> None:
+    t = events(60)
+    kinds = pa.chunked_array(
+        [pa.array(["a", "b"] * 15).dictionary_encode(), pa.array(["c", "a"] * 15).dictionary_encode()]
+    )
+    for name in ("in.parquet", "in.arrow"):
+        content = date_columns("time", t).append_column("kind", kinds)
+        if name.endswith("arrow"):
+            content = content.unify_dictionaries()
+        source = save(content, tmp_path / name)
+        for target in ("out.arrow", "out.parquet"):
+            convert_table(CHAIN, source, tmp_path / target, rows=30)
+            assert load(tmp_path / target)["kind"].to_pylist() == ["a", "b"] * 15 + ["c", "a"] * 15
+
+
+def test_leap_seconds_belong_to_the_job_where_dates_are_labels(tmp_path: Path) -> None:
+    stamps = pa.table({"stamp": pa.array(np.datetime64("2031-01-01", "s") + np.arange(40))})
+    source, out = save(stamps, tmp_path / "in.parquet"), tmp_path / "out"
+    usual = tscale.LeapSeconds.default()
+    with pytest.warns(tscale.ExtrapolationWarning):
+        convert_table(CHAIN, source, out, rows=1)
+    (out / "part-00001.parquet").unlink()
+    with pytest.raises(DataFileError, match=r"parts of another job \(other leap_seconds"):
+        convert_table(CHAIN, source, out, rows=1, leap_seconds=usual.with_step(62502, 38))
+    with pytest.raises(DataFileError, match="holds 24 of 40 rows: a conversion was broken off"):
+        convert_table(CHAIN, out, tmp_path / "next.parquet", column="TDB@GEOCENTER")
+
+
+def test_a_name_that_stands_twice_is_refused() -> None:
+    twice = pa.table([[1], [2], [0.5], [3]], names=["time_whole_s", "time_whole_s", "time_fraction_s", "n"])
+    with pytest.raises(InvalidInput, match="'time_whole_s' more than once"):
+        find_dates(twice.schema, "time")
 
 
 def test_terms_sigmas_and_rates_are_columns_on_request(tmp_path: Path) -> None:

@@ -12,18 +12,23 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from . import errors, interop, link, transforms
+    from . import budget, clocks, cluster, crosscheck, errors, fits, interop, link, serial, timecodes, transforms
     from .chains import Chain, chain
+    from .clocks import ClockComparison, ProperClock, compare_clocks, height_from_frequency, proper_ledger, proper_rate
+    from .compiled import CompiledChain, load_compiled
     from .earth.site import Site
     from .ephemeris import Ephemeris, TimeEphemeris
     from .errors import ExtrapolationWarning, TscaleError
     from .formats.leap_seconds import LeapSeconds
     from .instants import Instants
     from .ledger import Ledger
+    from .scenarios import what_if
     from .source import Source
     from .step import Step
     from .surface import SurfaceSite
+    from .tables.circular_t import read_circular
     from .tables.clock_log import ClockLog
+    from .tables.clock_noise import ClockNoise
     from .tables.earth_orientation import EarthOrientation
     from .tables.reference import ReferenceData
     from .tables.tt_bipm import TTBIPM
@@ -34,13 +39,17 @@ __version__ = "0.1.0"
 __all__ = [
     "TTBIPM",
     "Chain",
+    "ClockComparison",
     "ClockLog",
+    "ClockNoise",
+    "CompiledChain",
     "EarthOrientation",
     "Ephemeris",
     "ExtrapolationWarning",
     "Instants",
     "LeapSeconds",
     "Ledger",
+    "ProperClock",
     "ReferenceData",
     "Site",
     "Source",
@@ -49,23 +58,41 @@ __all__ = [
     "TimeEphemeris",
     "Trajectory",
     "TscaleError",
+    "budget",
     "chain",
+    "clocks",
+    "cluster",
+    "crosscheck",
+    "compare_clocks",
     "errors",
+    "fits",
+    "height_from_frequency",
     "interop",
     "link",
+    "load_compiled",
+    "proper_ledger",
+    "proper_rate",
+    "read_circular",
+    "serial",
+    "timecodes",
     "transforms",
+    "what_if",
 ]
 
-_ROOMS = ("errors", "interop", "link", "transforms")
+_ROOMS = ("budget", "clocks", "cluster", "crosscheck", "errors", "fits", "interop", "link", "serial", "timecodes", "transforms")
 _HOMES = {
     "Chain": "chains",
+    "ClockComparison": "clocks.comparison",
     "ClockLog": "tables.clock_log",
+    "ClockNoise": "tables.clock_noise",
+    "CompiledChain": "compiled",
     "EarthOrientation": "tables.earth_orientation",
     "Ephemeris": "ephemeris",
     "ExtrapolationWarning": "errors",
     "Instants": "instants",
     "LeapSeconds": "formats.leap_seconds",
     "Ledger": "ledger",
+    "ProperClock": "clocks.proper_clock",
     "ReferenceData": "tables.reference",
     "Site": "earth.site",
     "Source": "source",
@@ -76,6 +103,13 @@ _HOMES = {
     "Trajectory": "trajectory",
     "TscaleError": "errors",
     "chain": "chains",
+    "load_compiled": "compiled",
+    "compare_clocks": "clocks.comparison",
+    "height_from_frequency": "clocks.heights",
+    "proper_ledger": "clocks.rates",
+    "proper_rate": "clocks.rates",
+    "read_circular": "tables.circular_t",
+    "what_if": "scenarios",
 }
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import json
 from typing import Any, Final
 
 from .options import add_observer, add_tables
@@ -42,7 +43,9 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     parser.add_argument(
         "--tolerance-s", metavar="S", type=float, default=1e-13, help="largest difference from the chain (%(default)s)"
     )
-    parser.add_argument("--quiet", action="store_true", help="no certificate on the standard output")
+    says = parser.add_mutually_exclusive_group()
+    says.add_argument("--quiet", action="store_true", help="no certificate on the standard output")
+    says.add_argument("--json", action="store_true", help="the certificate as JSON")
     add_observer(parser)
     add_tables(parser)
     parser.set_defaults(run=run)
@@ -54,6 +57,8 @@ def run(args: argparse.Namespace) -> int:
     (chain,) = supplied(args).chains([args.end])
     compiled = chain.compile(args.first, args.last, tolerance_s=args.tolerance_s)
     compiled.save(args.output)
-    if report is not None:
+    if report is not None and args.json:
+        print(json.dumps(compiled.certificate.to_dict(), indent=2, allow_nan=False), file=report)
+    elif report is not None:
         print(compiled.certificate.table(), file=report)
     return 0

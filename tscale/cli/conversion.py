@@ -22,15 +22,17 @@ from ..instants import Instants
 from ..provenance import provenance_of
 from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
+from .project import from_project
 from .streams import Input, is_standard_output
-from .summary import summary, unused
+from .summary import record, summary, unused
 from .walk import Walk, add_notes, note_texts
 
 __all__ = ["Conversion"]
 
 _BLOCK_ROWS: Final = 65536  # rows in memory at a time
 _TERM_DIGITS: Final = 15
-_SUFFIX: Final = {"iso": "", "mjd": " (MJD)", "jd": " (JD)", "seconds": " (s)"}
+_GIVEN: Final = ("site", "orbit", "source", "clock", "tt_bipm")
+_SUFFIX: Final = {"iso": "", "mjd": " (MJD)", "jd": " (JD)", "seconds": " (s)", "spreadsheet": ""}
 
 # How errors that count the values of an array speak of a single one.
 _OF_ONE: Final = (
@@ -139,8 +141,12 @@ class Conversion:
                 name: write_dates(result, args.output_format, self.digits, leap_seconds=self.reference.leap_seconds)
                 for name, result in zip(self.names, results, strict=True)
             }
+            if args.output_format == "spreadsheet":  # its quotes are part of the cell
+                columns = {
+                    name: [encode_row([text], self.delimiter) for text in texts] for name, texts in columns.items()
+                }
             if args.sigma:
-                statuses = walk.statuses(self.reference, self.site)
+                statuses = walk.statuses(self.reference, self.site, self.clocks)
                 for name, sigma, status in zip(self.ends, walk.sigma_s(), statuses, strict=True):
                     columns[f"sigma {name} (s)"] = [f"{value:.3e}" for value in sigma.tolist()]
                     columns[f"status {name}"] = status
@@ -205,24 +211,27 @@ class Conversion:
     def notes(self) -> list[str]:
         """What a reader of the results should know."""
         args = self.args
-        site, source = (name and Path(name).name for name in (args.site or args.orbit, args.source))
+        # A project serves many commands: only what was given for this one should be of use here.
+        mine = {name: None if name in from_project(args) else getattr(args, name) for name in _GIVEN}
+        site, source = (name and Path(name).name for name in (mine["site"] or mine["orbit"], mine["source"]))
         if source is None and args.ra is not None:
             source = "--ra and --dec"
-        idle = unused(self.chains, self.clocks, self.reference, site=site, source=source)
+        clocks = self.clocks if mine["clock"] else []
+        tt_bipm = self.reference.tt_bipm if mine["tt_bipm"] else ()
+        idle = unused(self.chains, clocks, tt_bipm, site=site, source=source)
         return [*note_texts(self._notes, self.rows), *idle]
 
     def summary(self) -> str:
-        """Say what was done."""
+        """Say what was done, in words or (`--json`) for programs."""
+        facts = {
+            "rows": self.rows,
+            "notes": self.notes(),
+            "source": self.reader.name,
+            "target": "<stdout>" if is_standard_output(self.args.output) else self.args.output,
+            **self.first,
+        }
         with warnings.catch_warnings():
             warnings.simplefilter("ignore", ExtrapolationWarning)
-            return summary(
-                self.chains,
-                self.clocks,
-                self.reference,
-                self.site,
-                rows=self.rows,
-                notes=self.notes(),
-                source=self.reader.name,
-                target="<stdout>" if is_standard_output(self.args.output) else self.args.output,
-                **self.first,
-            )
+            if self.args.json:
+                return json.dumps(record(self.chains, self.clocks, **facts), indent=2, allow_nan=False)
+            return summary(self.chains, self.clocks, **facts)

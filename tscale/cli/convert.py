@@ -13,7 +13,7 @@ from .supplies import supplied
 
 __all__ = ["add_parser", "run"]
 
-_LAYOUTS: Final = ("iso", "mjd", "jd", "seconds")
+_LAYOUTS: Final = ("iso", "mjd", "jd", "seconds", "spreadsheet")
 
 _EPILOG: Final = """\
 A node is a scale, or a scale at a place: UTC, UTC(k), CLOCK(name), UT1, TAI, TT, TT(BIPMyy), GPS, GST, BDT, GLONASS,
@@ -30,16 +30,33 @@ NAME in two, NAME_whole_s (int64) and NAME_fraction_s (float64), timestamps, or 
 OUTPUT is a table too, or a folder that is filled part by part: work broken off goes on there where it was.
 
 Layouts of dates: iso is ISO 8601 with up to 18 decimals; mjd and jd are decimal numbers, read and written digit by
-digit, with a UTC day that ends with a leap second 86401 s long; seconds counts from 2000-01-01T12:00:00 of the scale.
+digit, with a UTC day that ends with a leap second 86401 s long; seconds counts from 2000-01-01T12:00:00 of the scale;
+spreadsheet is ISO 8601 as ="...", which spreadsheet programs leave alone.
 
 --sigma adds `sigma NODE (s)` and `status NODE`. The status names the worst that the result rests on: Earth orientation
-that was measured, predicted, or held past the end of its table; with +expired (or alone, expired) where UTC is past the
-expiry of the leap seconds; none where neither matters. Notes on this end the summary, or go to the error stream with
---quiet.
+that was measured, predicted, or held past the end of its table; then, with + between, `clock predicted` past the
+comparisons of a log that the project predicts, and `expired` where UTC is past the expiry of the leap seconds; none
+where nothing of this matters. Notes on it end the summary, or go to the error stream with --quiet.
+
+The summary goes to the standard output, or to the error stream where the rows go there. --project FILE names a TOML
+file with what many commands share; names of files in it are meant from its own folder:
+
+  site = "site.toml"                            # or orbit
+  clocks = ["maser.csv", "utc_krl.csv"]
+  source = "source.toml"
+  earth_orientation = "finals2000A.all"         # and leap_seconds, tt_bipm, ephemeris, time_ephemeris
+  solid_tide = true                             # and sub_daily, second_order, interpolation, max_gap_s
+  [noise.maser]                                 # Allan deviations at 1 s, for its uncertainty between comparisons
+  white_frequency = 2e-13
+  flicker_frequency = 3e-15                     # and random_walk_frequency, white_phase_s
+  [predict.maser]                               # past its last comparison, by the rate of the last fit_s seconds
+  fit_s = 864000
+  until = "2025-04-01"                          # and start, drift
 
 examples:
   tscale convert readings.csv out.csv --to TDB --site site.toml
   tscale convert readings.csv out.csv --clock maser.csv --clock utc_krl.csv --site site.toml --to TCB --to TDB --ledger
+  tscale convert readings.csv out.csv --project ridge.toml --to TDB@BARYCENTER --sigma --json
   tscale convert - - --input-format mjd --from TT --to TDB@GEOCENTER < dates.csv
 """
 
@@ -99,7 +116,9 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     )
     tables.add_argument("--threads", metavar="N", type=int, default=1, help="blocks worked on at once (%(default)s)")
     text.add_argument("--no-progress", action="store_true", help="no progress bar")
-    text.add_argument("--quiet", action="store_true", help="no summary; notes on the error stream")
+    says = parser.add_argument_group("what is said").add_mutually_exclusive_group()
+    says.add_argument("--quiet", action="store_true", help="no summary; notes on the error stream")
+    says.add_argument("--json", action="store_true", help="the summary as JSON")
     add_tables(parser)
     parser.set_defaults(run=run)
 
@@ -115,7 +134,7 @@ def run(args: argparse.Namespace) -> int:
 
     if not (args.ends or args.compiled):
         raise InvalidInput("say what is wanted with --to NODE, such as --to TDB")
-    if is_table(args.input):
+    if is_table(args.input, args.output):
         return run_table(args)
     if args.compiled or args.threads != 1:
         raise InvalidInput("--compiled and --threads are for tables that end in .parquet, .arrow or .feather")

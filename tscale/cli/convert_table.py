@@ -3,24 +3,24 @@
 from __future__ import annotations
 
 import argparse
-import sys
+import os
 from typing import Any, Final
 
-from .streams import standard_output
+from .rows_bar import RowsBar
+from .streams import is_standard_output, standard_output
 from .supplies import supplied
 
 __all__ = ["is_table", "run_table"]
 
 _ENDINGS: Final = (".parquet", ".arrow", ".feather")
+
 _OF_TEXT: Final = ("delimiter", "input_format", "output_format", "digits", "provenance", "provenance_file")
 _USUAL: Final = {"delimiter": ",", "input_format": "iso", "output_format": "iso"}
 
 
-def is_table(path: str) -> bool:
-    """Whether an input is a table by its name, or a folder (of tables)."""
-    import os
-
-    return path.lower().endswith(_ENDINGS) or os.path.isdir(path)
+def is_table(source: str, target: str = "") -> bool:
+    """Whether either name is that of a Parquet or Arrow table, or the input a folder (of tables)."""
+    return source.lower().endswith(_ENDINGS) or target.lower().endswith(_ENDINGS) or os.path.isdir(source)
 
 
 def run_table(args: argparse.Namespace) -> int:
@@ -31,9 +31,11 @@ def run_table(args: argparse.Namespace) -> int:
     for name in _OF_TEXT:
         if getattr(args, name) not in (None, False, _USUAL.get(name)):
             raise InvalidInput(f"--{name.replace('_', '-')} is for text, and {args.input} is a table")
+    if not args.output.lower().endswith(_ENDINGS) and is_standard_output(args.output):
+        raise InvalidInput("a table is written to a file or a folder, not to the standard output: name one")
     mappings, leap_seconds = _mappings(args)
     report = None if args.quiet else standard_output()
-    bar = _Bar(args.no_progress)
+    bar = RowsBar(args.no_progress)
     try:
         done = convert_table(
             mappings,
@@ -49,7 +51,12 @@ def run_table(args: argparse.Namespace) -> int:
         )
     finally:
         bar.close()
-    if report is not None:
+    if report is not None and args.json:
+        import json
+
+        facts = {"input": args.input, "output": args.output, "rows": done.rows, "rows_found": done.found}
+        print(json.dumps({**facts, "chains": [str(mapping) for mapping in mappings]}, indent=2), file=report)
+    elif report is not None:
         kept = f" ({done.found} were there already)" if done.found else ""
         print(f"{args.input}: {done.rows} rows{kept} to {args.output}", file=report)
         for mapping in mappings:
@@ -67,25 +74,7 @@ def _mappings(args: argparse.Namespace) -> tuple[list[Any], Any]:
     if args.ends or args.start is not None:
         raise InvalidInput("a compiled chain has its own ends: give --compiled, or --from and --to, not both")
     from ..formats.leap_seconds import LeapSeconds
+    from ..tables.imported import resolved
 
-    leap_seconds = None if args.leap_seconds is None else LeapSeconds.load(args.leap_seconds)
+    leap_seconds = None if args.leap_seconds is None else LeapSeconds.load(resolved(args.leap_seconds))
     return [load_compiled(path) for path in args.compiled], leap_seconds
-
-
-class _Bar:
-    """A progress bar of rows, that appears on a terminal when the work takes longer than a second."""
-
-    def __init__(self, silent: bool) -> None:
-        self._silent = silent or sys.stderr is None or not sys.stderr.isatty()
-        self._bar: Any = None
-
-    def tell(self, done: int, total: int) -> None:
-        if self._bar is None:
-            from tqdm import tqdm
-
-            self._bar = tqdm(total=total, unit="rows", unit_scale=True, delay=1.0, disable=self._silent, leave=False)
-        self._bar.update(done - self._bar.n)
-
-    def close(self) -> None:
-        if self._bar is not None:
-            self._bar.close()

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import re
 from decimal import Decimal, InvalidOperation
 from fractions import Fraction
 from pathlib import Path
@@ -17,7 +18,7 @@ if TYPE_CHECKING:
 
 __all__ = ["add_span", "add_text", "dates_of_input", "dates_of_span", "drawn_dates", "thinned"]
 
-_LAYOUTS: Final = ("iso", "mjd", "jd", "seconds")
+_LAYOUTS: Final = ("iso", "mjd", "jd", "seconds", "spreadsheet")
 _BLOCK_ROWS: Final = 65536
 _USUAL: Final = 400
 _MOST: Final = 100_000
@@ -40,8 +41,10 @@ def add_span(parser: argparse.ArgumentParser) -> None:
     span.add_argument("--step", metavar="S", help=f"seconds from date to date (default: {_USUAL} dates)")
 
 
-def dates_of_input(args: argparse.Namespace, scale: str, leap_seconds: LeapSeconds) -> Instants:
-    """All dates of `args.input`; an error names its line."""
+def dates_of_input(
+    args: argparse.Namespace, scale: str, leap_seconds: LeapSeconds, lines: list[int] | None = None
+) -> Instants:
+    """All dates of `args.input`, with their lines added to `lines`; an error names its line."""
     from ..errors import DataFileError, TscaleError
     from ..files import DelimitedReader
     from ..files.date_text import read_dates
@@ -61,6 +64,8 @@ def dates_of_input(args: argparse.Namespace, scale: str, leap_seconds: LeapSecon
                     error.row = block.lines[int(error.mask.argmax())]
                 error.path = error.path or Path(source.name)
                 raise
+            if lines is not None:
+                lines.extend(block.lines)
     if not parts:
         raise DataFileError("there are no rows below the header", path=args.input)
     return Instants.concatenate(parts)
@@ -131,7 +136,7 @@ def _carried(chain: Chain, t: Instants) -> Instants:
             if error.mask is None or error.mask.shape != t.shape or error.mask.all():
                 raise
             t = t[~error.mask]
-            reasons.append(str(error))
+            reasons.append(re.sub(r" \(see \.mask\)", "", str(error)))
         else:
             break
     if reasons:

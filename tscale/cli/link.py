@@ -3,19 +3,20 @@
 from __future__ import annotations
 
 import argparse
+import json
 import re
 import warnings
 from typing import TYPE_CHECKING, Any, Final, TextIO
 
 from .link_dates import blocks_of, date_of
 from .link_ends import FORMS, end_of
+from .link_rows import decimals, legs_of, plain, texts_of, total_s
 from .options import add_tables, reference_of
 from .streams import is_standard_output, note, standard_output, written
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from ..exact import FloatArray
     from ..instants import Instants
     from ..link import LinkSolution, TwoWaySolution
     from ..tables.clock_log import ClockLog
@@ -24,8 +25,6 @@ if TYPE_CHECKING:
     Solution = LinkSolution | TwoWaySolution
 
 __all__ = ["add_parser", "run"]
-
-_TERM_DIGITS: Final = 15
 
 # How errors that speak of arrays and arguments speak on the command line.
 _SPOKEN: Final = (
@@ -91,6 +90,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     parser.add_argument(
         "--output", metavar="FILE", default="-", help="CSV file of the table (default: standard output)"
     )
+    parser.add_argument("--json", action="store_true", help="the link, or the rows of the table, as JSON")
     parser.add_argument("--plot", metavar="FILE", help="picture of the table: PNG, PDF or SVG (needs matplotlib)")
     parser.add_argument(
         "--clock",
@@ -122,7 +122,8 @@ def run(args: argparse.Namespace) -> int:
     reference = reference_of(args)
     work = _Work(args, reference, clocks_of(args, reference))
     if args.until is None:
-        print(work.account(work.solve(work.first)))
+        solution = work.solve(work.first)
+        print(json.dumps(work.record(solution), indent=2) if args.json else work.account(solution))
     else:
         work.table()
     return 0
@@ -191,10 +192,15 @@ class _Work:
         texts: list[str] = t.to_iso(self.args.digits, leap_seconds=self.reference.leap_seconds).reshape(-1).tolist()
         return texts
 
+    def record(self, solution: Solution) -> dict[str, Any]:
+        """One link for programs: the columns of a table with all terms, and the notes."""
+        row = {name: plain(column[0]) for name, column in self._columns(solution, ledger=True).items()}
+        return {**row, "notes": list(solution.notes)}
+
     def account(self, solution: Solution) -> str:
         """One link in words."""
         lines = [(head, self._iso(t)[0]) for head, t in self._events(solution).items()]
-        legs = _legs(solution)
+        legs = legs_of(solution)
         for name, leg in legs.items():
             lines.append((f"{name}range", f"{float(leg.range_m) / 1e3:.9f} km"))
             lines.append((f"{name}range rate", f"{float(leg.range_rate_m_s):.6f} m/s"))
@@ -204,9 +210,9 @@ class _Work:
             if bool(leg.occulted):
                 lines.append((f"{name}path", "blocked by a body or the ground"))
         width = max(len(name) for name, _ in lines)
-        total = _total(solution)
-        terms = [(name, _decimals(value)[0]) for name, value in solution.ledger.items()]
-        terms.append(("round trip" if len(legs) == 2 else "light time", _decimals(total)[0]))
+        total = total_s(solution)
+        terms = [(name, decimals(value)[0]) for name, value in solution.ledger.items()]
+        terms.append(("round trip" if len(legs) == 2 else "light time", decimals(total)[0]))
         left, right = max(len(name) for name, _ in terms), max(len(text) for _, text in terms)
         rule = f"{'-' * left}  {'-' * right}"
         table = [f"{name:<{left}}  {text:>{right}}" for name, text in terms]
@@ -242,6 +248,8 @@ class _Work:
                 rows += t.size
                 if self.args.plot:
                     solutions.append(solution)
+            if self.args.json:
+                target.write("\n]\n")
             if self.args.plot:
                 from ..plots import save_link_picture
 
@@ -250,39 +258,34 @@ class _Work:
         for text in note_texts(notes, rows):
             note(text)
 
-    def _write(self, target: TextIO, solution: Solution, head: bool) -> None:
-        columns = {name: self._iso(t) for name, t in self._events(solution).items()}
-        columns["round trip (TDB s)" if self.args.two_way else "light time (TDB s)"] = _decimals(_total(solution))
-        for name, leg in _legs(solution).items():
-            columns[f"{name}range (m)"] = [f"{x:.6f}" for x in leg.range_m.reshape(-1).tolist()]
-            columns[f"{name}range rate (m/s)"] = [f"{x:.9f}" for x in leg.range_rate_m_s.reshape(-1).tolist()]
+    def _columns(self, solution: Solution, *, ledger: bool) -> dict[str, list[Any]]:
+        """Columns of a table by their heads: texts of dates, numbers, and words."""
+        columns: dict[str, list[Any]] = {name: self._iso(t) for name, t in self._events(solution).items()}
+        columns["round trip (TDB s)" if self.args.two_way else "light time (TDB s)"] = (
+            total_s(solution).ravel().tolist()
+        )
+        for name, leg in legs_of(solution).items():
+            columns[f"{name}range (m)"] = leg.range_m.ravel().tolist()
+            columns[f"{name}range rate (m/s)"] = leg.range_rate_m_s.ravel().tolist()
             for event, height in (("transmit", leg.transmit_elevation_deg), ("receive", leg.receive_elevation_deg)):
                 if height is not None:
-                    columns[f"{name}elevation at {event} (deg)"] = [f"{x:.5f}" for x in height.reshape(-1).tolist()]
-        columns["path"] = ["blocked" if x else "clear" for x in solution.occulted.reshape(-1).tolist()]
-        if self.args.ledger:
+                    columns[f"{name}elevation at {event} (deg)"] = height.ravel().tolist()
+        columns["path"] = ["blocked" if x else "clear" for x in solution.occulted.ravel().tolist()]
+        if ledger:
             for name, value in solution.ledger.items():
                 # Names of the terms hold commas, which would need quotes in every reader.
-                columns[f"{name.replace(',', '')} (s)"] = _decimals(value)
+                columns[f"{name.replace(',', '')} (s)"] = value.ravel().tolist()
+        return columns
+
+    def _write(self, target: TextIO, solution: Solution, head: bool) -> None:
+        columns = self._columns(solution, ledger=self.args.ledger)
+        if self.args.json:
+            # Row by row, so that a long table is never in memory as a whole.
+            for row in zip(*columns.values(), strict=True):
+                target.write(("[\n" if head else ",\n") + json.dumps(dict(zip(columns, map(plain, row), strict=True))))
+                head = False
+            return
         if head:
             target.write(",".join(columns) + "\n")
-        target.writelines(",".join(row) + "\n" for row in zip(*columns.values(), strict=True))
-
-
-def _legs(solution: Solution) -> dict[str, LinkSolution]:
-    """Legs by the start of their column names."""
-    from ..link import TwoWaySolution
-
-    if isinstance(solution, TwoWaySolution):
-        return {"up ": solution.up, "down ": solution.down}
-    return {"": solution}
-
-
-def _total(solution: Solution) -> FloatArray:
-    from ..link import TwoWaySolution
-
-    return solution.round_trip_s if isinstance(solution, TwoWaySolution) else solution.light_time_s
-
-
-def _decimals(value: FloatArray) -> list[str]:
-    return [f"{x:.{_TERM_DIGITS}f}" for x in value.reshape(-1).tolist()]
+        texts = [texts_of(name, column) for name, column in columns.items()]
+        target.writelines(",".join(row) + "\n" for row in zip(*texts, strict=True))

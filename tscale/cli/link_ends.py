@@ -38,6 +38,7 @@ def end_of(text: str, reference: ReferenceData) -> Participant:
     """Read one end; see `FORMS`."""
     from ..ephemeris import BODY_IDS
     from ..errors import InvalidInput
+    from ..tables.imported import resolved
     from ..trajectory import Trajectory
 
     if text.strip().lower() in BODY_IDS:
@@ -46,7 +47,7 @@ def end_of(text: str, reference: ReferenceData) -> Participant:
         return int(text)
     file, colon, number = text.rpartition(":")
     if colon and number.lstrip("-").isdigit():
-        return Trajectory.from_spk(file, int(number))
+        return Trajectory.from_spk(resolved(file), int(number))
     path = Path(text)
     if path.suffix.lower() == ".toml":
         return _from_toml(path, reference)

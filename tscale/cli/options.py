@@ -22,7 +22,15 @@ __all__ = ["add_observer", "add_tables", "clocks_of", "observer_of", "reference_
 
 def add_tables(parser: argparse.ArgumentParser) -> None:
     """Add the options that replace a default table by a file."""
-    group = parser.add_argument_group("tables", "each in place of the default one (see `tscale data`)")
+    parser.add_argument_group("project").add_argument(
+        "--project",
+        metavar="FILE",
+        help="TOML file that names site, clocks, source and tables once, with the options' names as keys "
+        "(clocks = [...]); options given win",
+    )
+    group = parser.add_argument_group(
+        "tables", "each in place of the default one (see `tscale data`); imported:NAME for one that was imported"
+    )
     group.add_argument("--ephemeris", metavar="FILE", help="SPK kernel; its time ephemeris is built once and kept")
     group.add_argument(
         "--time-ephemeris",
@@ -37,7 +45,7 @@ def add_tables(parser: argparse.ArgumentParser) -> None:
     )
     group.add_argument(
         "--sub-daily",
-        action="store_true",
+        action=argparse.BooleanOptionalAction,
         help="add the tidal variations of Earth rotation within a day to the table (IERS 2010; 3 cm, 0.1 ns)",
     )
 
@@ -53,7 +61,7 @@ def add_observer(parser: argparse.ArgumentParser) -> None:
     )
     group.add_argument(
         "--solid-tide",
-        action="store_true",
+        action=argparse.BooleanOptionalAction,
         help="let the site move with the tide of the solid Earth (IERS 2010; 0.4 m, 1.3 ns), as `solid_tide = true` in "
         "its file does",
     )
@@ -85,7 +93,7 @@ def add_observer(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--dec", metavar="DEG", type=float, help="ICRS declination of the source, degrees")
     group.add_argument(
         "--second-order",
-        action="store_true",
+        action=argparse.BooleanOptionalAction,
         help="add the second-order gravitational delay of the Sun (18 ns at its limb)",
     )
 
@@ -138,7 +146,7 @@ def observer_of(args: argparse.Namespace, reference: ReferenceData) -> Site | Su
     from ..earth.site import Site
 
     site = Site.load(args.site)
-    return replace(site, solid_tide=True) if args.solid_tide else site
+    return site if args.solid_tide is None else replace(site, solid_tide=args.solid_tide)
 
 
 def source_of(args: argparse.Namespace) -> Source | None:
@@ -168,6 +176,7 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
     """
     from ..errors import InvalidInput
     from ..tables.clock_log import ClockLog
+    from .project import check_clocks, with_noise
 
     found: dict[str, list[tuple[str, ClockLog]]] = {}
     for path in args.clock:
@@ -185,7 +194,11 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
                 "would be two ways from it; give one of them"
             )
         others.append((path, log))
-    return [logs[0][1] if len(logs) == 1 else ClockLog.joined([log for _, log in logs]) for logs in found.values()]
+    check_clocks(args, set(found))
+    return [
+        with_noise(logs[0][1] if len(logs) == 1 else ClockLog.joined([log for _, log in logs]), args)
+        for logs in found.values()
+    ]
 
 
 def _circular(path: str, reference: ReferenceData) -> ClockLog | None:

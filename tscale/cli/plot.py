@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import argparse
+import warnings
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any, Final
 
 from .input_dates import add_span, add_text, drawn_dates
@@ -18,9 +20,11 @@ if TYPE_CHECKING:
     from ..tables.clock_log import ClockLog
     from ..tables.clock_report import ClockReport
 
-__all__ = ["add_parser"]
+__all__ = ["add_parser", "run"]
 
 _NOISES: Final = ("white_frequency", "flicker_frequency", "random_walk_frequency", "white_phase_s")
+
+_SAID: Final = 8
 
 _EPILOG: Final = """\
 The name of FILE tells the kind of the picture: .png, .pdf or .svg. The same input gives the same bytes.
@@ -47,13 +51,13 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     )
     kinds = parser.add_subparsers(dest="picture", metavar="PICTURE", required=True)
     ledger = _of_chain(kinds, "ledger", "every term over time, by size")
-    ledger.set_defaults(run=_ledger)
+    ledger.set_defaults(run=run, draw=_ledger)
     budget = _of_chain(kinds, "budget", "standard uncertainties: bars for the first date, lines over time")
     add_stated(budget)
-    budget.set_defaults(run=_budget)
+    budget.set_defaults(run=run, draw=_budget)
     moved = _of_chain(kinds, "what-if", "what other tables would move, term by term")
     add_replacements(moved)
-    moved.set_defaults(run=_what_if)
+    moved.set_defaults(run=run, draw=_what_if)
     _add_log(kinds)
 
 
@@ -97,7 +101,7 @@ def _add_log(kinds: argparse._SubParsersAction[Any]) -> None:
         ahead.add_argument(f"--{name.replace('_', '-')}", metavar="X", type=float, default=0.0, help=words)
     ahead.add_argument("--white-phase-s", metavar="S", type=float, default=0.0, help="standard deviation of a reading")
     parser.add_argument("--leap-seconds", metavar="FILE", help="in place of the default table")
-    parser.set_defaults(run=_log)
+    parser.set_defaults(run=run, draw=_log)
 
 
 def _add_output(parser: argparse.ArgumentParser) -> None:
@@ -105,54 +109,59 @@ def _add_output(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--title", metavar="TEXT", default="", help="above the picture")
 
 
-def _dates(args: argparse.Namespace) -> tuple[Chain, Instants]:
+def run(args: argparse.Namespace) -> int:
+    """Draw a picture."""
+    from ..errors import ExtrapolationWarning
     from ..plots import check_picture
 
     check_picture(args.output)  # before any work
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", ExtrapolationWarning)  # the notes say the same
+        notes = args.draw(args)
+    for text in dict.fromkeys(notes):
+        note(text)
+    return 0
+
+
+def _dates(args: argparse.Namespace) -> tuple[Chain, Instants]:
     (chain,) = supplied(args).chains([args.end])
     return chain, drawn_dates(args, chain)
 
 
-def _ledger(args: argparse.Namespace) -> int:
+def _ledger(args: argparse.Namespace) -> Sequence[str]:
     from ..plots import save_ledger_picture
 
     chain, t = _dates(args)
     ledger = chain.ledger(t)
     save_ledger_picture(ledger, t, args.output, args.title, [str(chain)])
-    _say(ledger.notes)
-    return 0
+    return ledger.notes
 
 
-def _budget(args: argparse.Namespace) -> int:
+def _budget(args: argparse.Namespace) -> Sequence[str]:
     from ..plots import save_budget_picture
 
     chain, t = _dates(args)
     budget = chain.budget(t, **stated_of(args))
     save_budget_picture(budget, args.output, t, title=args.title, lines=[str(chain)])
-    _say(chain.notes(t))
-    return 0
+    return chain.notes(t)
 
 
-def _what_if(args: argparse.Namespace) -> int:
-    from ..plots import check_picture, save_what_if_picture
+def _what_if(args: argparse.Namespace) -> Sequence[str]:
+    from ..plots import save_what_if_picture
 
-    check_picture(args.output)
     _, t, found = compared(args, drawn_dates)
     save_what_if_picture(found, t, args.output, args.title)
-    _say(dict.fromkeys([*found.before.notes, *found.after.notes]))
-    return 0
+    return [*found.before.notes, *found.after.notes]
 
 
-def _log(args: argparse.Namespace) -> int:
-    from ..plots import check_picture, save_clock_log_picture
+def _log(args: argparse.Namespace) -> Sequence[str]:
+    from ..plots import save_clock_log_picture
 
-    check_picture(args.output)
     log, report = _log_of(args)
     save_clock_log_picture(log, args.output, report, args.title)
-    for finding in () if report is None else report.findings:
-        if finding.severity != "note":
-            note(f"{args.input}: {finding}")
-    return 0
+    found = () if report is None else [finding for finding in report.findings if finding.severity != "note"]
+    more = [f"{args.input}: {len(found) - _SAID} findings more, as in the picture"] if len(found) > _SAID else []
+    return [*(f"{args.input}: {finding}" for finding in found[:_SAID]), *more]
 
 
 def _log_of(args: argparse.Namespace) -> tuple[ClockLog, ClockReport | None]:
@@ -187,8 +196,3 @@ def _reference(args: argparse.Namespace) -> Any:
     from ..tables.reference import ReferenceData
 
     return ReferenceData.load(leap_seconds=args.leap_seconds)
-
-
-def _say(notes: Any) -> None:
-    for text in notes:
-        note(text)

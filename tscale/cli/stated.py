@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 from typing import Any, Final
 
-__all__ = ["add_stated", "stated_of"]
+__all__ = ["add_stated", "option_of", "stated_of"]
 
 _NUMBERS: Final = {
     "reading_sigma_s": ("S", "noise of the readings"),
@@ -26,6 +26,11 @@ def add_stated(parser: argparse.ArgumentParser) -> None:
     group.add_argument(
         "--coverage-factor", metavar="K", type=float, default=2.0, help="of the expanded uncertainty (%(default)g)"
     )
+
+
+def option_of(name: str) -> str | None:
+    """The option for an argument of `Chain.budget`, if there is one."""
+    return f"--{name.replace('_', '-')}" if name in _NUMBERS else None
 
 
 def stated_of(args: argparse.Namespace) -> dict[str, Any]:

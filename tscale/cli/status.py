@@ -1,8 +1,9 @@
-"""What a result rests on, row by row: Earth orientation that was measured, predicted or held, expired leap seconds."""
+"""What a result rests on, row by row: Earth orientation measured, predicted or held, logs predicted, expired tables."""
 
 from __future__ import annotations
 
-from typing import Final
+from collections.abc import Sequence
+from typing import Final, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -16,12 +17,14 @@ from ..instants import Instants
 from ..provenance.tables_read import reads_ephemeris
 from ..scales import Node
 from ..step import Step
+from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
 from ..transforms import geocentric
 
-__all__ = ["status_codes", "status_words", "uses_orientation"]
+__all__ = ["Status", "status_of", "uses_orientation"]
 
 _WORDS: Final = ("", "measured", "predicted", "held")
+_AHEAD: Final = "clock predicted"
 _EXPIRED: Final = "expired"
 _NEITHER: Final = "none"
 
@@ -35,10 +38,40 @@ def uses_orientation(step: Step, site: Observer | None) -> bool:
     return at_site and reads_ephemeris(step)
 
 
-def status_codes(
-    step: Step, before: Instants, after: Instants, reference: ReferenceData, site: Observer | None
-) -> tuple[npt.NDArray[np.int8], BoolArray]:
-    """By row: 0 no Earth orientation, 1 measured, 2 predicted, 3 held; and whether UTC is past the leap seconds."""
+class Status(NamedTuple):
+    """What the rows of one step, or of a whole chain, rest on."""
+
+    code: npt.NDArray[np.int8]
+    """0 no Earth orientation, 1 measured, 2 predicted, 3 held."""
+    ahead: BoolArray
+    """Past the comparisons of a clock log."""
+    late: BoolArray
+    """UTC past the expiry of the leap seconds."""
+
+    def worst(self, other: Status) -> Status:
+        """Of two, the worse by row."""
+        return Status(np.maximum(self.code, other.code), self.ahead | other.ahead, self.late | other.late)
+
+    def words(self) -> list[str]:
+        """The words of a column of results."""
+        table = {
+            (code, ahead, late): "+".join(filter(None, (word, _AHEAD * ahead, _EXPIRED * late))) or _NEITHER
+            for code, word in enumerate(_WORDS)
+            for ahead in (False, True)
+            for late in (False, True)
+        }
+        return [table[row] for row in zip(self.code.tolist(), self.ahead.tolist(), self.late.tolist(), strict=True)]
+
+
+def status_of(
+    step: Step,
+    before: Instants,
+    after: Instants,
+    reference: ReferenceData,
+    site: Observer | None,
+    clocks: Sequence[ClockLog],
+) -> Status:
+    """What one step rests on."""
     sides = ((step.start, before), (step.end, after))
     code = np.zeros(before.shape, dtype=np.int8)
     if uses_orientation(step, site):
@@ -49,17 +82,13 @@ def status_codes(
         if node.scale.utc_labels:
             utc = exact.add(at.pair, exact.normalise(-node.scale.label_offset_s, 0.0))
             late = late | reference.leap_seconds.is_expired(utc)
-    return code, late
-
-
-def status_words(codes: npt.NDArray[np.int8], expired: BoolArray) -> list[str]:
-    """The words of a column of results."""
-    table = {
-        (code, late): "+".join(part for part in (word, _EXPIRED if late else "") if part) or _NEITHER
-        for code, word in enumerate(_WORDS)
-        for late in (False, True)
-    }
-    return [table[pair] for pair in zip(codes.tolist(), expired.tolist(), strict=True)]
+    ahead = np.zeros(before.shape, dtype=np.bool_)
+    by_scale = {node.scale.name: at for node, at in sides}
+    for log in clocks:
+        if log.is_predicted and by_scale.keys() == {log.scale, log.reference}:
+            for flag in log.flags(by_scale[log.reference].pair).values():
+                ahead = ahead | flag
+    return Status(code, ahead, late)
 
 
 def _tai(node: Node, at: Instants) -> Pair | None:

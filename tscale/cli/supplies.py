@@ -72,4 +72,4 @@ def supplied(args: argparse.Namespace) -> Supplied:
     clocks = clocks_of(args, reference)
     site, source = observer_of(args, reference), source_of(args)
     start = args.start if args.start is not None else start_of(clocks)
-    return Supplied(reference, clocks, site, source, start, args.second_order)
+    return Supplied(reference, clocks, site, source, start, bool(args.second_order))

@@ -15,8 +15,9 @@ from ..earth.observer import Observer
 from ..exact import FloatArray, Pair
 from ..instants import Instants
 from ..step import Step
+from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
-from .status import status_codes, status_words
+from .status import Status, status_of
 
 __all__ = ["Passed", "Walk", "add_notes", "note_texts"]
 
@@ -80,16 +81,16 @@ class Walk:
         none = np.zeros(self._start.shape)
         return [np.sqrt(sum((np.square(value) for value in each.values()), none)) for each in sources]
 
-    def statuses(self, reference: ReferenceData, site: Observer | None) -> list[list[str]]:
+    def statuses(
+        self, reference: ReferenceData, site: Observer | None, clocks: Sequence[ClockLog] = ()
+    ) -> list[list[str]]:
         """For each chain what the result of each row rests on, in the words of `status`."""
-        codes = {path: status_codes(*passed, reference, site) for path, passed in self.passed.items()}
-        none = np.zeros(self._start.shape, dtype=np.int8), np.zeros(self._start.shape, dtype=np.bool_)
-        found = []
-        for taken in self._paths:
-            parts = [none, *(codes[path] for path in taken)]
-            worst, late = (functools.reduce(np.maximum, column) for column in zip(*parts, strict=True))
-            found.append(status_words(worst, late))
-        return found
+        found = {path: status_of(*passed, reference, site, clocks) for path, passed in self.passed.items()}
+        no = np.zeros(self._start.shape, dtype=np.bool_)
+        nothing = Status(np.zeros(self._start.shape, dtype=np.int8), no, no)
+        return [
+            functools.reduce(Status.worst, (found[path] for path in taken), nothing).words() for taken in self._paths
+        ]
 
     def notes(self) -> list[str]:
         """Notes of all steps, each once."""

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any, Final
 
 from .input_dates import add_text, dates_of_input
 from .options import add_observer, add_tables, clocks_of, observer_of, reference_of, source_of, start_of
-from .streams import standard_output, written
+from .streams import standard_output
 
 if TYPE_CHECKING:
     from ..chains import Chain
@@ -51,7 +51,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     parser.add_argument("--from", dest="start", metavar="NODE", help="what the dates are (default: as for convert)")
     parser.add_argument("--to", dest="end", metavar="NODE", required=True, help="what is wanted")
     add_replacements(parser)
-    parser.add_argument("--json", metavar="FILE", help="write the summary and both provenances to FILE, as JSON")
+    parser.add_argument("--json", action="store_true", help="the summary and both provenances as JSON")
     add_observer(parser)
     add_text(parser)
     add_tables(parser)
@@ -74,9 +74,9 @@ def run(args: argparse.Namespace) -> int:
     """Print what moved."""
     standard_output()
     before, t, found = compared(args, _input)
-    if args.json is not None:
-        with written(args.json) as target:
-            target.write(found.to_json(indent=2) + "\n")
+    if args.json:
+        print(found.to_json(indent=2))
+        return 0
     print(f"{before}\n{t.size} dates of {before.start}: what moves is after less before\n")
     print(found.table())
     return 0
@@ -100,11 +100,11 @@ def compared(
     site, source = observer_of(args, reference), source_of(args)
     start = args.start if args.start is not None else start_of(clocks)
     before = chain(start, args.end, site=site, clocks=clocks, source=source, reference=reference,
-                   second_order=args.second_order)  # fmt: skip
+                   second_order=bool(args.second_order))  # fmt: skip
     t = dates(args, before)
     other = _replaced(args, reference, given)
     # Logs are read again where the leap seconds changed: their epochs are labels too.
-    fresh = argparse.Namespace(**{**vars(args), "clock": args.with_clock})
+    fresh = argparse.Namespace(**{**vars(args), "clock": args.with_clock, "from_project": frozenset()})
     logs = clocks_of(fresh, other)
     if "leap_seconds" in given:
         replaced = {log.scale for log in logs}

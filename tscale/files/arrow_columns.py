@@ -93,6 +93,9 @@ def find_dates(schema: pa.Schema, name: str | None = None) -> DateColumn:
                 f"NAME is two, NAME{_WHOLE} (int64) and NAME{_FRACTION} (float64), or one of timestamps"
             )
         name = there[0]
+    for wanted in (name, name + _WHOLE, name + _FRACTION):
+        if len(schema.get_all_field_indices(wanted)) > 1:
+            raise InvalidInput(f"the table has {wanted!r} more than once; rename all but one")
     if name not in pairs:
         return _single(schema, name, listed)
     whole, fraction = (schema.get_field_index(name + ending) for ending in (_WHOLE, _FRACTION))
@@ -164,7 +167,7 @@ def pair_of(
     if column.kind == "timestamps":
         return from_datetime64(parts[0], scale, leap_seconds=leap_seconds).pair
     if column.kind == "texts":
-        return Instants.from_iso(parts[0].astype(np.str_), scale, leap_seconds=leap_seconds).pair
+        return Instants.from_iso(parts[0], scale, leap_seconds=leap_seconds).pair
     whole, fraction = parts
     # Two passes without a mask; a NaN fails the comparison.
     if fraction.size and not (fraction.min() >= 0.0 and fraction.max() < 1.0):

@@ -1,10 +1,13 @@
-"""Dates as text in four layouts, read and written digit by digit.
+"""Dates as text in five layouts, read and written digit by digit.
 
 `iso`
     ISO 8601, see `formats.iso8601`.
 `mjd`, `jd`
     Modified Julian Date and Julian Date as a decimal number with up to 18 decimals. A day with a leap second is
     86401 s long (IAU SOFA's quasi-JD). No float64 is on the way: 17 decimals of a day resolve 0.9 ps.
+`spreadsheet`
+    ISO 8601 as `="..."`, which spreadsheet programs keep as text: of a plain date they make a number of their own, good to
+    a millisecond. Read with or without this wrapping.
 `seconds`
     Seconds since 2000-01-01T12:00:00 of the scale, as a decimal number with up to 18 decimals.
 """
@@ -28,9 +31,10 @@ from ..scales import Scale
 
 __all__ = ["LAYOUTS", "default_digits", "fixed_decimals", "parse_decimals", "read_dates", "write_dates"]
 
-LAYOUTS: Final = ("iso", "mjd", "jd", "seconds")
+LAYOUTS: Final = ("iso", "mjd", "jd", "seconds", "spreadsheet")
 
 _DECIMAL: Final = re.compile(r"([+-]?)(\d{1,15})(?:\.(\d{0,18}))?", re.ASCII)
+_WRAPPED: Final = re.compile(r'="([^"]*)"\Z')
 _E9: Final = 10**9
 _E18: Final = 10**18
 _JD_OF_MJD_0: Final = 2400000  # JD = MJD + 2400000.5
@@ -50,7 +54,7 @@ def read_dates(
     ----------
     texts : sequence of str
         Blanks around them are allowed.
-    layout : {"iso", "mjd", "jd", "seconds"}
+    layout : {"iso", "mjd", "jd", "seconds", "spreadsheet"}
     scale : str
     place : str or None
     leap_seconds : LeapSeconds, optional
@@ -63,7 +67,10 @@ def read_dates(
         For UTC before the leap-second table, with the mask.
     """
     kind = Scale.parse(scale)
-    if _checked(layout) == "iso":
+    if _checked(layout) == "spreadsheet":
+        texts = [_WRAPPED.sub(r"\1", text.strip()) for text in texts]
+        layout = "iso"
+    if layout == "iso":
         # An array of texts would drop NUL characters at their ends in silence.
         bad = np.array(["\0" in text for text in texts], dtype=np.bool_)
         _refuse(bad, texts, "dates", "it holds a NUL character")
@@ -89,8 +96,9 @@ def write_dates(
     decimals are 17 true decimals.
     """
     digits = default_digits(layout) if digits is None else decimals.check_digits(digits)
-    if _checked(layout) == "iso":
-        return [str(text) for text in t.to_iso(digits, leap_seconds=leap_seconds).tolist()]
+    if _checked(layout) in ("iso", "spreadsheet"):
+        texts = [str(text) for text in t.to_iso(digits, leap_seconds=leap_seconds).tolist()]
+        return texts if layout == "iso" else [f'="{text}"' for text in texts]
     if layout == "seconds":
         return fixed_decimals(t.pair, digits)
     kind = Scale.parse(t.scale)
@@ -137,7 +145,7 @@ def _refuse(bad: BoolArray, texts: Sequence[str], what: str, advice: str) -> Non
         first = int(np.flatnonzero(bad)[0])
         raise TextError(
             f"{int(np.count_nonzero(bad))} of {bad.size} texts are not {what}; the first (item {first}) is "
-            f"{texts[first]!r}: {advice}",
+            f"{texts[first]!r:.120}: {advice}",
             mask=bad,
         )
 

@@ -1,9 +1,10 @@
-"""Parquet and Arrow IPC files: one way to read them in blocks, and to write them at once or not at all."""
+"""Parquet, Arrow IPC and CSV files: one way to read them in blocks, and to write them at once or not at all."""
 
 from __future__ import annotations
 
 import contextlib
 import hashlib
+import json
 import os
 import secrets
 from collections.abc import Iterator
@@ -12,17 +13,23 @@ from typing import TYPE_CHECKING, Any, Final
 
 from ..errors import DataFileError, InvalidInput
 from .arrow_columns import arrow
+from .csv_tables import CsvSource, CsvTarget
 
 if TYPE_CHECKING:
     import pyarrow as pa
 
-__all__ = ["TableReader", "table_kind", "table_writer"]
+    from ..formats.leap_seconds import LeapSeconds
 
-_KINDS: Final = {".parquet": "parquet", ".arrow": "arrow", ".feather": "arrow"}
+__all__ = ["JOB", "TableReader", "table_kind", "table_writer"]
+
+JOB: Final = "_job.json"
+"""What a folder of parts is part of."""
+
+_KINDS: Final = {".parquet": "parquet", ".arrow": "arrow", ".feather": "arrow", ".csv": "csv"}
 
 
 def table_kind(path: str | os.PathLike[str]) -> str | None:
-    """`parquet` or `arrow` by the ending of a name, None for any other."""
+    """`parquet`, `arrow` or `csv` by the ending of a name, None for any other."""
     return _KINDS.get(Path(path).suffix.lower())
 
 
@@ -35,10 +42,13 @@ class TableReader:
     schema : pyarrow.Schema
     rows : int
         In all files.
+    column : str or None
+        Column of dates: as asked for, or the first of a CSV file.
     """
 
-    def __init__(self, path: str | os.PathLike[str]) -> None:
+    def __init__(self, path: str | os.PathLike[str], column: str | None = None) -> None:
         self.path = Path(path)
+        self._column = column
         if self.path.is_dir():
             self._files = sorted(
                 p for p in self.path.iterdir() if table_kind(p) is not None and not p.name.startswith((".", "_"))
@@ -52,20 +62,23 @@ class TableReader:
         self.rows = 0
         self.schema: Any = None
         for file in self._files:
-            with _opened(file) as source:
+            with _opened(file, column) as source:
                 schema, rows = source.schema, source.rows
+                self.column = getattr(source, "column", column)
             if self.schema is None:
                 self.schema = schema
             elif not schema.equals(self.schema, check_metadata=False):
                 different = _difference(self.schema, schema)
                 raise DataFileError(f"{file} has other columns than {self._files[0]}: {different}", path=file)
             self.rows += rows
+        if self.path.is_dir():
+            _require_whole(self.path, self.rows)
 
     def batches(self, rows: int, first: int = 0) -> Iterator[tuple[int, pa.RecordBatch]]:
         """Blocks of at most `rows` rows from row `first` on, each with the number of its first row (from 0)."""
         at = 0
         for file in self._files:
-            with _opened(file) as source:
+            with _opened(file, self._column) as source:
                 if at + source.rows <= first:
                     at += source.rows
                     continue
@@ -78,6 +91,22 @@ class TableReader:
         """SHA-256 over names, sizes and dates of change of the files: what tells that they are the same as before."""
         facts = [(file.name, (stat := file.stat()).st_size, stat.st_mtime_ns) for file in self._files]
         return hashlib.sha256(repr(facts).encode()).hexdigest()
+
+
+def _require_whole(folder: Path, rows: int) -> None:
+    """Refuse a folder of parts (`table_parts`) that is still being filled."""
+    job = folder / JOB
+    if not job.exists():
+        return
+    try:
+        wanted = json.loads(job.read_text(encoding="utf-8"))["rows"]
+    except (OSError, ValueError, KeyError, TypeError, RecursionError) as error:
+        raise DataFileError(f"{job} is damaged ({error}): make the parts in {folder} anew", path=job) from error
+    if wanted != rows:
+        raise DataFileError(
+            f"{folder} holds {rows} of {wanted} rows: a conversion was broken off; run it again, and it goes on there",
+            path=folder,
+        )
 
 
 def _difference(one: Any, other: Any) -> str:
@@ -135,10 +164,11 @@ class _Ipc:
 
 
 @contextlib.contextmanager
-def _opened(path: Path) -> Iterator[Any]:
+def _opened(path: Path, column: str | None) -> Iterator[Any]:
     pa = arrow()
+    kind = table_kind(path)
     try:
-        source = (_Parquet if table_kind(path) == "parquet" else _Ipc)(path)
+        source = CsvSource(path, column) if kind == "csv" else (_Parquet if kind == "parquet" else _Ipc)(path)
         _ = source.schema.names  # decoded here, where it can be said which file is at fault
     except (OSError, pa.ArrowException) as error:
         raise DataFileError(f"cannot read {path} as a table: {_first_line(error)}", path=path) from error
@@ -156,8 +186,34 @@ def _first_line(error: BaseException) -> str:
     return str(error).partition("\n")[0]
 
 
+class _IpcTarget:
+    """An Arrow file. It holds one dictionary a column and blocks may bring their own: such columns are written plain."""
+
+    def __init__(self, sink: Any, schema: pa.Schema) -> None:
+        pa = arrow()
+        plain = [
+            field.with_type(field.type.value_type) if pa.types.is_dictionary(field.type) else field for field in schema
+        ]
+        self._schema = pa.schema(plain, metadata=schema.metadata)
+        self._writer = pa.ipc.new_file(sink, self._schema)
+
+    def write_batch(self, batch: pa.RecordBatch) -> None:
+        """Write the rows of a batch."""
+        columns = [
+            column if column.type == field.type else column.dictionary_decode()
+            for column, field in zip(batch.columns, self._schema, strict=True)
+        ]
+        self._writer.write_batch(arrow().RecordBatch.from_arrays(columns, schema=self._schema))
+
+    def __enter__(self) -> _IpcTarget:
+        return self
+
+    def __exit__(self, *error: object) -> None:
+        self._writer.close()
+
+
 @contextlib.contextmanager
-def table_writer(path: Path, schema: pa.Schema) -> Iterator[Any]:
+def table_writer(path: Path, schema: pa.Schema, leap_seconds: LeapSeconds | None = None) -> Iterator[Any]:
     """A writer with `write_batch`; the file takes its name when the block ends well, and is removed otherwise."""
     pa = arrow()
     if not path.absolute().parent.is_dir():
@@ -165,7 +221,7 @@ def table_writer(path: Path, schema: pa.Schema) -> Iterator[Any]:
     target = Path(os.path.realpath(path))
     temporary = target.with_name(f".{secrets.token_hex(8)}.part")
     try:
-        with pa.OSFile(str(temporary), "wb") as sink, _writer(sink, schema, table_kind(path) or "parquet") as writer:
+        with pa.OSFile(str(temporary), "wb") as sink, _writer(sink, schema, path, leap_seconds) as writer:
             yield writer
         with temporary.open("rb+") as file:
             os.fsync(file.fileno())
@@ -175,10 +231,13 @@ def table_writer(path: Path, schema: pa.Schema) -> Iterator[Any]:
         raise
 
 
-def _writer(sink: Any, schema: pa.Schema, kind: str) -> Any:
+def _writer(sink: Any, schema: pa.Schema, path: Path, leap_seconds: LeapSeconds | None) -> Any:
     pa = arrow()
+    kind = table_kind(path)
+    if kind == "csv":
+        return CsvTarget(sink, schema, leap_seconds)
     if kind == "arrow":
-        return pa.ipc.new_file(sink, schema)
+        return _IpcTarget(sink, schema)
     from pyarrow import parquet
 
     # Fractions of a second do not repeat: a dictionary of them costs time and saves nothing.

@@ -10,14 +10,13 @@ from typing import TYPE_CHECKING, Any, Final
 from ..errors import DataFileError, InvalidInput
 from ..storage import write_atomically
 from .stream import Mapping, in_order, mapping_digest
-from .table_files import TableReader, table_kind, table_writer
+from .table_files import JOB, TableReader, table_kind, table_writer
 
 if TYPE_CHECKING:
     import pyarrow as pa
 
 __all__ = ["PartFolder"]
 
-_JOB: Final = "_job.json"
 _LOCK: Final = "_job.lock"
 
 
@@ -33,12 +32,19 @@ class PartFolder:
     """
 
     def __init__(
-        self, path: Path, reader: TableReader, mappings: Sequence[Mapping], part_rows: int, columns: list[str]
+        self,
+        path: Path,
+        reader: TableReader,
+        mappings: Sequence[Mapping],
+        part_rows: int,
+        columns: list[str],
+        leap_seconds: str | None,
     ) -> None:
         self._path, self._reader, self._part_rows = path, reader, part_rows
         job = {
             "columns": columns,
             "input": reader.digest,
+            "leap_seconds": leap_seconds,
             "mappings": [mapping_digest(mapping) for mapping in mappings],
             "part_rows": part_rows,
             "rows": reader.rows,
@@ -46,7 +52,7 @@ class PartFolder:
         if path.exists() and not path.is_dir():
             raise InvalidInput(f"{path} is a file; parts need a folder, and a single file a name that ends in .parquet")
         path.mkdir(exist_ok=True)
-        known = path / _JOB
+        known = path / JOB
         if known.exists():
             self._compare(known, job)
         elif any(not _temporary(file) and file.name != _LOCK for file in path.iterdir()):

@@ -11,7 +11,8 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Final, NamedTuple
 
-from ..errors import InvalidInput, TscaleError
+from ..errors import DataFileError, InvalidInput, TscaleError
+from ..formats.leap_seconds import LeapSeconds
 from .added_columns import Added, added_columns
 from .arrow_columns import DateColumn, agreed, arrow, find_dates, pair_of
 from .stream import Mapping, in_order
@@ -19,8 +20,6 @@ from .table_files import TableReader, table_kind, table_writer
 
 if TYPE_CHECKING:
     import pyarrow as pa
-
-    from ..formats.leap_seconds import LeapSeconds
 
 __all__ = ["Converted", "convert_table"]
 
@@ -61,15 +60,15 @@ def convert_table(
     mapping : Chain or CompiledChain, or several from one start
         Take the dates of `column`.
     source : path
-        A file that ends in .parquet, .arrow or .feather (Arrow IPC), or a folder of such files, taken in the order of
-        their names.
+        A file that ends in .parquet, .arrow or .feather (Arrow IPC) or .csv, or a folder of such files, taken in the
+        order of their names.
     target : path
-        A file of one of these endings, which appears when all is done; or a folder (an ending-less name), in which
-        parts of `rows` x 16 rows appear as they are done. Called again with the same arguments after a break, the
-        parts that are there are kept.
+        A file of one of these endings, which appears when all is done (in .csv dates are ISO 8601 text, to 1 ps); or a
+        folder (an ending-less name), in which parts of `rows` x 16 rows appear as they are done. Called again with the
+        same arguments after a break, the parts that are there are kept.
     column : str, optional
         Column of dates: two columns of counts (see `arrow_columns`), timestamps, or ISO 8601 texts. May be left out if
-        there is one of the first two kinds.
+        there is one of the first two kinds, and for the first column of a CSV file.
     result : str or sequence of str, optional
         Names of the new columns of dates, by default the end nodes of the mappings.
     ledger, sigma, rate : bool
@@ -99,8 +98,8 @@ def convert_table(
         raise InvalidInput(f"rows must be a whole number from 1, got {rows!r}")
     mappings = list(mapping) if isinstance(mapping, Sequence) else [mapping]
     names = None if result is None else [result] if isinstance(result, str) else list(result)
-    reader = TableReader(source)
-    given = find_dates(reader.schema, column)
+    reader = TableReader(source, column)
+    given = find_dates(reader.schema, reader.column)
     added = added_columns(mappings, names, ledger=ledger, sigma=sigma, rate=rate)
     agreed(given, mappings[0].start)
     schema = reader.schema
@@ -113,16 +112,23 @@ def convert_table(
     columns = tuple(field.name for field in added.fields)
     if table_kind(target) is not None:
         done = 0
-        with table_writer(target, schema) as writer:
+        with table_writer(target, schema, leap_seconds) as writer:
             for batch in in_order(work, reader.batches(rows), threads):
                 writer.write_batch(batch)
                 done += batch.num_rows
                 if progress is not None:
                     progress(done, reader.rows)
         return Converted(done, 0, columns)
+    if target.suffix and not target.is_dir():
+        raise InvalidInput(
+            f"{target} is no table by its name: a file ends in .parquet, .arrow, .feather or .csv; a folder, to be "
+            "filled part by part, has no ending"
+        )
     from .table_parts import PartFolder
 
-    folder = PartFolder(target, reader, mappings, rows * 16, [given.name, *columns])
+    # What counts are does not depend on leap seconds; what labels are does.
+    labels = None if given.kind == "counts" else (leap_seconds or LeapSeconds.default()).sha256
+    folder = PartFolder(target, reader, mappings, rows * 16, [given.name, *columns], labels)
     return Converted(*folder.fill(schema, work, rows, threads, progress), columns)
 
 
@@ -134,6 +140,10 @@ def _worker(
 
     def work(item: tuple[int, pa.RecordBatch]) -> pa.RecordBatch:
         first, batch = item
+        try:
+            batch.validate(full=True)
+        except module.ArrowException as error:
+            raise DataFileError(f"the table is damaged: {str(error).partition(chr(10))[0]}; make it again") from error
         try:
             new = added.make(pair_of(batch, column, added.start.scale.name, leap_seconds))
         except TscaleError as error:

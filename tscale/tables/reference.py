@@ -13,6 +13,7 @@ from ..errors import InvalidInput, MissingPiece
 from ..formats.leap_seconds import LeapSeconds
 from .earth_orientation import EarthOrientation
 from .facts import TableFacts, facts_of
+from .imported import resolved
 from .tt_bipm import TTBIPM
 
 if TYPE_CHECKING:
@@ -119,6 +120,8 @@ class ReferenceData:
     ) -> ReferenceData:
         """Make a bundle from files, or tables at hand; those left out are the default ones.
 
+        `imported:NAME` in place of a path is a file that was imported into the cache (`tscale data --import`).
+
         Raises
         ------
         DataFileError
@@ -127,12 +130,14 @@ class ReferenceData:
             For what is neither a table nor a path, and for a table that is not known by name.
         """
         _check_names(unknown)
+        leap_seconds, earth_orientation = resolved(leap_seconds), resolved(earth_orientation)
+        ephemeris, time_ephemeris = resolved(ephemeris), resolved(time_ephemeris)
         leap = LeapSeconds.load(leap_seconds) if isinstance(leap_seconds, (str, Path)) else leap_seconds
         if isinstance(earth_orientation, (str, Path)):
             earth_orientation = EarthOrientation.load(earth_orientation, leap_seconds=leap)
         tables = [
             TTBIPM.load(table, leap_seconds=leap) if isinstance(table, (str, Path)) else table
-            for table in _tables(tt_bipm)
+            for table in map(resolved, _tables(tt_bipm))
         ]
         if isinstance(ephemeris, (str, Path)):
             from ..ephemeris.kernel import Ephemeris

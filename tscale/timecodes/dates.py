@@ -25,6 +25,7 @@ __all__ = ["from_datetime", "from_datetime64", "to_datetime", "to_datetime64"]
 
 InLeap: TypeAlias = Literal["raise", "clamp"]
 _MJD_1970: Final = 40587
+_MOST: Final = 2**62
 _DIGITS: Final = {"s": 0, "ms": 3, "us": 6, "ns": 9, "ps": 12, "fs": 15, "as": 18}
 _LONGER: Final = {"W": 7 * DAY_S, "D": DAY_S, "h": 3600, "m": 60}
 
@@ -49,15 +50,16 @@ def from_datetime64(
     bad = np.isnat(array)
     if np.any(bad):
         raise InvalidInput(f"{int(np.count_nonzero(bad))} of {bad.size} values are NaT; drop them first", mask=bad)
-    ticks = array.view(np.int64) if array.flags.c_contiguous else np.ascontiguousarray(array).view(np.int64)
-    ticks = ticks.reshape(array.shape)
-    if unit in _LONGER:
-        whole, numerator, digits = ticks * (_LONGER[unit] * step), np.zeros_like(ticks), 0
-    else:
-        digits = _DIGITS[unit]
-        if step != 1:
-            return from_datetime64(array.astype(f"datetime64[{unit}]"), scale, place, leap_seconds=leap_seconds)
-        whole, numerator = np.divmod(ticks, 10**digits)
+    ticks = np.ascontiguousarray(array.astype(array.dtype.newbyteorder("="))).view(np.int64).reshape(array.shape)
+    digits = _DIGITS.get(unit, 0)
+    factor = step * _LONGER.get(unit, 1)
+    far = np.asarray((ticks > _MOST // factor) | (ticks < -_MOST // factor))
+    if np.any(far):
+        raise InvalidInput(
+            f"{int(np.count_nonzero(far))} of {far.size} dates lie beyond what an int64 of seconds holds (see .mask)",
+            mask=far,
+        )
+    whole, numerator = np.divmod(ticks * factor, 10**digits)
     day, second = np.divmod(np.asarray(whole), DAY_S)
     return _instants(day + _MJD_1970, second, from_digits(np.asarray(numerator), digits), scale, place, leap_seconds)
 
@@ -121,10 +123,17 @@ def from_datetime(
     for i, value in enumerate(flat):
         if not isinstance(value, stdlib.datetime):
             raise InvalidInput(f"item {i} is {type(value).__name__}, not a datetime.datetime")
+        if value != value:
+            raise InvalidInput(f"item {i} is {value!r}, no date; drop it first")
+        if getattr(value, "nanosecond", 0):
+            raise InvalidInput(f"item {i}, {value}, has nanoseconds, which a datetime has not: use from_datetime64")
         if value.tzinfo is not None and value.utcoffset() is not None:
             if scale != "UTC":
                 raise InvalidInput(f"item {i} has a time zone, which says UTC; it cannot be a label of {scale}")
-            value = value.astimezone(stdlib.UTC)
+            try:
+                value = value.astimezone(stdlib.UTC)
+            except OverflowError as error:
+                raise InvalidInput(f"item {i}, {value}, is in UTC outside the years 1 to 9999") from error
         rows[:, i] = (
             value.toordinal() - 678576,  # the ordinal of MJD 0
             (value.hour * 60 + value.minute) * 60 + value.second,

@@ -72,6 +72,8 @@ def from_gnss_week(
     ------
     InvalidInput
         Numbers out of range, with the mask; a modulus without a pivot, or a pivot without a modulus.
+    OutOfSpan
+        A pivot so early that the week meant would be before week 0, with the mask.
     """
     kind = _system(scale)
     weeks = integers(week, "a week", "give seconds of week apart")
@@ -98,6 +100,13 @@ def from_gnss_week(
         middle = fixed_count(pivot.ravel()[0].pair, Scale.parse(pivot.scale), kind)[0] - _origin(kind)
         turn = modulo * _WEEK_S
         elapsed = elapsed + turn * ((middle - elapsed + turn // 2) // turn)
+        early = np.asarray(elapsed < 0)
+        if np.any(early):
+            raise OutOfSpan(
+                f"{int(np.count_nonzero(early))} of {early.size} weeks nearest to the pivot are before week 0 of "
+                f"{kind}, which starts on MJD {_ORIGIN_MJD[kind.name]}; is the pivot right?",
+                mask=early,
+            )
     return Instants._of(normalise(elapsed + _origin(kind), part), kind)
 
 
