@@ -157,7 +157,7 @@ def test_nul_characters_are_refused(layout: str) -> None:
 
 
 def test_a_spreadsheet_keeps_what_is_wrapped() -> None:
-    t = Instants.from_iso(["2016-12-31T23:59:60.123456789012", "2025-03-03T12:00:00"], "UTC")
+    t = tscale.Instants.from_iso(["2016-12-31T23:59:60.123456789012", "2025-03-03T12:00:00"], "UTC")
     texts = write_dates(t, "spreadsheet")
     assert texts[0] == '="2016-12-31T23:59:60.123456789012"'
     assert np.all(read_dates(texts, "spreadsheet", "UTC") == t)

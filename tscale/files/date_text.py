@@ -6,8 +6,8 @@
     Modified Julian Date and Julian Date as a decimal number with up to 18 decimals. A day with a leap second is
     86401 s long (IAU SOFA's quasi-JD). No float64 is on the way: 17 decimals of a day resolve 0.9 ps.
 `spreadsheet`
-    ISO 8601 as `="..."`, which spreadsheet programs keep as text: of a plain date they make a number of their own, good to
-    a millisecond. Read with or without this wrapping.
+    ISO 8601 as `="..."`, which spreadsheet programs keep as text: of a plain date they make a number of their own, good
+    to a millisecond. Read with or without this wrapping.
 `seconds`
     Seconds since 2000-01-01T12:00:00 of the scale, as a decimal number with up to 18 decimals.
 """

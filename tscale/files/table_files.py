@@ -187,7 +187,7 @@ def _first_line(error: BaseException) -> str:
 
 
 class _IpcTarget:
-    """An Arrow file. It holds one dictionary a column and blocks may bring their own: such columns are written plain."""
+    """An Arrow file. It holds one dictionary a column; blocks may bring their own, so these are written plain."""
 
     def __init__(self, sink: Any, schema: pa.Schema) -> None:
         pa = arrow()
