@@ -161,11 +161,13 @@ def test_modules_stay_short(name: str) -> None:
     assert len(modules()[name].read_text(encoding="utf-8").splitlines()) < 350
 
 
-def test_each_module_imports_alone() -> None:
-    # One interpreter for all: before each import every module of ours is forgotten again.
+def test_each_room_imports_alone() -> None:
+    # One interpreter for all: before each import every module of ours is forgotten again. Without cycles, what holds for
+    # a room holds for the modules that it brings in.
+    rooms = sorted(name for name in modules() if "." not in name)
     script = (
         "import importlib, sys\n"
-        f"for name in {sorted(modules())!r}:\n"
+        f"for name in {rooms!r}:\n"
         "    for loaded in [m for m in sys.modules if m == 'tscale' or m.startswith('tscale.')]:\n"
         "        del sys.modules[loaded]\n"
         "    importlib.import_module('tscale.' + name)\n"
