@@ -319,6 +319,10 @@ def test_a_clock_on_the_moon(found: Any, capsys: pytest.CaptureFixture[str]) -> 
     own = found("moon.toml", *MARCH, "--against", "TCL")
     assert own["rate"] == pytest.approx(-2821713.3 / C2, rel=0, abs=3e-16)
     assert "whole_periods" not in own["clocks"][0]
+    # Two clocks by their dates in TCL: the mean of the rates shown, and as by TT but for what the ends of the span cut.
+    both, by_tt = (found("moon.toml", "ridge.toml", *MARCH, "--against", against) for against in ("TCL", "TT"))
+    assert both["rate"] == pytest.approx(by_tt["rate"], rel=0, abs=1e-12)
+    assert both["lowest_rate"] < both["rate"] < both["highest_rate"]
 
 
 def test_a_clock_on_mars(found: Any) -> None:
@@ -332,6 +336,12 @@ def test_a_clock_on_mars(found: Any) -> None:
     surface = {row["quantity"]: row for row in one["budget"]}["reference surface above the ellipsoid"]
     # 2 km at 3.7 m/s2, as a rectangle.
     assert surface["rate_sigma"] == pytest.approx(2000.0 * 3.71 / C2 / np.sqrt(3.0), rel=0.01, abs=0)
+    # The rates of the dates are the growth of what is gained, over 1 h to the curvature of 6e-11 a day.
+    found("mars.toml", "geoid.toml", *MARCH, "--step", "3600", "--output", "rows.csv")
+    with open("rows.csv", encoding="utf-8") as rows:
+        columns = [(float(row["rate"]), float(row["gained (s)"])) for row in csv.DictReader(rows)]
+    rates, gained = np.array(columns).T
+    assert np.abs((gained[2:] - gained[:-2]) / 7200.0 - rates[1:-1]).max() < 3e-12
 
 
 # ---- other paths ---------------------------------------------------------------------------------

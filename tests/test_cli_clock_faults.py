@@ -40,7 +40,7 @@ BOTH = ("ridge.toml", "bay.toml", *MARCH)
         (("ridge.toml", *MARCH, "--step", "0.001"), "take a longer --step"),
         (("ridge.toml", *MARCH, "--step", "1e9"), "take a shorter --step"),
         (("ridge.toml", *MARCH, "--against", "UT1"), "got --against UT1"),
-        ((*BOTH, "--against", "TCL"), "got --against TCL"),
+        ((*BOTH, "--against", "own"), "compare them against TCG near the Earth"),
         (("ridge.toml", *MARCH, "--scale", "UT9"), "UT9"),
         (("ridge.toml", *MARCH, "--scale", "CLOCK(maser)"), "convert them with `tscale convert` first"),
         (("hut.toml", *MARCH), "write geopotential_number_m2_s2 or height_above_geoid_m into its file, or give a grav"),

@@ -211,3 +211,8 @@ def test_bad_toml_names_the_line(tmp_path):
 def test_missing_site_file(tmp_path):
     with pytest.raises(DataFileError, match="cannot read"):
         Site.load(tmp_path / "none.toml")
+
+
+def test_a_height_above_the_geoid_that_no_site_has():
+    with pytest.raises(InvalidInput, match=r"height_above_geoid_m is 60000.0; .*-12000 to 50000 m"):
+        Site.from_geodetic("a", 10.0, 50.0, 100.0, height_above_geoid_m=6e4)

@@ -169,6 +169,15 @@ def test_damaged_rows(tmp_path: Path, rows: tuple[str, ...], line: int, words: s
     assert f"line {line}" in str(caught.value)
 
 
+def test_heights_in_feet_are_asked_about(tmp_path: Path) -> None:
+    rows = "2024-03-01T00:00:00,0,50,{0}", "2024-03-01T02:00:00,10,52,{0}"
+    with pytest.raises(tscale.errors.DataFileError, match=r"line 2: height_m is '35000'.*feet\? \(1 ft = 0.3048 m\)"):
+        tscale.Trajectory.from_flight(written(tmp_path, *(row.format(35000) for row in rows)))
+    with pytest.warns(UserWarning, match=r"2 of 2 way points lie above 16 km.*are these feet\?"):
+        tscale.Trajectory.from_flight(written(tmp_path, *(row.format(18000) for row in rows)))
+    tscale.Trajectory.from_flight(written(tmp_path, *(row.format(15500) for row in rows)))  # no warning, no error
+
+
 def test_damaged_files(tmp_path: Path) -> None:
     with pytest.raises(DataFileError, match="cannot read the flight"):
         tscale.Trajectory.from_flight(tmp_path / "none.csv")

@@ -114,16 +114,29 @@ def test_rate_is_that_of_the_chain(reference: tscale.ReferenceData, against: str
 def test_tide_on_the_moon(reference: tscale.ReferenceData) -> None:
     # GM_E R^2/r^3 of the Earth on the near side at the mean distance of 385 000 km: 21.1 m2/s2, and half of
     # that, opposite, a quarter of a turn away. Distances differ by 14 %, their cubes by half of the mean.
-    near = planetary.tidal_potential_m2_s2(
+    near = planetary.surface_tide_m2_s2(
         tscale.SurfaceSite("near", "moon", 0.0, 0.0), daily("2020-01-01", 354), reference
     )
-    side = planetary.tidal_potential_m2_s2(
+    side = planetary.surface_tide_m2_s2(
         tscale.SurfaceSite("side", "moon", 90.0, 0.0), daily("2020-01-01", 354), reference
     )
     expected = 3.986e14 * 1737.4e3**2 / 3.85e8**3
     assert near.mean() == pytest.approx(expected, rel=0.03, abs=1e-9)
     assert side.mean() == pytest.approx(-0.5 * expected, rel=0.05, abs=1e-9)
     assert np.ptp(near) < 0.5 * expected
+    # By Legendre polynomials of the Earth: degree 3 is R/r of degree 2, 0.1 m2/s2 (1e-18) at the near side, degree 4
+    # (R/r)^2 of it, 5e-4; the Sun's 0.06 m2/s2 and the planets' 1e-5 besides.
+    site, tdb = tscale.SurfaceSite("near", "moon", 0.0, 0.0), daily("2020-01-01", 354)
+    r, _ = site.offset(tdb)
+    size = np.linalg.norm(r, axis=-1)
+    by_hand = np.zeros(354)
+    for body in ("earth", "sun"):
+        d = reference.ephemeris.position(body, tdb, "moon")
+        away = np.linalg.norm(d, axis=-1)
+        s, ratio = np.sum(r * d, axis=-1) / (size * away), size / away
+        degrees = ratio**2 * (1.5 * s**2 - 0.5) + ratio**3 * (2.5 * s**3 - 1.5 * s)
+        by_hand += reference.ephemeris.gm_m3_s2(body) / away * degrees
+    assert np.abs(near - by_hand).max() < 1e-3
 
 
 def test_lunar_surface_against_the_geoid(reference: tscale.ReferenceData) -> None:

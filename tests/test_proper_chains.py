@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pickle
+from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -11,6 +12,7 @@ from hypothesis import strategies as st
 
 import tscale
 from tscale import exact
+from tscale.earth.gravity import HarmonicField
 
 from .strategies import fractions
 
@@ -55,6 +57,40 @@ def test_closure_over_a_year(kind: str, end: str, whole: list[int], fraction: fl
     back = chain.inverse(chain(t))
     assert float(np.max(np.abs(exact.seconds(exact.subtract(back.pair, t.pair))))) <= 0.4e-15
     assert back.place == "TOPOCENTER"
+
+
+@given(
+    offset=st.floats(-1e-3, 1e-3) | st.sampled_from([-1e-3, 1e-3, -4.4647e-10, 1e-6]),
+    whole=st.lists(st.integers(-YEAR_S, YEAR_S), min_size=5, max_size=5),
+    fraction=fractions,
+)
+@settings(max_examples=25, deadline=None)
+def test_a_set_rate_is_exact(offset: float, whole: list[int], fraction: float) -> None:
+    # Of a clock that is set fast against one beside it that is not: (1 + offset) of the elapsed time as a fraction of
+    # integers, and back, both to 1 fs.
+    plain, fast = clock("ground"), tscale.ProperClock("y", SITE, EPOCH, rate_offset=offset)
+    chain = tscale.chain("PROPER(x)", "PROPER(y)", site=SITE, clocks=[plain, fast])
+    start = CHAINS["ground", "UTC"].inverse(EPOCH)
+    t = tscale.Instants.from_seconds(int(start.whole) + np.array(whole), fraction, scale="PROPER(x)")
+    out = chain(t)
+    assert float(np.max(np.abs(exact.seconds(exact.subtract(chain.inverse(out).pair, t.pair))))) <= 1e-15
+    origin = Fraction(int(start.whole)) + Fraction(float(start.fraction))
+    for i in range(5):
+        before, after = (Fraction(int(x.whole[i])) + Fraction(float(x.fraction[i])) - origin for x in (t, out))
+        assert abs(float(after - before * (1 + Fraction(offset)))) <= 1e-15
+    apart = exact.subtract(chain.ledger(t).total_exact, exact.subtract(out.pair, t.pair))
+    assert np.max(np.abs(exact.seconds(apart))) <= 1e-15
+
+
+def test_a_set_rate_has_its_own_line() -> None:
+    # A year of 1e-3: 31 557.6 s of the clock that the ledger counts to 0.1 fs, none of it under gravity.
+    made = clock("ground", rate_offset=1e-3)
+    chain = tscale.chain("PROPER(x)", "TCG", site=SITE, clocks=[made])
+    t = chain.inverse(tscale.chain("UTC", "TCG", site=SITE)(EPOCH.shifted(float(YEAR_S))))
+    c2 = 299792458.0**2
+    found, ledger = chain.ledger(t), CHAINS["ground", "TCG"].ledger(CHAINS["ground", "TCG"].inverse(chain(t)))
+    assert float(found["set rate offset"]) == pytest.approx(-1e-3 * YEAR_S * (1 + 5400.0 / c2), abs=2e-8)
+    assert float(found["gravitational"]) == pytest.approx(float(ledger["gravitational"]), abs=2e-15)
 
 
 @pytest.mark.parametrize("kind", OBSERVERS)
@@ -164,6 +200,33 @@ def test_chains_travel_between_processes() -> None:
         chain = CHAINS[kind, "TCB"]
         again = pickle.loads(pickle.dumps(chain))
         assert (again(t) == chain(t)).all()
+
+
+def test_a_clock_about_the_moon() -> None:
+    # TT and TCG of its own events, as on the Moon.
+    epoch = tscale.Instants.from_iso("2023-01-01", scale="TDB")
+    orbiter = tscale.Trajectory.from_kepler(epoch, 1.8374e6, 0.0, 90.0, 0.0, 0.0, 0.0, center="moon", name="orbiter")
+    made = tscale.ProperClock("x", orbiter, epoch)
+    t = tscale.Instants.from_iso("2023-01-01", scale="PROPER(x)").shifted(np.linspace(-1e6, 1e6, 50))
+    for end in ("TT", "TCB"):
+        chain = tscale.chain("PROPER(x)", end, site=orbiter, clocks=[made])
+        out = chain(t)
+        assert np.max(np.abs(exact.seconds(exact.subtract(chain.inverse(out).pair, t.pair)))) <= 1e-15
+        rate = (1 + tscale.proper_rate(orbiter, out, end)) * (1 + chain.rate(t)) - 1
+        np.testing.assert_allclose(rate, 0.0, rtol=0, atol=4e-16)  # 1 + 1e-8, rounded
+    assert str(chain).startswith("PROPER(x)@TOPOCENTER -> TCG@TOPOCENTER")
+
+
+def test_a_field_that_does_not_say_its_tide_system() -> None:
+    c = np.diag([1.0, 0.0, 0.0])
+    stated = [HarmonicField("f", 3.986004415e14, 6378136.3, c, 0.0 * c, *more) for more in ((), ("tide_free",))]
+    bare = tscale.Site.from_geodetic("bare", 11.3, 48.0, 590.0)
+    t = tscale.Instants.from_iso("2023-04-01T00:00:00", scale="PROPER(x)")
+    notes = [
+        tscale.chain("PROPER(x)", "TT", clocks=[tscale.ProperClock("x", bare, EPOCH, gravity=field)]).notes(t)
+        for field in stated
+    ]
+    assert ["tide system of the gravity field: not stated" in " ".join(found) for found in notes] == [True, False]
 
 
 def test_a_clock_that_tcg_does_not_reach() -> None:

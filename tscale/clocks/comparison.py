@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Final
+from typing import Final, Literal, TypeAlias
 
 import numpy as np
 
@@ -12,12 +12,15 @@ from .. import exact
 from ..counts import tcb_from_tdb, tcg_from_tt
 from ..earth.gravity.field import GravityField
 from ..earth.observer import Observer
-from ..errors import InvalidInput
+from ..ephemeris.body_time import BodyTimeEphemeris
+from ..errors import InvalidInput, ScaleMismatch
 from ..exact import FloatArray, Pair
 from ..instants import Instants
+from ..surface import SurfaceSite
 from ..tables.reference import ReferenceData
 from ..transforms.barycentric import tdb_from_tt, tt_from_tdb
-from ..transforms.proper_integral import ProperIntegral
+from ..transforms.body_events import body_time_from_tdb, tdb_from_body_time
+from ..transforms.proper_integral import SET_RATE, ProperIntegral
 from ..transforms.proper_scales import checked_against
 from ..transforms.proper_tides import Tides
 from .arguments import Ticking, as_ticking, checked_dates, checked_tables
@@ -28,7 +31,12 @@ __all__ = ["ClockComparison", "compare_clocks"]
 
 _DAY_S: Final = 86400.0
 DATES: Final = "difference of dates"
-"""Name of the term of two clocks whose dates are alike on TDB or TCB, and therefore not on TT."""
+"""Name of the term of two clocks whose dates are alike on another time than TT, and therefore not on TT."""
+
+_MOON: Final = 301
+_Alike: TypeAlias = Literal["TT", "TDB", "TT of the geocentre"] | int
+"""On what the dates of two clocks are alike: TT (TCG ...) of their own events or, of both, of the geocentre at the same
+TDB; TDB (TCB); TDB, counted as TT of the geocentre, where TT reaches one of the two alone; the time of a body."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -102,13 +110,14 @@ class _Pair:
     a: Ticking
     b: Ticking
     reference: ReferenceData
-    barycentric: bool
+    against: str
+    alike: _Alike
     integrals: tuple[ProperIntegral, ProperIntegral]
 
     @classmethod
     def of(cls, a: Ticking, b: Ticking, reference: ReferenceData, against: str, start: Instants) -> _Pair:
-        barycentric = against in ("TDB", "TCB")
-        counts = _both(a, b, reference, barycentric, start)
+        alike = _alike(a, b, against)
+        counts = _both(a, b, reference, alike, start)
         integrals = [
             ProperIntegral(
                 clock.observer,
@@ -120,28 +129,83 @@ class _Pair:
             )
             for clock, tt in zip((a, b), counts, strict=True)
         ]
-        return cls(a, b, reference, barycentric, (integrals[0], integrals[1]))
+        return cls(a, b, reference, against, alike, (integrals[0], integrals[1]))
 
     def counts(self, t: Instants) -> tuple[Pair, Pair]:
         """TT counts at the two clocks."""
-        return _both(self.a, self.b, self.reference, self.barycentric, t)
+        return _both(self.a, self.b, self.reference, self.alike, t)
 
     def gained_s(self, t: Instants) -> FloatArray:
         one, two = self.counts(t)
         first, second = self.integrals
-        gained = first.gained_s(one) - second.gained_s(two)
-        if not self.barycentric:
-            return np.asarray(gained)
-        apart = exact.subtract(exact.subtract(one, first.anchor), exact.subtract(two, second.anchor))
-        return np.asarray(gained + exact.seconds(apart))
+        gained = first.free_s(one) - second.free_s(two)
+        if self.alike != "TT":
+            apart = exact.subtract(exact.subtract(one, first.anchor), exact.subtract(two, second.anchor))
+            gained = gained + exact.seconds(apart)
+        return np.asarray(gained + self.set_s((one, two)))
+
+    def set_s(self, counts: tuple[Pair, Pair]) -> FloatArray:
+        """What set rates add to `gained_s`; equal ones of long spans would cancel badly as floats."""
+        if self.a.rate_offset == self.b.rate_offset == 0.0:
+            return np.zeros(np.shape(counts[0][0]))
+        return exact.seconds(exact.subtract(*(i.set_part(tt) for i, tt in zip(self.integrals, counts, strict=True))))
+
+    def duration_s(self, end: Pair) -> float:
+        """Seconds of the coordinate time at a from the start to a TT count."""
+        return float(exact.seconds(exact.subtract(self._on(end), self._on(self.integrals[0].anchor))))
+
+    def _on(self, tt: Pair) -> Pair:
+        if self.alike != "TT":
+            tdb = tdb_from_tt(tt, self.reference, self.a.own_event)
+            if isinstance(self.alike, int):
+                return body_time_from_tdb(tdb, self.alike, self.reference, self.a.observer)
+            if self.alike == "TDB":
+                return tcb_from_tdb(tdb) if self.against == "TCB" else tdb
+            tt = tt_from_tdb(tdb, self.reference)
+        return tcg_from_tt(tt) if self.against == "TCG" else tt
 
 
-def _both(a: Ticking, b: Ticking, reference: ReferenceData, barycentric: bool, t: Instants) -> tuple[Pair, Pair]:
+def _alike(a: Ticking, b: Ticking, against: str) -> _Alike:
+    """See `_Alike`."""
+    if against in ("TDB", "TCB"):
+        return "TDB"
+    if against == "TCL":
+        return _MOON
+    if against == "own":
+        bodies = _body_of(a.observer), _body_of(b.observer)
+        if bodies[0] is None or bodies[0] != bodies[1]:
+            raise ScaleMismatch(
+                f"against='own' is the time of the one other body that both clocks are on or about, which {a.name} and "
+                f"{b.name} are not: compare them against TCG near the Earth, TCL near the Moon, or TDB anywhere"
+            )
+        return bodies[0]
+    # One TT count must not stand for the event of one clock here and for the geocentre's at the same TDB there.
+    return "TT" if (a.own_event is None) == (b.own_event is None) else "TT of the geocentre"
+
+
+def _body_of(observer: Observer) -> int | None:
+    """Number of the body other than the Earth that a clock is on or about."""
+    if isinstance(observer, SurfaceSite):
+        return BodyTimeEphemeris.number(observer.body)
+    centers = {piece.center for piece in getattr(observer, "pieces", ())} or {0}
+    if getattr(observer, "geocentric", True) or len(centers) > 1 or centers & {0, 399}:
+        return None
+    return BodyTimeEphemeris.number(centers.pop())
+
+
+def _both(a: Ticking, b: Ticking, reference: ReferenceData, alike: _Alike, t: Instants) -> tuple[Pair, Pair]:
+    """TT counts at the two clocks, each of the TT that goes with its events."""
     here, there = a.own_event, b.own_event
-    one = tt_at(t, here, reference)
-    if not barycentric:
+    if alike == "TT":
+        one = tt_at(t, here, reference)
         return one, one
-    return one, tt_from_tdb(tdb_from_tt(one, reference, here), reference, there)
+    dated = None if alike == "TT of the geocentre" and t.scale != "TCL" else here
+    one = tt_at(t, dated, reference)
+    tdb = first = tdb_from_tt(one, reference, dated)
+    if isinstance(alike, int):
+        own = body_time_from_tdb(tdb, alike, reference, a.observer)
+        tdb = tdb_from_body_time(own, alike, reference, b.observer)
+    return (one if dated is here else tt_from_tdb(first, reference, here)), tt_from_tdb(tdb, reference, there)
 
 
 def compare_clocks(
@@ -160,7 +224,11 @@ def compare_clocks(
     The proper time that elapses at each is taken between the same two dates of a coordinate time, TT if not said
     otherwise: clocks that are apart have no other "same time". With TDB or TCB the dates of the two differ by up to
     some us of TT, which changes with their places; for two clocks on the ground that is up to 4 us, and averages out
-    over days.
+    over days. Two clocks on one other body go by that body's own time: against it a difference of rates is that of
+    their potentials, without what dates on TT add as the body turns.
+
+    Where TT reaches one of two clocks alone (one of them is over 1e10 m from the Earth), TT and the scales tied to it
+    mean that of the geocentre at the same TDB, for both.
 
     Parameters
     ----------
@@ -169,7 +237,8 @@ def compare_clocks(
     start, stop : Instants, one each
         On any coordinate time; stop after start. On a scale that depends on the place (TDB, TCB) they are events at a.
     against : str
-        TT (or TAI, UTC and the satellite-navigation times, which run alike), TCG, TCB or TDB.
+        TT (or TAI, UTC and the satellite-navigation times, which run alike), TCG, TCB, TDB; TCL near the Moon; `own`:
+        the time of the one other body that both clocks are on or about.
     gravity, tides
         For both clocks; see `transforms.proper_time.rate_terms`.
     reference : ReferenceData, optional
@@ -182,18 +251,20 @@ def compare_clocks(
     MissingPiece, OutOfSpan, ScaleMismatch, NotConverged
         As `rate_terms` and `ProperIntegral`.
     """
-    against, tables = checked_against(against), checked_tables(reference)
+    against, tables = checked_against(against, own=True), checked_tables(reference)
     clocks = as_ticking(a, gravity, tides, "a"), as_ticking(b, gravity, tides, "b")
     start, stop = _one(start, "start"), _one(stop, "stop")
     pair = _Pair.of(*clocks, tables, against, start)
     ends = pair.counts(stop)
-    duration_s = _duration_s(against, pair, ends)
+    duration_s = pair.duration_s(ends[0])
     if not duration_s > 0.0:
         raise InvalidInput(f"stop comes {-duration_s:.6g} s before start (or with it); give them in order")
     accumulated_s = float(pair.gained_s(stop))
     parts = [integral.terms_s(end) for integral, end in zip(pair.integrals, ends, strict=True)]
     ledger = {name: float(parts[0].get(name, 0.0) - parts[1].get(name, 0.0)) for name in parts[0] | parts[1]}
-    if pair.barycentric:
+    if SET_RATE in ledger:
+        ledger[SET_RATE] = float(pair.set_s(ends))
+    if pair.alike != "TT":
         elapsed = [
             exact.subtract(tcg_from_tt(end), tcg_from_tt(i.anchor)) for i, end in zip(pair.integrals, ends, strict=True)
         ]
@@ -206,15 +277,3 @@ def _one(t: Instants, what: str) -> Instants:
     if t.size != 1:
         raise InvalidInput(f"{what} is one instant, got {t.size}; ask the result for a series with .series_s(t)")
     return Instants._of((t.whole.reshape(()), t.fraction.reshape(())), t.scale, t.place)
-
-
-def _duration_s(against: str, pair: _Pair, ends: tuple[Pair, Pair]) -> float:
-    """Seconds of the coordinate time from start to stop."""
-    anchor, end = pair.integrals[0].anchor, ends[0]
-    if pair.barycentric:
-        anchor, end = (tdb_from_tt(tt, pair.reference, pair.a.own_event) for tt in (anchor, end))
-        if against == "TCB":
-            anchor, end = tcb_from_tdb(anchor), tcb_from_tdb(end)
-    elif against == "TCG":
-        anchor, end = tcg_from_tt(anchor), tcg_from_tt(end)
-    return float(exact.seconds(exact.subtract(end, anchor)))

@@ -42,7 +42,7 @@ def tt_at(t: Instants, observer: Observer | None, reference: ReferenceData) -> P
         t = tt_bipm_to_tai(t, table)
     elif kind.count_minus_tai is None:
         raise InvalidInput(
-            f"dates on a coordinate time are needed (UTC, TAI, TT, TT(BIPM), UT1, GPS, GST, BDT, GLONASS, TCG, TCB or "
-            f"TDB), got {t.scale}; convert them with tscale.chain first"
+            f"dates on a coordinate time are needed (UTC, TAI, TT, TT(BIPM), UT1, GPS, GST, BDT, GLONASS, TCG, TCB, "
+            f"TDB or TCL), got {t.scale}; convert them with tscale.chain first"
         )
     return fixed_count(t.pair, Scale.parse(t.scale), Scale.parse("TT"))

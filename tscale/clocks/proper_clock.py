@@ -43,8 +43,8 @@ class ProperClock:
     observer : Site, Trajectory or SurfaceSite
         Where the clock is. The chain's `site=` is the same one, or left out.
     coincidence : Instants, one
-        When it was set, on a coordinate time: UTC, TAI, TT, TT(BIPM), UT1, a satellite-navigation time, TCG, TCB or TDB
-        (an event at the clock).
+        When it was set, on a coordinate time: UTC, TAI, TT, TT(BIPM), UT1, a satellite-navigation time, TCG, TCB, TDB
+        or, near the Moon, TCL (an event at the clock).
     reading : Instants, one, optional
         What it showed then, on PROPER(name); by default what TT showed, or TCG where the coincidence is given
         in it; of a clock that TT does not reach, what TDB showed.

@@ -62,7 +62,7 @@ def proper_ledger(
     ticking, tables, against = (
         as_ticking(clock, gravity, tides, "a clock"),
         checked_tables(reference),
-        checked_against(against, lunar=True),
+        checked_against(against),
     )
     model = model_of(ticking.observer, ticking.gravity, ticking.tides)
     own = ticking.observer if model.dates_own_event else None
@@ -98,7 +98,7 @@ def proper_rate(
     ticking, tables, against = (
         as_ticking(clock, gravity, tides, "a clock"),
         checked_tables(reference),
-        checked_against(against, lunar=True),
+        checked_against(against),
     )
     model = model_of(ticking.observer, ticking.gravity, ticking.tides)
     own = ticking.observer if model.dates_own_event else None

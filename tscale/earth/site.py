@@ -17,6 +17,7 @@ from ..errors import InvalidInput
 from ..exact import FloatArray, Pair
 from ..storage import write_atomically
 from .geodesy import Ellipsoid, geocentric_from_geodetic, geodetic_from_geocentric
+from .gravity.level_ellipsoid import HIGHEST_M, LOWEST_M
 from .rotation import gcrs_state_from_itrs
 from .site_file import read_site, site_text
 from .tides import tidal_site_state
@@ -52,7 +53,7 @@ class Site:
     geopotential_number_m2_s2 : float or None
         W0 - W of the clock's reference point, m2/s2, if it was levelled.
     height_above_geoid_m : float or None
-        Orthometric height, m, if known.
+        Orthometric height, -12 km to 50 km, m, if known.
     solid_tide : bool
         Whether the Moon and the Sun move the site (see `tides`): up to 0.4 m, 1.3 ns in a wavefront. Coordinates stay
         the tide-free ones of the ITRF; `gcrs` gives the place that the tide has moved. Default False.
@@ -94,6 +95,12 @@ class Site:
             value = getattr(self, what)
             if value is not None:
                 object.__setattr__(self, what, _number(self.name, what, value))
+        height_m = self.height_above_geoid_m
+        if height_m is not None and not LOWEST_M <= height_m <= HIGHEST_M:
+            raise InvalidInput(
+                f"site {self.name!r}: height_above_geoid_m is {height_m!r}; a site on the ground has one of "
+                f"{LOWEST_M:g} to {HIGHEST_M:g} m, which normal gravity reaches"
+            )
         if not isinstance(self.solid_tide, bool):
             raise InvalidInput(f"site {self.name!r}: solid_tide is True or False, got {self.solid_tide!r}")
         if not 1900.0 <= self.epoch_jyear <= 2200.0:

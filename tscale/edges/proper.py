@@ -22,8 +22,9 @@ from ..surface import SurfaceSite
 from ..tables.notes import orientation_notes
 from ..tables.reference import ReferenceData
 from ..transforms.barycentric import tdb_from_tt, tt_from_tdb
-from ..transforms.proper_integral import ProperIntegral
+from ..transforms.proper_integral import SET_RATE, ProperIntegral
 from ..transforms.proper_scales import tdb_per_tt
+from ..transforms.proper_tides import UNKNOWN_TIDE_SYSTEM
 from ..transforms.proper_time import geopotential_number_of
 from .common import count_difference
 
@@ -63,7 +64,7 @@ class _Running:
         return self.clock.reading_at(self.integral.anchor, self.reference)
 
     def reading(self, tt: Pair) -> Pair:
-        return exact.add(exact.add_seconds(tt, self.integral.gained_s(tt)), self.set_to)
+        return self.integral.reading(tt, self.set_to)
 
     def tt(self, reading: Pair) -> Pair:
         return self.integral.tt_of_elapsed(exact.subtract(reading, self.shown))
@@ -85,6 +86,8 @@ def proper_step(place: str, clock: ProperClock, reference: ReferenceData) -> Ste
         tt, anchor = tt_of(after.pair), running.integral.anchor
         set_to = exact.subtract(to_end(anchor), running.shown)
         found = {name: exact.from_seconds(-value) for name, value in running.integral.terms_s(tt).items()}
+        if SET_RATE in found:
+            found[SET_RATE] = exact.negate(running.integral.set_part(tt))
         if not near:
             of_end, of_tcg = (
                 exact.subtract(after.pair, to_end(anchor)),
@@ -126,7 +129,9 @@ def proper_step(place: str, clock: ProperClock, reference: ReferenceData) -> Ste
         return (Omission(f"geopotential at {observer.name}", reason),)
 
     def notes(before: Instants) -> tuple[str, ...]:
-        found = (_potential_words(clock),)
+        found: tuple[str, ...] = (_potential_words(clock),)
+        if clock.tides and getattr(clock.gravity, "tide_system", None) == "unknown":
+            found += (UNKNOWN_TIDE_SYSTEM,)
         levelled = geopotential_number_of(observer) is not None
         if levelled or not running.integral.model.needs_orientation:
             return found

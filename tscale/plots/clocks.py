@@ -38,7 +38,7 @@ if TYPE_CHECKING:
 __all__ = ["clock_figure", "rate_figure", "save_clock_picture", "save_rate_picture"]
 
 _DECADES: Final = 9.0
-_DAY_NS: Final = 86400e9
+_DAY_S: Final = 86400.0
 _STRAIGHT: Final = 1e-6
 """Of what is accumulated: less than this beside the mean rate is not drawn apart."""
 
@@ -75,7 +75,8 @@ def clock_figure(comparison: ClockComparison, t: Instants, title: str = "") -> F
     rates = {name: rate for name, rate in comparison.rates.items() if rate}
     lines = [
         f"{quantity(comparison.accumulated_s, 6, sign=True)} in {comparison.duration_s / 86400.0:.6g} days of "
-        f"{comparison.against}; mean rate {_number(comparison.rate)}, {comparison.rate * _DAY_NS:+.6g} ns a day"
+        f"{comparison.against}; mean rate {_number(comparison.rate)}, "
+        f"{quantity(comparison.rate * _DAY_S, 6, sign=True)} a day"
     ]
     series = [("accumulated", gained, BLUE), *([("less a straight line", beside, VERMILLION)] if bent else [])]
     heights = [2.2 * len(series) + 0.3, 0.9 + 0.3 * (len(rates) + 1)]

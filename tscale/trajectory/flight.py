@@ -2,7 +2,8 @@
 
 The file is CSV with a header of `instant`, `lon_deg`, `lat_deg` and `height_m` in any order (other columns are let be);
 lines that start with `#` are comments. Instants are ISO 8601, in UTC unless another scale is said; longitudes east,
-latitudes those of the ellipsoid's normal, heights above the WGS84 ellipsoid.
+latitudes those of the ellipsoid's normal, heights above the WGS84 ellipsoid in metres: above 26 km, where no aircraft
+flies, they are refused, above 16 km a warning asks whether they are feet.
 
 Between two way points the normal of the ellipsoid turns in one plane at a constant rate (a great circle of directions,
 1e-5 longer than the geodesic and up to 40 km beside it on the longest legs; past the date line and over the poles
@@ -14,6 +15,7 @@ from __future__ import annotations
 
 import csv
 import math
+import warnings
 from pathlib import Path
 from typing import Any, Final, NamedTuple
 
@@ -33,9 +35,11 @@ from .pieces import Piece
 __all__ = ["FlightLegs", "read_flight"]
 
 _COLUMNS: Final = ("instant", "lon_deg", "lat_deg", "height_m")
-_RANGES: Final = {"lon_deg": (-360.0, 360.0), "lat_deg": (-90.0, 90.0), "height_m": (-1000.0, 1e5)}
+_RANGES: Final = {"lon_deg": (-360.0, 360.0), "lat_deg": (-90.0, 90.0), "height_m": (-1000.0, 26e3)}
+_HIGH_M: Final = 16e3
+"""Above all but a few aircraft; no aeroplane stays above 26 km, and airliners cruise above 26 000 ft."""
 _FASTEST_M_S: Final = 1e4
-"""What nothing in the air reaches: a height in feet, swapped columns or a wrong date show by it."""
+"""What nothing in the air reaches: swapped columns, wrong units or a wrong date show by it."""
 _LONGEST_ARC_RAD: Final = math.radians(179.0)
 _POLAR_M: Final = WGS84_A_M * (1.0 - 1.0 / WGS84_INVERSE_FLATTENING)
 
@@ -119,6 +123,14 @@ def read_flight(
         raise _fault(path, rows[int(np.argmax(mask))], f"instant: {error}") from error
     if dates.scale != "TT":
         raise InvalidInput(f"a flight near the ground is dated in UTC, TAI, TT, TCG or a GNSS scale, got {scale}")
+    high = values["height_m"] > _HIGH_M
+    if np.any(high):
+        warnings.warn(
+            f"{path}, line {rows[int(np.argmax(high))]}: {int(np.count_nonzero(high))} of {high.size} way points lie "
+            f"above {_HIGH_M / 1e3:g} km, where few aircraft fly: are these feet? height_m is in metres (1 ft = "
+            "0.3048 m)",
+            stacklevel=3,
+        )
     legs = FlightLegs(dates.pair, *values.values())
     _check(
         legs.length_s <= 0.0, path, rows, "this instant does not come after the one before: sort the rows, drop doubles"
@@ -211,7 +223,8 @@ def _numbers(texts: list[str], column: str, rows: list[int], path: Path) -> Floa
         except ValueError:
             values[i] = math.nan
         if not low <= values[i] <= high:
-            raise _fault(
-                path, row, f"{column} is {text!r}; a number from {low:g} to {high:g} is needed: check columns, units"
-            )
+            hint = "check columns, units"
+            if column == "height_m" and values[i] > high:
+                hint = "feet? (1 ft = 0.3048 m); a balloon or a rocket comes with Trajectory.from_states(frame='ITRS')"
+            raise _fault(path, row, f"{column} is {text!r}; a number from {low:g} to {high:g} is needed: {hint}")
     return values

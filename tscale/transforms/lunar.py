@@ -5,7 +5,7 @@ geocentric ones. Its text was not at hand here; the origin taken is that of TCG 
 reads 1977-01-01T00:00:32.184 at the centre of the Moon at the event at which TCB reads that**. At the geocentre TCL
 then differs from TCG at T0 by the position term of that date, -v_M.(x_E - x_M)/c^2.
 
-TCL - TCB runs by the integral at the Moon's centre (-1.41 ms a day against TCB, +58.74 us a day against TT) plus the
+TCL - TCB runs by the integral at the Moon's centre (-1.281 ms a day; +58.74 us a day against TT and TDB) plus the
 position term of the event (`body_events`).
 """
 

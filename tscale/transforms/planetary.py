@@ -41,7 +41,7 @@ from .surface_clock import (
     simultaneity_rate,
     surface_proper_rate,
     surface_rate_terms,
-    tidal_potential_m2_s2,
+    surface_tide_m2_s2,
 )
 
 __all__ = [
@@ -61,8 +61,8 @@ __all__ = [
     "surface_clock_summary",
     "surface_proper_rate",
     "surface_rate_terms",
+    "surface_tide_m2_s2",
     "tdb_from_body_time",
-    "tidal_potential_m2_s2",
 ]
 
 Compared: TypeAlias = Literal["TT", "TDB", "TCB"]
@@ -191,7 +191,7 @@ def surface_clock_summary(
     tdb, elapsed_s = _grid(start, stop, 1.0)
     time = coordinate_time(site.body, reference)
     # The tide of the others is all but constant on the Moon and nothing elsewhere.
-    tide = tidal_potential_m2_s2(site, tdb, reference)
+    tide = surface_tide_m2_s2(site, tdb, reference)
     potential = site.gravity_potential_m2_s2() + float(np.mean(tide))
     difference = _difference_s(time, tdb, elapsed_s, reference, against, simultaneity, potential)
     rate = np.diff(difference) / np.diff(elapsed_s)

@@ -6,7 +6,8 @@ the Moon as point masses: with r_A = x - x_A, w0 = sum GM_A/r_A,
     1 - d(tau)/d(TCB) = (v^2/2 + w0)/c^2 + (v^4/8 + 3 v^2 w0/2 - w0^2/2 - 4 v.w - D)/c^4
 
 and w, D as in `ephemeris.coordinate_rate`, which is this for a clock at the centre of a body without the body itself.
-Left out: the flattening of a body that is orbited (1.5e-14 in a low orbit of Mars), and what `coordinate_rate` leaves
+The Earth's own figure, J2 to J6 and the tidal bulges (3e-13 and 2e-17 in a low orbit), is apart: `earth_figure`. Left
+out: the flattening of another body that is orbited (1.5e-14 in a low orbit of Mars), and what `coordinate_rate` leaves
 out.
 """
 
@@ -18,10 +19,15 @@ import numpy as np
 
 from ..constants import C_M_S
 from ..earth.frames import dot
+from ..earth.gravity.field import EARTH_ZONAL
 from ..ephemeris import PLANETARY_BODIES, Ephemeris
 from ..exact import FloatArray, Pair
+from ..tables.reference import ReferenceData
+from .barycentric import GEOCENTRIC_LIMIT_M
+from .proper_tides import bulge_m2_s2
+from .proper_time import potential_along
 
-__all__ = ["BarycentricTerms", "barycentric_terms"]
+__all__ = ["BarycentricTerms", "barycentric_terms", "earth_figure"]
 
 _C2: Final = C_M_S**2
 
@@ -80,3 +86,39 @@ def barycentric_terms(x_m: FloatArray, v_m_s: FloatArray, tdb: Pair, ephemeris: 
         delta = delta + u * (-2.0 * dot(v_a, v_a) + pull + 0.5 * (dot(r, v_a) ** 2 / r2 + dot(r, acceleration)))
     fourth = v2 * v2 / 8.0 + 1.5 * v2 * w0 - 0.5 * w0 * w0 - 4.0 * along - delta
     return BarycentricTerms(v2 * (-0.5 / _C2), w0 / -_C2, fourth / -(_C2 * _C2))
+
+
+def earth_figure(x_m: FloatArray, tdb: Pair, reference: ReferenceData, *, bulges: bool) -> FloatArray:
+    """What the Earth's figure adds to d(tau)/d(TCB) - 1: J2 to J6, and with `bulges` what Moon and Sun make of it.
+
+    Parameters
+    ----------
+    x_m : float array (..., 3)
+        Barycentric place of the clock.
+    tdb : Pair
+        TDB count, which serves as TT.
+    reference : ReferenceData
+        For the ephemeris.
+    bulges : bool
+        Whether to count the tidal bulges.
+
+    Returns
+    -------
+    float array
+        0 beyond 1e10 m, where it is 2e-22.
+
+    Raises
+    ------
+    InvalidInput
+        For positions inside the Earth, with the mask.
+    """
+    r_m = x_m - reference.ephemeris.position("earth", tdb)
+    near = dot(r_m, r_m) < GEOCENTRIC_LIMIT_M**2
+    if not np.any(near):
+        return np.zeros(near.shape)
+    # In the shape of the dates, so that a mask of errors has it too.
+    r_m = np.where(near[..., np.newaxis], r_m, GEOCENTRIC_LIMIT_M)
+    potential = potential_along(EARTH_ZONAL, r_m, tdb, reference) - EARTH_ZONAL.gm_m3_s2 / np.sqrt(dot(r_m, r_m))
+    if bulges:
+        potential = potential + bulge_m2_s2(r_m, tdb, reference)
+    return np.where(near, potential / -_C2, 0.0)

@@ -3,27 +3,32 @@
 Each model gives d(tau)/d(TCG) - 1 in named parts that add up to it, by TT counts. Which TT and TCG go with an event of
 the clock:
 
-* up to 1e10 m from the Earth (and so on the Moon) those of the event itself, as the geocentric system dates it;
-* beyond, where that does not reach, those of the geocentre at the same TDB.
+* up to 1e10 m from the Earth (and so on and about the Moon) those of the event itself, as the geocentric system dates
+  it;
+* beyond, where that does not reach, those of the geocentre at the same TDB. A trajectory counts as beyond that leaves
+  the 1e10 m anywhere in its span.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any, Final, Protocol, TypeAlias
 
 import numpy as np
 
+from .. import exact
 from ..constants import L_B, L_G
+from ..earth.frames import dot
 from ..earth.gravity.field import GravityField
-from ..earth.moving import tdb_from_tt_at_geocentre
 from ..earth.observer import Observer
-from ..errors import InvalidInput
+from ..errors import InvalidInput, MissingPiece, OutOfSpan
 from ..exact import FloatArray, Pair
 from ..surface import SurfaceSite
 from ..tables.reference import ReferenceData
-from .barycentric import tdb_from_tt
-from .proper_bcrs import barycentric_terms
+from .barycentric import GEOCENTRIC_LIMIT_M, tdb_from_tt
+from .proper_bcrs import barycentric_terms, earth_figure
+from .proper_scales import tdb_per_tt
 from .proper_tides import Tides
 from .proper_time import TERMS, rate_terms, uses_orientation
 from .surface_clock import SurfaceRateTerms, default_simultaneity, surface_rate_terms
@@ -34,6 +39,8 @@ Terms: TypeAlias = dict[str, FloatArray]
 
 _TCB_GAIN: Final = float(L_B / (1 - L_B))
 _EARTH: Final = 399
+_MOON: Final = 301
+_LOOKS: Final = 33
 
 
 class RateModel(Protocol):
@@ -121,23 +128,57 @@ class ThroughSpace:
     """A clock on a path about another centre than the Earth; see `proper_bcrs`."""
 
     observer: Any
+    tides: Tides = True
     needs_orientation: bool = False
     needs_ephemeris: bool = True
-    dates_own_event: bool = False
-    names: tuple[str, ...] = ("kinematic", "gravitational", "second order", "TCG against TCB")
+    names: tuple[str, ...] = (
+        "kinematic",
+        "gravitational",
+        "second order",
+        "figure of the Earth",
+        "TCG against TCB",
+    )
+
+    @cached_property
+    def dates_own_event(self) -> bool:
+        """Where the whole of the path is within 1e10 m of the Earth."""
+        pieces = getattr(self.observer, "pieces", ())
+        return bool(pieces) and all(_within_reach(piece) for piece in pieces)
 
     def terms(self, tt: Pair, reference: ReferenceData) -> Terms:
-        """Parts of d(tau)/d(TCB) - 1, and what TCG at the geocentre makes of it."""
-        tdb = tdb_from_tt_at_geocentre(tt, reference)
+        """Parts of d(tau)/d(TCB) - 1, and what TCG (of the event, or at the geocentre) makes of it."""
+        own = self.observer if self.dates_own_event else None
+        tdb = tdb_from_tt(tt, reference, own)
         x_m, v_m_s = self.observer.state_bcrs(tdb, reference)
-        found = barycentric_terms(x_m, v_m_s, tdb, reference.ephemeris)
-        y = found.total
+        parts = barycentric_terms(x_m, v_m_s, tdb, reference.ephemeris)
+        figure = earth_figure(x_m, tdb, reference, bulges=bool(self.tides))
+        y = parts.total + figure
         # d(TCB)/d(TDB), d(TDB)/d(TT), d(TT)/d(TCG), each less one.
-        gain = reference.time_ephemeris.rate(tdb)
         whole = y
-        for slow in (_TCB_GAIN, -gain / (1.0 + gain), -float(L_G)):
+        for slow in (_TCB_GAIN, tdb_per_tt(own, tt, reference), -float(L_G)):
             whole = whole + slow + whole * slow
-        return dict(zip(self.names, (*found, np.asarray(whole - y)), strict=True))
+        return dict(zip(self.names, (*parts, figure, np.asarray(whole - y)), strict=True))
+
+
+def _within_reach(piece: Any) -> bool:
+    """Whether a piece of a trajectory keeps within 1e10 m of the Earth.
+
+    An orbit about the Earth or the Moon does; of another one states all along its span tell. The shipped ephemeris
+    serves: the bodies of others are within kilometres.
+    """
+    if piece.center in (_EARTH, _MOON):
+        return True
+    if piece.first is None or piece.last is None:
+        return False
+    length_s = float(exact.seconds(exact.subtract(piece.last, piece.first)))
+    one = (np.reshape(piece.first[0], 1), np.reshape(piece.first[1], 1))
+    count = exact.add_seconds(one, np.linspace(0.0, length_s, _LOOKS))
+    r_m, _ = piece.motion.state(count)
+    try:
+        r_m = r_m + ReferenceData.default().ephemeris.position(piece.center, count, _EARTH)
+    except (OutOfSpan, MissingPiece):
+        return False
+    return bool(np.all(dot(r_m, r_m) <= GEOCENTRIC_LIMIT_M**2))
 
 
 def is_near_earth(observer: Observer) -> bool:
@@ -145,21 +186,23 @@ def is_near_earth(observer: Observer) -> bool:
     if isinstance(observer, SurfaceSite):
         return False
     pieces = getattr(observer, "pieces", ())
-    return bool(getattr(observer, "geocentric", True)) or all(piece.center == _EARTH for piece in pieces)
+    if getattr(observer, "geocentric", True):
+        return True
+    return bool(pieces) and all(piece.center == _EARTH for piece in pieces)
 
 
 def model_of(observer: Observer, gravity: GravityField | None, tides: Tides) -> RateModel:
     """The model for an observer: by its kind, and for a trajectory by what it is about.
 
-    A trajectory about another centre than the Earth is one through space, wherever it goes: low over the Earth its rate
-    then lacks the flattening (7e-13).
+    A trajectory about another centre than the Earth is one through space, wherever it goes, with the Earth's figure
+    beside the point masses.
     """
     if not is_near_earth(observer):
         if gravity is not None:
             raise InvalidInput(
                 f"gravity= is the Earth's field, and the clock at {observer.name} is not in it: leave it out"
             )
-        return OnBody(observer) if isinstance(observer, SurfaceSite) else ThroughSpace(observer)
+        return OnBody(observer) if isinstance(observer, SurfaceSite) else ThroughSpace(observer, tides)
     return NearEarth(observer, gravity, tides)
 
 

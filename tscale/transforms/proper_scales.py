@@ -22,16 +22,17 @@ _TCG_GAIN: Final = float(L_G / (1 - L_G))
 _TDB_PER_TCB: Final = -float(L_B)
 
 
-def checked_against(against: object, *, lunar: bool = False) -> str:
-    """The coordinate time given, or an error that lists them; with `lunar` TCL too."""
+def checked_against(against: object, *, own: bool = False) -> str:
+    """The coordinate time given, or an error that lists them; with `own` that of the clock's body too."""
     if isinstance(against, str):
-        if against in ("TCG", "TCB", "TDB") or (lunar and against == "TCL"):
+        if against in ("TCG", "TCB", "TDB", "TCL") or (own and against == "own"):
             return against
         if Scale.parse(against).count_minus_tai is not None:
             return against
     raise InvalidInput(
-        f"a rate is given against TT (or TAI, UTC, GPS, GST, BDT, GLONASS, which run alike), TCG, TCB or TDB"
-        f"{', or near the Moon TCL' if lunar else ''}; got against={against!r:.60}"
+        f"a rate is given against TT (or TAI, UTC, GPS, GST, BDT, GLONASS, which run alike), TCG, TCB, TDB or, near "
+        f"the Moon, TCL{', or against the own time of the body that both clocks are on' if own else ''}; got "
+        f"against={against!r:.60}"
     )
 
 
@@ -82,7 +83,7 @@ def rate_against(
     place : Observer, optional
         Where the clock is, for TCL, if `observer` is None because TT is the geocentre's.
     """
-    against = checked_against(against, lunar=True)
+    against = checked_against(against)
     if against == "TCG":
         return np.asarray(y)
     per_tt = _TCG_GAIN + y + _TCG_GAIN * y

@@ -47,6 +47,7 @@ __all__ = [
     "checked_gravity",
     "geopotential_number_of",
     "missing_potential",
+    "potential_along",
     "rate_terms",
     "uses_orientation",
 ]
@@ -100,9 +101,9 @@ def rate_terms(
         Earth orientation for what turns with the Earth; the ephemeris for tides.
     gravity : GravityField, optional
         Earth's gravitational potential. For a trajectory the default is J2 to J6, `EARTH_ZONAL`, whose error near the
-        ground is 1e-15 (what depends on longitude) and 2e-17 at the height of a navigation satellite. For a site it is
+        ground is 4e-15 (what depends on longitude) and 2e-17 at the height of a navigation satellite. For a site it is
         needed if the site has neither a geopotential number nor a height above the geoid, which come first in this
-        order.
+        order. Its `tide_system` is heeded; of a file that does not state it, tide-free is taken (chains note it).
     tides : bool or {"zero_tide", "mean_tide", "tide_free"}
         Whether to add the tides of Moon and Sun, and of which tide system a levelled geopotential number is; True
         takes it for zero-tide. See `proper_tides` for what is counted where.
@@ -136,7 +137,7 @@ def rate_terms(
         else:
             raise MissingPiece(missing_potential(observer))
     else:
-        own = _potential_along(EARTH_ZONAL if gravity is None else gravity, r_m, tt, reference)
+        own = potential_along(EARTH_ZONAL if gravity is None else gravity, r_m, tt, reference)
     tidal = np.zeros_like(square)
     if tides:
         kind: Kind = "levelled" if number is not None else "ground" if isinstance(observer, Site) else "free"
@@ -173,12 +174,12 @@ def uses_orientation(observer: Observer, gravity: GravityField | None) -> bool:
     return turning or bool(getattr(observer, "uses_earth_orientation", True))
 
 
-def _potential_along(field: GravityField, r_m: FloatArray, tt: Pair, reference: ReferenceData) -> FloatArray:
+def potential_along(field: GravityField, r_m: FloatArray, tt: Pair, reference: ReferenceData) -> FloatArray:
     """Potential at GCRS positions.
 
     A zonal field needs no more than the distance from the equator. That of the celestial pole serves, for which no
     Earth orientation has to be known: the pole wanders by 0.3" within the Earth, 1.5e-18 in J2, of a field that is good
-    to 1e-15.
+    to 4e-15.
     """
     if not isinstance(field, ZonalField):
         return field.potential_m2_s2(itrs_from_gcrs(r_m, tt, reference))

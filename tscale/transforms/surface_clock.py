@@ -26,6 +26,7 @@ import numpy as np
 
 from ..constants import C_M_S, L_B, L_G
 from ..earth.frames import dot
+from ..earth.gravity.tidal import tidal_potential_m2_s2
 from ..earth.moving import TT_PER_TCG, tdb_from_tt_at_geocentre
 from ..ephemeris.bodies import PLANETARY_BODIES
 from ..errors import InvalidInput, ScaleMismatch
@@ -44,7 +45,7 @@ __all__ = [
     "simultaneity_rate",
     "surface_proper_rate",
     "surface_rate_terms",
-    "tidal_potential_m2_s2",
+    "surface_tide_m2_s2",
 ]
 
 Against: TypeAlias = Literal["TT", "TCG", "TCB", "TDB", "TCL", "own"]
@@ -92,26 +93,16 @@ class SurfaceRateTerms(NamedTuple):
         return np.asarray(sum(self[1:], self.own_potential))
 
 
-def tidal_potential_m2_s2(site: SurfaceSite, tdb: Pair, reference: ReferenceData) -> FloatArray:
-    """Tide-raising potential at a place on another body, degrees 2 and 3, of all bodies of the ephemeris, m2/s2.
+def surface_tide_m2_s2(site: SurfaceSite, tdb: Pair, reference: ReferenceData) -> FloatArray:
+    """Tide-raising potential at a place on another body, of all bodies of the ephemeris, m2/s2.
 
     The body is taken as rigid: what yields adds (k2 - h2), -2 % on the Moon. The Earth's at the Moon is up to 21 m2/s2
     (2.3e-16), most of it constant, for the Moon keeps one side to the Earth; the Sun's on Mars 0.1 m2/s2 (1e-18).
     """
     body = _body(site, reference)
     r, _ = event_offset(body, site, tdb, reference)
-    positions = reference.ephemeris.positions(PLANETARY_BODIES, tdb, body)
-    total = np.zeros(r.shape[:-1])
-    for number, position in zip(PLANETARY_BODIES, positions, strict=True):
-        if number == body:
-            continue
-        distance = np.sqrt(dot(position, position))
-        size = np.sqrt(dot(r, r))
-        cosine = dot(r, position) / (distance * size)
-        ratio = size / distance
-        legendre = 0.5 * (3.0 * cosine**2 - 1.0) + 0.5 * ratio * (5.0 * cosine**3 - 3.0 * cosine)
-        total += reference.ephemeris.gm_m3_s2(number) / distance * ratio**2 * legendre
-    return total
+    others = tuple(number for number in PLANETARY_BODIES if number != body)
+    return tidal_potential_m2_s2(r, tdb, reference, others, center=body)
 
 
 def surface_rate_terms(
@@ -160,7 +151,7 @@ def surface_rate_terms(
             f"TCL does not reach {site.name!r}, which is not on the Moon: compare with TDB, TCB, TT, or with the "
             "body's own coordinate time, against='own'"
         )
-    tide = -tidal_potential_m2_s2(site, tdb, reference) / _C2
+    tide = -surface_tide_m2_s2(site, tdb, reference) / _C2
     nothing = np.zeros_like(tide)
     own = nothing - site.gravity_potential_m2_s2() / _C2
     if against in ("TCL", "own"):

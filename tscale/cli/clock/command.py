@@ -79,7 +79,7 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
         "--against",
         metavar="SCALE",
         default="TT",
-        help="coordinate time: TT, TCG, TCB, TDB, or for one clock near the Moon TCL (%(default)s)",
+        help="coordinate time: TT, TCG, TCB, TDB, or near the Moon TCL (%(default)s)",
     )
     parser.add_argument(
         "--set-offset", metavar="Y", type=float, default=0.0, help="fraction by which CLOCK is set fast"

@@ -99,8 +99,7 @@ def local_gravity_m_s2(end: ClockEnd, found: Found, model: Model) -> float:
 def _states(end: ClockEnd, found: Found, model: Model) -> tuple[Any, Any]:
     from ...clocks.dates import tt_at
 
-    own = end.observer if end.kind != "spacecraft" else None
-    return end.observer.gcrs(tt_at(found.span.dates, own, model.reference), model.reference)
+    return end.observer.gcrs(tt_at(found.span.dates, end.observer, model.reference), model.reference)
 
 
 def _on_the_ground(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas) -> _Known:
@@ -132,7 +131,7 @@ def _on_the_ground(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas) -
         assert model.gravity is not None
         radius_m = float(np.linalg.norm(site.position_m))
         lines += [_field_left_out(model, radius_m)]
-        left.append("errors of the coefficients of the gravity field: not stated")
+        left += _field_not_stated(model)
     elif by_height:
         slope = float(site.height_above_geoid_m) / C_M_S**2
         name = "mean gravity below, real less normal"
@@ -170,7 +169,7 @@ def _about_the_earth(end: ClockEnd, found: Found, model: Model, sigmas: _Sigmas)
     else:
         lines.append(Line(Quantity("mean speed", speed, sigmas[2], unit="m/s"), -speed / C_M_S**2))
     if model.gravity is not None:
-        left.append("errors of the coefficients of the gravity field: not stated")
+        left += _field_not_stated(model)
     if not model.tides:
         lines.append(_within("tides, left out", _largest_tide_m2_s2(end, found, model)))
     return lines, left
@@ -275,6 +274,16 @@ def _field_left_out(model: Model, radius_m: float) -> Line:
     sigma = EARTH_GM_TT_M3_S2 / radius_m * _KAULA * float(np.sqrt(np.sum(lacking * powers / n**4)))
     name = "gravity that J2 to J6 leave out" if top is None else f"gravity beyond degree {top}"
     return Line(Quantity(name, 0.0, sigma, unit="m2/s2"), 1.0 / C_M_S**2)
+
+
+def _field_not_stated(model: Model) -> list[str]:
+    """What a gravity field does not say of itself."""
+    from ...transforms.proper_tides import UNKNOWN_TIDE_SYSTEM
+
+    left = ["errors of the coefficients of the gravity field: not stated"]
+    if model.tides and getattr(model.gravity, "tide_system", None) == "unknown":
+        left.append(UNKNOWN_TIDE_SYSTEM)
+    return left
 
 
 def _largest_tide_m2_s2(end: ClockEnd, found: Found, model: Model) -> float:

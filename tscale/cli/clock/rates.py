@@ -112,12 +112,18 @@ def of_two(a: ClockEnd, b: ClockEnd, span: Span, model: Model) -> Found:
     import numpy as np
 
     from ...clocks import compare_clocks, proper_ledger
+    from ...clocks.arguments import as_ticking
     from ...transforms.proper_models import total_of
 
     words: dict[str, Any] = {"gravity": model.gravity, "tides": model.tides, "reference": model.reference}
     clock = _set(a, span, model)
     compared = compare_clocks(clock, b.observer, span.start, span.stop, against=model.against, **words)
-    one, two = (dict(proper_ledger(which, span.dates, model.against, **words)) for which in (clock, b.observer))
+    against = model.against
+    if against not in ("TDB", "TCB", "TCL"):
+        own = [as_ticking(which, model.gravity, model.tides, "a clock").own_event for which in (clock, b.observer)]
+        # Where TT reaches one of them alone, rates by their own TT would differ by the turning of the place (1e-10).
+        against = "TDB" if (own[0] is None) != (own[1] is None) else against
+    one, two = (dict(proper_ledger(which, span.dates, against, **words)) for which in (clock, b.observer))
     nothing = np.zeros(span.dates.shape)
     rates = {name: np.asarray(one.get(name, nothing) - two.get(name, nothing)) for name in dict.fromkeys([*one, *two])}
     return Found(

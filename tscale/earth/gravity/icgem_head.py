@@ -5,12 +5,16 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Iterator
+from functools import partial
 from pathlib import Path
 from typing import Final, NamedTuple, NoReturn
 
 from ...errors import DataFileError
 
 __all__ = ["TIDE_SYSTEMS", "VARIABLE", "GfcFile", "Head", "read_head"]
+
+_LONGEST_LINE: Final = 1 << 20
+_LONGEST_HEAD: Final = 100_000
 
 TIDE_SYSTEMS: Final = ("tide_free", "zero_tide", "mean_tide", "unknown")
 
@@ -79,10 +83,14 @@ class GfcFile:
 
     def rows(self) -> Iterator[list[str]]:
         """Every row that is not blank, as words."""
+        if "\0" in str(self.path):
+            raise DataFileError(f"cannot read {str(self.path)!r}: a path cannot hold a NUL character", path=self.path)
         try:
             # Comments of the head may be in any encoding; all that is read here is ASCII.
             with self.path.open(encoding="latin-1") as stream:
-                for self.row, line in enumerate(stream, start=1):
+                for self.row, line in enumerate(iter(partial(stream.readline, _LONGEST_LINE), ""), start=1):
+                    if len(line) == _LONGEST_LINE:
+                        self.fail(f"a line of {_LONGEST_LINE} characters or more: it is no .gfc file")
                     words = line.split()
                     if words:
                         yield words
@@ -96,6 +104,8 @@ def read_head(file: GfcFile, rows: Iterator[list[str]]) -> Head:
     for words in rows:
         if words[0] == "end_of_head":
             break
+        if file.row > _LONGEST_HEAD:
+            file.fail(f"no end_of_head in {_LONGEST_HEAD} rows: it is no .gfc file")
         if words[0] == "begin_of_head":
             lines.clear()
         elif words[0] == "gfc" or words[0] in VARIABLE:
