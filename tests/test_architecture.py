@@ -162,8 +162,8 @@ def test_modules_stay_short(name: str) -> None:
 
 
 def test_each_room_imports_alone() -> None:
-    # One interpreter for all: before each import every module of ours is forgotten again. Without cycles, what holds for
-    # a room holds for the modules that it brings in.
+    # One interpreter for all: before each import every module of ours is forgotten again. Without cycles, what holds
+    # for a room holds for the modules that it brings in.
     rooms = sorted(name for name in modules() if "." not in name)
     script = (
         "import importlib, sys\n"

@@ -44,7 +44,8 @@ def test_published_rows(
     log = read_circular(path, laboratory, uncertainty_s=None if u_ns else 4e-9)
     at = utc(first_mjd + 5 * np.arange(7))
     np.testing.assert_allclose(-1e9 * exact.seconds(log.offset(at)), published_ns, rtol=0, atol=2e-7)
-    np.testing.assert_allclose(log.uncertainty_s(at), 1e-9 * (u_ns or 4.0), rtol=1e-15)
+    # u is uA and uB in quadrature, which are printed to 0.1 ns.
+    np.testing.assert_allclose(log.uncertainty_s(at), 1e-9 * (u_ns or 4.0), rtol=1e-15, atol=0.07e-9 if u_ns else 0)
     assert (log.scale, log.reference) == (f"UTC({laboratory.removeprefix('UTC(').rstrip(')')})", "UTC")
 
 
@@ -118,11 +119,11 @@ def test_any_row_is_read_as_it_is_printed(
 ) -> None:
     """Up to a millisecond with one decimal: read to the 1.1e-16 s that a fraction of a second is kept to."""
     assume(sum(missing) < 6)
-    cells = [f"{'-' if gone else f'{value / 10:.1f}':>9}" for value, gone in zip(tenths, missing, strict=True)]
+    cells = [f"{'-' if gone else f'{value / 10:.1f}':>11}" for value, gone in zip(tenths, missing, strict=True)]
     text = T229.read_text()
     (old,) = [line for line in text.splitlines() if line.startswith("CH ")]
     path = tmp_path_factory.getbasetemp() / "any_row.txt"
-    path.write_text(text.replace(old, f"CH   (Bern)   {''.join(cells)} 0.1 0.1 {u / 10:.1f}"))
+    path.write_text(text.replace(old, f"CH   (    )   {''.join(cells)} 0.0 {u / 10:.1f} {u / 10:.1f}"))
     log = read_circular(path, "CH")
     for day, (value, gone) in enumerate(zip(tenths, missing, strict=True)):
         if not gone:
@@ -133,9 +134,9 @@ def test_any_row_is_read_as_it_is_printed(
 
 def test_laboratories_and_notes() -> None:
     assert laboratories([T229, T230]) == {
-        "BIM": "Sofiya",
-        "CH": "Bern",
-        "DLR": "Oberpfaffenhofen",
+        "BIM": "",
+        "CH": "",
+        "DLR": "",
         "KRL": "Kestrel Ridge",
         "TRN": "Tern Island",
     }
@@ -186,9 +187,9 @@ DAMAGE: dict[str, tuple[str, str, str, int | None]] = {
     "value too many": ("-65.1", "-65.1 1.0", "11 numbers", 15),
     "uncertainty lost": ("0.7  5.1  5.1", "0.7  5.1", "9 numbers", 15),
     "negative uncertainty": ("5.1  5.1", "5.1 -5.1", "negative", 15),
-    "city lost": ("CH   (Bern)", "CH   ", "damaged row", 15),
-    "small letters": ("CH   (Bern)", "ch   (Bern)", "damaged row", 15),
-    "twice": ("DLR  (Ober", "CH   (Ober", "again, after line 15", 16),
+    "city lost": ("CH   (    )", "CH   ", "damaged row", 15),
+    "small letters": ("CH   (    )", "ch   (    )", "damaged row", 15),
+    "twice": ("DLR  (", "CH   (", "again, after line 15", 16),
     "day lost": ("54104    ", "         ", "5 d apart", 11),
     "day damaged": ("54104", "54l04", "5 d apart", 11),
     "other days": ("54099    54104    54109", "54098    54103    54108", "5 d apart", 11),
@@ -248,6 +249,6 @@ def test_cut_anywhere_is_found_or_harmless(tmp_path: Path) -> None:
 
 def test_line_ends_and_old_letters_do_not_matter(tmp_path: Path) -> None:
     path = tmp_path / "windows.txt"
-    path.write_bytes(T229.read_bytes().replace(b"\n", b"\r\n").replace(b"Sofiya", b"Sofi\xefa"))
-    assert laboratories(path)["BIM"] == "Sofi\u00efa"
+    path.write_bytes(T229.read_bytes().replace(b"\n", b"\r\n").replace(b"Kestrel Ridge", b"Kestrel R\xefdge"))
+    assert laboratories(path)["KRL"] == "Kestrel R\u00efdge"
     assert exact.seconds(read_circular(path, "BIM").offset(utc(54129))) == pytest.approx(5083.0e-9, rel=0, abs=2e-16)

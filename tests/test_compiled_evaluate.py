@@ -10,6 +10,7 @@ import pytest
 
 import tscale
 from tscale import exact
+from tscale.compiled.piece_table import PieceTable, Scratch
 from tscale.errors import InvalidInput, OutOfSpan, ScaleMismatch
 
 SITE = tscale.Site.from_itrf("north", 1_200_000.0, -4_600_000.0, 4_230_000.0)
@@ -121,6 +122,84 @@ def test_results_go_where_they_are_wanted(compiled: tscale.CompiledChain, counts
     room[0][:1000], room[1][:1000] = counts[0][:1000], counts[1][:1000]
     compiled.evaluate(room[0][:1000], room[1][:1000], out=(room[0][1:], room[1][1:]))
     assert same((room[0][1:], room[1][1:]), (want[0][:1000], want[1][:1000]))
+
+
+def test_any_pair_of_arrays_may_share_memory(compiled: tscale.CompiledChain, counts: tuple) -> None:
+    n = 300_000  # more than one block, and more than one share of a thread
+    given = counts[0][:n], counts[1][:n]
+    want = compiled.evaluate(*given)
+    for threads in (1, 2):
+        # Results of the one kind written over what was given of the other.
+        own = given[0].copy(), given[1].copy()
+        out = own[1].view(np.int64), own[0].view(np.float64)
+        assert same(compiled.evaluate(*own, out=out, threads=threads), want)
+        whole, out_whole = given[0].copy(), np.empty(n, dtype=np.int64)
+        assert same(compiled.evaluate(whole, given[1], out=(out_whole, whole.view(np.float64)), threads=threads), want)
+        fraction, out_fraction = given[1].copy(), np.empty(n)
+        out = fraction.view(np.int64), out_fraction
+        assert same(compiled.evaluate(given[0], fraction, out=out, threads=threads), want)
+        # Written backwards over itself.
+        own = given[0].copy(), given[1].copy()
+        got = compiled.evaluate(own[0][::-1], own[1][::-1], out=own, threads=threads)
+        assert same(got, (want[0][::-1], want[1][::-1]))
+        # Fields of one table, in place: nothing is written over.
+        table = np.zeros(n, dtype=[("whole", np.int64), ("fraction", np.float64)])
+        table["whole"], table["fraction"] = given
+        pair = table["whole"], table["fraction"]
+        assert same(compiled.evaluate(*pair, out=pair, threads=threads), want)
+    few = given[0][:5].copy(), given[1][:5].copy()
+    out = few[1].view(np.int64), few[0].view(np.float64)
+    assert same(compiled.evaluate(*few, out=out), (want[0][:5], want[1][:5]))
+    both = np.empty(n + 1)
+    with pytest.raises(InvalidInput, match="the two arrays of out share memory"):
+        compiled.evaluate(*given, out=(both[1:].view(np.int64), both[:-1]))
+
+
+def test_few_and_many_give_the_same_bits(compiled: tscale.CompiledChain, counts: tuple) -> None:
+    want = compiled.evaluate(*counts)
+    for n in range(1, 20):
+        part = slice(500 * n, 500 * n + n)
+        out = np.empty(n, dtype=np.int64), np.empty(n)
+        got = compiled.evaluate(counts[0][part], counts[1][part], out=out)
+        assert got is out or (got[0] is out[0] and got[1] is out[1])
+        assert same(out, (want[0][part], want[1][part]))
+    shaped = compiled.evaluate(counts[0][:6].reshape(2, 3).T, counts[1][:6].reshape(2, 3).T)
+    assert same((shaped[0].T.ravel(), shaped[1].T.ravel()), (want[0][:6], want[1][:6]))
+
+
+@pytest.mark.parametrize("value", [-1e-17, -5e-17, -(2.0**-54)])
+@pytest.mark.parametrize("n", [1, 9, 5000])
+def test_a_sum_that_rounds_to_a_whole_second_is_carried(value: float, n: int) -> None:
+    # 0 - 1e-17 is 1 - 1e-17 of the second before, which is no float: it is 0 of this one.
+    whole, fraction = np.array([-(2**62), 0, 100, 200]), np.array([0.0, 0.0, 0.0, 0.0])
+    powers = np.array([[np.nan, value, 0.25, np.nan]])
+    table = PieceTable(whole, fraction, np.array([0, 50, 150, 150]), np.array([0, 7, 7, 0]), powers, 0, 100)
+    at = np.full(n, 30), np.zeros(n)
+    assert table.one(30, 0.0) == (37, 0.0)
+    # All in one piece, and in no order over two.
+    both = np.append(at[0], [130, 40]), np.append(at[1], [0.5, 0.0])
+    for counts, want in ((at, at), (both, (np.append(at[0], [130, 40]), np.append(at[1], [0.75, 0.0])))):
+        out = np.empty_like(counts[0]), np.empty_like(counts[1])
+        table.map(*counts, out, Scratch(4096))
+        assert same(out, (want[0] + 7, want[1]))
+
+
+def test_one_among_many_pieces_of_a_second(compiled: tscale.CompiledChain) -> None:
+    # A thousand pieces that start within three seconds: a single instant finds its own like any other.
+    rng = np.random.default_rng(7)
+    starts = np.sort(rng.random(1000) * 3.0)
+    starts[[0, 500]] = 0.0, starts[501]  # and one of no length
+    whole = np.concatenate([[-(2**62)], np.floor(starts).astype(np.int64), [3]])
+    fraction = np.concatenate([[0.0], starts % 1.0, [0.0]])
+    powers = np.concatenate([[np.nan], rng.random(1000), [np.nan]])[None]
+    zeros = np.zeros(1002, dtype=np.int64)
+    table = PieceTable(whole, fraction, zeros, zeros, powers, 0, 86400)
+    at = rng.integers(0, 3, 3000), rng.random(3000)
+    at[0][:1000], at[1][:1000] = whole[1:-1], fraction[1:-1]
+    out = np.empty_like(at[0]), np.empty_like(at[1])
+    table.map(*at, out, Scratch(4096))
+    for w, f, ow, of in zip(*at, *out, strict=True):
+        assert table.one(int(w), float(f)) == (ow, of)
 
 
 def test_threads_share_it(compiled: tscale.CompiledChain, counts: tuple) -> None:

@@ -8,6 +8,7 @@ import json
 import subprocess
 import sys
 import zipfile
+from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
@@ -156,6 +157,136 @@ def test_newer_and_foreign_files_are_refused(tmp_path: Path, compiled: tscale.Co
     refused((tmp_path / "other.npz").read_bytes(), "not a compiled chain")
     with pytest.raises(DataFileError, match="cannot read"):
         tscale.load_compiled(tmp_path / "nowhere")
+
+
+def rebuilt(
+    content: bytes, change: Callable[[str, bytes], bytes | None], compression: int = zipfile.ZIP_STORED
+) -> bytes:
+    """A file with other members, under a seal of its own."""
+    buffer = io.BytesIO()
+    with zipfile.ZipFile(io.BytesIO(content)) as old, zipfile.ZipFile(buffer, "w", compression) as new:
+        for info in old.infolist():
+            data = change(info.filename, old.read(info))
+            if data is not None:
+                new.writestr(info.filename, data)
+        new.comment = old.comment
+    return reseal(buffer.getvalue())
+
+
+def npy(array: np.ndarray) -> bytes:
+    buffer = io.BytesIO()
+    np.save(buffer, array)
+    return buffer.getvalue()
+
+
+def refuses(content: bytes, words: str = "sealed") -> None:
+    with pytest.raises(DataFileError, match=words) as caught:
+        from_bytes(content, Path("hostile"))
+    assert "sealed but is not a compiled chain that can be read" in str(caught.value)
+    assert caught.value.path == Path("hostile")
+
+
+@pytest.mark.parametrize(
+    ("name", "value"),
+    [
+        ("cell_s", 0), ("cell_s", -5), ("cell_s", 10**30), ("cell_s", 0.5), ("cell_s", True), ("cell_s", None),
+        ("origin", 10**30), ("origin", 1e30), ("origin", -(10**30)), ("origin", "x"), ("origin", float("nan")),
+        ("first", [10**30, "0x0p+0"]), ("first", [0, "0x1p+0"]), ("first", [0, "nan"]), ("last", [0, "-0x1p-3"]),
+        ("last", []), ("last", [-(10**9), "0x0p+0"]),
+    ],
+)  # fmt: skip
+@pytest.mark.parametrize("way", ["forward", "inverse"])
+def test_numbers_of_the_header_that_cannot_be(
+    compiled: tscale.CompiledChain, way: str, name: str, value: object
+) -> None:
+    content = compiled.to_bytes()
+    with zipfile.ZipFile(io.BytesIO(content)) as archive:
+        ways = json.loads(archive.read("header.json"))["ways"]
+    ways[way][name] = value
+    refuses(with_header(content, ways=ways))
+
+
+def test_cells_that_start_after_the_first_piece_are_refused(compiled: tscale.CompiledChain) -> None:
+    content = compiled.to_bytes()
+    with zipfile.ZipFile(io.BytesIO(content)) as archive:
+        ways = json.loads(archive.read("header.json"))["ways"]
+    ways["forward"]["origin"] += 86400
+    refuses(with_header(content, ways=ways), "origin is a whole number from -[0-9]+ to [0-9]+, got")
+
+
+@pytest.mark.parametrize("version", [-1, 0, True, "1", 1.0, None, []])
+def test_versions_that_are_none(compiled: tscale.CompiledChain, version: object) -> None:
+    refuses(with_header(compiled.to_bytes(), version=version), "version is a whole number from 1")
+
+
+def test_a_header_that_is_nested_too_deeply(compiled: tscale.CompiledChain) -> None:
+    deep = rebuilt(compiled.to_bytes(), lambda name, data: b"[" * 200_000 if name == "header.json" else data)
+    refuses(deep, "recursion")
+    refuses(rebuilt(compiled.to_bytes(), lambda name, data: b"[]" if name == "header.json" else data))
+
+
+@pytest.mark.parametrize(
+    ("name", "value"),
+    [
+        ("tolerance_s", None), ("tolerance_s", True), ("rate_error", "0"), ("notes", [3]), ("span", ["2020"]),
+        ("site", 5), ("chain", None), ("tables", [{}]), ("more", 1), ("forward", {}), ("forward", None),
+    ],
+)  # fmt: skip
+def test_certificates_that_are_none(compiled: tscale.CompiledChain, name: str, value: object) -> None:
+    facts = compiled.certificate.to_dict() | {name: value}
+    refuses(with_header(compiled.to_bytes(), certificate=facts))
+
+
+def swapped(array: np.ndarray) -> np.ndarray:
+    array[..., [3, 5]] = array[..., [5, 3]]
+    return array
+
+
+def put(place: int, value: object) -> Callable[[np.ndarray], np.ndarray]:
+    def change(array: np.ndarray) -> np.ndarray:
+        array[..., place] = value
+        return array
+
+    return change
+
+
+@pytest.mark.parametrize(
+    ("name", "change", "words"),
+    [
+        ("start_whole", lambda a: a[::-1].copy(), "out of all range|origin|not in order"),
+        ("start_whole", swapped, "forward are not in order of their starts"),
+        ("start_whole", put(-1, 2**63 - 1), "out of all range"),
+        ("start_fraction", put(2, 1.5), "not in order"),
+        ("start_fraction", put(2, np.nan), "not in order"),
+        ("center", put(2, 2**60), "out of all range"),
+        ("shift_s", put(2, -(2**63)), "out of all range"),
+        ("powers", put(0, 0.0), "coefficients that are no numbers"),
+        ("powers", put(3, np.inf), "coefficients that are no numbers"),
+        ("powers", lambda a: a[:0], "too short"),
+        ("powers", lambda a: a.astype(np.float32), "is float32"),
+        ("center", lambda a: a.astype(object), "is object"),
+        ("center", lambda a: a[:-1], "differ in length"),
+        ("center", lambda a: a[None], "of 2 dimensions"),
+    ],
+)
+def test_arrays_that_cannot_be(
+    compiled: tscale.CompiledChain, name: str, change: Callable[[np.ndarray], np.ndarray], words: str
+) -> None:
+    def other(member: str, data: bytes) -> bytes:
+        return npy(change(np.load(io.BytesIO(data)))) if member == f"forward_{name}.npy" else data
+
+    refuses(rebuilt(compiled.to_bytes(), other), words)
+
+
+def test_members_that_are_longer_than_the_file(compiled: tscale.CompiledChain) -> None:
+    content = compiled.to_bytes()
+
+    def claimed(name: str, data: bytes) -> bytes:
+        return data.replace(b"'shape': (", b"'shape': (9") if name == "forward_center.npy" else data
+
+    refuses(rebuilt(content, claimed), "forward_center is not as long as it says")
+    refuses(rebuilt(content, lambda name, data: data, zipfile.ZIP_DEFLATED), "is deflated")
+    refuses(rebuilt(content, lambda name, data: None if name.startswith("inverse_p") else data), "no item named")
 
 
 def test_a_folder_that_is_not_there(tmp_path: Path, compiled: tscale.CompiledChain) -> None:

@@ -64,15 +64,14 @@ def test_there_are_years_of_predictions(found: Pulls) -> None:
     assert found.lead_days.max() > 360
 
 
-@pytest.mark.parametrize(("columns", "most"), [([0], 1.4), ([1, 2], 1.4), ([3, 4], 1.8)])
-def test_uncertainties_in_use_are_those_of_the_errors(found: Pulls, columns: list[int], most: float) -> None:
-    """Pulls of 0.9 (UT1) and 1.1 (pole) rms: 1 within 25 per cent, and as much again for the few runs.
-
-    Those of the celestial pole offsets, left as stated, are 1.5: 0.2 mas, 6 mm at the Earth's surface, 20 ps.
+@pytest.mark.parametrize("columns", [[0], [1, 2], [3, 4]])
+def test_uncertainties_in_use_are_those_of_the_errors(found: Pulls, columns: list[int]) -> None:
+    """Pulls of 0.9 (UT1), 1.1 (pole) and 1.0 (celestial pole) rms: 1 within 25 per cent, and as much again for the few
+    runs.
     """
     pulls = found.pulls[:, columns]
-    assert 0.6 < rms(pulls) < most
-    assert np.mean(np.abs(pulls[np.isfinite(pulls)]) < 2.0) > (0.9 if most < 1.5 else 0.8)
+    assert 0.6 < rms(pulls) < 1.4
+    assert np.mean(np.abs(pulls[np.isfinite(pulls)]) < 2.0) > 0.9
     assert np.nanmax(np.abs(pulls)) < 5.0
 
 
@@ -82,7 +81,8 @@ def test_stated_uncertainties_are_too_small(found: Pulls) -> None:
     assert 1.8 < rms(found.stated[:, 1:3]) < 2.6
     # The first days are fine as they stand.
     assert rms(found.stated[found.lead_days <= 10, 0]) < 1.0
-    np.testing.assert_allclose(found.pulls[:, 3:], found.stated[:, 3:], rtol=1e-12)
+    # Celestial pole offsets: 1.5, 0.2 mas, 6 mm at the Earth's surface, 20 ps; so that 1.5 times is used.
+    assert 1.2 < rms(found.stated[:, 3:]) < 1.8
 
 
 def test_the_spread_by_lead(found: Pulls) -> None:

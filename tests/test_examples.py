@@ -81,7 +81,7 @@ def test_the_project_of_the_examples(tmp_path: Path, capsys: pytest.CaptureFixtu
     given = [str(ROOT / "examples" / "readings.csv"), "--project", str(ROOT / "examples" / "project.toml")]
     assert main(["budget", *given, "--to", "TDB@BARYCENTER"]) == 0
     text = capsys.readouterr().out
-    assert "CLOCK(maser) - UTC(KRL), wander between comparisons" in text.partition("not included")[0]
+    assert "CLOCK(maser) - UTC(KRL), wander of the clock" in text.partition("not included")[0]
     assert "tide of the solid Earth, left out" not in text
     words = ["convert", given[0], str(tmp_path / "out.csv"), *given[1:], "--to", "TDB@BARYCENTER", "--sigma"]
     assert main(words) == 0

@@ -175,7 +175,7 @@ def test_notes_and_what_is_held() -> None:
 def test_chains_without_uncertainty_and_single_readings() -> None:
     t = tscale.Instants.from_iso("2025-01-01", scale="UTC")
     found = Page(report_html(tscale.chain("UTC", "TT"), t))
-    assert "Nothing in this chain is uncertain." in found.text
+    assert "No uncertainty is stated in this chain." in found.text
     assert "1 reading." in found.text
     assert "img" not in {name for name, _, _ in found.attributes}
     same = Page(report_html(tscale.chain("UTC", "UTC"), t))

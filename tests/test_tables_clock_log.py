@@ -123,7 +123,8 @@ def test_a_clock_across_a_leap_second() -> None:
 def test_uncertainty_and_rate(tmp_path: Path) -> None:
     log = ClockLog.load(write(tmp_path, HEADER + ROWS))
     at = (START + np.array([0, 43200, 86400, 3 * 86400]), np.zeros(4))
-    assert log.uncertainty_s(at).tolist() == pytest.approx([2e-9, 3e-9, 4e-9, 4e-9], rel=1e-12, abs=0)
+    # Halfway, half of the error of each: 0.5 hypot(2, 4) ns.
+    assert log.uncertainty_s(at).tolist() == pytest.approx([2e-9, 5**0.5 * 1e-9, 4e-9, 4e-9], rel=1e-12, abs=0)
     slope = 0.2e-7 / 86400
     assert float(log.rate((START + 10, 0.0))) == pytest.approx(-slope / (1 + slope), rel=1e-6, abs=0)
     step = ClockLog.load(write(tmp_path, HEADER + ROWS), interpolation="step")

@@ -9,6 +9,8 @@ from typing import Any
 import numpy as np
 import pytest
 
+import tscale
+from tscale import exact
 from tscale.errors import DataFileError, InvalidInput, OutOfSpan
 from tscale.exact import Pair
 from tscale.formats.leap_seconds import LeapSeconds
@@ -55,6 +57,18 @@ def test_published_rows(tmp_path: Path, rows: str, published_us: dict[int, float
         assert float(table.offset_s(tai_of(mjd))) == pytest.approx(offset_us * 1e-6, abs=1e-20)
 
 
+# Col. 3 of the BIPM's TTBIPM.08 through a chain: 1980-01-01, 1990-01-01, 2007-07-08 and the last row, 2008-12-29.
+@pytest.mark.parametrize(("mjd", "offset_us"), [(44239, 10.854), (47889, 18.664), (54289, 26.9755), (54829, 27.1489)])
+def test_a_chain_shows_the_published_offset(mjd: int, offset_us: float) -> None:
+    """TT(BIPM08) - TAI less 32.184 s, to the 2e-16 s that a fraction of a second is kept to."""
+    table = TTBIPM.from_rows("BIPM08", [mjd - 10, mjd, mjd + 10], np.full(3, offset_us * 1e-6))
+    chain = tscale.chain("UTC", "TT(BIPM08)", reference=tscale.ReferenceData(tt_bipm=[table]))
+    t = tscale.Instants.from_mjd(mjd, 0.0, scale="UTC")
+    ledger = chain.ledger(t)
+    beyond = exact.subtract(ledger.exact("TT(BIPM08) - TAI"), exact.normalise(32, 0.184))
+    assert float(exact.seconds(beyond)) == pytest.approx(offset_us * 1e-6, rel=0, abs=3e-16)
+
+
 def test_halfway_is_the_mean(tmp_path: Path) -> None:
     """MJD 54294, halfway between 26.9755 and 26.9783 us: 26.9769 us."""
     table = TTBIPM.load(write(tmp_path, LATE))
@@ -75,13 +89,14 @@ def test_halfway_is_the_mean(tmp_path: Path) -> None:
     ],
 )
 def test_columns_may_touch(tmp_path: Path, row: str, offset_us: float) -> None:
-    table = TTBIPM.load(write(tmp_path, LATE + row + "\n"))
+    before = f"54289. -712.1643 {offset_us:.4f}\n54299. -712.5000 {offset_us:.4f}\n"
+    table = TTBIPM.load(write(tmp_path, before + row + "\n"))
     assert float(table.offset_s(tai_of(54309))) == pytest.approx(offset_us * 1e-6, abs=1e-20)
 
 
 def test_across_a_leap_second(tmp_path: Path) -> None:
     """The day that ends 2008 is longer by a second; a straight line in TAI does not notice."""
-    table = TTBIPM.load(write(tmp_path, "54829. -743.5591   27.0\n54839. -743.5591   28.0\n"))
+    table = TTBIPM.load(write(tmp_path, "54829. -743.5591   27.0000\n54839. -743.5591   28.0000\n"))
     slope = 1e-6 / 864001
     assert float(table.offset_s(tai_of(54831, 86400))) == pytest.approx(27e-6 + slope * (3 * 86400), abs=1e-17)
     assert float(table.offset_s(tai_of(54832))) == pytest.approx(27e-6 + slope * (3 * 86400 + 1), abs=1e-17)
@@ -141,6 +156,20 @@ def test_before_the_first_row(tmp_path: Path) -> None:
         (FIRST + "42599.    44.719    44.719\n", 9),
         (FIRST + "42589.    44.719    44.719\n", 9),
         (FIRST + "42609.    44.719    44.719    1.0\n", 9),
+        (FIRST + "42609.    44.719    44.71", 9),  # cut short
+        (FIRST + "42609.    44.719    4", 9),
+        (FIRST + "42609.    44.719", 9),
+        (FIRST + "42609.", 9),
+        (FIRST + "42609.    44.719    94.719\n", 9),
+        (FIRST + "42609.    44.719   -44.719\n", 9),
+        (FIRST + "42609.    44,719    44,719\n", 9),
+        (FIRST + "42609.    44.719    44.719*\n", 9),
+        (FIRST + "42609.    44.7190    44.719\n", 9),
+        (FIRST + "42609.5   44.719    44.719\n", 9),
+        (FIRST.replace("46.258\n", "46.2x8 46.258\n"), 7),
+        (FIRST.replace("46.258    46.258", "46.258    46.258    46.258"), 7),
+        (FIRST.replace("42589.", "42579."), 8),
+        ("42589.    46.2    46.2\n42599.    45.4    45.4\n", 7),  # another layout altogether
     ],
 )
 def test_damaged_rows_are_named(tmp_path: Path, rows: str, line: int) -> None:

@@ -12,7 +12,21 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from . import budget, clocks, cluster, crosscheck, errors, fits, interop, link, serial, timecodes, transforms
+    from . import (
+        budget,
+        clocks,
+        cluster,
+        crosscheck,
+        errors,
+        fits,
+        interop,
+        link,
+        plots,
+        report,
+        serial,
+        timecodes,
+        transforms,
+    )
     from .chains import Chain, chain
     from .clocks import ClockComparison, ProperClock, compare_clocks, height_from_frequency, proper_ledger, proper_rate
     from .compiled import CompiledChain, load_compiled
@@ -62,24 +76,40 @@ __all__ = [
     "chain",
     "clocks",
     "cluster",
-    "crosscheck",
     "compare_clocks",
+    "crosscheck",
     "errors",
     "fits",
     "height_from_frequency",
     "interop",
     "link",
     "load_compiled",
+    "plots",
     "proper_ledger",
     "proper_rate",
     "read_circular",
+    "report",
     "serial",
     "timecodes",
     "transforms",
     "what_if",
 ]
 
-_ROOMS = ("budget", "clocks", "cluster", "crosscheck", "errors", "fits", "interop", "link", "serial", "timecodes", "transforms")
+_ROOMS = (
+    "budget",
+    "clocks",
+    "cluster",
+    "crosscheck",
+    "errors",
+    "fits",
+    "interop",
+    "link",
+    "plots",
+    "report",
+    "serial",
+    "timecodes",
+    "transforms",
+)
 _HOMES = {
     "Chain": "chains",
     "ClockComparison": "clocks.comparison",

@@ -58,7 +58,8 @@ class Assumptions:
     reading_sigma_s : float, optional
         Noise of the readings, independent from reading to reading.
     comparison_decay_s : float
-        Decay time between the errors of the rows of a clock log; 0: each comparison has an error of its own.
+        Decay time between the errors that are own to the rows of a clock log; 0: no two have any of it in common. What
+        all rows share, the log says itself (`common_s`).
     orientation_decay_s, prediction_decay_s : float
         The same for rows of Earth orientation. Measured ones: 2 days, after the differences between the two series of
         2014 to 2026 (IERS Bulletin A and C04: correlations of 0.6 to 0.8 after one day in UT1 and dX, dY, 0.2 to 0.5
@@ -114,7 +115,7 @@ class Assumptions:
                 "the uncertainty of the ephemeris is either its difference from another kernel (ephemeris=) or a "
                 "number (ephemeris_sigma_m=): give one of them"
             )
-        if self.ephemeris is not None and not hasattr(self.ephemeris, "states"):
+        if self.ephemeris is not None and not _is_ephemeris(self.ephemeris):
             raise InvalidInput(
                 f"ephemeris= takes another Ephemeris to compare with, got {self.ephemeris!r:.80}; open a kernel with "
                 "Ephemeris.open(path)"
@@ -136,6 +137,12 @@ class Assumptions:
             raise InvalidInput(f"assumptions= takes budget.Assumptions, got {type(given).__name__}")
         base = {} if given is None else {name: getattr(given, name) for name in names}
         return cls(**{**base, **stated})
+
+
+def _is_ephemeris(value: Any) -> bool:
+    from ..ephemeris.kernel import Ephemeris
+
+    return isinstance(value, Ephemeris)
 
 
 def _number(name: str, value: Any, *, infinite: bool = False) -> float:

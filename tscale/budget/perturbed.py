@@ -25,8 +25,8 @@ _MARGIN: Final = 6
 
 
 def moved_log(log: ClockLog, rows: IntArray, errors_s: FloatArray) -> ClockLog:
-    """A log with errors put upon the offsets of some comparisons."""
-    curve = log._curve
+    """A log with errors put upon the offsets of some comparisons, and predicted again from there if it is predicted."""
+    curve = log._measured_curve()
     shift = np.zeros(len(curve.gap))
     shift[rows] = errors_s
     offset = exact.add_seconds(curve.offset, shift)
@@ -36,10 +36,13 @@ def moved_log(log: ClockLog, rows: IntArray, errors_s: FloatArray) -> ClockLog:
         curve.sigma_s,
         curve.gap,
         log.interpolation,
+        common_s=curve.common_s,
         reset=curve.reset,
         broken=curve.broken,
         corner=curve.corner,
     )
+    if log.prediction is not None:
+        moved, _ = log.prediction.of(moved, log.name)
     return replace(log, _curve=moved)
 
 

@@ -12,15 +12,14 @@ from ..tables.earth_orientation import EarthOrientation
 from ..tables.eop_rows import EOPNodes
 from ..tables.tt_bipm import TTBIPM
 from .assumptions import Assumptions
-from .contribution import Contribution
+from .contribution import Contribution, Omission
 from .correlation import Exponential, Rows
 
-__all__ = ["EOP_COLUMNS", "OrientationRows", "orientation_rows", "phases", "tt_bipm_contributions"]
+__all__ = ["EOP_COLUMNS", "OrientationRows", "orientation_rows", "phases", "tt_bipm_contributions", "tt_bipm_omissions"]
 
 EOP_COLUMNS: Final = ("UT1 - TAI", "polar motion x", "polar motion y", "celestial pole dX", "celestial pole dY")
 """Input quantities of an Earth orientation table, in the order of its columns."""
 
-_ROUNDING_S: Final = 1e-9 / np.sqrt(12.0)
 _HELD_DECAY_S: Final = 10 * 31557600.0
 
 
@@ -31,14 +30,14 @@ def tt_bipm_contributions(table: TTBIPM, tai: Pair) -> list[Contribution]:
     """
     shape = np.shape(tai[0])
     at = (np.ravel(tai[0]), np.ravel(tai[1]))
-    rounding = bool(np.isclose(table._sigma_s, _ROUNDING_S, rtol=1e-9, atol=0.0))
+    rounding = not table.stated
     interval, elapsed_s = table._find(at)
     nodes_s = since(_first(table._tai), table._tai)
     u = np.clip(elapsed_s / np.diff(nodes_s)[interval], 0.0, 1.0)
     rows = Rows(
         np.stack([interval, interval + 1], axis=-1),
         np.stack([1.0 - u, u], axis=-1),
-        np.full(len(nodes_s), table._sigma_s),
+        table._sigma_s,
         None if rounding else np.zeros(len(nodes_s)),
         "own to each row" if rounding else "common to all",
     )
@@ -53,6 +52,17 @@ def tt_bipm_contributions(table: TTBIPM, tai: Pair) -> list[Contribution]:
             distribution="rectangular" if rounding else "normal",
             correlation=rows,
             handle=("tt_bipm", table.scale),
+        )
+    ]
+
+
+def tt_bipm_omissions(table: TTBIPM) -> list[Omission]:
+    """What a realisation of TT does not say of itself."""
+    if table.stated:
+        return []
+    return [
+        Omission(
+            f"{table.scale} itself", "not stated by its table, which is rounded; give uncertainty_s where it is loaded"
         )
     ]
 

@@ -222,7 +222,7 @@ class _Inputs:
         for (kind, name), (index, errors) in self._rows.items():
             if kind == "tt_bipm":
                 realisations[str(name)] = moved_tt_bipm(realisations[str(name)], index, errors[number])
-            elif kind == "clock":
+            elif kind in ("clock", "calibration"):
                 logs[str(name)] = moved_log(logs[str(name)], index, errors[number])
         tables["tt_bipm"] = list(realisations.values())
         clocks = [*logs.values(), *supplies.free]

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 __all__ = ["add_parser", "run"]
 
 _LAYOUTS: Final = ("iso", "mjd", "jd", "seconds", "spreadsheet")
+_TABLES: Final = (".parquet", ".arrow", ".feather")
 _BLOCK_ROWS: Final = 65536
 
 _EPILOG: Final = """\
@@ -126,6 +127,7 @@ def _libraries(args: argparse.Namespace) -> int:
 
 def _table(args: argparse.Namespace) -> int:
     from ..crosscheck import against
+    from ..crosscheck.explanation import explained
     from ..errors import InvalidInput
     from ..instants import Instants
 
@@ -139,7 +141,7 @@ def _table(args: argparse.Namespace) -> int:
     t_in = Instants(*first.pair, chain.start.scale.name, chain.start.place)
     t_out = Instants(*second.pair, chain.end.scale.name, chain.end.place)
     residuals = against(t_in, t_out, chain=chain)
-    explanation = None if args.no_explain or residuals.n < 4 else residuals.explain()
+    explanation = None if args.no_explain or residuals.n < 4 else explained(residuals)
     if args.plot is not None:
         from ..crosscheck.picture import residuals_figure, save_picture
 
@@ -159,9 +161,7 @@ def _table(args: argparse.Namespace) -> int:
 
 def _pairs(args: argparse.Namespace, start: str, end: str, reference: ReferenceData) -> tuple[Instants, Instants]:
     """Both columns of the table."""
-    from ..files.table_files import table_kind
-
-    if table_kind(args.table) is not None or Path(args.table).is_dir():
+    if args.table.lower().endswith(_TABLES) or Path(args.table).is_dir():
         return _arrow(args, start, end, reference)
     layouts = (args.input_format, args.output_format or args.input_format)
     return (

@@ -180,12 +180,7 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
 
     found: dict[str, list[tuple[str, ClockLog]]] = {}
     for path in args.clock:
-        log = _circular(path, reference) or ClockLog.load(
-            path,
-            interpolation=args.interpolation,
-            max_gap_s=args.max_gap_s,
-            leap_seconds=reference.leap_seconds,
-        )
+        log = _circular(path, reference) or _csv(path, args, reference)
         others = found.setdefault(log.scale, [])
         if others and others[0][1].reference != log.reference:
             first, before = others[0]
@@ -199,6 +194,25 @@ def clocks_of(args: argparse.Namespace, reference: ReferenceData) -> list[ClockL
         with_noise(logs[0][1] if len(logs) == 1 else ClockLog.joined([log for _, log in logs]), args)
         for logs in found.values()
     ]
+
+
+def _csv(path: str, args: argparse.Namespace, reference: ReferenceData) -> ClockLog:
+    """A log of comparisons in a CSV file."""
+    from ..errors import DataFileError
+    from ..tables.clock_log import ClockLog
+
+    try:
+        return ClockLog.load(
+            path,
+            interpolation=args.interpolation,
+            max_gap_s=args.max_gap_s,
+            leap_seconds=reference.leap_seconds,
+        )
+    except DataFileError as error:
+        if error.row is None:
+            raise
+        message = f"{error} (`tscale inspect LOG` lists all that is odd in it)"
+        raise DataFileError(message, row=error.row, path=error.path, mask=error.mask) from error
 
 
 def _circular(path: str, reference: ReferenceData) -> ClockLog | None:

@@ -9,7 +9,7 @@ from typing import Any, Final
 
 from .input_dates import add_text, dates_of_input
 from .options import add_observer, add_tables
-from .stated import add_stated, stated_of
+from .stated import add_stated, spoken, stated_of
 from .streams import is_standard_output, note, written
 from .supplies import supplied
 
@@ -78,6 +78,7 @@ def run(args: argparse.Namespace) -> int:
                 lines=lines,
                 pictures=not args.no_pictures,
                 stated=stated_of(args),
+                spoken=spoken,
             )
             notes = chain.notes(t)
     except TscaleError as error:

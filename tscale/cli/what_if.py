@@ -29,7 +29,7 @@ _TABLES: Final = {
 _EPILOG: Final = """\
 INPUT is read as by `tscale convert`. The dates are held as they are written, so that later leap seconds move what a UTC
 date means. For every term the least, the most and the rms of what moved is told, and for every step the rms pull: what
-moved over the standard uncertainties stated before and after.
+moved over the standard uncertainties of what is not the same, before and after; what both share has no part in it.
 
 example:
   tscale what-if readings.csv --site site.toml --source star.toml --to TDB@BARYCENTER \\

@@ -12,7 +12,7 @@ from ..exact import Pair
 from ..instants import Instants
 from ..scales import Node
 
-__all__ = ["check_kind", "check_out", "checked_counts", "checked_threads", "same_memory"]
+__all__ = ["check_kind", "check_out", "checked_counts", "checked_threads", "overwritten"]
 
 
 def check_kind(t: object, node: Node, what: object) -> None:
@@ -50,6 +50,7 @@ def check_out(out: Any, shape: tuple[int, ...]) -> None:
     """Let pass a pair of arrays that results can be written into."""
     try:
         whole, fraction = out
+        apart = not np.shares_memory(whole, fraction)
         good = (
             (whole.dtype, fraction.dtype) == (np.int64, np.float64)
             and whole.shape == shape == fraction.shape
@@ -61,6 +62,8 @@ def check_out(out: Any, shape: tuple[int, ...]) -> None:
         raise InvalidInput(
             f"out is a pair of writable arrays, int64 and float64, contiguous and of shape {shape}; got {_kinds(out)}"
         )
+    if not apart:
+        raise InvalidInput("the two arrays of out share memory: each needs its own")
 
 
 def _kinds(out: Any) -> str:
@@ -69,7 +72,20 @@ def _kinds(out: Any) -> str:
     return ", ".join(f"{getattr(a, 'dtype', type(a).__name__)} {getattr(a, 'shape', '')}" for a in out)
 
 
-def same_memory(a: npt.NDArray[Any], b: npt.NDArray[Any]) -> bool:
+def overwritten(given: Pair, out: Pair) -> bool:
+    """Whether some of what is given would be written over before it is read, and has to be copied first.
+
+    Each instant is read before it is written, so that each part may be written into itself; shifted against itself, or
+    into the other part, it may not.
+    """
+    return any(
+        np.may_share_memory(a, b) and not (i == j and _same_memory(a, b))
+        for i, a in enumerate(given)
+        for j, b in enumerate(out)
+    )
+
+
+def _same_memory(a: npt.NDArray[Any], b: npt.NDArray[Any]) -> bool:
     """Whether two arrays are one and the same items in memory."""
     same = a.__array_interface__["data"] == b.__array_interface__["data"]
     return same and a.strides == b.strides and a.shape == b.shape

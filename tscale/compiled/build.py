@@ -102,10 +102,12 @@ def _way(direct: Direct, span: Pair, tolerance_s: float) -> _Way:
     origin = _grid_origin((*(section.first for section in found[1:]), *bends), first)
     fitter = Fitter(direct, bends, origin, tolerance_s, noise_s)
     fits = fitter.fit(found)
+    # All dates that bound what one polynomial of the chain may be: breaks, bends and ends.
+    marks = sorted({*bends, *(end for section in found for end in section)})
     errors: list[float] = []
     for _ in range(_ROUNDS):
         table, parents = pieces_of_fits(fits, origin, tolerance_s)
-        check, bad = check_pieces(direct, table, noise_s, tolerance_s)
+        check, bad = check_pieces(direct, table, noise_s, tolerance_s, marks)
         if not bad.size:
             return table, check, found
         errors.append(check.max_error_s)

@@ -38,6 +38,11 @@ class Check(NamedTuple):
     degree: int
 
 
+def _number(name: str, value: object) -> None:
+    if isinstance(value, bool) or not isinstance(value, (int, float)):
+        raise TypeError(f"{name} of the certificate holds {value!r:.40}, which is no number")
+
+
 @dataclass(frozen=True)
 class TableUsed:
     """A table, log or kernel that the chain reads, with the SHA-256 of its content."""
@@ -130,10 +135,26 @@ class Certificate:
 
     @classmethod
     def from_dict(cls, plain: dict[str, Any]) -> Certificate:
-        """The inverse of `to_dict`."""
+        """The inverse of `to_dict`.
+
+        Raises
+        ------
+        TypeError, ValueError, KeyError
+            For values that `to_dict` does not give.
+        """
         values = dict(plain)
         for name in ("forward", "inverse"):
-            values[name] = Check(**{**values[name], "at": tuple(values[name]["at"])})
+            check = dict(values[name])
+            whole, fraction = check.pop("at")
+            for value in (whole, fraction, *check.values()):
+                _number(name, value)
+            values[name] = Check(**check, at=(whole, fraction))
+        for name in ("tolerance_s", "rate_error"):
+            _number(name, values[name])
+        texts = [values["chain"], values["version"], *values["span"], *values["notes"]]
+        texts += [value for value in (values["site"], values["source"]) if value is not None]
+        if not all(isinstance(text, str) for text in texts) or len(values["span"]) != 2:
+            raise TypeError("a text of the certificate is none")
         values["tables"] = tuple(TableUsed(**used) for used in values["tables"])
         values["span"], values["notes"] = tuple(values["span"]), tuple(values["notes"])
         return cls(**values)

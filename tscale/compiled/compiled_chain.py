@@ -15,7 +15,7 @@ from ..exact import FloatArray, IntArray, Pair
 from ..instants import Instants
 from ..scales import Node
 from ..storage import write_atomically
-from .arguments import check_kind, check_out, checked_counts, checked_threads, same_memory
+from .arguments import check_kind, check_out, checked_counts, checked_threads, overwritten
 from .certificate import Certificate
 from .container import from_bytes, to_bytes
 from .piece_table import BLOCK, OutsidePieces, PieceTable, Scratch
@@ -27,6 +27,9 @@ _SHARE: Final = 16 * BLOCK
 operations on a block the threads wait for each other."""
 
 _THREAD_BLOCK: Final = 4 * BLOCK
+
+_FEW: Final = 8
+"""Instants up to which one after the other is quicker than arrays."""
 
 
 class CompiledChain:
@@ -154,12 +157,12 @@ class CompiledChain:
             check_out(out, w.shape)
         count = checked_threads(threads)
         flat = w.reshape(-1), f.reshape(-1)
-        for given, target in zip((w, f), out, strict=True):
-            # Written in place each instant is read before; shifted against each other they would not be.
-            if np.may_share_memory(given, target) and not same_memory(given, target):
-                flat = flat[0].copy(), flat[1].copy()
         flat_out = out[0].reshape(-1), out[1].reshape(-1)
         try:
+            if w.size <= _FEW and _one_by_one(self._tables[way], flat, flat_out):
+                return out
+            if overwritten((w, f), out):
+                flat = flat[0].copy(), flat[1].copy()
             _in_shares(self._tables[way], flat, flat_out, count)
         except OutsidePieces:
             raise self._outside(way, w, f) from None
@@ -253,6 +256,18 @@ def load_compiled(path: str | Path) -> CompiledChain:
 
 
 # ---- inside ----------------------------------------------------------------------------------------
+
+
+def _one_by_one(table: PieceTable, given: Pair, out: Pair) -> bool:
+    """Evaluate few instants without the cost of arrays; not those with fractions outside [0, 1)."""
+    found = []
+    for whole, fraction in zip(given[0].tolist(), given[1].tolist(), strict=True):
+        if not 0.0 <= fraction < 1.0:
+            return False
+        found.append(table.one(whole, fraction))
+    for number, (whole, fraction) in enumerate(found):
+        out[0][number], out[1][number] = whole, fraction
+    return True
 
 
 def _in_shares(table: PieceTable, given: Pair, out: Pair, threads: int) -> None:

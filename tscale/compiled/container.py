@@ -10,6 +10,7 @@ from __future__ import annotations
 import hashlib
 import io
 import json
+import math
 import zipfile
 from pathlib import Path
 from typing import Any, Final
@@ -39,6 +40,16 @@ _ARRAYS: Final = {
     "shift_s": np.dtype("<i8"),
     "powers": np.dtype("<f8"),
 }
+
+_MOST_S: Final = 2**61
+_LONGEST_S: Final = 2**51
+"""Seconds below which those of a piece turn exactly into floats (see `piece_table`)."""
+
+_UNREADABLE: Final = (
+    KeyError, IndexError, ValueError, TypeError, AttributeError, ArithmeticError, RuntimeError, EOFError,
+    zipfile.BadZipFile, TscaleError,
+)  # fmt: skip
+"""What comes of a file that was sealed by someone else; a RuntimeError of JSON that is nested too deeply."""
 
 _Made = tuple[Node, Node, tuple[Pair, Pair], tuple[PieceTable, PieceTable], Certificate]
 
@@ -99,12 +110,13 @@ def from_bytes(content: bytes, path: Path) -> _Made:
         )
     try:
         with zipfile.ZipFile(io.BytesIO(content)) as archive:
-            header = json.loads(archive.read(_HEADER))
+            header = json.loads(_member(archive, _HEADER))
             if header["format"] != FORMAT:
                 raise ValueError(f"format {header['format']!r}")
-            if header["version"] > VERSION:
+            version = _whole_number(header, "version", 1, 2**31)
+            if version > VERSION:
                 raise DataFileError(
-                    f"{path} is of version {header['version']}, and this package reads up to {VERSION}: upgrade tscale",
+                    f"{path} is of version {version}, and this package reads up to {VERSION}: upgrade tscale",
                     path=path,
                 )
             tables = tuple(_table(archive, way, header["ways"][way]) for way in _WAYS)
@@ -113,9 +125,11 @@ def from_bytes(content: bytes, path: Path) -> _Made:
         nodes = Node.parse(header["start"]), Node.parse(header["end"])
     except DataFileError:
         raise
-    except (KeyError, ValueError, TypeError, AttributeError, zipfile.BadZipFile, TscaleError) as error:
+    except _UNREADABLE as error:
         raise DataFileError(
-            f"{path} is sealed but is not a compiled chain that can be read: {error}", path=path
+            f"{path} is sealed but is not a compiled chain that can be read ({str(error) or type(error).__name__}): "
+            "give a file that CompiledChain.save wrote, or compile anew",
+            path=path,
         ) from error
     return *nodes, (spans[0], spans[1]), (tables[0], tables[1]), facts
 
@@ -127,21 +141,59 @@ def _npy(array: npt.NDArray[Any]) -> bytes:
 
 
 def _table(archive: zipfile.ZipFile, way: str, facts: dict[str, Any]) -> PieceTable:
-    arrays: list[Any] = []
-    for name, kind in _ARRAYS.items():
-        array = np.lib.format.read_array(io.BytesIO(archive.read(f"{way}_{name}.npy")), allow_pickle=False)
-        if array.dtype != kind or array.ndim != (2 if name == "powers" else 1):
-            raise ValueError(f"{way}_{name} is {array.dtype} of {array.ndim} dimensions")
-        arrays.append(array.astype(kind.newbyteorder("=")))
-    if len({array.shape[-1] for array in arrays}) != 1 or arrays[0].shape[0] < 3:
-        raise ValueError(f"columns of {way} differ in length")
+    arrays = [_array(_member(archive, f"{way}_{name}.npy"), f"{way}_{name}", kind) for name, kind in _ARRAYS.items()]
+    if len({array.shape[-1] for array in arrays}) != 1 or arrays[0].size < 3 or not arrays[-1].size:
+        raise ValueError(f"columns of {way} differ in length, or are too short")
     starts, fractions, centers, shifts, powers = arrays
-    return PieceTable(starts, fractions, centers, shifts, powers, int(facts["origin"]), int(facts["cell_s"]))
+    first = int(starts[1])
+    origin = _whole_number(facts, "origin", -_MOST_S, first)
+    cell_s = _whole_number(facts, "cell_s", 1, _MOST_S)
+    rising = (starts[1:] > starts[:-1]) | ((starts[1:] == starts[:-1]) & (fractions[1:] >= fractions[:-1]))
+    if not (rising.all() and (fractions >= 0.0).all() and (fractions < 1.0).all()):
+        raise ValueError(f"the pieces of {way} are not in order of their starts")
+    if (
+        any(part[1:].min() < -_MOST_S or part[1:].max() > _MOST_S for part in (starts, centers, shifts))
+        or (np.abs(centers[1:-1] - starts[1:-1]) > _LONGEST_S).any()
+    ):
+        raise ValueError(f"{way} has dates out of all range")
+    holes = np.isnan(powers).all(axis=0)
+    if not (holes[0] and holes[-1] and (holes | (np.abs(powers) < _LONGEST_S).all(axis=0)).all()):
+        raise ValueError(f"{way} has coefficients that are no numbers")
+    return PieceTable(starts, fractions, centers, shifts, powers, origin, cell_s)
+
+
+def _member(archive: zipfile.ZipFile, name: str) -> bytes:
+    info = archive.getinfo(name)
+    if info.compress_type != zipfile.ZIP_STORED:
+        raise ValueError(f"{name} is deflated")
+    return archive.read(info)
+
+
+def _array(content: bytes, name: str, kind: np.dtype[Any]) -> npt.NDArray[Any]:
+    """An array of a member, of the right kind and no longer than the member is."""
+    stream = io.BytesIO(content)
+    np.lib.format.read_magic(stream)
+    shape, _, found = np.lib.format.read_array_header_1_0(stream)
+    if found != kind or len(shape) != (2 if name.endswith("powers") else 1):
+        raise ValueError(f"{name} is {found} of {len(shape)} dimensions")
+    if math.prod(shape) * kind.itemsize != len(content) - stream.tell():
+        raise ValueError(f"{name} is not as long as it says")
+    stream.seek(0)
+    array: npt.NDArray[Any] = np.lib.format.read_array(stream, allow_pickle=False)
+    return array.astype(kind.newbyteorder("="))
+
+
+def _whole_number(facts: dict[str, Any], name: str, least: int, most: int) -> int:
+    value = facts[name]
+    if isinstance(value, bool) or not isinstance(value, int) or not least <= value <= most:
+        raise ValueError(f"{name} is a whole number from {least} to {most}, got {value!s:.40}")
+    return value
 
 
 def _ends(facts: dict[str, Any]) -> Pair:
     ends = facts["first"], facts["last"]
-    return (
-        np.array([int(end[0]) for end in ends], dtype=np.int64),
-        np.array([float.fromhex(end[1]) for end in ends]),
-    )
+    whole = np.array([_whole_number({"an end": end[0]}, "an end", -_MOST_S, _MOST_S) for end in ends], dtype=np.int64)
+    fraction = np.array([float.fromhex(end[1]) for end in ends])
+    if not ((fraction >= 0.0) & (fraction < 1.0)).all() or not (whole[1] - whole[0]) + (fraction[1] - fraction[0]) > 0:
+        raise ValueError("the ends of the span are not in order")
+    return whole, fraction

@@ -38,6 +38,7 @@ _STEEP: Final = 2.0**-8
 _AT_ONCE: Final = 200_000
 _SLIVER: Final = 1.0 / 16.0
 _NEAR: Final = 1.0 / 256.0
+_NEAREST_S: Final = 2.0**-34
 
 
 class Fits(NamedTuple):
@@ -92,7 +93,7 @@ class Fitter:
 
     direct: Direct
     bends: tuple[Count, ...]
-    """Where polynomials meet without a jump, in order: looked at only where a fit across them is not good."""
+    """Where polynomials meet without a jump, in order: cut at only where a fit across them is not good."""
     origin: int
     tolerance_s: float
     noise_s: float
@@ -108,8 +109,11 @@ class Fitter:
         return self._fitted(grid_cuts(sections, self.origin, 0))
 
     def again(self, fits: Fits, bad: BoolArray) -> Fits:
-        """Fit those marked `bad` again, on shorter intervals; errors as `fit`."""
-        return _sorted([fits.take(~bad), self._fitted(self._shorter(fits, np.flatnonzero(bad)))])
+        """Fit those marked `bad` again, on shorter intervals; errors as `fit`.
+
+        They are cut at every bend: what a fit has passed over may go on between any two of them.
+        """
+        return _sorted([fits.take(~bad), self._fitted(self._shorter(fits, np.flatnonzero(bad), 0.0))])
 
     def _fitted(self, todo: Fits) -> Fits:
         done: list[Fits] = []
@@ -119,9 +123,9 @@ class Fitter:
             todo = self._shorter(fits, np.flatnonzero(~good))
         return _sorted(done)
 
-    def _bends_between(self, first: Count, last: Count) -> list[Count]:
+    def _bends_between(self, first: Count, last: Count, near: float) -> list[Count]:
         # One that is very near an end bends what is fitted by little; shorter intervals will be cut there.
-        least = ((last[0] - first[0]) + (last[1] - first[1])) * _NEAR
+        least = max(((last[0] - first[0]) + (last[1] - first[1])) * near, _NEAREST_S)
         inner = self.bends[bisect_right(self.bends, first) : bisect_left(self.bends, last)]
         return [
             bend
@@ -129,14 +133,14 @@ class Fitter:
             if (bend[0] - first[0]) + (bend[1] - first[1]) > least and (last[0] - bend[0]) + (last[1] - bend[1]) > least
         ]
 
-    def _shorter(self, fits: Fits, bad: IntArray) -> Fits:
+    def _shorter(self, fits: Fits, bad: IntArray, near: float = _NEAR) -> Fits:
         """The intervals `bad` cut where the chain may bend, or else by the next size of grid that cuts them."""
         parts: list[Fits] = [fits.take(bad[:0])]
         for k in bad.tolist():
             first = (int(fits.first_whole[k]), float(fits.first_fraction[k]))
             last = (int(fits.last_whole[k]), float(fits.last_fraction[k]))
             size = int(fits.size[k])
-            inner = self._bends_between(first, last)
+            inner = self._bends_between(first, last, near)
             if inner:
                 ends = (first, *inner, last)
                 parts.append(grid_cuts([Section(*pair) for pair in pairwise(ends)], self.origin, size))

@@ -107,6 +107,28 @@ def _knots(site: Any) -> Iterator[tuple[str, Pair]]:
         motion = piece.motion
         if hasattr(motion, "_whole"):
             yield site.scale, (motion._whole, motion._fraction)
+        elif hasattr(motion, "_segment"):
+            for edges_s in _segment_edges(motion):
+                yield site.scale, exact.from_seconds(edges_s)
+
+
+def _segment_edges(motion: Any) -> Iterator[FloatArray]:
+    """Where records or windows of states change in a segment of a kernel, and in those of the bodies above it."""
+    segments, seen = [motion._segment], set()
+    while segments:
+        segment = segments.pop()
+        if segment.grid is not None:
+            start_s, step_s = segment.grid
+            yield start_s + step_s * np.arange(int((segment.end_s - start_s) // step_s) + 1)
+        elif hasattr(segment, "_epochs"):
+            epochs = segment._epochs
+            yield epochs
+            if segment._window % 2:  # the window moves on in the middle between two epochs
+                yield 0.5 * (epochs[1:] + epochs[:-1])
+        seen.add(segment.center)
+        if segment.center != motion._top:
+            above = motion._kernel._paths._by_target.get(segment.center, ())
+            segments += [other for other in above if other.center not in seen]
 
 
 def _record_grids(chain: Chain) -> Iterator[Pair]:

@@ -11,6 +11,7 @@ operations in the same order: they agree to the last bit, whatever the order and
 
 from __future__ import annotations
 
+from bisect import bisect_right
 from typing import Any, Final
 
 import numpy as np
@@ -255,9 +256,10 @@ class PieceTable:
             raise OutsidePieces
         piece = int(self._first[cell])
         if self._mixed[cell]:
-            last = len(self.start_whole) - 1
-            while piece < last and (self.start_whole[piece + 1], self.start_fraction[piece + 1]) <= (whole, fraction):
-                piece += 1
+            # The last that starts not after it: by whole seconds, then back over those that start later in its second.
+            piece = bisect_right(self.start_whole, whole, piece) - 1
+            while piece > 0 and self.start_whole[piece] == whole and self.start_fraction[piece] > fraction:
+                piece -= 1
         x = float(whole - int(self.center[piece])) + fraction
         powers = self.powers[:, piece].tolist()
         value = powers.pop()

@@ -22,6 +22,7 @@ _SLACK_S: Final = 1e-12
 _TOUCH_S: Final = 1e-15
 _ROUNDING: Final = 2.2e-16
 _FINER: Final = 1.0 / 64.0
+_FAR: Final = 16.0
 
 
 def pieces_of_fits(fits: Fits, origin: int, tolerance_s: float) -> tuple[PieceTable, IntArray]:
@@ -147,6 +148,10 @@ def _powers(local: FloatArray, off_s: FloatArray, half_s: FloatArray, least_s: f
     to_powers = np.zeros((_DEGREE + 1, _DEGREE + 1))
     for k in range(_DEGREE + 1):
         to_powers[: k + 1, k] = np.polynomial.chebyshev.cheb2poly(np.eye(_DEGREE + 1)[k])[: k + 1]
+    # On slivers between two bends what is beyond the rate is the chain's rounding, and moving the origin by thousands
+    # of their lengths would raise it beyond all measure: the tail of the series goes while it comes to little.
+    tail = np.cumsum(np.abs(local[::-1]), axis=0)[::-1]
+    local = np.where((np.abs(off_s) > _FAR * half_s) & (tail <= 64.0 * least_s), 0.0, local)
     of_u = to_powers @ local
     # Moving the origin of a piece of less than a second blows up its higher coefficients until their sums round by more
     # than the tolerance; those that come to nothing on the piece itself go instead.

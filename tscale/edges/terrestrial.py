@@ -9,9 +9,9 @@ import numpy as np
 from .. import exact
 from ..budget.assumptions import Assumptions
 from ..budget.comparisons import clock_contributions, clock_omissions
-from ..budget.contribution import Contribution
+from ..budget.contribution import Contribution, Omission
 from ..budget.places import left_out
-from ..budget.rows import orientation_rows, tt_bipm_contributions
+from ..budget.rows import orientation_rows, tt_bipm_contributions, tt_bipm_omissions
 from ..constants import L_G
 from ..exact import FloatArray, Pair
 from ..instants import Instants
@@ -53,6 +53,23 @@ _FIXED_SOURCES: Final = {
 }
 
 
+_DEFINED: Final = {
+    "TT": Omission(
+        "TT as TAI realises it",
+        "TAI + 32.184 s by definition; TT(BIPM), which is nearer to TT, differs from that by 27.7 us: go to TT(BIPMyy) "
+        "where that counts",
+    )
+} | {
+    name: Omission(
+        f"{name} as its system keeps it",
+        f"only the defined offset is applied; the time broadcast differs from it by some ns to {most} (BIPM Circular "
+        "T, section on GNSS times): give a log of comparisons where that counts",
+    )
+    for name, most in (("GPS", "tens of ns"), ("GST", "tens of ns"), ("BDT", "tens of ns"), ("GLONASS", "some 100 ns"))
+}
+"""What steps by definition leave out."""
+
+
 def fixed_step(start: str, end: str, place: str | None, reference: ReferenceData) -> Step:
     """Between TAI and UTC, TT or a satellite-navigation time: constant in counts, a table in labels."""
     a, b = Scale.parse(start), Scale.parse(end)
@@ -76,6 +93,7 @@ def fixed_step(start: str, end: str, place: str | None, reference: ReferenceData
         backward=lambda t: terrestrial.to_fixed_scale(t, start),
         terms=terms,
         rate=_zero_rate,
+        omissions=lambda assumptions: [_DEFINED[name] for name in (start, end) if name in _DEFINED],
         notes=notes,
     )
 
@@ -144,6 +162,7 @@ def tt_bipm_step(place: str | None, table: TTBIPM) -> Step:
         terms=terms,
         rate=lambda before, after: table.rate(before.pair),
         contributions=lambda before, assumptions: tt_bipm_contributions(table, before.pair),
+        omissions=lambda assumptions: tt_bipm_omissions(table),
     )
 
 

@@ -24,4 +24,7 @@ def file_path(path: Any, what: str) -> Path:
     name = os.fspath(path)
     if not isinstance(name, str) or not name or "\0" in name:
         raise InvalidInput(f"{what} is opened by its path, a text that is not empty and has no NUL; got {name!r}")
-    return Path(name).expanduser()
+    try:
+        return Path(name).expanduser()
+    except RuntimeError as error:
+        raise InvalidInput(f"{what}: {name!r} begins in a home folder that is not there ({error})") from error

@@ -23,8 +23,8 @@ from .spk_writer import CHECKSUM_LINE, spk_bytes
 
 __all__ = ["VERSION", "Integrated", "kept"]
 
-VERSION: Final = 1
-"""Raised whenever the integrator would give other numbers: older files are then not used."""
+VERSION: Final = 2
+"""Raised whenever the integrator would give other numbers or the layout changes: older files are then not used."""
 
 _CENTER: Final = 1000000000
 _GAIN: Final = re.compile(r"^Rate taken out: (-?\d+)/(\d+)$", re.MULTILINE)
@@ -51,11 +51,14 @@ def kept(ephemeris: Ephemeris, body: int, anchor_key: str, build: Callable[[], I
     """
     masses = sorted((number, float(value).hex()) for number, value in ephemeris.given_gm_m3_s2.items())
     key = hashlib.sha256(f"{ephemeris.sha256}\n{masses!r}\n{body}\n{anchor_key}".encode()).hexdigest()
-    path = cache_folder() / f"coordinate_time_{body}_{key[:32]}_v{VERSION}.bsp"
-    found = _read(path, key, body)
-    if found is not None:
-        return found
+    found: Integrated | None = None
+    folder: Path | str = "the cache folder"
     try:
+        folder = cache_folder()
+        path = folder / f"coordinate_time_{body}_{key[:32]}_v{VERSION}.bsp"
+        found = _read(path, key, body)
+        if found is not None:
+            return found
         with locked(path):
             found = _read(path, key, body)  # another process may have built it meanwhile
             if found is None:
@@ -64,7 +67,7 @@ def kept(ephemeris: Ephemeris, body: int, anchor_key: str, build: Callable[[], I
             return found
     except OSError as error:
         warnings.warn(
-            f"cannot store the coordinate time of a body in {path.parent} ({error.strerror or error}): it is built in "
+            f"cannot store the coordinate time of a body in {folder} ({error.strerror or error}): it is built in "
             "memory each time; set TSCALE_CACHE to a folder that can be written",
             stacklevel=2,
         )
@@ -83,6 +86,7 @@ def _content(found: Integrated, key: str, body: int) -> bytes:
     )
     if found.anchor is not None:
         comment += f"Anchor: {found.anchor.encode('ascii', 'replace').decode()}\n"
+    comment += f"SHA-256 of the lines above: {hashlib.sha256(comment.encode()).hexdigest()}\n"
     return spk_bytes(
         title="coordinate time of a body (s)",
         comment=comment,
@@ -105,6 +109,9 @@ def _read(path: Path, key: str, body: int) -> Integrated | None:
         stated, gain = CHECKSUM_LINE.search(comment), _GAIN.search(comment)
         if len(arrays) != 1 or stated is None or gain is None or f"Key: {key}" not in comment.splitlines():
             raise DataFileError(f"{path} is not what its name says", path=path)
+        lines, _, line_sum = comment.partition("SHA-256 of the lines above: ")
+        if hashlib.sha256(lines.encode()).hexdigest() != line_sum.partition("\n")[0]:
+            raise DataFileError(f"{path} is damaged: its comments do not fit their checksum", path=path)
         if hashlib.sha256(np.ascontiguousarray(arrays[0].words).tobytes()).hexdigest() != stated[1]:
             raise DataFileError(f"{path} is damaged: its numbers do not fit the checksum in its comments", path=path)
         whole = ChebyshevSegment(arrays[0], path.name, container).table

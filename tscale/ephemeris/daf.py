@@ -19,6 +19,7 @@ from ..errors import DataFileError
 __all__ = ["Array", "Container", "check_sha256", "file_sha256", "mass_parameters", "read_container"]
 
 _RECORD_BYTES: Final = 1024
+_LONGEST_S: Final = 2.0**62
 _TEXT_BYTES: Final = 1000  # of each comment record
 
 
@@ -108,7 +109,7 @@ def read_container(path: Path) -> Container:
     words = np.memmap(path, dtype=np.dtype(f"{endian}f8"), mode="r")
     arrays = []
     for name, (start_s, end_s, target, center, frame, data_type, first, last) in found:
-        if not 1 <= first <= last:
+        if not (1 <= first <= last and -_LONGEST_S < start_s <= end_s < _LONGEST_S):
             raise DataFileError(f"{path}: the descriptor of body {target} is damaged: fetch the file again", path=path)
         if last > words.size:
             raise _truncated(path, size, 8 * last)

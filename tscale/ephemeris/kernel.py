@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import threading
 from collections.abc import Iterable, Mapping, Sequence
 from functools import lru_cache
@@ -90,7 +91,9 @@ class Ephemeris:
                 raise InvalidInput(
                     f"mass parameter of {body_name(body)} is {value!r} m3/s2: give a finite number, not negative"
                 )
-        return cls(file_path(path, "a kernel").resolve(), {body: float(value) for body, value in given.items()})
+        return cls(
+            Path(os.path.realpath(file_path(path, "a kernel"))), {body: float(value) for body, value in given.items()}
+        )
 
     @classmethod
     def default(cls) -> Ephemeris:

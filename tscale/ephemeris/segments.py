@@ -12,7 +12,7 @@ from ..exact import FloatArray
 from .bodies import body_name
 from .chebyshev import ChebyshevTable
 from .daf import Array, Container
-from .state_segments import STATE_TYPES, StateSegment
+from .state_segments import STATE_TYPES, StateSegment, check_finite
 
 __all__ = [
     "CHEBYSHEV_TYPES",
@@ -60,6 +60,11 @@ class ChebyshevSegment:
         self.target, self.center = array.target, array.center
         states = array.data_type == 3
         components = 6 if states else 3
+        if array.words.size <= _TRAILER_WORDS:
+            raise DataFileError(
+                f"{where} is damaged: it has {array.words.size} words and no trailer: fetch the file again",
+                path=container.path,
+            )
         start_s, step_s, size, records = (float(x) for x in array.words[-_TRAILER_WORDS:])
         coefficients = (size - _RECORD_HEAD_WORDS) / components
         if not (
@@ -78,6 +83,7 @@ class ChebyshevSegment:
         rows = array.words[:-_TRAILER_WORDS].reshape(int(records), int(size))[:, _RECORD_HEAD_WORDS:]
         self.table = ChebyshevTable(start_s, step_s, rows.reshape(int(records), components, int(coefficients)), where)
         self._states = states
+        self._where, self._path = where, container.path
         self.grid: tuple[float, float] | None = (start_s, step_s)
         # The descriptor may claim less than its records hold, never more.
         self.start_s = max(array.start_s, self.table.span[0])
@@ -91,10 +97,10 @@ class ChebyshevSegment:
         if grid not in located:
             located[grid] = self.table.locate(whole, fraction)
         record, argument = located[grid]
-        if not self._states:
-            return self.table.evaluate(record, argument, rate)
-        state, _ = self.table.evaluate(record, argument, rate=False)
-        return state[:3], state[3:]
+        with np.errstate(invalid="ignore", over="ignore"):
+            value, slope = self.table.evaluate(record, argument, rate and not self._states)
+            check_finite(self._where, self._path, value, slope)
+        return (value[:3], value[3:]) if self._states else (value, slope)
 
     def evaluate_apart(
         self, whole: npt.NDArray[np.int64], fraction: FloatArray, located: Located
@@ -103,7 +109,9 @@ class ChebyshevSegment:
         grid = self.table.grid
         if grid not in located:
             located[grid] = self.table.locate(whole, fraction)
-        constant, rest = self.table.evaluate_apart(*located[grid])
+        with np.errstate(invalid="ignore", over="ignore"):
+            constant, rest = self.table.evaluate_apart(*located[grid])
+            check_finite(self._where, self._path, constant, rest)
         return constant[:3], rest[:3]
 
 

@@ -5,6 +5,7 @@ NAIF SPK Required Reading, "Type 8" and "Type 12" (equal steps), "Type 9" and "T
 
 from __future__ import annotations
 
+from pathlib import Path
 from typing import Final
 
 import numpy as np
@@ -14,7 +15,7 @@ from ..errors import DataFileError
 from ..exact import FloatArray
 from .daf import Array, Container
 
-__all__ = ["STATE_TYPES", "StateSegment"]
+__all__ = ["STATE_TYPES", "StateSegment", "check_finite"]
 
 STATE_TYPES: Final = (8, 9, 12, 13)
 """Lagrange (8, 9) and Hermite (12, 13) on equal (8, 12) and unequal (9, 13) steps."""
@@ -52,6 +53,7 @@ class StateSegment:
         if not (np.diff(self._epochs) > 0).all():
             raise damage
         self._window = min(window, count)
+        self._where, self._path = where, container.path
 
     def evaluate(
         self, whole: npt.NDArray[np.int64], fraction: FloatArray, rate: bool, located: object
@@ -71,12 +73,26 @@ class StateSegment:
         # Seconds from the date to each epoch, without rounding the date.
         ahead = (self._epochs[pick] - whole[:, None]) - fraction[:, None]
         states = self._states[pick]  # (n, window, 6)
-        if self._hermite:
-            position, velocity = _hermite(ahead, states[..., :3], states[..., 3:])
-        else:
-            both = _neville(ahead, states)
-            position, velocity = both[:, :3], both[:, 3:]
+        with np.errstate(invalid="ignore", over="ignore", divide="ignore"):
+            if self._hermite:
+                position, velocity = _hermite(ahead, states[..., :3], states[..., 3:])
+            else:
+                both = _neville(ahead, states)
+                position, velocity = both[:, :3], both[:, 3:]
+            check_finite(self._where, self._path, position, velocity)
         return position.T, velocity.T if rate else None
+
+
+def check_finite(where: str, path: Path, *values: FloatArray | None) -> None:
+    """Refuse what a damaged segment gives: no date has a position that is infinite or no number.
+
+    Called where numpy does not warn of overflow.
+    """
+    # The sum takes a fraction of the time of a look at each value, and is finite only if all are.
+    if not all(value is None or np.isfinite(np.sum(value)) for value in values):
+        raise DataFileError(
+            f"{where} is damaged: the numbers there give no finite position: fetch the file again", path=path
+        )
 
 
 def _neville(ahead: FloatArray, values: FloatArray) -> FloatArray:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import math
+import os
 import re
 import threading
 import warnings
@@ -130,11 +131,13 @@ class TimeEphemeris:
         if key == manifest(DEFAULT_KERNEL)["sha256"]:
             with _OPENING:  # so that all threads get the same one
                 return _shipped()
-        path = cache_folder() / f"time_ephemeris_{key[:32]}_v{VERSION}.bsp"
-        found = cls._cached(path, key)
-        if found is not None:
-            return found
+        folder: Path | str = "the cache folder"
         try:
+            folder = cache_folder()
+            path = folder / f"time_ephemeris_{key[:32]}_v{VERSION}.bsp"
+            found = cls._cached(path, key)
+            if found is not None:
+                return found
             with locked(path):
                 found = cls._cached(path, key)  # another process may have built it meanwhile
                 if found is not None:
@@ -143,7 +146,7 @@ class TimeEphemeris:
                 built.write_spk(path)
         except OSError as error:
             warnings.warn(
-                f"cannot store the time ephemeris in {path.parent} ({error.strerror or error}): it is built in memory "
+                f"cannot store the time ephemeris in {folder} ({error.strerror or error}): it is built in memory "
                 "each time; set TSCALE_CACHE to a folder that can be written",
                 stacklevel=2,
             )
@@ -164,7 +167,7 @@ class TimeEphemeris:
     @classmethod
     def _open(cls, path: str | Path, key: str | None) -> TimeEphemeris:
         """Read a kernel; with a `key` only one that this module wrote, checksum and all, for that key."""
-        path = file_path(path, "a file of TT - TDB").resolve()
+        path = Path(os.path.realpath(file_path(path, "a file of TT - TDB")))
         container = read_container(path)
         found = [a for a in container.arrays if (a.target, a.center) == (TIME_TARGET, TIME_CENTER)]
         if len(found) != 1 or found[0].data_type not in CHEBYSHEV_TYPES:
@@ -188,6 +191,8 @@ class TimeEphemeris:
         whole = ChebyshevSegment(found[0], path.name, container).table
         # Only x is kept, in memory: the file may be replaced while this value is in use.
         rows = np.array(whole.coefficients[:, :1], dtype=np.float64)
+        if not np.isfinite(rows).all():
+            raise DataFileError(f"{path} is damaged: it holds numbers that are not finite: build it anew", path=path)
         table = ChebyshevTable(whole.start_s, whole.step_s, rows, path.name)
         return cls(table, path.name, path, file_sha256(path), comment)
 

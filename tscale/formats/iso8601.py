@@ -27,6 +27,7 @@ _DATE: Final = r"(?P<year>\d{4}|[+-]\d{5,12})-(?:(?P<month>\d\d)-(?P<day>\d\d)|(
 _SECOND: Final = r"(?P<second>\d\d|[1-9]\d{2,4})(?:[.,](?P<decimals>\d{1,18}))?"
 _CLOCK: Final = rf"[T ](?P<hour>\d\d):(?P<minute>\d\d)(?::{_SECOND})?(?P<z>Z)?"
 _LAYOUT: Final = re.compile(rf"{_DATE}(?:{_CLOCK})?\Z", re.ASCII)
+_LONGEST: Final = 100  # the longest date has 53 characters
 _CHUNK: Final = 16384  # texts at a time, so that the columns stay in the cache
 _ZERO: Final = ord("0")
 
@@ -73,7 +74,7 @@ def parse(texts: Any, *, allow_z: bool = False, allow_second_60: bool = False, l
     if not good.all():
         bad = ~good
         at = first_item(bad)
-        text = str(flat[at])
+        text = str(flat[at])[: _LONGEST + 1]
         raise TextError(
             f"{int(np.count_nonzero(bad))} of {bad.size} texts are not dates; the first (item {at}) is {text!r}: "
             + fault(text, allow_z=allow_z, allow_second_60=allow_second_60, last_minute=reader.last_minute),
@@ -234,19 +235,33 @@ class _Reader:
         return alike, mjd, np.broadcast_to(whole, alike.shape), fraction, np.broadcast_to(good, alike.shape)
 
 
+def _cut(texts: Any) -> Any:
+    """Shorten texts that are too long for any date, still too long: an array is as wide as its longest text."""
+    if isinstance(texts, str):
+        return texts[: _LONGEST + 1]
+    if isinstance(texts, list | tuple) and texts:
+        nested = not isinstance(texts[0], str)
+        try:
+            if nested or max(map(len, texts)) > _LONGEST:
+                return [_cut(text) for text in texts]
+        except TypeError:  # something without a length, which is said elsewhere
+            pass
+    return texts
+
+
 def _as_texts(texts: Any) -> npt.NDArray[np.str_]:
     try:
-        array = np.asarray(texts)
+        array = np.asarray(_cut(texts))
     except ValueError as error:
         raise InvalidInput(f"dates must be texts in an array of one shape: {error}") from error
     if array.dtype.kind == "S":
         return np.char.decode(array, "latin-1")
     if array.dtype.kind == "O" and all(isinstance(text, str) for text in array.flat):
-        return array.astype(np.str_)
+        return np.asarray(_cut(array.tolist()), dtype=np.str_).reshape(array.shape)
     if array.dtype.kind not in "UT" and array.size:
         raise InvalidInput(f"dates must be texts, got {array.dtype}; for numbers use from_mjd, from_jd or from_seconds")
     if array.dtype.kind != "U":
-        return array.astype(np.str_)
+        return np.asarray(_cut(array.tolist()), dtype=np.str_).reshape(array.shape)
     return array.astype(array.dtype.newbyteorder("="), copy=False)
 
 

@@ -10,6 +10,7 @@ from typing import Final, NamedTuple
 import numpy as np
 
 from ..errors import DataFileError
+from ..storage import read_bytes
 from .gregorian import date_from_mjd
 from .leap_second_rows import FIRST_STEP, LeapRow, exact_number, nanoseconds
 
@@ -18,6 +19,8 @@ __all__ = ["LeapFile", "read_leap_file"]
 _NTP_TO_MJD: Final = 15020  # MJD of 1900-01-01, the origin of NTP seconds (RFC 5905, section 6)
 _NTP_DIGITS: Final = 12
 _ROWS_REACH_MJD: Final = 51179
+# First days after the leap seconds since then (IERS Bulletins C 30, 36, 43, 49 and 52).
+_LATER_STEPS_MJD: Final = (53736, 54832, 56109, 57204, 57754)
 _MONTHS: Final = ("january", "february", "march", "april", "may", "june", "july", "august",
     "september", "october", "november", "december")  # fmt: skip
 
@@ -46,7 +49,7 @@ def read_leap_file(path: Path) -> LeapFile:
         TAI - UTC = 10 s.
     """
     try:
-        content = path.read_bytes()
+        content = read_bytes(path)
     except OSError as error:
         raise DataFileError(f"cannot read the leap-second table {path}: {error}", path=path) from error
     try:
@@ -69,7 +72,7 @@ def read_leap_file(path: Path) -> LeapFile:
             row = _list_row(fields) if is_list else _dat_row(fields)
         except ValueError as error:
             raise DataFileError(
-                f"{path}, row {number}: {line.strip()!r} is not a row of a leap-second table ({error})",
+                f"{path}, row {number}: {line.strip()!r:.120} is not a row of a leap-second table ({error})",
                 row=number,
                 path=path,
             ) from error
@@ -93,6 +96,14 @@ def read_leap_file(path: Path) -> LeapFile:
         raise DataFileError(
             f"{path}, row {len(lines)}: the last row is of MJD {rows[-1].mjd}, where the table has one of 1999-01-01 "
             f"(MJD {_ROWS_REACH_MJD}) at least; the file is cut short",
+            row=len(lines),
+            path=path,
+        )
+    lost = [mjd for mjd in _LATER_STEPS_MJD if rows[-1].mjd < mjd < (expires or 0)]
+    if lost:
+        raise DataFileError(
+            f"{path}, row {len(lines)}: the table is vouched for until MJD {expires}, but ends with the step of MJD "
+            f"{rows[-1].mjd}, before that of MJD {lost[0]}; the file is cut short: get a fresh copy",
             row=len(lines),
             path=path,
         )

@@ -46,8 +46,8 @@ _WIDEST_BAND: Final = 30.0
 def what_if_figure(found: WhatIf, t: Instants, title: str = "", *, smallest_s: float = 1e-15) -> Figure:
     """Draw what moved against the dates: step by step, terms that moved alike in one panel, and the sum of all.
 
-    The band is the standard uncertainty that the chain states for the step (or the result) before and after, in
-    quadrature; one that would flatten the lines is stated in the legend instead.
+    The band is the standard uncertainty of what changed, before and after in quadrature, as far as it enters the step
+    (or the result), without what both share; one that would flatten the lines is stated in the legend instead.
 
     Parameters
     ----------

@@ -85,8 +85,9 @@ def fitted_line(log: ClockLog) -> Line:
 def clock_log_figure(log: ClockLog, report: ClockReport | None = None, title: str = "") -> Figure:
     """Draw a log: offsets above, residuals from the straight line through them below.
 
-    Gaps are shaded. Resets, rate steps and rows that are not used are marked, and what an inspection flagged. Past the
-    comparisons the prediction stands with bands of one and two standard uncertainties.
+    Gaps are shaded; hatched are those that the log runs on through and an inspection found. Resets, rate steps and rows
+    that are not used are marked, and what an inspection flagged. Past the comparisons the prediction stands with bands
+    of one and two standard uncertainties.
 
     Parameters
     ----------
@@ -110,6 +111,7 @@ def clock_log_figure(log: ClockLog, report: ClockReport | None = None, title: st
     if report is not None:
         found = ", ".join(f"{count} \u00d7 {kind}" for kind, count in report.counts().items())
         lines.append(f"inspection: {found or 'nothing odd'}")
+    lines += [remark.text for remark in log.remarks]
     figure, (part,) = parts_of(title or f"{log.scale} minus {log.reference}", lines, [5.6])
     top, bottom = part.subplots(2, 1, sharex=True)
     large = float(np.max(np.abs(own.value_s)))
@@ -170,6 +172,7 @@ def _draw(
         axes.axvspan(own.dates[gap], own.dates[gap + 1], color="0.88", linewidth=0.0, zorder=0, label=label)
     _draw_marks(axes, log)
     if report is not None:
+        _draw_gaps(axes, log, report, own)
         _draw_flags(axes, log, report, own, (own[pick] + added) / size)
     for number, ahead in enumerate(_ahead(log)):
         course = _curve(log, ahead, line)
@@ -239,6 +242,19 @@ def _draw_marks(axes: Axes, log: ClockLog) -> None:
         else:
             style = "-." if mark.kind == "reset" else ":"
             axes.axvline(at[0], color="0.25", linestyle=style, linewidth=1.1, label=label, zorder=1)
+
+
+def _draw_gaps(axes: Axes, log: ClockLog, report: ClockReport, own: _Curve) -> None:
+    """Long intervals that an inspection found and the log does not take for gaps: interpolated, perhaps wrongly."""
+    label: str | None = "long interval, interpolated"
+    joined = ~log.comparisons.gap
+    for finding in report.of("gap"):
+        at = _epoch(finding.epoch, log.reference)
+        place = np.flatnonzero(own.dates == at[0]) if at is not None else np.zeros(0, dtype=np.intp)
+        if len(place) and place[0] > 0 and joined[place[0] - 1]:
+            look: dict[str, Any] = {"facecolor": "none", "edgecolor": "0.7", "hatch": "///", "linewidth": 0.0}
+            axes.axvspan(own.dates[place[0] - 1], own.dates[place[0]], zorder=0, label=label, **look)
+            label = None
 
 
 def _draw_flags(axes: Axes, log: ClockLog, report: ClockReport, own: _Curve, value: FloatArray) -> None:

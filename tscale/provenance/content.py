@@ -15,7 +15,7 @@ from ..instants import Instants
 
 __all__ = ["content_sha256"]
 
-_LEFT_OUT: Final = ("name", "path")  # of a file, which may have another name elsewhere
+_LEFT_OUT: Final = ("name", "path", "files")  # of a file, which may have another name elsewhere
 
 
 def content_sha256(*values: Any) -> str:

@@ -48,10 +48,18 @@ class ClockRecord:
     interpolation: str
     comparisons: int
     start: str
+    """First and last comparison."""
     end: str
     sha256: str
+    """Of the rows and all that was made of them; of a log read from one CSV file and not predicted, of the file."""
     content_sha256: str
     """Of the log as it is used: its rows, its gaps, how it is interpolated."""
+    files: tuple[tuple[str, str], ...] = ()
+    """Names and SHA-256 of the files it was read from."""
+    predicted: Mapping[str, Any] | None = None
+    """How it goes on past its comparisons: `fit_s`, `drift`, `start`, `until`, `noise`; None where it does not."""
+    remarks: tuple[str, ...] = ()
+    """What its source notes, such as steps of the clock."""
 
 
 @dataclass(frozen=True)
@@ -104,7 +112,7 @@ class Provenance:
         return json.dumps(self.to_dict(), sort_keys=True, indent=indent, separators=separators, allow_nan=False)
 
     def header(self) -> list[str]:
-        """Lines without their ends for the head of a text file, each beginning with `# `."""
+        """Lines without their ends for the head of a text file, each beginning with `#`."""
         versions = ", ".join(f"{name} {number}" for name, number in self.software.items())
         lines = [f"made by {versions}", f"path: {self.path}"]
         lines += [f"step: {step.start} -> {step.end}: {step.title} [{step.source}]" for step in self.steps]
@@ -120,6 +128,12 @@ class Provenance:
                 f"clock: {log.scale} by {log.reference}: {log.name}; {log.start} to {log.end}, {log.comparisons} "
                 f"comparisons, {log.interpolation}; SHA-256 {log.sha256}"
             )
+            if log.predicted is not None:
+                words = ", ".join(f"{key} {held}" for key, held in log.predicted.items() if held is not None)
+                lines.append(f"predicted: {log.scale}: {words}")
+            if [digest for _, digest in log.files] != [log.sha256]:
+                lines += [f"file: {log.scale}: {name}; SHA-256 {digest}" for name, digest in log.files]
+            lines += [f"remark: {log.scale}: {remark}" for remark in log.remarks]
         for what in ("observer", "source", "dates"):
             value = getattr(self, what)
             if value is not None:
@@ -179,7 +193,17 @@ def provenance_of(chain: Chain, t: Instants | None = None) -> Provenance:
 
 
 def _clock(log: ClockLog, table: LeapSeconds) -> ClockRecord:
-    start, end = _texts(log.span, 0, table)
+    start, end = _texts(log.comparisons.epoch[[0, -1]], 0, table)
+    asked, predicted = log.prediction, None
+    if asked is not None:
+        first, last = _texts(log.span, 0, table)
+        predicted = {
+            "fit_s": asked.fit_s,
+            "drift": asked.drift,
+            "start": None if asked.start is None else first,
+            "until": None if asked.until is None else last,
+            "noise": str(log.noise),
+        }
     return ClockRecord(
         log.scale,
         log.reference,
@@ -190,6 +214,9 @@ def _clock(log: ClockLog, table: LeapSeconds) -> ClockRecord:
         end,
         log.sha256,
         content_sha256(log),
+        log.files,
+        predicted,
+        tuple(remark.text for remark in log.remarks),
     )
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
 
@@ -47,6 +47,7 @@ def report_html(
     lines: Sequence[int] = (),
     pictures: bool = True,
     stated: dict[str, Any] | None = None,
+    spoken: Callable[[str], str] = str,
 ) -> str:
     """A conversion as one HTML page that stands alone.
 
@@ -70,6 +71,8 @@ def report_html(
         Draw them; needs matplotlib.
     stated : dict, optional
         Members of `budget.Assumptions`, and `coverage_factor`, for the budget.
+    spoken : callable
+        Turns what the budget says of arguments into the words of those who read the page, such as options of a command.
 
     Returns
     -------
@@ -109,7 +112,7 @@ def report_html(
             notes_section(made.notes),
             results_section(chain, t, out, rows, lines, stated or {}),
             ledger_section(ledger, f"{first} {t.scale}", figures[0]),
-            budget_section(budget, f"{first} {t.scale}", figures[1]),
+            budget_section(budget, f"{first} {t.scale}", figures[1], spoken),
             logs_section(logs),
             provenance_section(made),
         ]

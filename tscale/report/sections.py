@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
@@ -13,7 +13,7 @@ from ..chains import Chain
 from ..files.date_text import fixed_decimals
 from ..instants import Instants
 from ..ledger import Ledger
-from ..provenance import Provenance, TableRecord
+from ..provenance import ClockRecord, Provenance, TableRecord
 from .markup import Markup, join, table, tag
 
 if TYPE_CHECKING:
@@ -75,7 +75,7 @@ def ledger_section(ledger: Ledger, first: str, figure: Markup | None) -> Markup:
     return join([*parts, *([figure] if figure else [])])
 
 
-def budget_section(budget: Budget, first: str, figure: Markup | None) -> Markup:
+def budget_section(budget: Budget, first: str, figure: Markup | None, spoken: Callable[[str], str] = str) -> Markup:
     """The budget of the first reading, and what is not in it."""
 
     def at(values: Any) -> float:
@@ -119,9 +119,9 @@ def budget_section(budget: Budget, first: str, figure: Markup | None) -> Markup:
     if rows:
         parts.append(table(head, rows, numbers=(1, 2, 7, 8, 9), caption=caption, foot=foot))
     else:
-        parts.append(tag("p", "Nothing in this chain is uncertain."))
+        parts.append(tag("p", "No uncertainty is stated in this chain."))
     if budget.not_included:
-        items = [tag("li", tag("b", item.source), f": {item.reason}") for item in budget.not_included]
+        items = [tag("li", tag("b", item.source), f": {spoken(item.reason)}") for item in budget.not_included]
         parts += [tag("h3", "Not included"), tag("ul", *items)]
     return join([*parts, *([figure] if figure else [])])
 
@@ -133,6 +133,8 @@ def logs_section(logs: Sequence[tuple[ClockLog, ClockReport | None, Markup | Non
     parts: list[object] = [tag("h2", "Clock comparisons")]
     for log, report, figure in logs:
         parts.append(tag("h3", f"{log.scale} minus {log.reference}: {log.name}"))
+        if log.remarks:
+            parts.append(tag("ul", *(tag("li", remark.text) for remark in log.remarks), class_="notes"))
         if report is not None:
             findings = [tag("li", finding) for finding in report.findings[:_FINDINGS]]
             if len(report.findings) > _FINDINGS:
@@ -169,10 +171,16 @@ def provenance_section(made: Provenance) -> Markup:
     if made.clocks:
         logs = [
             (f"{log.scale} by {log.reference}", log.name, f"{log.start} to {log.end}", log.comparisons,
-             log.interpolation, digest(log.sha256))
+             log.interpolation, _ahead(log), _files(log, digest))
             for log in made.clocks
         ]  # fmt: skip
-        parts.append(table(("clock log", "name", "span", "comparisons", "between them", "SHA-256"), logs, numbers=(3,)))
+        parts.append(
+            table(
+                ("clock log", "name", "comparisons from", "number", "between them", "past them", "SHA-256"),
+                logs,
+                numbers=(3,),
+            )
+        )
     pieces: list[tuple[object, ...]] = []
     for what in ("observer", "source", "dates"):
         held = getattr(made, what)
@@ -190,6 +198,19 @@ def provenance_section(made: Provenance) -> Markup:
         tag("details", tag("summary", "The same as JSON"), tag("pre", made.to_json(indent=1))),
     ]
     return join(parts)
+
+
+def _ahead(log: ClockRecord) -> str:
+    """How a log is predicted."""
+    if log.predicted is None:
+        return "nothing"
+    return "predicted: " + ", ".join(f"{key} {held}" for key, held in log.predicted.items() if held is not None)
+
+
+def _files(log: ClockRecord, digest: Callable[[str], Markup]) -> Markup:
+    """Hash of a log, and those of its files where they are others."""
+    files = [(name, sha256) for name, sha256 in log.files if sha256 != log.sha256]
+    return join([digest(log.sha256), *(tag("div", f"{name} ", digest(sha256)) for name, sha256 in files)])
 
 
 def _stamps(item: TableRecord) -> tuple[str, str]:

@@ -37,8 +37,9 @@ class Moved:
     moved_s : float array
         Seconds, in the shape of the instants; differences of exact pairs, rounded once.
     sigma_s : float array or None
-        Standard uncertainties that the chain states for the step before and after, in quadrature; None where it states
-        none. Where both rest on one calibration, that is more than the difference should be.
+        Standard uncertainties, before and after in quadrature, of what changed - tables, logs, site, source - and of
+        nothing that both share; None where what changed states none. Where old and new rest on one calibration, that is
+        more than the difference should be.
     only : str
         `before` or `after` where the term is in one of the two alone, else empty.
     """

@@ -24,6 +24,7 @@ from ..provenance import Provenance, provenance_of
 from ..scales import Scale
 from .moved import Change, Moved, WhatIf
 from .replaced import Replaced, replaced_supplies
+from .stated import quadrature, step_sigmas, total_sigma
 
 if TYPE_CHECKING:
     from ..earth.observer import Observer
@@ -89,12 +90,15 @@ def what_if(
             total = exact.add(total, pair)
         count = exact.subtract(after(moved_t).pair, chain(t).pair)
         before_made, after_made = provenance_of(chain, t), provenance_of(after, moved_t)
+        changes = _changes(before_made, after_made)
+        changed = {change.what for change in changes}
+        sigma = quadrature(total_sigma(chain, t, changed), total_sigma(after, moved_t, changed))
         return WhatIf(
             tuple(Moved(step, term, exact.seconds(pair), None, only) for step, term, pair, only in terms),
-            _moved_steps(terms, _step_sigmas(chain, t), _step_sigmas(after, moved_t, other)),
-            Moved("total", "", exact.seconds(total), np.hypot(chain.sigma_s(t), after.sigma_s(moved_t))),
+            _moved_steps(terms, step_sigmas(chain, t, changed), step_sigmas(after, moved_t, changed, other)),
+            Moved("total", "", exact.seconds(total), sigma),
             exact.seconds(count),
-            _changes(before_made, after_made),
+            changes,
             before_made,
             after_made,
         )
@@ -134,26 +138,14 @@ def _full(pair: Pair, shape: tuple[int, ...]) -> Pair:
 def _moved_steps(
     terms: Sequence[tuple[str, str, Pair, str]], first: Mapping[str, FloatArray], second: Mapping[str, FloatArray]
 ) -> tuple[Moved, ...]:
-    """Sums over the steps, with the uncertainties that both chains state for them."""
+    """Sums over the steps, with the uncertainties that both chains state for what changed in them."""
     sums: dict[str, Pair] = {}
     for step, _, pair, _ in terms:
         sums[step] = exact.add(sums[step], pair) if step in sums else pair
-    stated = {
-        step: np.hypot(first.get(step, 0.0), second.get(step, 0.0)) for step in sums if step in first or step in second
-    }
-    return tuple(Moved(step, "", exact.seconds(pair), stated.get(step)) for step, pair in sums.items())
-
-
-def _step_sigmas(chain: Chain, t: Instants, other: Replaced | None = None) -> dict[str, FloatArray]:
-    """What a chain states for its steps, s, by the names of the old one."""
-    found = {}
-    for step, at in zip(chain.steps, chain._walk(t, chain.steps), strict=False):
-        stated = step.uncertainty_s(at)
-        if stated:
-            name = f"{step.start} -> {step.end}"
-            squares = sum((np.square(sigma) for sigma in stated.values()), np.zeros(t.shape))
-            found[name if other is None else other.old(name)] = np.asarray(np.sqrt(squares))
-    return found
+    return tuple(
+        Moved(step, "", exact.seconds(pair), quadrature(first.get(step), second.get(step)))
+        for step, pair in sums.items()
+    )
 
 
 def _changes(before: Provenance, after: Provenance) -> tuple[Change, ...]:

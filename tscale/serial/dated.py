@@ -13,8 +13,8 @@ from ..tables.clock_bends import Bend, Stencil
 from ..tables.clock_curve import ClockCurve
 from ..tables.clock_log import ClockLog
 from ..tables.clock_noise import ClockNoise
-from ..tables.clock_prediction import Forecast
-from ..tables.clock_rows import LogMark
+from ..tables.clock_prediction import Forecast, Prediction
+from ..tables.clock_rows import LogMark, LogRemark
 from .kind import Context, Fields, Kind, of_class
 from .values import array_of, damaged, numbers_of, shape_of
 
@@ -31,10 +31,23 @@ _CURVE: Final = (
     "broken",
     "corner",
     "sigma_s",
+    "common_s",
     "step",
     "reset",
 )
-_LOG: Final = ("scale", "reference", "name", "interpolation", "sha256", "path", "marks", "noise")
+_LOG: Final = (
+    "scale",
+    "reference",
+    "name",
+    "interpolation",
+    "sha256",
+    "path",
+    "marks",
+    "noise",
+    "prediction",
+    "remarks",
+    "files",
+)
 
 
 def checked_pair(pair: Any, shape: tuple[int, ...] | None, what: str) -> Pair:
@@ -106,7 +119,7 @@ def _make_curve(fields: Fields, context: Context) -> ClockCurve:
         raise damaged("a log has two or more comparisons")
     for name, dtype in (("gap", np.bool_), ("broken", np.bool_), ("corner", np.bool_)):
         _check(fields[name], size, np.dtype(dtype), name)
-    for name in ("change_s", "sigma_s"):
+    for name in ("change_s", "sigma_s", "common_s"):
         _check(fields[name], size, np.dtype(np.float64), name)
     for name in ("reference", "offset", "reset"):
         fields[name] = checked_pair(fields[name], size, name)
@@ -160,5 +173,5 @@ DATED: Final = (
     Kind("ClockCurve", ClockCurve, _take_curve, _make_curve, _CURVE),
     Kind("Ledger", Ledger, _take_ledger, _make_ledger, ("shape", "lines", "notes")),
     Kind("LedgerLine", LedgerLine, _take_line, _make_line, ("step", "term", "value")),
-    *(of_class(cls) for cls in (Bend, Stencil, ClockNoise, Forecast, LogMark)),
+    *(of_class(cls) for cls in (Bend, Stencil, ClockNoise, Forecast, LogMark, LogRemark, Prediction)),
 )

@@ -17,6 +17,7 @@ from ..instants import Instants
 from ..scales import Scale
 from .circular_text import CircularIssue, read_issue
 from .clock_log import ClockLog
+from .clock_rows import LogRemark
 from .common import mjd_date
 
 __all__ = ["circular_notes", "laboratories", "read_circular"]
@@ -29,7 +30,8 @@ _SAME_NS: Final = 0.05
 
 class _Value(NamedTuple):
     ns: float | None
-    sigma_s: float
+    own_s: float
+    common_s: float
     issue: CircularIssue
     line: int
 
@@ -48,12 +50,8 @@ def laboratories(path: Files, *, leap_seconds: LeapSeconds | None = None) -> dic
 def circular_notes(path: Files, laboratory: str, *, leap_seconds: LeapSeconds | None = None) -> tuple[str, ...]:
     """What the issues note of one laboratory, oldest first: steps of its clock within five days, corrections."""
     name = _acronym(laboratory)
-    return tuple(
-        f"{issue.title}, note {mark}: {issue.notes[mark]}"
-        for issue in sorted(_issues(path, leap_seconds), key=lambda issue: issue.mjd)
-        if name in issue.rows
-        for mark in issue.rows[name].notes
-    )
+    issues = sorted(_issues(path, leap_seconds), key=lambda issue: issue.mjd)
+    return tuple(text for issue in issues for text in _notes(issue, name))
 
 
 def read_circular(
@@ -76,16 +74,17 @@ def read_circular(
     laboratory : str
         Its acronym, as in `KRL` or `UTC(KRL)`.
     uncertainty_s : float, optional
-        Standard uncertainty for values whose issue states none. Issues before 2005 and those of UTCr have no such
-        column, so that it must be given; for UTCr it has to include what UTCr differs from UTC (some ns).
+        Standard uncertainty for values whose issue states none, taken as common to all. Issues before 2005 and those of
+        UTCr have no such column, so that it must be given; for UTCr it has to include what UTCr differs from UTC (some
+        ns).
     leap_seconds : LeapSeconds, optional
         Says when 0h UTC was; the TAI - UTC of the text is compared with it.
 
     Returns
     -------
     ClockLog
-        Of scale UTC(k) by reference UTC. The uncertainty u of an issue is shared by all its values, mostly: it is that
-        of the calibration of the link.
+        Of scale UTC(k) by reference UTC. uA is own to each value; uB, that of the calibration of the link, is common to
+        all (`common_s`), and so is a u that stands alone. The notes of the issues on the laboratory are its `remarks`.
 
     Raises
     ------
@@ -100,7 +99,7 @@ def read_circular(
     Notes
     -----
     A laboratory may step its clock between two of the days. The issue then says so in a note: see `circular_notes`.
-    The straight line between the two values is wrong there.
+    The straight line between the two values is wrong there; `notes` of the log, and so of a chain, tell it.
     """
     name = _acronym(laboratory)
     given = None if uncertainty_s is None else float(uncertainty_s)
@@ -116,25 +115,48 @@ def read_circular(
     if not any(value.ns is not None for value in found.values()):
         known = ", ".join(sorted({acronym for issue in issues for acronym in issue.rows}))
         state = f"UTC({name}) has no value" if found else f"UTC({name}) is not"
-        raise MissingPiece(f"{state} in {_titles(issues)}; laboratories there: {known}")
+        meant = [acronym for issue in issues for acronym in issue.rows if acronym == name.upper() != name]
+        hint = f"; did you mean {meant[0]!r}?" if meant else ""
+        raise MissingPiece(f"{state} in {_titles(issues)}{hint}; laboratories there: {known}")
     days = np.array(sorted(found), dtype=np.int64)
     values = [found[day] for day in days.tolist()]
     missing = np.array([value.ns is None for value in values])
     # Decimal text times 1e-9 as one division: the float64 nearest to the published value.
     offset_s = np.array([0.0 if value.ns is None else -value.ns / 1e9 for value in values])
+    own_s, common_s = (np.array([getattr(value, part) for value in values]) for part in ("own_s", "common_s"))
     count = table.count_from_label(days, 0, 0.0)
     longest_s = issues[0].step_days * DAY_S + 1.5  # a leap second may be in it
     log = ClockLog.from_rows(
         f"UTC({name})",
         Instants(*count, "UTC"),
         offset_s,
-        np.array([value.sigma_s for value in values]),
+        np.hypot(own_s, common_s),
+        common_s=common_s,
         missing=missing,
         max_gap_s=longest_s,
     )
     digest = hashlib.sha256(" ".join([log.sha256, *(issue.sha256 for issue in issues)]).encode()).hexdigest()
-    single = issues[0].path if len(issues) == 1 else None
-    return replace(log, name=f"UTC({name}) of {_titles(issues)}", sha256=digest, path=single)
+    return replace(
+        log,
+        name=f"UTC({name}) of {_titles(issues)}",
+        sha256=digest,
+        remarks=_remarks(issues, name, table),
+        files=tuple((issue.path.name, issue.sha256) for issue in issues),
+    )
+
+
+def _remarks(issues: Sequence[CircularIssue], name: str, table: LeapSeconds) -> tuple[LogRemark, ...]:
+    """Notes of issues sorted by their days, each for the days of its issue."""
+    found = []
+    for issue in issues:
+        first, last = (int(table.count_from_label(issue.mjd[end], 0, 0.0)[0]) for end in (0, -1))
+        found += [LogRemark(text, first, last) for text in _notes(issue, name)]
+    return tuple(found)
+
+
+def _notes(issue: CircularIssue, name: str) -> list[str]:
+    marks = issue.rows[name].notes if name in issue.rows else ()
+    return [f"{issue.title}, note {mark}: {issue.notes[mark]}" for mark in marks]
 
 
 def _take(found: dict[int, _Value], issue: CircularIssue, name: str, given: float | None) -> None:
@@ -142,7 +164,9 @@ def _take(found: dict[int, _Value], issue: CircularIssue, name: str, given: floa
     row = issue.rows.get(name)
     if row is None:
         return
-    stated = given if row.uncertainty_ns is None else row.uncertainty_ns / 1e9
+    stated = None if given is None else (0.0, given)
+    if row.uncertainty_ns is not None:
+        stated = (row.uncertainty_ns[0] / 1e9, row.uncertainty_ns[1] / 1e9)
     if stated is None and any(value is not None for value in row.values_ns):
         raise MissingPiece(
             f"{issue.path}, line {row.line}: {issue.title} states no uncertainty for UTC({name}); say what it is with "
@@ -161,7 +185,8 @@ def _take(found: dict[int, _Value], issue: CircularIssue, name: str, given: floa
                 path=issue.path,
             )
         if before is None or before.ns is None:
-            found[day] = _Value(ns, 0.0 if stated is None else stated, issue, row.line)
+            own_s, common_s = stated or (0.0, 0.0)
+            found[day] = _Value(ns, own_s, common_s, issue, row.line)
 
 
 def _issues(path: Files, leap_seconds: LeapSeconds | None) -> list[CircularIssue]:

@@ -43,6 +43,8 @@ _VALUE: Final = re.compile(r"\s*([-+]?\d+\.\d|[-+]?\d+(?![\d.])|-(?![\d.]))")
 _MONTHS: Final = ("JAN", "FEB", "MAR", "APR", "MAY", "JUN", "JUL", "AUG", "SEP", "OCT", "NOV", "DEC")
 _UNCERTAINTIES: Final = ("uA", "uB", "u")
 _FEWEST_DAYS, _MOST_DAYS = 2, 10
+# All three are printed to 0.1 ns: 0.05 (1 + (uA + uB) / u) at the most.
+_ROUNDED_NS: Final = 0.125
 _MONTHLY_STEP_DAYS: Final = 5
 
 
@@ -52,8 +54,8 @@ class CircularRow(NamedTuple):
     city: str
     values_ns: tuple[float | None, ...]
     """UTC - UTC(k) at each day, ns; None where there is none."""
-    uncertainty_ns: float | None
-    """Standard uncertainty u, ns; None where none is stated."""
+    uncertainty_ns: tuple[float, float] | None
+    """Standard uncertainties uA and uB, ns; None where none is stated."""
     notes: tuple[int, ...]
     """Numbers of the notes that the row points to."""
     line: int
@@ -279,5 +281,22 @@ class _Reader:
         sigmas = [cell for cell in cells[days:] if cell is not None]
         if any(sigma < 0.0 for sigma in sigmas):
             raise self.fail(number, f"a negative uncertainty, {min(sigmas)} ns")
-        u = cells[-1] if has_uncertainty and len(cells) == wanted else None
-        return CircularRow(city, tuple(cells[:days]), u, notes, number)
+        stated = self._stated(number, cells[days:]) if has_uncertainty and len(cells) == wanted else None
+        return CircularRow(city, tuple(cells[:days]), stated, notes, number)
+
+    def _stated(self, number: int, cells: Sequence[float | None]) -> tuple[float, float] | None:
+        """Standard uncertainties uA and uB; all of u for uB where it stands alone: what is common is not averaged."""
+        a, b, u = cells
+        if a is None or b is None:
+            if u is None and a is None and b is None:
+                return None
+            if u is None:
+                raise self.fail(number, "one of uA and uB stands alone; both and u are read, or u alone")
+            return 0.0, u
+        combined = float(np.hypot(a, b))
+        if u is not None and abs(u - combined) > _ROUNDED_NS:
+            raise self.fail(
+                number,
+                f"u is {u} ns, where uA = {a} and uB = {b} make {combined:.2f} in quadrature; a digit is wrong",
+            )
+        return a, b

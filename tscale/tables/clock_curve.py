@@ -65,6 +65,9 @@ class ClockCurve(NamedTuple):
     corner: BoolArray
     """Comparisons at which the rate was changed."""
     sigma_s: FloatArray
+    """Standard uncertainty of each comparison by errors of its own."""
+    common_s: FloatArray
+    """The same by the one error that all comparisons share, such as that of a calibration."""
     step: bool
     reset: Pair
     """By how much the clock was set forward at each comparison, whose offset is that after."""
@@ -83,6 +86,7 @@ class ClockCurve(NamedTuple):
         gap: BoolArray,
         kind: str,
         *,
+        common_s: FloatArray | None = None,
         reset: Pair | None = None,
         broken: BoolArray | None = None,
         corner: BoolArray | None = None,
@@ -92,6 +96,7 @@ class ClockCurve(NamedTuple):
         corner = none if corner is None else corner
         broken = none if broken is None else broken
         reset = exact.from_seconds(np.zeros(len(gap))) if reset is None else reset
+        common_s = np.zeros(len(gap)) if common_s is None else common_s
         step = kind == "step"
         change_s = np.zeros(len(gap))
         if not step:
@@ -101,7 +106,7 @@ class ClockCurve(NamedTuple):
         length = _lengths(reference)
         stencil = Stencil.of(length[0], gap, corner) if kind == "cubic" else None
         bend = None if stencil is None else stencil.bend(change_s, length[0])
-        return cls.laid(reference, offset, change_s, bend, stencil, gap, broken, corner, sigma_s, step, reset)
+        return cls.laid(reference, offset, change_s, bend, stencil, gap, broken, corner, sigma_s, common_s, step, reset)
 
     @classmethod
     def laid(
@@ -115,6 +120,7 @@ class ClockCurve(NamedTuple):
         broken: BoolArray,
         corner: BoolArray,
         sigma_s: FloatArray,
+        common_s: FloatArray,
         step: bool,
         reset: Pair,
     ) -> ClockCurve:
@@ -138,6 +144,7 @@ class ClockCurve(NamedTuple):
             broken,
             corner,
             sigma_s,
+            common_s,
             step,
             reset,
         )
@@ -216,13 +223,15 @@ class ClockCurve(NamedTuple):
         """How far along their intervals instants are: 0 at the start, 1 at the end; 0 where a gap follows."""
         return np.where(self.gap[index], 0.0, since(self._at(self.reference, index), at) / self.length[0][index])
 
-    def sigma_at(self, at: Pair, index: IntArray) -> FloatArray:
-        """Standard uncertainty: straight between two comparisons, held after a single one."""
+    def weights(self, at: Pair, index: IntArray) -> tuple[IntArray, FloatArray]:
+        """Comparisons (..., k) that the offsets at instants in intervals `index` hang on, and weights; some twice."""
         if self.step:
-            return np.asarray(self.sigma_s[index])
-        following = np.minimum(index + 1, len(self.gap) - 1)
+            return index[..., None], np.ones((*index.shape, 1))
         part = self.part(at, index)
-        return np.asarray(self.sigma_s[index] + part * (self.sigma_s[following] - self.sigma_s[index]))
+        if self.stencil is not None:
+            return self.stencil.weights(index, part, self.length[0])
+        following = np.minimum(index + 1, len(self.gap) - 1)
+        return np.stack([index, following], axis=-1), np.stack([1.0 - part, part], axis=-1)
 
     # ---- inside ----------------------------------------------------------------------------------
 

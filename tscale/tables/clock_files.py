@@ -11,6 +11,7 @@ where the comparison failed), `uncertainty_s` (standard uncertainty, s). Where w
 - `use`: `no` keeps a row in the file, and out of the log; `yes` or empty is an ordinary row.
 - `reset_s`: the clock was set forward by so much at this epoch, between the reading and the offset of this row, which
   is that after; `unknown` where nobody knows by how much; empty where it was not set.
+- `common_s`: the part of `uncertainty_s` that all comparisons share, such as that of a calibration; empty for none.
 - `rate_step`: `yes` where the clock's rate was changed at this epoch; `no` or empty elsewhere.
 
 Lines that start with `#` are comments. Other columns are let be.
@@ -77,7 +78,7 @@ def parse_clock_content(
         raise DataFileError(f"{path}{where}: {error}", row=row, path=path) from error
     missing = np.array([not text for text in columns["offset_s"]])
     offset, reset = (np.zeros((2, len(cells))) for _ in range(2))
-    sigma = np.zeros(len(cells))
+    sigma, common = np.zeros((2, len(cells)))
     broken, corner = (np.zeros(len(cells), dtype=np.bool_) for _ in range(2))
     for place, (row, cell) in enumerate(zip(numbers, cells, strict=True)):
         if cell["offset_s"]:
@@ -90,6 +91,15 @@ def parse_clock_content(
                     row=row,
                     path=path,
                 )
+            if cell.get("common_s"):
+                common[place] = float(_number(cell["common_s"], "common_s", row, path))
+                if not 0.0 <= common[place] <= sigma[place]:
+                    raise DataFileError(
+                        f"{path}, line {row}: common_s is {cell['common_s']}; it is the part of uncertainty_s "
+                        f"({cell['uncertainty_s']}) that all comparisons share, from zero to all of it",
+                        row=row,
+                        path=path,
+                    )
         size = cell.get("reset_s", "")
         if size == "unknown":
             broken[place] = True
@@ -120,6 +130,7 @@ def parse_clock_content(
         offsets,
         missing,
         sigma,
+        common,
         numbers,
         sha256,
         (reset[0].astype(np.int64), reset[1]),
@@ -236,7 +247,7 @@ def _number(text: str, column: str, row: int, path: Path) -> Decimal:
         value = Decimal(text)
     except InvalidOperation:
         value = Decimal("NaN")
-    if not value.is_finite() or "_" in text or abs(value) > LARGEST_OFFSET_S:
+    if not value.is_finite() or "_" in text or value.copy_abs() > LARGEST_OFFSET_S:
         raise DataFileError(
             f"{path}, line {row}: {column} is {text!r}; a finite number of seconds from -1e9 to 1e9 is needed"
             + (" (or an empty cell where the comparison failed)" if column == "offset_s" else ""),

@@ -18,7 +18,7 @@ if TYPE_CHECKING:
 
 __all__ = ["joinable", "joined_curve"]
 
-_COLUMNS: Final = ("sigma_s", "gap", "broken", "corner")
+_COLUMNS: Final = ("sigma_s", "common_s", "gap", "broken", "corner")
 
 
 def joinable(logs: Sequence[ClockLog]) -> Sequence[ClockLog]:
@@ -69,7 +69,7 @@ def joined_curve(logs: Sequence[ClockLog], within_s: float, overlap: str) -> Clo
         (column([getattr(curve, part)[0] for curve in curves]), column([getattr(curve, part)[1] for curve in curves]))
         for part in ("reference", "offset", "reset")
     )
-    sigma, gap, broken, corner = (column([getattr(curve, part) for curve in curves]) for part in _COLUMNS)
+    sigma, common, gap, broken, corner = (column([getattr(curve, part) for curve in curves]) for part in _COLUMNS)
     origin, row = origin[order], row[order]
     seams = np.flatnonzero((origin[1:] != origin[:-1]) | (row[1:] != row[:-1] + 1))
     ends, starts = ((reference[0][place], reference[1][place]) for place in (seams, seams + 1))
@@ -78,7 +78,9 @@ def joined_curve(logs: Sequence[ClockLog], within_s: float, overlap: str) -> Clo
     gap[seams] = broken[seams] = ~close | corner[seams + 1]
     gap[-1] = broken[-1] = True
     kind = logs[0].interpolation
-    curve = ClockCurve.of(reference, offset, sigma, gap, kind, reset=reset, broken=broken, corner=corner)
+    curve = ClockCurve.of(
+        reference, offset, sigma, gap, kind, common_s=common, reset=reset, broken=broken, corner=corner
+    )
     check_forwards(curve, logs[0].scale, [], None)
     return curve
 

@@ -146,7 +146,7 @@ class LenientRows:
                 try:
                     date = Instants.from_iso(cell["epoch"], self.reference, leap_seconds=self.leap_seconds)
                 except ValueError as error:
-                    self.say("bad date", "error", [number], str(error), epoch=cell["epoch"])
+                    self.say("bad date", "error", [number], _plain(str(error)), epoch=cell["epoch"])
                     continue
                 good.append((number, cell))
                 dates.append((int(date.whole), float(date.fraction)))
@@ -196,6 +196,7 @@ class LenientRows:
                     self.say("bad number", "error", [number], text, float(sigma), epoch)
                 elif sigma is not None:
                     self.sigma[place] = float(sigma)
+                    self._common(cell, number)
             if offset is not None:
                 self.offset[:, place] = divmod(offset, 1)
         zero = np.flatnonzero(self.sigma == 0.0)
@@ -203,13 +204,29 @@ class LenientRows:
             text = f"{len(zero)} of {count} uncertainties are zero"
             self.say("zero uncertainty", "warning", [self.rows[i][0] for i in zero], text, 0.0)
 
+    def _common(self, cell: Mapping[str, str], number: int) -> None:
+        """Look at the part that all comparisons share."""
+        if cell.get("common_s"):
+            common, sigma = self._number(cell, "common_s", number), Decimal(cell["uncertainty_s"])
+            if common is not None and not 0 <= common <= sigma:
+                text = f"common_s is {cell['common_s']}; it is from zero to uncertainty_s, {cell['uncertainty_s']}"
+                self.say("bad number", "error", [number], text, float(common), cell["epoch"])
+
     def _number(self, cell: Mapping[str, str], column: str, number: int) -> Any:
         try:
             value = Decimal(cell[column])
         except InvalidOperation:
             value = Decimal("NaN")
-        if not value.is_finite() or "_" in cell[column] or abs(value) > LARGEST_OFFSET_S:
+        if not value.is_finite() or "_" in cell[column] or value.copy_abs() > LARGEST_OFFSET_S:
             text = f"{column} is {cell[column]!r}; a finite number of seconds from -1e9 to 1e9 is needed"
             self.say("bad number", "error", [number], text, epoch=cell["epoch"])
             return None
         return value
+
+
+def _plain(reason: str) -> str:
+    """Why one text is no date, without the count of texts."""
+    _, found, rest = reason.partition("(item 0) is ")
+    if found:
+        return rest.rpartition("': ")[2]
+    return "there is no such second on that day" if "do not exist" in reason else reason

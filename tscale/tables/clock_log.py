@@ -19,7 +19,7 @@ from .clock_joining import joinable, joined_curve
 from .clock_map import ClockMap
 from .clock_noise import ClockNoise
 from .clock_nominal import Nominal
-from .clock_prediction import Forecast, forecast
+from .clock_prediction import Prediction
 from .clock_rows import Interpolation, checked_curve, given_rows
 
 if TYPE_CHECKING:
@@ -50,11 +50,17 @@ class ClockLog(ClockMap):
     sha256 : str
         Of the file's bytes, or of the rows.
     path : pathlib.Path or None
-        The file.
+        The CSV file, which `inspect` reads; None for a log that was made of anything else.
     marks : tuple of LogMark
         Rows that are not used, resets and rate steps, as the rows say.
     noise : ClockNoise or None
         What the clock wanders between comparisons, if it is known.
+    prediction : Prediction or None
+        How it goes on past its comparisons, if it does.
+    remarks : tuple of LogRemark
+        What its source says of times in it, such as the notes of a circular; `notes` tells them.
+    files : tuple of (name, SHA-256)
+        The files it was read from.
 
     Notes
     -----
@@ -79,7 +85,7 @@ class ClockLog(ClockMap):
         leap_seconds: LeapSeconds | None = None,
     ) -> ClockLog:
         """Read a CSV file with columns `epoch`, `offset_s`, `uncertainty_s` and, if wanted, `reference`, `clock`,
-        `nominal`, `interpolation`, `max_gap_s`, `use`, `reset_s` and `rate_step`.
+        `nominal`, `interpolation`, `max_gap_s`, `use`, `reset_s`, `rate_step` and `common_s`.
 
         Parameters
         ----------
@@ -106,7 +112,8 @@ class ClockLog(ClockMap):
         rows = parse_clock_file(path, name, leap_seconds, nominal)
         curve = checked_curve(rows, path.name, path, interpolation, max_gap_s)
         kind = interpolation or rows.interpolation or "linear"
-        return cls(rows.scale, rows.reference, path.name, kind, rows.sha256, path, curve, rows.marks)
+        files = ((path.name, rows.sha256),)
+        return cls(rows.scale, rows.reference, path.name, kind, rows.sha256, path, curve, rows.marks, files=files)
 
     @classmethod
     def from_rows(
@@ -120,6 +127,7 @@ class ClockLog(ClockMap):
         use: npt.ArrayLike = True,
         reset_s: npt.ArrayLike = 0.0,
         rate_step: npt.ArrayLike = False,
+        common_s: npt.ArrayLike = 0.0,
         nominal: Nominal | None = None,
         interpolation: Interpolation = "linear",
         max_gap_s: float | None = None,
@@ -146,11 +154,14 @@ class ClockLog(ClockMap):
             unknown size, zero for none.
         rate_step : bool array
             True where the clock's rate was changed at the epoch.
+        common_s : float array
+            The part of each uncertainty that all comparisons share, such as that of the calibration of the link: the
+            same error each time, of this size, is not averaged away. The rest is own to each comparison.
         nominal : {"removed", "included"}, optional
             Needed where the reference is not labelled like UTC: see `clock_nominal`.
         """
         rows = given_rows(
-            clock, epoch, offset_s, uncertainty_s, missing, use, reset_s, rate_step, nominal, leap_seconds
+            clock, epoch, offset_s, uncertainty_s, missing, use, reset_s, rate_step, nominal, leap_seconds, common_s
         )
         curve = checked_curve(rows, rows.scale, None, interpolation, max_gap_s)
         return cls(rows.scale, rows.reference, rows.scale, interpolation, rows.sha256, None, curve, rows.marks)
@@ -184,7 +195,19 @@ class ClockLog(ClockMap):
         sha256 = hashlib.sha256(" ".join(log.sha256 for log in ordered).encode()).hexdigest()
         name = " + ".join(log.name for log in ordered)
         marks = tuple(mark for log in ordered for mark in log.marks)
-        return cls(first.scale, first.reference, name, first.interpolation, sha256, None, curve, marks, first.noise)
+        return cls(
+            first.scale,
+            first.reference,
+            name,
+            first.interpolation,
+            sha256,
+            None,
+            curve,
+            marks,
+            first.noise,
+            remarks=tuple(dict.fromkeys(remark for log in ordered for remark in log.remarks)),
+            files=tuple(file for log in ordered for file in log.files),
+        )
 
     @staticmethod
     def inspect(
@@ -224,8 +247,8 @@ class ClockLog(ClockMap):
 
         The offset goes on from the last comparison along the straight line through it and the first comparison of the
         last `fit_s` seconds (the best there is for white frequency noise), with `drift` along the parabola through
-        these two and the one nearest half way. Its uncertainty is that of the comparisons, taken as independent of each
-        other, and of what the clock wanders from the line by its noise; a drift that is left out is not in it.
+        these two and the one nearest half way. Its uncertainty is that of the comparisons, what is own to each and what
+        they share, and of what the clock wanders from the line by its noise; a drift that is left out is not in it.
 
         Parameters
         ----------
@@ -255,19 +278,14 @@ class ClockLog(ClockMap):
         if not 0.0 < fit_s < float("inf"):
             raise InvalidInput(f"fit_s is a length of time above zero, got {fit_s!r}")
         noisy = self.with_noise(noise)
-        curve = self._curve
-        found: list[Forecast] = []
-        if until is not None:
-            curve, ahead = forecast(curve, self.name, self._instant(until), fit_s, drift, after=True)
-            found.append(ahead)
-        if start is not None:
-            curve, back = forecast(curve, self.name, self._instant(start), fit_s, drift, after=False)
-            found = [Forecast(ahead.interval + 1, ahead.nodes + 1) for ahead in found] + [back]
+        ends = (None if end is None else self._instant(end) for end in (until, start))
+        prediction = Prediction(float(fit_s), bool(drift), *ends)
+        curve, forecasts = prediction.of(self._curve, self.name)
         if curve.backwards().any():
             raise InvalidInput(f"{self.scale} would run backwards within the prediction; take the rate from elsewhere")
         digest = f"{self.sha256} {noise} {fit_s} {drift} {[curve.reference[0][[0, -1]], curve.reference[1][[0, -1]]]}"
         sha256 = hashlib.sha256(digest.encode()).hexdigest()
-        return replace(noisy, sha256=sha256, _curve=curve, _forecasts=tuple(found))
+        return replace(noisy, sha256=sha256, _curve=curve, _forecasts=forecasts, prediction=prediction)
 
     def _instant(self, end: str | Instants) -> Pair:
         """One instant of the reference, as a text or as itself."""

@@ -13,10 +13,11 @@ from ..errors import OutOfSpan
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 from ..instants import Instants
 from .clock_curve import ClockCurve, Found
+from .clock_errors import offset_sigma
 from .clock_noise import ClockNoise
 from .clock_nominal import count_text, nominal_count
-from .clock_prediction import Forecast, noisy_sigma, predicted_by, warn_predicted
-from .clock_rows import Interpolation, LogMark
+from .clock_prediction import Forecast, Prediction, predicted_by, warn_predicted
+from .clock_rows import Interpolation, LogMark, LogRemark
 from .common import FrozenArrays, as_pair
 from .notes import worded
 
@@ -31,6 +32,9 @@ class Comparisons(NamedTuple):
     offset: Pair
     """Clock minus reference, (whole s, fraction)."""
     uncertainty_s: FloatArray
+    """Standard uncertainty in all."""
+    common_s: FloatArray
+    """The part of it that all comparisons share."""
     gap: BoolArray
     """True where no interpolation leads on to the next comparison."""
     reset_s: FloatArray
@@ -53,6 +57,9 @@ class ClockMap(FrozenArrays):
     marks: tuple[LogMark, ...] = ()
     noise: ClockNoise | None = None
     _forecasts: tuple[Forecast, ...] = ()
+    prediction: Prediction | None = None
+    remarks: tuple[LogRemark, ...] = ()
+    files: tuple[tuple[str, str], ...] = ()
 
     # ---- facts -----------------------------------------------------------------------------------
 
@@ -83,7 +90,8 @@ class ClockMap(FrozenArrays):
         return Comparisons(
             Instants._of((curve.reference[0][own], curve.reference[1][own]), self.reference),
             offset,
-            curve.sigma_s[own],
+            np.hypot(curve.sigma_s, curve.common_s)[own],
+            curve.common_s[own],
             gap,
             exact.seconds((curve.reset[0][own], curve.reset[1][own])),
             curve.corner[own],
@@ -155,14 +163,14 @@ class ClockMap(FrozenArrays):
     def uncertainty_s(self, reference: Pair) -> FloatArray:
         """Give the standard uncertainty of the offset at counts of the reference scale, s; errors as `to_clock`.
 
-        Linear and cubic logs: straight between those of the two comparisons, taking their errors to go together. Step
-        logs: that of the last comparison. What the clock itself wanders between comparisons is in it if its noise is
-        known (`with_noise`), and so is what it may have wandered past them (`predicted`).
+        That of the comparisons, carried by the weights of the interpolation: what they share goes straight from one to
+        the next, and what is own to each adds in quadrature, so that halfway between two comparisons of 1 ns it is
+        0.7 ns. Step logs: that of the last comparison. What the clock itself wanders between comparisons is in it if
+        its noise is known (`with_noise`), and so is what it may have wandered past them (`predicted`). The same law as
+        in budgets.
         """
         at, index = self._at_reference(reference)
-        if self.noise is None:
-            return self._curve.sigma_at(at, index)
-        return noisy_sigma(self._curve, self.noise, self._forecasts, at, index)
+        return offset_sigma(self._curve, self.noise, self._forecasts, at, index)
 
     def rate(self, reference: Pair) -> FloatArray:
         """d(reference)/d(clock) - 1 at counts of the reference scale: zero in a step log; errors as `to_clock`."""
@@ -176,8 +184,13 @@ class ClockMap(FrozenArrays):
         return {f"are predicted past the comparisons of {self.name}, by its rate and noise model": predicted}
 
     def notes(self, reference: Pair) -> tuple[str, ...]:
-        """What a reader should know of values at counts of the reference scale; errors as `to_clock`."""
-        return worded(self.flags(reference))
+        """What a reader should know of values at counts of the reference scale; errors as `to_clock`.
+
+        How many are predicted, and what the source of the log remarks on the time around them.
+        """
+        at = as_pair(reference)
+        said = [remark.text for remark in self.remarks if remark.holds(at).any()]
+        return (*worded(self.flags(reference)), *said)
 
     # ---- inside ----------------------------------------------------------------------------------
 
@@ -199,13 +212,36 @@ class ClockMap(FrozenArrays):
         before = int(any(first))
         return slice(before, len(self._curve.gap) - (len(first) - before))
 
+    def _measured_curve(self) -> ClockCurve:
+        """The curve of the comparisons alone, as it was before it was predicted."""
+        if not self._forecasts:
+            return self._curve
+        curve, own = self._curve, self._measured
+
+        def pair(both: Pair) -> Pair:
+            return both[0][own], both[1][own]
+
+        gap, broken = curve.gap[own].copy(), curve.broken[own].copy()
+        gap[-1] = broken[-1] = True
+        return ClockCurve.of(
+            pair(curve.reference),
+            pair(curve.offset),
+            curve.sigma_s[own],
+            gap,
+            self.interpolation,
+            common_s=curve.common_s[own],
+            reset=pair(curve.reset),
+            broken=broken,
+            corner=curve.corner[own],
+        )
+
     def _warn(self, at: Pair, index: IntArray) -> None:
         if not self._forecasts or self.noise is None:
             return
         mask = predicted_by(self._curve, self._forecasts, at, index)
         if mask.any():
             own = (at[0][mask], at[1][mask])
-            worst = noisy_sigma(self._curve, self.noise, self._forecasts, own, index[mask]).max()
+            worst = offset_sigma(self._curve, self.noise, self._forecasts, own, index[mask]).max()
             warn_predicted(mask, self.name, float(worst))
 
     def _ends(self) -> tuple[str, str]:

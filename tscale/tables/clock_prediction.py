@@ -11,10 +11,9 @@ from ..errors import InvalidInput, warn_extrapolation
 from ..exact import BoolArray, FloatArray, IntArray, Pair
 from .clock_bends import Bend, Stencil
 from .clock_curve import ClockCurve
-from .clock_noise import ClockNoise
 from .common import since
 
-__all__ = ["Forecast", "forecast", "noisy_sigma", "predicted_by", "warn_predicted"]
+__all__ = ["Forecast", "Prediction", "forecast", "predicted_by", "warn_predicted"]
 
 
 class Forecast(NamedTuple):
@@ -24,10 +23,8 @@ class Forecast(NamedTuple):
     nodes: IntArray
     """Two comparisons for a line, three for a parabola; the first is where the prediction starts."""
 
-    def weights(self, curve: ClockCurve, at: Pair) -> tuple[FloatArray, FloatArray, FloatArray]:
-        """Times (..., k) of the nodes and (...) of the instants, s from the first node, and the nodes' weights in the
-        value predicted (Lagrange).
-        """
+    def weights(self, curve: ClockCurve, at: Pair) -> FloatArray:
+        """Weights (..., k) of the nodes in the values predicted at instants (Lagrange)."""
         own = self.nodes
         start = (curve.reference[0][own[0]], curve.reference[1][own[0]])
         knots = since(start, (curve.reference[0][own], curve.reference[1][own]))
@@ -36,7 +33,30 @@ class Forecast(NamedTuple):
             np.prod([(ahead - knots[j]) / (knots[i] - knots[j]) for j in range(len(own)) if j != i], axis=0)
             for i in range(len(own))
         ]
-        return np.broadcast_to(knots, (*ahead.shape, len(own))), ahead, np.stack(weights, axis=-1)
+        return np.stack(weights, axis=-1)
+
+
+class Prediction(NamedTuple):
+    """How a log goes on past its comparisons: what `ClockLog.predicted` was asked."""
+
+    fit_s: float
+    """Stretch of the log that the rate is taken from."""
+    drift: bool
+    until: Pair | None
+    """Where it ends, a count of the reference; None where it does not go on after the last comparison."""
+    start: Pair | None
+    """Where it begins, the same before the first."""
+
+    def of(self, curve: ClockCurve, name: str) -> tuple[ClockCurve, tuple[Forecast, ...]]:
+        """The curve of the comparisons made longer, and the intervals that are predicted; errors as `forecast`."""
+        found: list[Forecast] = []
+        if self.until is not None:
+            curve, ahead = forecast(curve, name, self.until, self.fit_s, self.drift, after=True)
+            found.append(ahead)
+        if self.start is not None:
+            curve, back = forecast(curve, name, self.start, self.fit_s, self.drift, after=False)
+            found = [Forecast(ahead.interval + 1, ahead.nodes + 1) for ahead in found] + [back]
+        return curve, tuple(found)
 
 
 def forecast(
@@ -93,35 +113,6 @@ def forecast(
     return _lengthened(curve, end, change, bends, after), found
 
 
-def noisy_sigma(
-    curve: ClockCurve, noise: ClockNoise, forecasts: tuple[Forecast, ...], at: Pair, index: IntArray
-) -> FloatArray:
-    """Standard uncertainty with what the clock wanders between comparisons and past them, s."""
-    sigma = np.array(curve.sigma_at(at, index))
-    wander = np.zeros(sigma.shape)
-    plain = ~np.isin(index, [found.interval for found in forecasts])
-    if plain.any():
-        own = index[plain]
-        part = curve.part((at[0][plain], at[1][plain]), own)
-        if curve.stencil is None:
-            nodes = np.stack([own, np.minimum(own + 1, len(curve.gap) - 1)], axis=-1)
-            weights = np.stack([1.0 - part, part], axis=-1)
-        else:
-            nodes, weights = curve.stencil.weights(own, part, curve.length[0])
-        start = (curve.reference[0][own], curve.reference[1][own])
-        times = since((start[0][:, None], start[1][:, None]), (curve.reference[0][nodes], curve.reference[1][nodes]))
-        ahead = since(start, (at[0][plain], at[1][plain]))
-        wander[plain] = _contrast(noise, times, ahead, weights)
-    for found in forecasts:
-        mine = index == found.interval
-        if mine.any():
-            times, ahead, weights = found.weights(curve, (at[0][mine], at[1][mine]))
-            wander[mine] = _contrast(noise, times, ahead, weights)
-            # The comparisons' own errors taken as independent: their difference makes the rate.
-            sigma[mine] = np.sqrt(np.sum((weights * curve.sigma_s[found.nodes]) ** 2, axis=-1))
-    return np.hypot(sigma, wander)
-
-
 def predicted_by(curve: ClockCurve, forecasts: tuple[Forecast, ...], at: Pair, index: IntArray) -> BoolArray:
     """Which instants of the reference are predicted, those at the comparisons themselves apart."""
     mask = np.zeros(index.shape, dtype=np.bool_)
@@ -139,13 +130,6 @@ def warn_predicted(mask: BoolArray, name: str, worst_s: float) -> None:
         int(np.count_nonzero(mask)),
         mask.size,
         worst_s,
-    )
-
-
-def _contrast(noise: ClockNoise, times: FloatArray, ahead: FloatArray, weights: FloatArray) -> FloatArray:
-    return noise.contrast_s(
-        np.concatenate([times, ahead[..., None]], axis=-1),
-        np.concatenate([weights, np.full((*ahead.shape, 1), -1.0)], axis=-1),
     )
 
 
@@ -189,6 +173,7 @@ def _lengthened(curve: ClockCurve, end: Pair, change: float, bends: tuple[float,
         grown(broken, bool(after)),
         grown(curve.corner, False),
         grown(curve.sigma_s, curve.sigma_s[edge]),
+        grown(curve.common_s, curve.common_s[edge]),
         curve.step,
         (grown(curve.reset[0], 0), grown(curve.reset[1], 0.0)),
     )

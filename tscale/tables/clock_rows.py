@@ -23,6 +23,7 @@ __all__ = [
     "ClockRows",
     "Interpolation",
     "LogMark",
+    "LogRemark",
     "check_forwards",
     "check_options",
     "checked_curve",
@@ -50,6 +51,19 @@ class LogMark(NamedTuple):
     """Of a reset, where it is known."""
 
 
+class LogRemark(NamedTuple):
+    """What the source of a log says of a time in it, beside the rows: a step between two of them, a correction."""
+
+    text: str
+    first: int
+    """From when, a count of the reference, whole seconds."""
+    last: int
+
+    def holds(self, at: Pair) -> BoolArray:
+        """Which counts of the reference it is about."""
+        return np.asarray((at[0] >= self.first) & (at[0] <= self.last))
+
+
 class ClockRows(NamedTuple):
     """Comparisons of one clock, in the order of the file, without those that are not to be used."""
 
@@ -60,6 +74,9 @@ class ClockRows(NamedTuple):
     """Clock minus reference, with nominal differences removed; zero where missing."""
     missing: BoolArray
     uncertainty_s: FloatArray
+    """In all."""
+    common_s: FloatArray
+    """The part of it that all rows share."""
     row: list[int]
     """Line of each row in the file, from 1."""
     sha256: str
@@ -79,6 +96,10 @@ class ClockRows(NamedTuple):
 def clock_scale(name: str) -> Scale:
     """Scale of a clock: `maser` is CLOCK(maser); `UTC(KST)` and `CLOCK(maser)` are themselves."""
     text = name.strip()
+    if _is_scale(text):
+        raise InvalidInput(
+            f"{name!r} is a scale, which no clock is: name the clock otherwise, as CLOCK(name) or UTC(laboratory)"
+        )
     try:
         scale = Scale.parse(text if text.endswith(")") else f"CLOCK({text})")
     except InvalidInput as error:
@@ -88,6 +109,14 @@ def clock_scale(name: str) -> Scale:
     if scale.family not in ("UTC", "CLOCK") or scale.realisation is None:
         raise InvalidInput(f"{name!r} is no clock; name it plainly, as CLOCK(name) or as UTC(laboratory)")
     return scale
+
+
+def _is_scale(text: str) -> bool:
+    bare = text.removeprefix("CLOCK(").removesuffix(")")
+    try:
+        return "(" not in bare and Scale.parse(bare).realisation is None
+    except InvalidInput:
+        return False
 
 
 def check_options(interpolation: Interpolation, max_gap_s: float | None) -> None:
@@ -135,12 +164,15 @@ def checked_curve(
     corner = np.logical_or.reduceat(rows.corner, before)
     # Before a reset at the very first comparison the clock was another one.
     corner[0] |= bool(rows.broken[: kept[0] + 1].any()) or bool(reset[0][0] != 0) or bool(reset[1][0] != 0.0)
+    total_s, common_s = rows.uncertainty_s[kept], rows.common_s[kept]
+    own_s = np.sqrt(np.maximum((total_s - common_s) * (total_s + common_s), 0.0))
     curve = ClockCurve.of(
         reference,
         exact.add(offset, nominal_count(rows.reference)),
-        rows.uncertainty_s[kept],
+        np.where(common_s > 0.0, own_s, total_s),
         gap,
         interpolation,
+        common_s=common_s,
         reset=reset,
         broken=broken,
         corner=corner,
@@ -160,6 +192,7 @@ def given_rows(
     rate_step: npt.ArrayLike,
     nominal: Nominal | None,
     leap_seconds: LeapSeconds | None,
+    common_s: npt.ArrayLike = 0.0,
 ) -> ClockRows:
     """Check comparisons that come as arrays; the arguments are those of `ClockLog.from_rows`."""
     count = epoch.shape
@@ -171,7 +204,9 @@ def given_rows(
         given: tuple[Any, ...] = (0, offset_s)
         if isinstance(offset_s, tuple) and len(offset_s) == 2 and np.asarray(offset_s[0]).dtype.kind in "iu":
             given = offset_s
-        parts = [np.broadcast_to(np.asarray(part, np.float64), count) for part in (*given, uncertainty_s, reset_s)]
+        parts = [
+            np.broadcast_to(np.asarray(part, np.float64), count) for part in (*given, uncertainty_s, reset_s, common_s)
+        ]
         flags = [np.array(np.broadcast_to(np.asarray(part, np.bool_), count)) for part in (missing, used, rate_step)]
     except (TypeError, ValueError) as error:
         raise InvalidInput(f"offsets, uncertainties and gaps must be numbers, as many as epochs: {error}") from error
@@ -181,6 +216,11 @@ def given_rows(
         raise InvalidInput(
             "offsets must be finite and uncertainties zero or more; flag failures with missing=", mask=bad
         )
+    bad = kept & ~failed & ~((parts[4] >= 0.0) & (parts[4] <= parts[2]))
+    if bad.any():
+        raise InvalidInput(
+            "common_s is the part of uncertainty_s that all comparisons share: from zero to uncertainty_s", mask=bad
+        )
     lost = ~kept & ((parts[3] != 0.0) | corner)
     if lost.any() or np.isinf(parts[3]).any():
         raise InvalidInput(
@@ -189,9 +229,10 @@ def given_rows(
         )
     broken = np.isnan(parts[3])
     reset_s = np.where(broken, 0.0, parts[3])
-    whole, fraction, sigma = (np.where(failed | ~kept, 0.0, part) for part in parts[:3])
+    whole, fraction, sigma, common = (np.where(failed | ~kept, 0.0, part) for part in (*parts[:3], parts[4]))
     offset = exact.normalise(whole.astype(np.int64), fraction)
     extras = [kept, parts[3], corner] if not kept.all() or parts[3].any() or corner.any() else []
+    extras += [common] if common.any() else []
     sha256 = rows_hash(*epoch.pair, *offset, failed, sigma, *extras)
     if nominal == "included":
         offset, large = without_nominal(offset, epoch.pair, reference, leap_seconds or LeapSeconds.default())
@@ -216,6 +257,7 @@ def given_rows(
         (offset[0][picked], offset[1][picked]),
         failed[picked],
         sigma[picked],
+        common[picked],
         [],
         sha256,
         exact.from_seconds(reset_s[picked]),

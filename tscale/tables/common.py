@@ -14,6 +14,7 @@ from ..constants import MJD_J2000
 from ..errors import DataFileError
 from ..exact import FloatArray, IntArray, Pair
 from ..formats.leap_seconds import LeapSeconds
+from ..storage import read_bytes
 
 __all__ = [
     "FrozenArrays",
@@ -52,7 +53,7 @@ def _freeze(values: Iterable[Any]) -> None:
 def read_file(path: Path, what: str) -> tuple[bytes, str]:
     """Bytes of a file and their SHA-256, or `DataFileError` if there is nothing to read."""
     try:
-        content = path.read_bytes()
+        content = read_bytes(path)
     except OSError as error:
         raise DataFileError(f"cannot read the {what} {path}: {error.strerror or error}", path=path) from error
     if not content.strip():

@@ -40,6 +40,7 @@ _POLE_OFFSET_UNKNOWN_MAS: Final = 0.25
 # followed for a year, UT1 was off by 1.8 times the stated error and the pole by 2.2 times (rms; they fit to a month in
 # UT1 and ten days in the pole). Twice what is stated fits: 0.9 and 1.1.
 _PREDICTION_FACTOR: Final = 2.0
+_POLE_PREDICTION_FACTOR: Final = 1.5
 
 
 # The largest steps from day to day in both files, 1962 to 2026, are 4.3 ms in UT1 (less leap seconds, and 0.11 s where
@@ -86,6 +87,16 @@ _C04: Final = (
     _Column("dY Er", 171, 182, 6),
 )
 _C04_MJD: Final = _Column("MJD", 17, 26, 2)
+_C04_HEAD: Final = (
+    ("20 C04", "the series"),
+    ("IAU 2000", "the model that dX and dY belong to"),
+    ("format(4(i4),f10.2,2(f12.6),f12.7,2(f12.6),2(f12.6),f12.7,2(f12.6),f12.7,2(f12.6),2(f12.6),f12.7)", "the format"),
+    (
+        'YR MM DD HH MJD x(") y(") UT1-UTC(s) dX(") dY(") xrt("/day) yrt("/day) LOD(s) x Er y Er UT1-UTC Er dX Er '
+        "dY Er xrt Er yrt Er LOD Er",
+        "the columns",
+    ),
+)
 
 
 class _Lines:
@@ -98,6 +109,14 @@ class _Lines:
         if not kept:
             raise DataFileError(f"{path} holds no Earth orientation row", path=path)
         self.number = np.array(kept)
+        lengths = [len(lines[number - 1]) for number in kept]
+        if len(kept) > 1 and lengths[-1] < min(lengths[:-1]):
+            raise DataFileError(
+                f"{path}, line {kept[-1]}: the last line has {lengths[-1]} bytes, all before have {min(lengths[:-1])} "
+                "or more: the file is cut short; restore it from its source",
+                row=kept[-1],
+                path=path,
+            )
         text = np.array([lines[number - 1] for number in kept], dtype=f"S{width}")
         table = text.view(np.uint8).reshape(len(kept), width)
         self.table: Bytes = np.where(table == 0, np.uint8(_SPACE), table).T.copy()
@@ -201,6 +220,12 @@ def parse_finals(content: bytes, path: Path) -> EOPRows:
     if some[known:].any():
         here = np.arange(end) == (known if not no_offset[known:].all() else known + int(some[known:].argmax()))
         raise lines.fail(here, "dX or dY", "is missing between rows that have it, or the row is cut short")
+    if end > 1 and known == end - 1:
+        here = np.arange(end) == known
+        raise lines.fail(here, "dX or dY", "is missing in the last row alone: the file is cut short")
+    measured = no_offset & ~predicted
+    if measured.any():
+        raise lines.fail(measured, "dX or dY", "is missing where UT1 and pole are measured: the row is cut short")
     numbers = np.zeros((10, end))
     for place in (0, 1, 2, 5, 6, 7):
         numbers[place] = lines.number_of(_FINALS[place])
@@ -214,7 +239,18 @@ def parse_finals(content: bytes, path: Path) -> EOPRows:
 
 
 def parse_c04(content: bytes, path: Path) -> EOPRows:
-    """Read a 20 C04 file: every row measured; celestial pole offsets are turned from arcseconds to mas."""
+    """Read a 20 C04 file: every row measured; celestial pole offsets are turned from arcseconds to mas.
+
+    Its head says the series, the format and the columns; those of another are refused.
+    """
+    head = [" ".join(line.decode("latin-1")[1:].split()) for line in content.splitlines() if line.startswith(b"#")]
+    for words, what in _C04_HEAD:
+        if not any(words in line for line in head):
+            raise DataFileError(
+                f"{path}: {what} of the 20 C04 series, {words!r:.60}, is not in the head: the head is cut off, or this "
+                "is another series or a later layout; get eopc04.1962-now of the 20 series",
+                path=path,
+            )
     lines = _Lines(content, 218, path)
     mjd = lines.days(_C04_MJD)
     numbers = np.array([lines.number_of(column) for column in _C04])
@@ -224,12 +260,15 @@ def parse_c04(content: bytes, path: Path) -> EOPRows:
 
 
 def widened(rows: EOPRows) -> EOPRows:
-    """The rows of a finals2000A file with uncertainties of predicted UT1 and pole as large as their errors were found.
+    """The rows of a finals2000A file with uncertainties of predictions as large as their errors were found.
 
-    The celestial pole offsets are left as they stand: they are off by 1.5 times what is stated, 0.2 mas.
+    So too the celestial pole offsets, which are off by 1.5 times what is stated, 0.2 mas.
     """
     sigmas = rows.sigmas.copy()
     sigmas[rows.predicted, :3] *= _PREDICTION_FACTOR
+    # Zeros past the last offset have their rms already.
+    offsets = rows.predicted & (rows.values[:, 3:] != 0.0).any(axis=1)
+    sigmas[offsets, 3:] *= _POLE_PREDICTION_FACTOR
     return rows._replace(sigmas=sigmas)
 
 

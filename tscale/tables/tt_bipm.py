@@ -29,8 +29,10 @@ _ROW: Final = re.compile(
     rb"\s*(\d{5})(?:\.\s*|\s+|(?=[-+]))"
     rb"(?:[-+]?\d*\.\d{3}\s*([-+]?\d*\.\d{3})|[-+]?\d*\.\d{4}\s*([-+]?\d*\.\d{4}))\s*"
 )
-_BARE: Final = re.compile(rb"\s*\d{5}\.?(?:\s*[-+]?\d*\.\d+){2,}\s*")
-_NUMBERS: Final = re.compile(rb"[-+]?\d*\.\d{3,4}(?!\d)")
+# Two numbers or more behind the day, each step of the pattern up to the next point: no digit can belong to two of them,
+# so that no line takes long.
+_BARE: Final = re.compile(rb"\s*\d{5}\.?\s*+[-+]?+\d*+\.(?:\d++\s*+[-+]?+\d*+\.)++\d++\s*")
+_NUMBERS: Final = re.compile(rb"\.\d{3,4}(?!\d)")
 _LIKE_A_ROW: Final = re.compile(rb"\s*\d{5}(?:\.\s|\.$|\s|$|\.?\s*[-+]?\d*\.\d)")
 _NAME: Final = re.compile(r"TTBIPM\.?(\d{2,4})", re.IGNORECASE)
 _RESOLUTION_S: Final = 1e-9
@@ -66,6 +68,8 @@ class TTBIPM(FrozenArrays):
         Date of the last row, before any extension.
     path : pathlib.Path or None
         The file.
+    stated : bool
+        Whether its uncertainty was told to `load`; else that of the rounding is all there is.
 
     Notes
     -----
@@ -82,7 +86,8 @@ class TTBIPM(FrozenArrays):
     _tai: Pair
     _start_s: FloatArray
     _slope: FloatArray
-    _sigma_s: float
+    _sigma_s: FloatArray
+    stated: bool = False
 
     @classmethod
     def load(
@@ -105,7 +110,8 @@ class TTBIPM(FrozenArrays):
         extension : Extension, optional
             Line past the last row, as read by a person in the file's head. Without it the table ends at its last row.
         uncertainty_s : float, optional
-            Standard uncertainty of the offset. Default: rounding of the table, 1 ns / sqrt(12).
+            Standard uncertainty of the offset. Default: rounding of the rows, 1 ns / sqrt(12) for those with three
+            decimals and 0.1 ns / sqrt(12) for those with four.
         leap_seconds : LeapSeconds, optional
             Says when 0h UTC was.
 
@@ -116,7 +122,7 @@ class TTBIPM(FrozenArrays):
         """
         path = Path(path)
         content, sha256 = read_file(path, "TT(BIPM) file")
-        mjd, offset_us = _parse(content, path)
+        mjd, offset_us, resolution_s = _parse(content, path)
         if name is None:
             match = _NAME.match(path.name)
             if match is None:
@@ -126,7 +132,10 @@ class TTBIPM(FrozenArrays):
                     path=path,
                 )
             name = f"BIPM{match[1]}"
-        return _build(mjd, offset_us * 1e-6, name, path.name, sha256, path, extension, uncertainty_s, leap_seconds)
+        sigma = resolution_s / np.sqrt(12.0)
+        return _build(
+            mjd, offset_us * 1e-6, sigma, name, path.name, sha256, path, extension, uncertainty_s, leap_seconds
+        )
 
     @classmethod
     def from_rows(
@@ -139,7 +148,10 @@ class TTBIPM(FrozenArrays):
         uncertainty_s: float | None = None,
         leap_seconds: LeapSeconds | None = None,
     ) -> TTBIPM:
-        """Make a table from whole days (MJD) and TT(BIPM)-TAI-32.184 s; at least two rows, days increasing."""
+        """Make a table from whole days (MJD) and TT(BIPM)-TAI-32.184 s; at least two rows, days increasing.
+
+        Without `uncertainty_s` they are taken as rounded to 1 ns.
+        """
         day, offset = np.asarray(mjd, dtype=np.float64), np.asarray(offset_s, dtype=np.float64)
         if day.ndim != 1 or day.shape != offset.shape or len(day) < 2:
             raise InvalidInput(
@@ -149,7 +161,9 @@ class TTBIPM(FrozenArrays):
         if bad.any():
             raise InvalidInput("TT(BIPM) rows need whole, increasing MJD and finite offsets (see .mask)", mask=bad)
         sha256 = rows_hash(day, offset)
-        return _build(day.astype(np.int64), offset, name, name, sha256, None, extension, uncertainty_s, leap_seconds)
+        sigma = np.full(len(day), _RESOLUTION_S / np.sqrt(12.0))
+        mjd = day.astype(np.int64)
+        return _build(mjd, offset, sigma, name, name, sha256, None, extension, uncertainty_s, leap_seconds)
 
     @property
     def span(self) -> tuple[int, int]:
@@ -175,8 +189,11 @@ class TTBIPM(FrozenArrays):
         return np.asarray(self._slope[self._find(tai)[0]])
 
     def uncertainty_s(self, tai: Pair) -> FloatArray:
-        """Give the standard uncertainty of the offset at TAI counts, s: as told to `load`, else the rounding."""
-        return np.full(self._find(tai)[0].shape, self._sigma_s)
+        """Give the standard uncertainty of the offset at TAI counts, s: as told to `load`, else the rounding of the
+        coarser of the two rows around.
+        """
+        interval, _ = self._find(tai)
+        return np.asarray(np.maximum(self._sigma_s[interval], self._sigma_s[interval + 1]))
 
     def _find(self, tai: Pair) -> tuple[IntArray, FloatArray]:
         tai = as_pair(tai)
@@ -194,8 +211,10 @@ class TTBIPM(FrozenArrays):
         return interval, since((self._tai[0][interval], self._tai[1][interval]), tai)
 
 
-def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray]:
+def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray, FloatArray]:
+    """Days, offsets (us), and the step that each is rounded to (s)."""
     days: list[int] = []
+    steps: list[float] = []
     offsets: list[float] = []
     for number, line in enumerate(content.splitlines(), 1):
         match = _ROW.fullmatch(line)
@@ -204,8 +223,8 @@ def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray]:
             like = days or _BARE.fullmatch(line) or len(_NUMBERS.findall(line)) > 1
             if like and _LIKE_A_ROW.match(line):
                 raise DataFileError(
-                    f"{path}, line {number}: a damaged row, {line.decode(errors='replace').strip()!r}; MJD and two "
-                    "numbers in us are read, both with three or both with four decimals",
+                    f"{path}, line {number}: a damaged row, {line.decode(errors='replace').strip()!r:.120}; MJD and "
+                    "two numbers in us are read, both with three or both with four decimals",
                     row=number,
                     path=path,
                 )
@@ -228,16 +247,18 @@ def _parse(content: bytes, path: Path) -> tuple[IntArray, FloatArray]:
             )
         days.append(day)
         offsets.append(offset_us)
+        steps.append(_RESOLUTION_S if match[2] else _RESOLUTION_S / 10.0)
     if len(days) < 2:
         raise DataFileError(
             f"{path} holds {len(days)} rows of MJD, TT(BIPM)-EAL, TT(BIPM)-TAI (us); two or more are needed", path=path
         )
-    return np.array(days), np.array(offsets)
+    return np.array(days), np.array(offsets), np.array(steps)
 
 
 def _build(
     mjd: IntArray,
     offset_s: FloatArray,
+    rounding_s: FloatArray,
     name: str,
     table: str,
     sha256: str,
@@ -249,8 +270,8 @@ def _build(
     scale = name if name.startswith("TT(") else f"TT({name})"
     if re.fullmatch(r"TT\([^()\s@]+\)", scale) is None:
         raise InvalidInput(f"{name!r} does not name a realisation; for example name='BIPM23'")
-    sigma = _RESOLUTION_S / np.sqrt(12.0) if uncertainty_s is None else float(uncertainty_s)
-    if not (np.isfinite(sigma) and sigma >= 0.0):
+    sigma = rounding_s if uncertainty_s is None else np.full(len(mjd), float(uncertainty_s))
+    if not np.all(np.isfinite(sigma) & (sigma >= 0.0)):
         raise InvalidInput(f"uncertainty_s must be finite and not negative, got {uncertainty_s!r}")
     issued = mjd_date(mjd[-1])
     first, last = offset_s[:-1], offset_s[1:]
@@ -264,9 +285,10 @@ def _build(
         # The line itself from the last row on, also where that leaves a small step.
         first = np.append(first, at_origin + rate * (mjd[-1] - origin))
         last = np.append(last, at_origin + rate * (limit - origin))
-        mjd = np.append(mjd, limit)
+        mjd, sigma = np.append(mjd, limit), np.append(sigma, sigma[-1])
         sha256 = rows_hash(np.frombuffer(sha256.encode(), dtype=np.uint8), np.array(extension, dtype=np.float64))
     leap = LeapSeconds.default() if leap_seconds is None else leap_seconds
     tai = tai_of_days(mjd, leap)[0]
     length_s = since((tai[0][:-1], tai[1][:-1]), (tai[0][1:], tai[1][1:]))
-    return TTBIPM(scale, table, mjd, sha256, issued, path, tai, first, (last - first) / length_s, float(sigma))
+    slope, stated = (last - first) / length_s, uncertainty_s is not None
+    return TTBIPM(scale, table, mjd, sha256, issued, path, tai, first, slope, sigma, stated)
