@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import pickle
 import threading
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -215,6 +216,20 @@ def test_threads_share_it(compiled: tscale.CompiledChain, counts: tuple) -> None
     for job in jobs:
         job.join()
     assert good == [True] * 12
+
+
+def test_nothing_in_it_can_be_changed(compiled: tscale.CompiledChain, tmp_path: Path) -> None:
+    compiled.save(tmp_path / "file")
+    for one in (compiled, pickle.loads(pickle.dumps(compiled)), tscale.load_compiled(tmp_path / "file")):
+        before = [(name, id(value)) for table in one._tables for name, value in vars(table).items()]
+        arrays = [value for table in one._tables for value in vars(table).values() if isinstance(value, np.ndarray)]
+        arrays += [part for pair in one._span for part in pair]
+        assert len(arrays) == 22
+        assert not any(array.flags.writeable for array in arrays)
+        # Nothing is made on first use either, which two threads might do at once.
+        one(one.span), one.inverse(one.inverse_span), one.rate(one.span), one(one.span[0])
+        assert before == [(name, id(value)) for table in one._tables for name, value in vars(table).items()]
+        assert set(vars(one)) == {"start", "end", "certificate", "_span", "_tables"}
 
 
 def test_the_rate_is_the_derivative(compiled: tscale.CompiledChain, counts: tuple) -> None:

@@ -60,6 +60,9 @@ class CompiledChain:
         self.certificate = facts
         self._span = span
         self._tables = tables
+        for pair in span:
+            for part in pair:
+                part.flags.writeable = False
 
     # ---- mapping ---------------------------------------------------------------------------------
 

@@ -59,7 +59,7 @@ def era_rad(ut1: Pair) -> FloatArray:
     ut1 : Pair
         Seconds since 2000-01-01T12:00:00 UT1, any shape.
     """
-    # The whole turn a day is taken out in integers, and the 25 turns that the 0.0027 have made since 2000 by whole days,
+    # The whole turn a day is taken out in integers, and the 25 turns that the 0.0027 made since 2000 by whole days,
     # without rounding: what is left is rounded at the size of one turn.
     days, second = np.divmod(np.asarray(ut1[0], dtype=np.int64), DAY_S)
     part = (second + ut1[1]) / DAY_S
