@@ -115,11 +115,11 @@ def test_the_command(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None
 
 
 def test_the_command_fails_by_its_exit_status(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    # The IERS table without its last row: UTC - TAI is 1 s off from 2017 on.
+    # The IERS table with a leap second that never was: UTC - TAI is 1 s off from 2025 on.
     table = tmp_path / "Leap_Second.dat"
-    rows = Path(IERS_LEAP_SECOND_FILE).read_text().splitlines()
-    table.write_text("\n".join(row for row in rows if not row.split() or row.split()[0] != "57754.0") + "\n")
-    arguments = ["crosscheck", "--only", "UTC - TAI", "--count", "20", "--leap-seconds", str(table)]
+    table.write_text(Path(IERS_LEAP_SECOND_FILE).read_text().rstrip() + "\n    60676.0    1  1 2025       38\n")
+    span = ["--start", "2025-02-01", "--stop", "2025-12-01"]
+    arguments = ["crosscheck", "--only", "UTC - TAI", "--count", "20", *span, "--leap-seconds", str(table)]
     assert main(arguments) == 1
     assert "failed: UTC - TAI" in capsys.readouterr().out
     assert main(["crosscheck", "--only", "nothing"]) == 2
