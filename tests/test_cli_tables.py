@@ -12,6 +12,7 @@ import pytest
 import tscale
 from tscale.cli.main import main
 from tscale.files.arrow_columns import date_columns, instants_of
+from tscale.files.tables import convert_table
 
 EXAMPLES = Path(__file__).parents[1] / "examples"
 OBSERVER = ["--site", str(EXAMPLES / "site.toml"), "--source", str(EXAMPLES / "source.toml")]
@@ -70,8 +71,10 @@ def test_what_does_not_go_together_is_refused(tmp_path: Path, capsys: pytest.Cap
     Path(text).write_text("time\n2025-03-03\n")
     for arguments, words in (
         ([source, out], "say what is wanted with --to NODE"),
-        ([source, out, "--to", "TT", "--input-format", "mjd"], "--input-format is for text"),
-        ([source, out, "--to", "TT", "--provenance"], "--provenance is for text"),
+        ([source, out, "--to", "TT", "--input-format", "mjd"], "--input-format is for text, and the input"),
+        ([source, out, "--to", "TT", "--digits", "3"], "--digits is for text, and the output"),
+        ([text, out[:-8] + ".xlsx", "--to", "TT"], "would be text under a name of .xlsx"),
+        ([source, out, "--to", "TT", "--provenance"], "take --provenance-file FILE"),
         ([source, out, "--to", "TT", "--compiled", "x"], "not both"),
         ([source, out, "--compiled", text], "in.csv"),
         ([text, out[:-8] + ".txt", "--to", "TT", "--threads", "2"], "--compiled and --threads are for tables"),
@@ -114,3 +117,27 @@ def test_a_laboratory_is_taken_out_of_a_circular(tmp_path: Path) -> None:
         - tscale.Instants.from_iso("2007-01-01T00:00:00", "UTC")
     )
     assert offset == pytest.approx(-56.0e-9 + (54101 - 54099) / 5 * (-65.1e-9 + 56.0e-9), abs=1e-12)
+
+
+def test_layouts_of_text_on_either_side_of_a_table(tmp_path: Path) -> None:
+    source, table, out = tmp_path / "in.csv", tmp_path / "t.parquet", tmp_path / "out.csv"
+    source.write_text("day;n\n58849.5;1\n58850.25;2\n")
+    words = ["--from", "UTC", "--to", "TAI", "--quiet"]
+    assert main(["convert", str(source), str(table), *words, "--input-format", "mjd", "--delimiter", ";"]) == 0
+    want = tscale.chain("UTC", "TAI")(tscale.Instants.from_mjd([58849, 58850], [0.5, 0.25], "UTC"))
+    assert np.all(instants_of(pq.read_table(table), "TAI") == want)
+    layout = ["--column", "TAI", "--from", "TAI", "--to", "GPS", "--output-format", "seconds", "--digits", "3"]
+    made = tmp_path / "made.json"
+    assert main(["convert", str(table), str(out), *layout, "--provenance-file", str(made), "--quiet"]) == 0
+    assert '"rows": 2' in made.read_text()
+    last = out.read_text().splitlines()[-1].replace('"', "").split(",")
+    # In text every column of dates is written alike: seconds since 2000-01-01T12:00:00 of its scale.
+    assert last[2:] == [f"{want.whole[1]}.000", f"{want.whole[1] - 19}.000"]
+
+
+def test_the_status_of_each_row_goes_along_with_its_sigma(tmp_path: Path) -> None:
+    t = tscale.Instants.from_iso(["2020-03-01", "2026-12-24", "2040-01-01"], "UTC")
+    source, out = saved(tmp_path / "in.parquet", t), tmp_path / "out.parquet"
+    with pytest.warns(tscale.ExtrapolationWarning):
+        convert_table(chain(), source, out, sigma=True)
+    assert pq.read_table(out)["TDB@BARYCENTER_status"].to_pylist() == ["measured", "predicted", "held+expired"]

@@ -13,6 +13,7 @@ from .supplies import supplied
 
 __all__ = ["add_parser", "run"]
 
+_OTHER_KINDS: Final = (".xlsx", ".xls", ".ods", ".gz", ".bz2", ".xz", ".zip", ".zst", ".fits", ".json", ".h5")
 _LAYOUTS: Final = ("iso", "mjd", "jd", "seconds", "spreadsheet")
 
 _EPILOG: Final = """\
@@ -71,8 +72,10 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
         formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
-    parser.add_argument("input", metavar="INPUT", help="CSV file with a header, or - for the standard input")
-    parser.add_argument("output", metavar="OUTPUT", help="CSV file, or - for the standard output")
+    parser.add_argument(
+        "input", metavar="INPUT", help="CSV file with a header, a Parquet or Arrow table, or - for the standard input"
+    )
+    parser.add_argument("output", metavar="OUTPUT", help="CSV, Parquet or Arrow file, or - for the standard output")
     parser.add_argument(
         "--from",
         dest="start",
@@ -136,6 +139,11 @@ def run(args: argparse.Namespace) -> int:
         raise InvalidInput("say what is wanted with --to NODE, such as --to TDB")
     if is_table(args.input, args.output):
         return run_table(args)
+    other = next((end for end in _OTHER_KINDS if args.output.lower().endswith(end)), None)
+    if other is not None:
+        raise InvalidInput(
+            f"OUTPUT {args.output} would be text under a name of {other}: end it in .csv, .parquet or .arrow"
+        )
     if args.compiled or args.threads != 1:
         raise InvalidInput("--compiled and --threads are for tables that end in .parquet, .arrow or .feather")
     digits = default_digits(args.output_format) if args.digits is None else check_digits(args.digits)

@@ -3,19 +3,20 @@
 from __future__ import annotations
 
 import argparse
+import json
 import os
 from typing import Any, Final
 
 from .rows_bar import RowsBar
-from .streams import is_standard_output, standard_output
+from .streams import is_standard_output, standard_output, written
 from .supplies import supplied
 
 __all__ = ["is_table", "run_table"]
 
 _ENDINGS: Final = (".parquet", ".arrow", ".feather")
 
-_OF_TEXT: Final = ("delimiter", "input_format", "output_format", "digits", "provenance", "provenance_file")
-_USUAL: Final = {"delimiter": ",", "input_format": "iso", "output_format": "iso"}
+_OF_INPUT: Final = {"input_format": "iso"}
+_OF_OUTPUT: Final = {"output_format": "iso", "digits": None}
 
 
 def is_table(source: str, target: str = "") -> bool:
@@ -26,11 +27,16 @@ def is_table(source: str, target: str = "") -> bool:
 def run_table(args: argparse.Namespace) -> int:
     """Convert a table."""
     from ..errors import InvalidInput
+    from ..files.csv_tables import TextLayout
+    from ..files.delimited import delimiter_of
     from ..files.tables import convert_table
 
-    for name in _OF_TEXT:
-        if getattr(args, name) not in (None, False, _USUAL.get(name)):
-            raise InvalidInput(f"--{name.replace('_', '-')} is for text, and {args.input} is a table")
+    for side, path, options in (("input", args.input, _OF_INPUT), ("output", args.output, _OF_OUTPUT)):
+        for name, usual in options.items():
+            if getattr(args, name) != usual and not path.lower().endswith(".csv"):
+                raise InvalidInput(f"--{name.replace('_', '-')} is for text, and the {side} {path} is none")
+    if args.provenance:
+        raise InvalidInput("--provenance puts lines above a text; beside a table take --provenance-file FILE")
     if not args.output.lower().endswith(_ENDINGS) and is_standard_output(args.output):
         raise InvalidInput("a table is written to a file or a folder, not to the standard output: name one")
     mappings, leap_seconds = _mappings(args)
@@ -46,14 +52,21 @@ def run_table(args: argparse.Namespace) -> int:
             sigma=args.sigma,
             rate=args.rate,
             leap_seconds=leap_seconds,
+            text=TextLayout(args.input_format, args.output_format, args.digits, delimiter_of(args.delimiter)),
             threads=args.threads,
             progress=bar.tell,
         )
     finally:
         bar.close()
-    if report is not None and args.json:
-        import json
+    if args.provenance_file is not None:
+        if args.compiled:
+            raise InvalidInput("a compiled chain tells what it was made of in its certificate (`tscale compile`)")
+        from ..provenance import provenance_of
 
+        found = {str(mapping.end): provenance_of(mapping).to_dict() for mapping in mappings}
+        with written(args.provenance_file) as file:
+            file.write(json.dumps({"results": found, "rows": done.rows}, sort_keys=True, indent=2) + "\n")
+    if report is not None and args.json:
         facts = {"input": args.input, "output": args.output, "rows": done.rows, "rows_found": done.found}
         print(json.dumps({**facts, "chains": [str(mapping) for mapping in mappings]}, indent=2), file=report)
     elif report is not None:

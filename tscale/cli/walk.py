@@ -14,10 +14,10 @@ from ..chains import Chain
 from ..earth.observer import Observer
 from ..exact import FloatArray, Pair
 from ..instants import Instants
+from ..provenance.status import Status, status_of
 from ..step import Step
 from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
-from .status import Status, status_of
 
 __all__ = ["Passed", "Walk", "add_notes", "note_texts"]
 

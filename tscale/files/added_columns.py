@@ -10,6 +10,7 @@ import numpy as np
 from ..errors import InvalidInput
 from ..exact import Pair
 from ..instants import Instants
+from ..provenance.status import row_status
 from ..scales import Node
 from .arrow_columns import arrow, fields
 from .stream import Mapping, evaluator
@@ -63,7 +64,9 @@ def added_columns(
         for title, chain in zip(titles, chains, strict=True)
     ]
     terms = [_terms(title, chain) for title, chain in zip(titles, chains, strict=True)] if ledger else []
+    states = [(f"{title}_status", chain) for title, chain in zip(titles, chains, strict=True)] if sigma else []
     found += [pa.field(name, pa.float64()) for name, _, _ in extra]
+    found += [pa.field(name, pa.string()) for name, _ in states]
     found += [pa.field(name, pa.float64()) for group in terms for name in group.values()]
 
     def make(pair: Pair) -> list[Any]:
@@ -71,6 +74,7 @@ def added_columns(
         if extra or terms:
             t = Instants._of(pair, start.scale, start.place)
             columns += [np.asarray(of(chain, t), dtype=np.float64) for _, chain, of in extra]
+            columns += [row_status(chain, t) for _, chain in states]
             for chain, group in zip(chains, terms, strict=False):
                 lines = chain.ledger(t)
                 columns += [lines[term] for term in group]

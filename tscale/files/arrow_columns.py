@@ -16,6 +16,7 @@ from ..exact import Pair
 from ..instants import Instants
 from ..scales import Node, Scale, check_place
 from ..timecodes.dates import from_datetime64
+from .date_text import read_dates
 
 if TYPE_CHECKING:
     import pyarrow as pa
@@ -141,7 +142,11 @@ def _node(name: str, pair: list[Any]) -> Node | None:
 
 
 def pair_of(
-    batch: pa.RecordBatch | pa.Table, column: DateColumn, scale: str, leap_seconds: LeapSeconds | None = None
+    batch: pa.RecordBatch | pa.Table,
+    column: DateColumn,
+    scale: str,
+    leap_seconds: LeapSeconds | None = None,
+    layout: str = "iso",
 ) -> Pair:
     """The dates as counts of a scale; those that are counts without a copy where Arrow allows.
 
@@ -167,7 +172,7 @@ def pair_of(
     if column.kind == "timestamps":
         return from_datetime64(parts[0], scale, leap_seconds=leap_seconds).pair
     if column.kind == "texts":
-        return Instants.from_iso(parts[0], scale, leap_seconds=leap_seconds).pair
+        return read_dates(parts[0].tolist(), layout, scale, leap_seconds=leap_seconds).pair
     whole, fraction = parts
     # Two passes without a mask; a NaN fails the comparison.
     if fraction.size and not (fraction.min() >= 0.0 and fraction.max() < 1.0):

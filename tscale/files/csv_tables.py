@@ -5,21 +5,32 @@ from __future__ import annotations
 import csv
 from collections.abc import Iterator
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
 from ..errors import DataFileError
 from ..instants import Instants
 from .arrow_columns import arrow, find_dates, instants_of
+from .date_text import write_dates
 
 if TYPE_CHECKING:
     import pyarrow as pa
 
     from ..formats.leap_seconds import LeapSeconds
 
-__all__ = ["CsvSource", "CsvTarget"]
+__all__ = ["CsvSource", "CsvTarget", "TextLayout"]
 
 _BLOCK_BYTES: Final = 2**24
-_DIGITS: Final = 12
+
+
+class TextLayout(NamedTuple):
+    """How dates are written in text, on either side of a conversion (see `date_text`)."""
+
+    read: str = "iso"
+    written: str = "iso"
+    digits: int | None = None
+    """Decimals written; None resolves a picosecond."""
+    delimiter: str = ","
+    leap_seconds: LeapSeconds | None = None
 
 
 class CsvSource:
@@ -34,9 +45,9 @@ class CsvSource:
         Lines below the header: more than rows where a cell holds a line break.
     """
 
-    def __init__(self, path: Path, column: str | None) -> None:
-        self._path = path
-        self._above, header = _header(path)
+    def __init__(self, path: Path, column: str | None, delimiter: str = ",") -> None:
+        self._path, self._delimiter = path, delimiter
+        self._above, header = _header(path, delimiter)
         self.column = header[0] if column is None else column
         with path.open("rb") as file:
             lines = sum(block.count(b"\n") for block in iter(lambda: file.read(2**20), b""))
@@ -52,6 +63,7 @@ class CsvSource:
         return arrow_csv.open_csv(
             self._path,
             read_options=arrow_csv.ReadOptions(block_size=_BLOCK_BYTES, skip_rows=self._above),
+            parse_options=arrow_csv.ParseOptions(delimiter=self._delimiter),
             convert_options=arrow_csv.ConvertOptions(column_types={self.column: pa.string()}),
         )
 
@@ -68,14 +80,14 @@ class CsvSource:
         """Nothing is held open."""
 
 
-def _header(path: Path) -> tuple[int, list[str]]:
+def _header(path: Path, delimiter: str) -> tuple[int, list[str]]:
     """Lines above the header, and the names in it."""
     above = 0
     try:
         with path.open(encoding="utf-8-sig", newline="") as file:
             for line in file:
                 if not line.startswith("#"):
-                    names = next(csv.reader([line]), [])
+                    names = next(csv.reader([line], delimiter=delimiter), [])
                     if names:
                         return above, names
                 above += 1
@@ -85,13 +97,13 @@ def _header(path: Path) -> tuple[int, list[str]]:
 
 
 class CsvTarget:
-    """A writer of record batches: dates that are two columns of counts become one of ISO 8601 text, to 1 ps."""
+    """A writer of record batches: dates that are two columns of counts become one of text."""
 
-    def __init__(self, sink: Any, schema: pa.Schema, leap_seconds: LeapSeconds | None) -> None:
+    def __init__(self, sink: Any, schema: pa.Schema, text: TextLayout) -> None:
         pa = arrow()
         from pyarrow import csv as arrow_csv
 
-        self._leap_seconds = leap_seconds
+        self._text = text
         dates = [name.removesuffix("_whole_s") for name in schema.names if name.endswith("_whole_s")]
         self._dates = [name for name in dates if f"{name}_fraction_s" in schema.names and _dated(schema, name)]
         fields = []
@@ -113,7 +125,8 @@ class CsvTarget:
         for field in self._schema:
             if field.name in self._dates:
                 t: Instants = instants_of(batch, field.name)
-                columns.append(pa.array(t.to_iso(_DIGITS, leap_seconds=self._leap_seconds).tolist(), pa.string()))
+                texts = write_dates(t, self._text.written, self._text.digits, leap_seconds=self._text.leap_seconds)
+                columns.append(pa.array(texts, pa.string()))
             else:
                 columns.append(batch.column(batch.schema.get_field_index(field.name)))
         self._writer.write_batch(pa.RecordBatch.from_arrays(columns, schema=self._schema))

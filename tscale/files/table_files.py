@@ -13,18 +13,17 @@ from typing import TYPE_CHECKING, Any, Final
 
 from ..errors import DataFileError, InvalidInput
 from .arrow_columns import arrow
-from .csv_tables import CsvSource, CsvTarget
+from .csv_tables import CsvSource, CsvTarget, TextLayout
 
 if TYPE_CHECKING:
     import pyarrow as pa
-
-    from ..formats.leap_seconds import LeapSeconds
 
 __all__ = ["JOB", "TableReader", "table_kind", "table_writer"]
 
 JOB: Final = "_job.json"
 """What a folder of parts is part of."""
 
+_PLAIN: Final = TextLayout()
 _KINDS: Final = {".parquet": "parquet", ".arrow": "arrow", ".feather": "arrow", ".csv": "csv"}
 
 
@@ -46,9 +45,9 @@ class TableReader:
         Column of dates: as asked for, or the first of a CSV file.
     """
 
-    def __init__(self, path: str | os.PathLike[str], column: str | None = None) -> None:
+    def __init__(self, path: str | os.PathLike[str], column: str | None = None, delimiter: str = ",") -> None:
         self.path = Path(path)
-        self._column = column
+        self._column, self._delimiter = column, delimiter
         if self.path.is_dir():
             self._files = sorted(
                 p for p in self.path.iterdir() if table_kind(p) is not None and not p.name.startswith((".", "_"))
@@ -62,7 +61,7 @@ class TableReader:
         self.rows = 0
         self.schema: Any = None
         for file in self._files:
-            with _opened(file, column) as source:
+            with _opened(file, column, delimiter) as source:
                 schema, rows = source.schema, source.rows
                 self.column = getattr(source, "column", column)
             if self.schema is None:
@@ -78,7 +77,7 @@ class TableReader:
         """Blocks of at most `rows` rows from row `first` on, each with the number of its first row (from 0)."""
         at = 0
         for file in self._files:
-            with _opened(file, self._column) as source:
+            with _opened(file, self._column, self._delimiter) as source:
                 if at + source.rows <= first:
                     at += source.rows
                     continue
@@ -164,11 +163,13 @@ class _Ipc:
 
 
 @contextlib.contextmanager
-def _opened(path: Path, column: str | None) -> Iterator[Any]:
+def _opened(path: Path, column: str | None, delimiter: str) -> Iterator[Any]:
     pa = arrow()
     kind = table_kind(path)
     try:
-        source = CsvSource(path, column) if kind == "csv" else (_Parquet if kind == "parquet" else _Ipc)(path)
+        source = (
+            CsvSource(path, column, delimiter) if kind == "csv" else (_Parquet if kind == "parquet" else _Ipc)(path)
+        )
         _ = source.schema.names  # decoded here, where it can be said which file is at fault
     except (OSError, pa.ArrowException) as error:
         raise DataFileError(f"cannot read {path} as a table: {_first_line(error)}", path=path) from error
@@ -213,7 +214,7 @@ class _IpcTarget:
 
 
 @contextlib.contextmanager
-def table_writer(path: Path, schema: pa.Schema, leap_seconds: LeapSeconds | None = None) -> Iterator[Any]:
+def table_writer(path: Path, schema: pa.Schema, text: TextLayout = _PLAIN) -> Iterator[Any]:
     """A writer with `write_batch`; the file takes its name when the block ends well, and is removed otherwise."""
     pa = arrow()
     if not path.absolute().parent.is_dir():
@@ -221,7 +222,7 @@ def table_writer(path: Path, schema: pa.Schema, leap_seconds: LeapSeconds | None
     target = Path(os.path.realpath(path))
     temporary = target.with_name(f".{secrets.token_hex(8)}.part")
     try:
-        with pa.OSFile(str(temporary), "wb") as sink, _writer(sink, schema, path, leap_seconds) as writer:
+        with pa.OSFile(str(temporary), "wb") as sink, _writer(sink, schema, path, text) as writer:
             yield writer
         with temporary.open("rb+") as file:
             os.fsync(file.fileno())
@@ -231,11 +232,11 @@ def table_writer(path: Path, schema: pa.Schema, leap_seconds: LeapSeconds | None
         raise
 
 
-def _writer(sink: Any, schema: pa.Schema, path: Path, leap_seconds: LeapSeconds | None) -> Any:
+def _writer(sink: Any, schema: pa.Schema, path: Path, text: TextLayout) -> Any:
     pa = arrow()
     kind = table_kind(path)
     if kind == "csv":
-        return CsvTarget(sink, schema, leap_seconds)
+        return CsvTarget(sink, schema, text)
     if kind == "arrow":
         return _IpcTarget(sink, schema)
     from pyarrow import parquet

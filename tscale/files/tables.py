@@ -15,6 +15,7 @@ from ..errors import DataFileError, InvalidInput, TscaleError
 from ..formats.leap_seconds import LeapSeconds
 from .added_columns import Added, added_columns
 from .arrow_columns import DateColumn, agreed, arrow, find_dates, pair_of
+from .csv_tables import TextLayout
 from .stream import Mapping, in_order
 from .table_files import TableReader, table_kind, table_writer
 
@@ -49,6 +50,7 @@ def convert_table(
     sigma: bool = False,
     rate: bool = False,
     leap_seconds: LeapSeconds | None = None,
+    text: TextLayout | None = None,
     threads: int = 1,
     rows: int = ROWS,
     progress: Callable[[int, int], None] | None = None,
@@ -75,7 +77,9 @@ def convert_table(
         Add a column for every term, for the standard uncertainty of each result, and for d(result)/d(date) - 1; the
         first two need chains that are not compiled.
     leap_seconds : LeapSeconds, optional
-        For reading timestamps and texts of UTC.
+        For reading timestamps and texts of UTC, and writing texts.
+    text : TextLayout, optional
+        How dates are written in texts: ISO 8601 on both sides, unless said.
     threads : int
         Blocks that are mapped at the same time.
     rows : int
@@ -98,7 +102,8 @@ def convert_table(
         raise InvalidInput(f"rows must be a whole number from 1, got {rows!r}")
     mappings = list(mapping) if isinstance(mapping, Sequence) else [mapping]
     names = None if result is None else [result] if isinstance(result, str) else list(result)
-    reader = TableReader(source, column)
+    layout = (text or TextLayout())._replace(leap_seconds=leap_seconds)
+    reader = TableReader(source, column, layout.delimiter)
     given = find_dates(reader.schema, reader.column)
     added = added_columns(mappings, names, ledger=ledger, sigma=sigma, rate=rate)
     agreed(given, mappings[0].start)
@@ -107,12 +112,12 @@ def convert_table(
         if field.name in schema.names:
             raise InvalidInput(f"the table has a column {field.name!r} already; name the new one otherwise (result=)")
         schema = schema.append(field)
-    work = _worker(added, given, schema, leap_seconds)
+    work = _worker(added, given, schema, layout)
     target = Path(target)
     columns = tuple(field.name for field in added.fields)
     if table_kind(target) is not None:
         done = 0
-        with table_writer(target, schema, leap_seconds) as writer:
+        with table_writer(target, schema, layout) as writer:
             for batch in in_order(work, reader.batches(rows), threads):
                 writer.write_batch(batch)
                 done += batch.num_rows
@@ -133,7 +138,7 @@ def convert_table(
 
 
 def _worker(
-    added: Added, column: DateColumn, schema: pa.Schema, leap_seconds: LeapSeconds | None
+    added: Added, column: DateColumn, schema: pa.Schema, text: TextLayout
 ) -> Callable[[tuple[int, pa.RecordBatch]], pa.RecordBatch]:
     """What puts the new columns behind those of a batch, given with the number of its first row."""
     module = arrow()
@@ -145,7 +150,7 @@ def _worker(
         except module.ArrowException as error:
             raise DataFileError(f"the table is damaged: {str(error).partition(chr(10))[0]}; make it again") from error
         try:
-            new = added.make(pair_of(batch, column, added.start.scale.name, leap_seconds))
+            new = added.make(pair_of(batch, column, added.start.scale.name, text.leap_seconds, text.read))
         except TscaleError as error:
             if error.row is None and error.mask is not None and error.mask.shape == (batch.num_rows,):
                 error.row = int(error.mask.argmax()) + 1

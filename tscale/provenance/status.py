@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Final, NamedTuple
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -14,14 +14,17 @@ from ..counts import tdb_from_tcb
 from ..earth.observer import Observer
 from ..exact import BoolArray, Pair
 from ..instants import Instants
-from ..provenance.tables_read import reads_ephemeris
 from ..scales import Node
 from ..step import Step
 from ..tables.clock_log import ClockLog
 from ..tables.reference import ReferenceData
 from ..transforms import geocentric
+from .tables_read import reads_ephemeris
 
-__all__ = ["Status", "status_of", "uses_orientation"]
+if TYPE_CHECKING:
+    from ..chains import Chain
+
+__all__ = ["Status", "row_status", "status_of", "uses_orientation"]
 
 _WORDS: Final = ("", "measured", "predicted", "held")
 _AHEAD: Final = "clock predicted"
@@ -89,6 +92,22 @@ def status_of(
             for flag in log.flags(by_scale[log.reference].pair).values():
                 ahead = ahead | flag
     return Status(code, ahead, late)
+
+
+def row_status(chain: Chain, t: Instants) -> list[str]:
+    """What the result of each of some one-dimensional instants rests on: the worst of all steps, in words.
+
+    `measured`, `predicted` or `held` for Earth orientation, then `+clock predicted` and `+expired` where they apply;
+    `none` where nothing of these matters.
+    """
+    no = np.zeros(t.shape, dtype=np.bool_)
+    worst, before = Status(np.zeros(t.shape, dtype=np.int8), no, no), t.at(chain.start.place or t.place)
+    supplies = chain._supplies
+    for step in chain.steps:
+        after = step.forward(before)
+        worst = worst.worst(status_of(step, before, after, chain.reference, supplies.site, supplies.clocks))
+        before = after
+    return worst.words()
 
 
 def _tai(node: Node, at: Instants) -> Pair | None:
