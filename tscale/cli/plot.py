@@ -66,6 +66,8 @@ def _of_chain(kinds: argparse._SubParsersAction[Any], name: str, words: str) -> 
         name,
         help=words,
         description=f"Draw {words}. The dates are those of a column of INPUT, or evenly spaced.",
+        epilog=_EPILOG,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
     parser.add_argument("input", metavar="INPUT", nargs="?", help="CSV file with a header, or - for the standard input")
@@ -85,6 +87,8 @@ def _add_log(kinds: argparse._SubParsersAction[Any]) -> None:
         "log",
         help=words,
         description=f"Draw {words}. With --until and levels of noise the log is predicted past its last comparison.",
+        epilog=_EPILOG,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
     parser.add_argument("input", metavar="LOG", help="comparison log (CSV), or FILE:LAB of a BIPM Circular T")
