@@ -121,6 +121,55 @@ def test_what_is_wrong_is_one_line(
     assert not target.exists()
 
 
+def test_errors_name_the_options_of_the_command(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    target = tmp_path / "out.fits"
+
+    def said_of(source: Path, *options: str) -> str:
+        assert main(["events", str(source), str(target), *options]) == 2
+        said = capsys.readouterr().err
+        assert said.count("\n") == 1
+        return said
+
+    plain = save(tmp_path / "a.fits", events(with_place(header(TIMESYS="UTC")), times(5)))
+    for words in ("utc='elapsed'", "(on the command line: --utc elapsed or --utc labels)"):
+        assert words in said_of(plain, "--to", "TAI")
+    assert main(["events", str(plain), str(target), "--to", "TAI", "--utc", "elapsed", "--quiet"]) == 0
+    capsys.readouterr()
+    target.unlink()
+
+    other = save(tmp_path / "b.fits", events(with_place(header()), times(5)),
+                 events(with_place(header(TIMESYS="TAI")), times(5), "HK"))  # fmt: skip
+    assert "keep= (on the command line: --keep EXTENSION)" in said_of(other, "--to", "UTC")
+    assert "(on the command line: --keep EXTENSION)" in said_of(other, "--to", "UTC", "--keep", "XX")
+
+    wrong = save(tmp_path / "c.fits", events(with_place(header(DATEREF="2001-01-01T00:00:00")), times(5)))
+    said = said_of(wrong, "--to", "UTC")
+    assert "cards={'DATEREF': ...} (on the command line: --card KEY=VALUE)" in said
+    command = ["events", str(wrong), str(target), "--to", "TAI", "--card", "DATEREF=2001-01-01T00:01:04.184"]
+    assert main([*command, "--quiet"]) == 0
+
+
+def test_a_direction_that_the_header_states_is_suggested(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    target = tmp_path / "out.fits"
+    for cards, words in (
+        ({}, "--direction RA_NOM,DEC_NOM takes it"),
+        ({"RA_NOM": None, "DEC_NOM": None, "RA_OBJ": 187.2519, "DEC_OBJ": -12.6408}, "--direction RA_OBJ,DEC_OBJ"),
+        ({"RA_NOM": None}, None),
+        ({"RADESYS": "FK5"}, None),
+    ):
+        source = save(tmp_path / "in.fits", events(with_place(header(**cards)), times(5)))
+        assert main(["events", str(source), str(target), "--to", "TDB@BARYCENTER"]) == 2
+        said = capsys.readouterr().err
+        assert "--source FILE (or --ra and --dec)" in said
+        assert ("--direction" in said) == (words is not None)
+        if words is not None:
+            assert words in said
+            names = words.split()[1]
+            command = ["events", str(source), str(target), "--to", "TDB@BARYCENTER", "--direction", names]
+            assert main([*command, "--quiet"]) == 0
+            capsys.readouterr()
+
+
 def test_streams_are_refused(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     source = event_file(tmp_path / "in.fits")
     assert main(["events", str(source), "-", "--to", "TAI"]) == 2

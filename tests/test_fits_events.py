@@ -10,7 +10,7 @@ import pytest
 from astropy.coordinates import EarthLocation, SkyCoord
 from astropy.io import fits
 from astropy.table import Table
-from astropy.time import Time
+from astropy.time import Time, TimeDelta
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
@@ -161,14 +161,48 @@ def test_dates_of_the_header_follow_the_events(tmp_path: Path) -> None:
     done = convert_events(source, target, to_barycentre())
     want = to_barycentre()(first)
     now = fits.getheader(target, 1)
-    # TSTART is the most exact statement of the beginning: the others are written from it, as long as they were.
-    assert now["DATE-BEG"] == str(want[0].to_iso(3))
-    assert now["DATE-OBS"] + "T" + now["TIME-OBS"] == str(want[0].to_iso(0))
+    # TSTART is the most exact statement of the beginning: the others are written from it, to its 1.2e-7 s.
+    assert now["DATE-BEG"] == str(want[0].to_iso(7))
+    assert now["DATE-OBS"] + "T" + now["TIME-OBS"] == str(want[0].to_iso(7))
     assert abs(now["MJD-OBS"] - sum(map(float, want[0].to_mjd()))) < 1e-9
     assert now["DATE-END"] == str(want[1].to_iso(0))[:10]
     assert now["DATE-AVG"] == "2023-03-09"
     assert any("DATE-AVG states a whole day and was left" in note for note in done.notes)
     read_time_frame(now)  # which compares them
+
+
+@pytest.mark.parametrize(
+    ("rebase", "decimals"),
+    # Float64 numbers of 7e8 s are 1.2e-7 s apart, those of a day 1.5e-11 s.
+    [(False, 7), (True, 11)],
+)
+def test_a_date_in_whole_seconds_becomes_as_fine_as_what_else_says_it(
+    tmp_path: Path, rebase: bool, decimals: int
+) -> None:
+    t = times(20)
+    begin, stop = read_time_frame(header()).instants(t[[0, -1]])
+    same = {"DATE__OBS": str(begin.to_iso(0)), "DATE__END": str(stop.to_iso(0)), "DATE__BEG": str(begin.to_iso(3))}
+    source, target = event_file(tmp_path / "in.fits", t, **same), tmp_path / "out.fits"
+    convert_events(source, target, to_barycentre(), rebase=rebase)
+    now = fits.getheader(target, 1)
+    for key, start in (("DATE-OBS", "TSTART"), ("DATE-BEG", "TSTART"), ("DATE-END", "TSTOP")):
+        assert len(now[key].partition(".")[2]) == decimals
+        # astropy reads both from the header alone: FITS Standard 4.0, section 9.2.
+        theirs = Time(now["MJDREFI"], now["MJDREFF"], format="mjd", scale="tdb") + TimeDelta(now[start], format="sec")
+        apart_s = abs((Time(now[key], format="fits", scale="tdb") - theirs).sec)
+        # Half the last digit of either; two float64 of days hold 1e-11 s.
+        assert apart_s <= 0.5 * 10.0**-decimals + 0.5 * float(np.spacing(now[start])) + 2e-11
+
+
+def test_a_date_in_whole_seconds_alone_goes_there_and_back(tmp_path: Path) -> None:
+    source, there, back = (tmp_path / name for name in ("in.fits", "there.fits", "back.fits"))
+    save(source, events(with_place(header(DATE__OBS="2023-03-08T20:33:21")), times(5)))
+    convert_events(source, there, to_barycentre(), rebase=True)
+    assert len(fits.getheader(there, 1)["DATE-OBS"]) == len("2023-03-08T20:25:11.654321")
+    convert_events(there, back, tscale.chain("TDB@BARYCENTER", "TT@TOPOCENTER", site=SITE, source=STAR), rebase=True)
+    text = fits.getheader(back, 1)["DATE-OBS"]
+    # Two roundings to a microsecond, each half of one off at the most.
+    assert abs((Time(text, scale="tt") - Time("2023-03-08T20:33:21", scale="tt")).sec) < 1.1e-6
 
 
 def test_offsets_scaling_and_limits_become_part_of_the_times(tmp_path: Path) -> None:

@@ -181,9 +181,31 @@ def test_contradictions_are_errors_that_name_the_keywords(cards: dict[str, Any],
         assert keyword in str(caught.value)
 
 
+@pytest.mark.parametrize(
+    ("wrong", "right"),
+    [
+        ({"MJDREF": 51910.5}, {"MJDREF": 51910}),
+        ({"DATEREF": "2001-01-01T00:00:00"}, {"DATEREF": "2001-01-01T00:01:04.184"}),
+        ({"TSTOP": 10.0, "DATE__END": "2001-01-01T00:01:12.0"}, {"DATE-END": "2001-01-01T00:01:14.184"}),
+        ({"TSTART": 10.0, "TSTOP": 9.0}, {"TSTOP": 11.0}),
+        ({"TIMEOFFS": 1.0, "TIMEZERO": 2.0}, {"TIMEOFFS": 3.0, "TIMEZERO": 0}),
+        ({"TREFPOS": "BARYCENTER"}, {"TIMESYS": "TDB"}),
+    ],
+)
+def test_contradictions_name_a_remedy_that_is_one(wrong: dict[str, Any], right: dict[str, Any]) -> None:
+    if "MJDREF" in wrong:
+        wrong = {**wrong, "MJDREFI": 51910, "MJDREFF": 0.0}
+    with pytest.raises(DataFileError) as caught:
+        read_time_frame(header(**wrong))
+    said = str(caught.value).partition("cards={")[2]
+    assert all(f"'{key}': " in said for key in right)
+    read_time_frame(header(**wrong), cards=right)
+
+
 def test_a_keyword_twice_with_two_values_is_an_error() -> None:
     found = header()
     found.append(("TIMESYS", "UTC"), end=True)
+    assert read_time_frame(found, cards={"TIMESYS": "UTC"}).scale.name == "UTC"
     with pytest.raises(DataFileError, match="TIMESYS stands there several times, with the values TT, UTC"):
         read_time_frame(found)
 

@@ -10,11 +10,23 @@ from .streams import note, standard_output
 from .supplies import Supplied, supplied
 
 if TYPE_CHECKING:
+    from ..errors import MissingPiece, TscaleError
     from ..fits import ConvertedEvents
-    from ..fits.cards import Value
+    from ..fits.cards import Cards, Value
     from ..fits.reading import TimeColumn
 
 __all__ = ["add_parser", "run"]
+
+# The options for what errors call arguments of `convert_events`.
+_OPTION_FOR: Final = {
+    "utc=": "--utc elapsed or --utc labels",
+    "cards=": "--card KEY=VALUE",
+    "keep=": "--keep EXTENSION",
+    "keep names": "--keep EXTENSION",
+    "leave rebase out": "--rebase",
+    "give a Source": "--direction, --source FILE, or --ra and --dec",
+}
+_DIRECTIONS: Final = (("RA_NOM", "DEC_NOM"), ("RA_OBJ", "DEC_OBJ"))
 
 _EPILOG: Final = """\
 What the times are is read from the headers, by the FITS time standard (TIMESYS, TREFPOS, MJDREF ...); a header that
@@ -82,6 +94,23 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Convert a file."""
+    from ..errors import TscaleError
+
+    try:
+        return _run(args)
+    except TscaleError as error:
+        _add_options(error)
+        raise
+
+
+def _add_options(error: TscaleError) -> None:
+    """Name the options for the arguments of functions that an error speaks of."""
+    options = dict.fromkeys(option for word, option in _OPTION_FOR.items() if word in str(error))
+    if options:
+        error.args = (f"{error} (on the command line: {'; '.join(options)})",)
+
+
+def _run(args: argparse.Namespace) -> int:
     from ..errors import InvalidInput
     from ..fits import convert_events
     from ..fits.layout import read_layout
@@ -163,14 +192,30 @@ def _mapping(args: argparse.Namespace, times: TimeColumn, source: Any) -> Any:
         from ..compiled import load_compiled
 
         return load_compiled(args.compiled)
+    from ..errors import MissingPiece
     from ..fits import site_of
 
     args.start = str(times.frame.node)
     given: Supplied = supplied(args)._replace(source=source)
     if given.site is None and times.frame.observer_m is not None and times.frame.position == "TOPOCENTER":
         given = given._replace(site=site_of(times.hdu.cards))
-    (chain,) = given.chains([args.end])
+    try:
+        (chain,) = given.chains([args.end])
+    except MissingPiece as error:
+        _add_direction(error, times.hdu.cards)
+        raise
     return chain
+
+
+def _add_direction(error: MissingPiece, cards: Cards) -> None:
+    """Where a source is missing and the header states a direction, say how to take it."""
+    from ..fits.observer import is_icrs
+
+    if "source=" in str(error) and is_icrs(cards):
+        for pair in _DIRECTIONS:
+            if all(key in cards for key in pair):
+                error.args = (f"{error}. The header states a direction: --direction {','.join(pair)} takes it",)
+                break
 
 
 def _json(args: argparse.Namespace, done: ConvertedEvents) -> str:

@@ -99,7 +99,11 @@ class Cards:
             return _token(self.given[keyword])
         found = dict.fromkeys(self._read(at, keyword)[0] for at in self._places.get(keyword, ()))
         if len(found) > 1:
-            raise self.fault(f"{keyword} stands there several times, with the values {', '.join(map(str, found))}")
+            values = ", ".join(map(str, found))
+            raise self.fault(
+                f"{keyword} stands there several times, with the values {values}. Say which holds, by "
+                f"cards={{'{keyword}': ...}}"
+            )
         return next(iter(found), None)
 
     def _read(self, at: int, keyword: str) -> tuple[str | None, bool]:
@@ -159,6 +163,11 @@ class Cards:
         """An error that names the file and the HDU."""
         place = self.where if self.path is None else f"{self.path}, {self.where}"
         return DataFileError(f"{place}: {message}", path=self.path)
+
+    def contradiction(self, message: str, *keywords: str) -> DataFileError:
+        """A fault of keywords that do not go together, with what to do about it."""
+        ways = " or ".join(f"cards={{'{keyword}': ...}}" for keyword in dict.fromkeys(keywords))
+        return self.fault(f"{message}. Give the one that is wrong its right value, by {ways}")
 
     def order(self, keywords: Iterable[str]) -> list[str]:
         """Those keywords that are there, as they follow each other."""

@@ -151,9 +151,10 @@ def check_agreement(cards: Cards, times: Mapping[str, HeaderTime]) -> None:
         for one, other in combinations([key for key in group if key in times], 2):
             if not _agree(times[one], times[other]):
                 apart_s = _apart_s(times[one], times[other])
-                raise cards.fault(f"{one} and {other} state the same time, and are {apart_s:.6g} s apart")
+                message = f"{one} and {other} state the same time, and are {apart_s:.6g} s apart"
+                raise cards.contradiction(message, one, other)
     if {"TSTART", "TSTOP"} <= times.keys() and bool(times["TSTOP"].instants < times["TSTART"].instants):
-        raise cards.fault("TSTOP is before TSTART")
+        raise cards.contradiction("TSTOP is before TSTART", "TSTART", "TSTOP")
 
 
 def same_time(key: str, times: Mapping[str, HeaderTime]) -> str:

@@ -72,7 +72,8 @@ def position_of(cards: Cards, number: int | None, notes: list[str], scale: Scale
     except InvalidInput as error:
         raise cards.fault(f"{keyword}: {error}") from error
     if position == "BARYCENTER" and scale.name not in words.BARYCENTRIC:
-        raise cards.fault(f"{keyword} is BARYCENTER and TIMESYS {scale}: at the barycentre times are TDB or TCB")
+        message = f"{keyword} is BARYCENTER and TIMESYS {scale}: at the barycentre times are TDB or TCB"
+        raise cards.contradiction(message, keyword, "TIMESYS")
     if scale.name in words.BARYCENTRIC and position != "BARYCENTER":
         if not stated:
             raise cards.fault(
@@ -99,7 +100,10 @@ def offset_of(cards: Cards) -> Fraction:
     """TIMEOFFS, and TIMEZERO, which says the same in older headers, in TIMEUNIT."""
     values = {key: Fraction(cards.number(key) or 0) for key in ("TIMEOFFS", "TIMEZERO")}
     if all(values.values()):
-        raise cards.fault("TIMEOFFS and TIMEZERO are both there and not 0: whether they add up cannot be told")
+        raise cards.fault(
+            "TIMEOFFS and TIMEZERO are both there and not 0: whether they add up cannot be told. Say the sum in one "
+            "and 0 in the other, by cards={'TIMEOFFS': ..., 'TIMEZERO': 0}"
+        )
     return sum(values.values(), Fraction(0))
 
 

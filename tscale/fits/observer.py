@@ -42,7 +42,10 @@ def observer_itrf_m(cards: Cards) -> tuple[float, float, float] | None:
     apart_m = math.dist(first, (x, y, z))
     digits_m = [_digit(value) for value in xyz] + [_digit(value) * _DEGREE_M for value in blh[:2]] + [_digit(blh[2])]
     if apart_m > sum(digits_m):
-        raise cards.fault(f"OBSGEO-X, -Y, -Z and OBSGEO-B, -L, -H are {apart_m:.6g} m apart")
+        raise cards.fault(
+            f"OBSGEO-X, -Y, -Z and OBSGEO-B, -L, -H are {apart_m:.6g} m apart. Give those that are wrong their right "
+            "values, by cards={'OBSGEO-X': ...} and so on"
+        )
     return first
 
 

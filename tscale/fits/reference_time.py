@@ -45,9 +45,9 @@ def reference_mjd(cards: Cards, scale: Scale, notes: list[str], leap_seconds: Le
     first = stated[0]
     for other in stated[1:]:
         if abs(first[1] - other[1]) > max(first[2], other[2]):
-            raise cards.fault(
-                f"{first[0]} and {other[0]} state reference times {float(abs(first[1] - other[1]) * DAY_S):.6g} s apart"
-            )
+            apart_s = float(abs(first[1] - other[1]) * DAY_S)
+            message = f"{first[0]} and {other[0]} state reference times {apart_s:.6g} s apart"
+            raise cards.contradiction(message, *first[0].split(" + "), *other[0].split(" + "))
         if first[1] != other[1]:
             apart_s = float(abs(first[1] - other[1]) * DAY_S)
             notes.append(f"{first[0]} is taken; {other[0]}, with fewer digits, is {apart_s:.3g} s from it")

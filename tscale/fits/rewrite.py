@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
@@ -29,6 +30,7 @@ _LIMITS: Final = ("TDMIN", "TDMAX", "TLMIN", "TLMAX")
 _DIRECTIONS: Final = (("RA_NOM", "DEC_NOM"), ("RA_OBJ", "DEC_OBJ"))
 _OWN_DIRECTION: Final = ("RA_TREF", "DEC_TREF")
 _MJD_DECIMALS: Final = 10  # of a day: 9 us, below the 11 digits after which a float64 has none
+_DATE_DECIMALS: Final = (6, 12)  # of a second, at the least and the most for the sake of another keyword
 
 
 @dataclass(frozen=True)
@@ -192,7 +194,10 @@ def _set_times(made: Cards, frame: TimeFrame, after: TimeFrame, target: Target, 
         elif held.digit_s >= DAY_S and base == key:
             notes.append(f"{made.where}: {key} states a whole day and was left")
         elif key.startswith("DATE"):
-            _set_date(made, key, held, carried[base], name, target)
+            digit_s = frame.times[base].digit_s
+            if base in RELATIVE:  # what is written of it has all digits of a float64
+                digit_s = reckoning.spacing_s(float(reckoning.numbers(carried[base].pair)))
+            _set_date(made, key, held, _date_decimals(held, digit_s), carried[base], name, target)
         else:
             day, fraction = carried[base].to_mjd(leap_seconds=target.leap_seconds)
             decimals = 0 if held.digit_s >= DAY_S else max(held.decimals, _MJD_DECIMALS)
@@ -203,8 +208,19 @@ def _set_times(made: Cards, frame: TimeFrame, after: TimeFrame, target: Target, 
         made.set("TELAPSE", float(elapsed_s / float(unit_s)), f"[{frame.unit}] TSTOP - TSTART")
 
 
-def _set_date(made: Cards, key: str, held: HeaderTime, t: Instants, name: str, target: Target) -> None:
-    text = str(t.to_iso(held.decimals, leap_seconds=target.leap_seconds))
+def _date_decimals(held: HeaderTime, digit_s: float) -> int:
+    """Decimals with which a date says what a keyword does whose last digit is worth `digit_s`.
+
+    A whole second of the input is seldom one after its way to another place: cut to it, the date would no longer be
+    that of the event.
+    """
+    least, most = _DATE_DECIMALS
+    fine = most if digit_s == 0 else math.ceil(-math.log10(digit_s))
+    return max(held.decimals, least, min(fine, most))
+
+
+def _set_date(made: Cards, key: str, held: HeaderTime, decimals: int, t: Instants, name: str, target: Target) -> None:
+    text = str(t.to_iso(decimals, leap_seconds=target.leap_seconds))
     date, _, clock = text.partition("T")
     if held.clock is not None:
         made.set(held.clock, clock, f"{name}")
