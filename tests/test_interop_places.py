@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import pickle
+from collections.abc import Callable
 from fractions import Fraction
 from pathlib import Path
 
 import numpy as np
 import pytest
 from astropy import units as u
-from astropy.coordinates import AltAz, Distance, EarthLocation, SkyCoord
+from astropy.coordinates import AltAz, Angle, Distance, EarthLocation, SkyCoord
 from astropy.time import Time, TimeDelta
 from hypothesis import given
 from hypothesis import strategies as st
@@ -195,13 +196,77 @@ def test_units_are_not_dropped_on_the_way() -> None:
         t.shifted(3 * u.m)
     with pytest.raises(InvalidInput, match="timedelta64"):
         t.shifted(np.timedelta64(3, "m"))
-    for make in (
-        lambda: tscale.Site.from_itrf("x", 6371 * u.km, 0 * u.km, 0 * u.km),
-        lambda: tscale.Source(1 * u.rad, 0 * u.rad),
-        lambda: tscale.Trajectory.from_kepler(t, 7000 * u.km, 0.0, 1.0, 2.0, 3.0, 4.0),
-    ):
-        with pytest.raises(InvalidInput):
-            make()
+    with pytest.raises(InvalidInput):
+        tscale.Trajectory.from_kepler(t, 7000 * u.km, 0.0, 1.0, 2.0, 3.0, 4.0)
+
+
+def test_sites_and_sources_of_quantities() -> None:
+    plain = tscale.Site.from_itrf(
+        "x",
+        6371000.0,
+        1500.0,
+        0.0,
+        velocity_m_yr=(0.25, 0.5, 0.0),
+        height_above_geoid_m=12.5,
+        geopotential_number_m2_s2=125.0,
+    )
+    # All of these numbers are exact in either unit but the velocities, of one rounding.
+    made = tscale.Site.from_itrf(
+        "x",
+        6371 * u.km,
+        1.5 * u.km,
+        0 * u.m,
+        velocity_m_yr=[25.0, 50.0, 0.0] * u.cm / u.yr,
+        height_above_geoid_m=1250 * u.cm,
+        geopotential_number_m2_s2=125 * u.J / u.kg,
+    )
+    assert made.velocity_m_yr == pytest.approx(plain.velocity_m_yr, rel=4e-16, abs=0.0)
+    assert made == tscale.Site(
+        "x", plain.position_m, made.velocity_m_yr, height_above_geoid_m=12.5, geopotential_number_m2_s2=125.0
+    )
+    assert all(type(value) is float for value in (*made.position_m, made.geopotential_number_m2_s2))
+    assert tscale.Site("x", [6371.0, 1.5, 0.0] * u.km).position_m == plain.position_m  # type: ignore[arg-type]
+    ground = tscale.Site.from_geodetic("x", Angle("1h"), Angle("45d30m"), 0.25 * u.km)
+    assert ground.position_m == tscale.Site.from_geodetic("x", 15.0, 45.5, 250.0).position_m
+    star = tscale.Source(Angle("12h"), -1800 * u.arcmin, 0.25 * u.arcsec / u.yr, parallax_mas=0.5 * u.arcsec)
+    # Units of angle differ by factors that are no float64: one rounding, 6e-15 deg.
+    found = (star.ra_deg, star.dec_deg, star.pm_ra_cosdec_mas_yr, star.parallax_mas)
+    assert found == pytest.approx((180.0, -30.0, 250.0, 500.0), rel=4e-16, abs=0.0)
+    assert all(type(value) is float for value in (star.ra_deg, star.dec_deg, star.pm_ra_cosdec_mas_yr))
+
+
+@pytest.mark.parametrize(
+    ("make", "words"),
+    [
+        (lambda: tscale.Site.from_itrf("x", 6371 * u.km, 0 * u.s, 0.0), "'x': y_m: .* cannot be given in m"),
+        (lambda: tscale.Site.from_geodetic("x", 1 * u.m, 2.0, 3.0), "'x': lon_deg: .* cannot be given in deg"),
+        (
+            lambda: tscale.Site.from_itrf("x", u.Quantity([6371, 1], "km"), 0.0, 0.0),
+            "x_m must be a number, got <Quantity",
+        ),
+        (lambda: tscale.Site.from_itrf("x", 6371 * u.m, 0.0, 0.0), "6371 m from the geocentre"),
+        (lambda: tscale.Site.from_itrf("x", 6371e3, 0.0, np.timedelta64(3, "s")), "'x': z_m: numbers of m"),
+        (lambda: tscale.Source(1 * u.m, 2.0), "ra_deg: .* cannot be given in deg"),
+        (lambda: tscale.Source(u.Quantity([1, 2], "deg"), 2.0), "ra_deg must be a finite number"),
+        (lambda: tscale.Source(1.0, 2.0, parallax_mas=10 * u.pc), "parallax_mas: .* cannot be given in mas"),
+        (lambda: tscale.Source(1.0, np.nan * u.deg), "dec_deg must be a finite number"),
+    ],
+)
+def test_quantities_of_another_kind(make: Callable[[], object], words: str) -> None:
+    with pytest.raises(InvalidInput, match=words):
+        make()
+
+
+def test_where_astropys_own_objects_are_read() -> None:
+    there, star = to_astropy(SITE), to_astropy(STAR)
+    with pytest.raises(InvalidInput, match=r"got EarthLocation; read it with tscale.interop.from_astropy\(site\)"):
+        tscale.chain("UTC", "TDB", site=there)
+    with pytest.raises(InvalidInput, match=r"got SkyCoord; read it with tscale.interop.from_astropy\(source\)"):
+        tscale.chain("UTC", "TDB", source=star)
+    with pytest.raises(InvalidInput, match=r"got Time; read it with tscale.interop.from_astropy\(t\)"):
+        tscale.chain("UTC", "TAI")(Time("2025-01-01"))
+    with pytest.raises(InvalidInput, match="got Quantity; make one with Source"):
+        tscale.chain("UTC", "TDB", source=3 * u.deg)
 
 
 def test_a_chain_by_way_of_astropy(reference: tscale.ReferenceData, tmp_path: Path) -> None:

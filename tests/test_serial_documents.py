@@ -92,7 +92,27 @@ def test_trajectories_fly_as_before(name: str, reference: tscale.ReferenceData) 
     tt = tscale.Instants.from_iso(["2025-03-01T10:00:01.25", "2025-03-01T11:30:00"], scale="TT").pair
     for ours, theirs in zip(orbit.gcrs(tt, reference), back.gcrs(tt, reference), strict=True):
         assert np.array_equal(ours, theirs)
-    assert (back.name, back.path, back.span) == (orbit.name, orbit.path, orbit.span)
+    assert (back.name, back.span) == (orbit.name, orbit.span)
+
+
+def test_where_a_file_lay_is_not_written(tmp_path: Path) -> None:
+    texts = []
+    for home in (tmp_path / "here", tmp_path / "there"):
+        home.mkdir()
+        log = tscale.ClockLog.load(shutil.copy(EXAMPLES / "maser.csv", home))
+        flight = tscale.Trajectory.from_flight(shutil.copy(EXAMPLES / "flight_east.csv", home))
+        assert (log.path, flight.path) == (home / "maser.csv", home / "flight_east.csv")
+        texts.append((to_json(log), to_json(flight)))
+    # The same bytes wherever the files are, and no folder in them.
+    assert texts[0] == texts[1]
+    assert str(tmp_path) not in "".join(texts[0])
+    back = from_json(texts[0][0])
+    assert (back.path, back.name, back.sha256, back.files) == (None, log.name, log.sha256, log.files)
+    assert to_json(back) == texts[0][0]
+    assert from_json(texts[0][1]).path is None
+    # Documents that say a path can be read still; it is not taken over.
+    for text in texts[0]:
+        assert from_json(changed(text, path={"path": "/elsewhere/file.csv"})).path is None
 
 
 def test_gravity_fields_and_free_clocks() -> None:
@@ -380,3 +400,11 @@ def test_what_has_no_layout(reference: tscale.ReferenceData) -> None:
             to_json(value)
     with pytest.raises(InvalidInput, match="reads a text"):
         from_json(Path("x"))  # type: ignore[arg-type]
+
+
+def test_what_is_kept_otherwise_says_how(reference: tscale.ReferenceData) -> None:
+    compiled = tscale.chain("UTC", "TAI").compile("2020-01-01", "2020-01-03")
+    with pytest.raises(InvalidInput, match=r"a CompiledChain; keep it with its own save\(path\) .*load_compiled"):
+        to_json(compiled)
+    with pytest.raises(InvalidInput, match=r"a ReferenceData; its tables are files: keep those, .*reference="):
+        to_json(reference)

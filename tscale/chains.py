@@ -193,7 +193,8 @@ def _in_blocks(work: Callable[[Instants], Instants], t: Instants) -> Instants:
 def _accept(t: Instants, node: Node, what: str) -> Instants:
     if not isinstance(t, Instants):
         raise InvalidInput(
-            f"a chain maps Instants, got {type(t).__name__}; make them with Instants.from_iso or another from_..."
+            f"a chain maps Instants, got {type(t).__name__}; "
+            + _remedy(t, "t", "make them with Instants.from_iso or another from_...")
         )
     if t.scale != node.scale.name:
         raise ScaleMismatch(f"{what} takes {node}, got instants of scale {t.scale}")
@@ -255,12 +256,20 @@ def chain(
 def _check_pieces(site: Any, source: Any, reference: Any) -> None:
     if site is not None and not isinstance(site, Observer):
         raise InvalidInput(
-            f"site= takes a Site, a SurfaceSite or a Trajectory, got {kind_words(site)}; read a file "
-            "with Site.load(path)"
+            f"site= takes a Site, a SurfaceSite or a Trajectory, got {kind_words(site)}; "
+            + _remedy(site, "site", "read a file with Site.load(path)")
         )
     if source is not None and not isinstance(source, Source):
-        raise InvalidInput(f"source= takes a Source, got {kind_words(source)}; make one with Source(ra_deg, dec_deg)")
+        remedy = _remedy(source, "source", "make one with Source(ra_deg, dec_deg)")
+        raise InvalidInput(f"source= takes a Source, got {kind_words(source)}; {remedy}")
     if reference is not None and not isinstance(reference, ReferenceData):
         raise InvalidInput(
             f"reference= takes a ReferenceData, got {kind_words(reference)}; make one with ReferenceData.load()"
         )
+
+
+def _remedy(value: Any, name: str, ours: str) -> str:
+    """What to do about a wrong object: those of a library that is read elsewhere, by its own reader."""
+    package = type(value).__module__.partition(".")[0]
+    theirs = package == "astropy" and type(value).__name__ in ("Time", "EarthLocation", "SkyCoord")
+    return f"read it with tscale.interop.from_astropy({name})" if theirs else ours

@@ -19,6 +19,13 @@ from .storage import toml_table
 __all__ = ["Source"]
 
 _RAD_PER_MAS: Final = math.pi / (180.0 * 3600.0e3)
+_UNITS: Final = {
+    "ra_deg": "deg",
+    "dec_deg": "deg",
+    "pm_ra_cosdec_mas_yr": "mas / yr",
+    "pm_dec_mas_yr": "mas / yr",
+    "parallax_mas": "mas",
+}
 
 
 @dataclass(frozen=True)
@@ -40,6 +47,11 @@ class Source:
         ISO 8601 date (TDB at the barycentre) at which the direction holds.
     name : str
         For messages and tables.
+
+    Notes
+    -----
+    Bare numbers have the units that the names end with. Quantities of a general library (astropy's, such as
+    `83.6 * u.deg` or an `Angle`), which convert themselves, are taken too.
     """
 
     ra_deg: float
@@ -52,11 +64,17 @@ class Source:
     _epoch: Instants = field(init=False, repr=False, compare=False)
 
     def __post_init__(self) -> None:
-        for item in fields(self)[:5]:
-            value = getattr(self, item.name)
+        for what, unit in _UNITS.items():
+            given = getattr(self, what)
+            try:
+                value = exact.bare(given, unit)
+            except InvalidInput as error:
+                raise InvalidInput(f"source {self.name!r}: {what}: {error}") from error
             number = isinstance(value, int | float | np.number) and not isinstance(value, bool)
             if not number or not abs(value) < 1e300:
-                raise InvalidInput(f"source {self.name!r}: {item.name} must be a finite number, got {value!r}")
+                raise InvalidInput(f"source {self.name!r}: {what} must be a finite number, got {given!r}")
+            if value is not given:
+                object.__setattr__(self, what, float(value))
         if abs(self.ra_deg) > 360.0:
             raise InvalidInput(
                 f"source {self.name!r}: ra_deg must lie in [-360, 360] degrees (not hours), got {self.ra_deg}"

@@ -8,13 +8,13 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Any, Final, SupportsFloat
 
 import numpy as np
 
 from ..constants import JULIAN_YEAR_S
 from ..errors import InvalidInput
-from ..exact import FloatArray, Pair
+from ..exact import FloatArray, Pair, bare
 from ..storage import write_atomically
 from .geodesy import Ellipsoid, geocentric_from_geodetic, geodetic_from_geocentric
 from .gravity.level_ellipsoid import HIGHEST_M, LOWEST_M
@@ -30,6 +30,7 @@ __all__ = ["Site"]
 _LOWEST_M: Final = 6.2e6
 _HIGHEST_M: Final = 6.5e6
 _FASTEST_M_YR: Final = 1.0  # the fastest plates move 0.2 m a year
+_UNITS: Final = {"m": "m", "deg": "deg", "m_yr": "m / yr", "m2_s2": "m2 / s2"}  # by the endings of names
 
 
 @dataclass(frozen=True)
@@ -62,6 +63,12 @@ class Site:
     ------
     InvalidInput
         Values that are not finite or out of range; the message says what is allowed.
+
+    Notes
+    -----
+    Bare numbers have the units that the names end with. Quantities of a general library (astropy's, such as
+    `6371 * u.km`), which convert themselves, are taken wherever a length, an angle, a velocity or a geopotential
+    number is.
     """
 
     name: str
@@ -113,9 +120,9 @@ class Site:
     def from_itrf(
         cls,
         name: str,
-        x_m: float,
-        y_m: float,
-        z_m: float,
+        x_m: SupportsFloat,
+        y_m: SupportsFloat,
+        z_m: SupportsFloat,
         *,
         velocity_m_yr: tuple[float, float, float] = (0.0, 0.0, 0.0),
         epoch_jyear: float = 2010.0,
@@ -124,10 +131,10 @@ class Site:
         height_above_geoid_m: float | None = None,
         solid_tide: bool = False,
     ) -> Site:
-        """Build a site from its ITRF coordinates in metres; see the class for the rest."""
+        """Build a site from its ITRF coordinates, in metres or quantities; see the class for the rest."""
         return cls(
             name,
-            (x_m, y_m, z_m),
+            (_number(name, "x_m", x_m), _number(name, "y_m", y_m), _number(name, "z_m", z_m)),
             velocity_m_yr,
             epoch_jyear,
             frame=frame,
@@ -140,9 +147,9 @@ class Site:
     def from_geodetic(
         cls,
         name: str,
-        lon_deg: float,
-        lat_deg: float,
-        height_m: float,
+        lon_deg: SupportsFloat,
+        lat_deg: SupportsFloat,
+        height_m: SupportsFloat,
         *,
         ellipsoid: Ellipsoid = "WGS84",
         velocity_m_yr: tuple[float, float, float] = (0.0, 0.0, 0.0),
@@ -152,7 +159,9 @@ class Site:
         height_above_geoid_m: float | None = None,
         solid_tide: bool = False,
     ) -> Site:
-        """Build a site from east longitude, geodetic latitude (degrees) and height above the ellipsoid (m)."""
+        """Build a site from east longitude, geodetic latitude and height above the ellipsoid: degrees and m, or
+        quantities.
+        """
         lon = _number(name, "lon_deg", lon_deg)
         lat = _number(name, "lat_deg", lat_deg)
         x_m, y_m, z_m = geocentric_from_geodetic(lon, lat, _number(name, "height_m", height_m), ellipsoid).tolist()
@@ -251,10 +260,15 @@ class Site:
 
 
 def _number(site: str, what: str, value: Any) -> float:
+    unit = next((unit for ending, unit in _UNITS.items() if what.endswith(f"_{ending}")), "")
     try:
-        if isinstance(value, (bool, str)):
+        found = bare(value, unit) if unit else value
+    except InvalidInput as error:
+        raise InvalidInput(f"site {site!r}: {what}: {error}") from error
+    try:
+        if isinstance(found, (bool, str)):
             raise TypeError("not a number")
-        number = float(value)
+        number = float(found)
     except (TypeError, ValueError, OverflowError) as error:
         raise InvalidInput(f"site {site!r}: {what} must be a number, got {value!r}") from error
     if not math.isfinite(number):

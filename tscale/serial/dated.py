@@ -41,7 +41,6 @@ _LOG: Final = (
     "name",
     "interpolation",
     "sha256",
-    "path",
     "marks",
     "noise",
     "prediction",
@@ -96,6 +95,7 @@ def _make_instants(fields: Fields, context: Context) -> Instants:
 
 
 def _take_log(log: ClockLog) -> Fields:
+    # Not where its file lies: that says something of a machine and nothing of the clock. Name and hash are there.
     return {**{name: getattr(log, name) for name in _LOG}, "forecasts": log._forecasts, "curve": log._curve}
 
 
@@ -105,6 +105,7 @@ def _make_log(fields: Fields, context: Context) -> ClockLog:
     for found in forecasts:
         if not 0 <= found.interval < count or not np.all((found.nodes >= 0) & (found.nodes < count)):
             raise damaged("a prediction of a log hangs on comparisons that it does not hold")
+    fields["path"] = None  # also of documents that say one
     return ClockLog(**fields, _curve=curve, _forecasts=forecasts)
 
 
@@ -169,7 +170,7 @@ def _make_line(fields: Fields, context: Context) -> LedgerLine:
 
 DATED: Final = (
     Kind("Instants", Instants, _take_instants, _make_instants, ("scale", "place", "shape", "whole", "fraction")),
-    Kind("ClockLog", ClockLog, _take_log, _make_log, (*_LOG, "forecasts", "curve")),
+    Kind("ClockLog", ClockLog, _take_log, _make_log, (*_LOG, "forecasts", "curve"), ("path",)),
     Kind("ClockCurve", ClockCurve, _take_curve, _make_curve, _CURVE),
     Kind("Ledger", Ledger, _take_ledger, _make_ledger, ("shape", "lines", "notes")),
     Kind("LedgerLine", LedgerLine, _take_line, _make_line, ("step", "term", "value")),

@@ -26,8 +26,19 @@ _BY_NAME: Final[dict[str, Kind]] = {kind.name: kind for kind in _BY_CLASS.values
 _HASH: Final = "document_sha256"
 _OFFERED: Final = (
     "Instants, Site, SurfaceSite, Source, ClockLog, ClockNoise, ProperClock, Trajectory, ZonalField, HarmonicField, "
-    "Chain, Ledger, Budget, WhatIf, Provenance, LinkSolution, TwoWaySolution and ClockComparison"
+    "Chain, Ledger, Budget, WhatIf, Provenance, LinkSolution, TwoWaySolution, ClockComparison, Residuals and "
+    "Explanation"
 )
+_TABLES: Final = "Tables are kept as files, and a chain's document names them with their hashes"
+_ELSEWHERE: Final = {
+    "CompiledChain": "keep it with its own save(path) and read it with tscale.load_compiled(path)",
+    "ReferenceData": (
+        "its tables are files: keep those, read them with ReferenceData.load, and give the bundle to from_json with "
+        "reference=. A chain's document names the tables it reads with their hashes; to_json(chain.provenance()) "
+        "writes that record alone"
+    ),
+    "LibraryReport": "it writes itself, with its own to_json()",
+}
 _HEAD: Final = ("kind", "version", _HASH)
 
 
@@ -38,7 +49,8 @@ def to_json(obj: Any, indent: int | None = None) -> str:
     ----------
     obj : object
         `Instants`, `Site`, `SurfaceSite`, `Source`, `ClockLog`, `ClockNoise`, `ProperClock`, `Trajectory`, gravity
-        fields, `Chain`; results: `Ledger`, `Budget`, `WhatIf`, `Provenance`, link solutions, clock comparisons.
+        fields, `Chain`; results: `Ledger`, `Budget`, `WhatIf`, `Provenance`, link solutions, clock comparisons,
+        `Residuals` and `Explanation` of a cross-check.
     indent : int, optional
         Spaces a level; None writes one line.
 
@@ -57,7 +69,8 @@ def to_json(obj: Any, indent: int | None = None) -> str:
     Notes
     -----
     An SPK kernel that a trajectory comes from is named by path and hash, everything else is in the text. A gravity
-    field, a log or a path is there with all its numbers.
+    field, a log or a path is there with all its numbers, and the name and hash of its file, if any; where that lay is
+    not written, so that a log or an orbit that is read back has no `path`.
     """
     if type(obj) not in _BY_CLASS:
         _unknown(obj)
@@ -91,8 +104,9 @@ def from_json(
     Returns
     -------
     object
-        As it was. Of `LinkSolution`, `TwoWaySolution` and `ClockComparison`, which hold on to tables and motions, a
-        mapping of their numbers (with Instants and arrays), whose `kind` tells what it was.
+        As it was. Of `LinkSolution`, `TwoWaySolution`, `ClockComparison`, `Residuals` and `Explanation`, which hold on
+        to tables, motions or a chain, a mapping of their numbers (with Instants and arrays), whose `kind` tells what it
+        was.
 
     Raises
     ------
@@ -200,7 +214,6 @@ def _digest(document: dict[str, Any]) -> str:
 
 
 def _unknown(value: Any) -> NoReturn:
-    raise InvalidInput(
-        f"to_json has no layout for a {type(value).__name__}; it writes {_OFFERED}. Tables are kept as files, a "
-        "compiled chain by its own save(path)"
-    )
+    name = type(value).__name__
+    remedy = _ELSEWHERE.get(name, f"it writes {_OFFERED}. {_TABLES}")
+    raise InvalidInput(f"to_json has no layout for a {name}; {remedy}")

@@ -26,7 +26,7 @@ from .values import damaged
 __all__ = ["MOVING"]
 
 _Held = TypeVar("_Held")
-_TRAJECTORY: Final = ("name", "scale", "geocentric", "pieces", "path")
+_TRAJECTORY: Final = ("name", "scale", "geocentric", "pieces")
 _SPK: Final = ("path", "sha256", "target")
 # Arrays by name: in the object, and their shapes (n dates; c coefficients of a polynomial, 3 or 6 components).
 _KNOTS: Final = {"nodes_s": "_nodes", "coefficients": "_coefficients"}
@@ -62,7 +62,7 @@ def _make_trajectory(fields: Fields, context: Context) -> Trajectory:
     pieces = fields["pieces"]
     if fields["scale"] not in ("TT", "TDB") or not isinstance(fields["geocentric"], bool):
         raise damaged("a Trajectory is dated in TT or TDB, and geocentric or not")
-    if not isinstance(fields["name"], str) or not isinstance(fields["path"], Path | None):
+    if not isinstance(fields["name"], str) or not isinstance(fields.get("path"), Path | None):
         raise damaged("a Trajectory has a name, and a path or none")
     if isinstance(pieces, _Segments):
         from ..ephemeris.daf import file_sha256
@@ -77,7 +77,7 @@ def _make_trajectory(fields: Fields, context: Context) -> Trajectory:
         return Trajectory.from_spk(path, pieces.target)
     if not isinstance(pieces, tuple) or not pieces or not all(isinstance(piece, Piece) for piece in pieces):
         raise damaged("a Trajectory is made of pieces")
-    return Trajectory(**fields)
+    return Trajectory(**{**fields, "path": None})  # where its file lay on another machine is nothing of an orbit
 
 
 def _found(path: Path, context: Context) -> Path:
@@ -185,7 +185,7 @@ _BODY: Final = of_class(BodyCentre)
 MOVING: Final = (
     *(of_class(cls) for cls in (Site, SurfaceSite, Source, ProperClock, ZonalField, HarmonicField)),
     Kind("BodyCentre", BodyCentre, _BODY.take, _make_body, _BODY.needed),
-    Kind("Trajectory", Trajectory, _take_trajectory, _make_trajectory, _TRAJECTORY),
+    Kind("Trajectory", Trajectory, _take_trajectory, _make_trajectory, _TRAJECTORY, ("path",)),
     Kind(
         "KernelSegments",
         _Segments,

@@ -1,8 +1,8 @@
 """Chains and results as fields of a document.
 
 A chain is stored by its ends and its supplies; the tables it reads by their names and hashes. Budgets, what-if runs and
-provenance come back as they were. Links and clock comparisons hold on to tables and motions: of these the numbers come
-back, as a mapping of names to values.
+provenance come back as they were. Links, clock comparisons and cross-checks hold on to tables, motions and chains: of
+these the numbers come back, as a mapping of names to values.
 """
 
 from __future__ import annotations
@@ -19,6 +19,8 @@ from ..budget.correlation import Common, Exponential, Independent, Rows
 from ..chains import Chain
 from ..clocks.comparison import ClockComparison
 from ..clocks.proper_clock import ProperClock
+from ..crosscheck.explanation import Explanation
+from ..crosscheck.residuals import Residuals
 from ..earth.observer import Observer
 from ..errors import DataFileError
 from ..link.solution import LinkSolution, TwoWaySolution
@@ -208,6 +210,18 @@ def _take_comparison(found: ClockComparison) -> Fields:
     return {**{name: getattr(found, name) for name in names}, "ledger": dict(found.ledger)}
 
 
+def _take_residuals(found: Residuals) -> Fields:
+    names = ("t", "theirs", "ours", "residual_s")
+    return {**{name: getattr(found, name) for name in names}, **found.facts()}
+
+
+def _take_explanation(found: Explanation) -> Fields:
+    residuals = found.residuals
+    of_both = residuals.facts()
+    facts = {name: value for name, value in found.facts().items() if name not in of_both}
+    return {"residuals": residuals, "unexplained_s": found.unexplained_s, **facts}
+
+
 class _Mapped(Kind):
     """A kind that is read back as a mapping of its fields, whatever they are."""
 
@@ -227,6 +241,8 @@ RESULTS: Final = (
     _mapped(LinkSolution, _take_link),
     _mapped(TwoWaySolution, _take_two_way),
     _mapped(ClockComparison, _take_comparison),
+    _mapped(Residuals, _take_residuals),
+    _mapped(Explanation, _take_explanation),
     *(of_class(cls) for cls in (Contribution, Omission, Common, Independent, Exponential)),
     *(of_class(cls) for cls in (WhatIf, Moved, Change, Provenance, StepRecord, TableRecord, ClockRecord)),
 )
