@@ -170,6 +170,7 @@ SINGLE: dict[str, Callable[[], Instants]] = {
 
 SMALLEST_S = {
     "TT(BIPM) in place of TT(TAI)": 27.66e-6,
+    "TDB0 (65.5 us) left out": 65.5e-6,
     "topocentric terms left out": 1.3e-6,
     "polar motion left out": 1.2e-8,
     "parallax left out": 2.6e-6,

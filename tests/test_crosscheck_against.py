@@ -144,7 +144,7 @@ def test_the_command_on_a_text(tmp_path: Path, capsys: pytest.CaptureFixture[str
 
 
 def test_the_command_on_a_table(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    parquet = pytest.importorskip("pyarrow.parquet")
+    pa, parquet = pytest.importorskip("pyarrow"), pytest.importorskip("pyarrow.parquet")
     t = dates(30)
     given_columns, got = date_columns("given", t), date_columns("got", TO_TT(t).shifted(2.0**-20))
     table = given_columns
@@ -155,8 +155,28 @@ def test_the_command_on_a_table(tmp_path: Path, capsys: pytest.CaptureFixture[st
     arguments = ["crosscheck", "--table", str(path), "--to", "TT", "--no-explain"]
     assert main([*arguments, "--input-column", "given", "--output-column", "got"]) == 0
     assert "9.536743e-07 s" in capsys.readouterr().out
+    # Without names: the first and the second column of dates, whatever else is before, between and behind them.
+    assert main(arguments) == 0
+    assert "9.536743e-07 s" in capsys.readouterr().out
+    stamps = pa.array(np.arange(30), pa.timestamp("us"))
+    for at, name in ((4, "seen"), (2, "written"), (0, "drawn")):
+        table = table.add_column(at, name, pa.array(["x"] * 30) if name != "seen" else stamps)
+    parquet.write_table(table, path)
+    assert main(arguments) == 0
+    assert "9.536743e-07 s" in capsys.readouterr().out
+    assert main([*arguments, "--input-column", "got"]) == 2
+    assert "name two different columns" in capsys.readouterr().err
+    parquet.write_table(given_columns, path)
     assert main(arguments) == 2
-    assert "name both columns" in capsys.readouterr().err
+    assert "counts or timestamps are given, and two are needed; name both columns" in capsys.readouterr().err
+
+
+def test_the_help_says_what_decides(capsys: pytest.CaptureFixture[str]) -> None:
+    with pytest.raises(SystemExit):
+        main(["crosscheck", "--help"])
+    out = " ".join(capsys.readouterr().out.split())
+    assert "Without --tolerance nothing is asked of the differences, and the status is 0 however large they are" in out
+    assert "of a Parquet or Arrow table the first of dates" in out
 
 
 def test_faults_name_the_line(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
@@ -169,5 +189,8 @@ def test_faults_name_the_line(tmp_path: Path, capsys: pytest.CaptureFixture[str]
     path.write_text("a\n2024-01-01T00:00:00\n")
     assert main(["crosscheck", "--table", str(path), "--to", "TT"]) == 2
     assert "second column" in capsys.readouterr().err
+    path.write_text("a,b\n2024-01-01T00:00:00,2024-01-01T00:01:09.184\n")
+    assert main(["crosscheck", "--table", str(path), "--to", "TT", "--input-column", "b"]) == 2
+    assert "both 'b': name two different columns" in capsys.readouterr().err
     assert main(["crosscheck", "--table", "-", "--to", "TT"]) == 2
     assert "read twice" in capsys.readouterr().err

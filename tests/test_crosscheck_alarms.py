@@ -57,3 +57,13 @@ def test_noise_is_not_called_unexplained() -> None:
     assert sum(bool(t) for t in told) <= 2
     assert leftovers(seconds, noise(1e-9, 1) + 1e-9, None, FLOOR_S)
     assert leftovers(seconds, np.zeros(COUNT), None, FLOOR_S) == ()
+
+
+def test_the_nearest_of_many_amplitudes(evaluated: Columns) -> None:
+    counted = [k for k, s in enumerate(evaluated.signatures) if len(s.allowed or ()) > 2]
+    assert counted
+    problem = Problem(np.zeros(COUNT), evaluated.values, evaluated.signatures, FLOOR_S)
+    for k in counted:
+        allowed = np.array(evaluated.signatures[k].allowed)
+        for amplitude in (-1e9, -60.0, -3.4, -3.6, -0.2, 0.2, 17.0, 59.7, 61.0, 1e9):
+            assert problem.nearest(k, amplitude) == allowed[np.argmin(np.abs(allowed - amplitude))]

@@ -30,7 +30,9 @@ as CSV with a header, or as a Parquet or Arrow table. It is told how far that is
 catalogue (leap seconds, constants, rates, terms left out, dates rounded ...) are tried alone and together, and named
 when they bring the difference down to noise.
 
-exit status: 0 all within tolerance; 1 something is not (with --table: beyond --tolerance); 2 not done.
+exit status: 0 all within tolerance; 1 something is not; 2 not done. With --table the tolerance is that of --tolerance:
+1 if the largest difference is beyond it. Without --tolerance nothing is asked of the differences, and the status is 0
+however large they are.
 
 examples:
   tscale crosscheck --plot residuals.png
@@ -65,14 +67,24 @@ def add_parser(subparsers: argparse._SubParsersAction[Any]) -> None:
     general.add_argument("--seed", metavar="N", type=int, help="of the random dates (default 1)")
     table = parser.add_argument_group("table of another program")
     table.add_argument("--table", metavar="FILE", help="CSV file with a header, or .parquet, .arrow, .feather")
-    table.add_argument("--input-column", metavar="NAME", help="dates it was given (default: the first column)")
-    table.add_argument("--output-column", metavar="NAME", help="dates it gave (default: the second column)")
+    table.add_argument(
+        "--input-column",
+        metavar="NAME",
+        help="dates it was given (default: the first column; of a Parquet or Arrow table the first of dates, "
+        "as counts or timestamps)",
+    )
+    table.add_argument("--output-column", metavar="NAME", help="dates it gave (default: the second)")
     table.add_argument("--from", dest="start", metavar="NODE", help="what the dates are (default: as for convert)")
     table.add_argument("--to", dest="end", metavar="NODE", help="what the results are")
     table.add_argument("--input-format", choices=_LAYOUTS, default="iso", help="layout of the dates (%(default)s)")
     table.add_argument("--output-format", choices=_LAYOUTS, help="layout of the results (default: as the dates)")
     table.add_argument("--delimiter", metavar="CHAR", default=",", help="also: comma, semicolon, tab, pipe")
-    table.add_argument("--tolerance", metavar="S", type=float, help="largest difference that passes, seconds")
+    table.add_argument(
+        "--tolerance",
+        metavar="S",
+        type=float,
+        help="largest difference that passes, seconds (default: any; the exit status is then 0)",
+    )
     table.add_argument("--no-explain", action="store_true", help="do not look for causes")
     add_observer(parser)
     add_tables(parser)
@@ -189,6 +201,7 @@ def _column(
         if len(header) <= number:
             raise DataFileError("the results need a second column: name it with --output-column", path=args.table)
         name = header[number]
+        _not_twice(args.input_column, name)
     parts = []
     with opened(args.table) as source:
         reader = DelimitedReader(source.lines, source.name, column=name, delimiter=delimiter)
@@ -214,9 +227,15 @@ def _arrow(args: argparse.Namespace, start: str, end: str, reference: ReferenceD
     from ..instants import Instants
     from ..scales import Node, Scale
 
-    if args.input_column is None or args.output_column is None:
-        raise InvalidInput("name both columns of the table, with --input-column and --output-column")
     reader = TableReader(args.table)
+    there = _date_columns(reader.schema)
+    if len(there) < 2 and None in (args.input_column, args.output_column):
+        raise InvalidInput(
+            f"{args.table}: columns of dates as counts or timestamps are {', '.join(there) or 'none'}, and two are "
+            "needed; name both columns of the table, with --input-column and --output-column (texts go that way too)"
+        )
+    first, second = args.input_column or there[0], args.output_column or there[1]
+    _not_twice(first, second)
 
     def column(name: str, scale: str) -> Instants:
         found = find_dates(reader.schema, name)
@@ -231,4 +250,24 @@ def _arrow(args: argparse.Namespace, start: str, end: str, reference: ReferenceD
             raise DataFileError("the table has no rows", path=args.table)
         return Instants.concatenate(made)
 
-    return column(args.input_column, start), column(args.output_column, end)
+    return column(first, start), column(second, end)
+
+
+def _date_columns(schema: Any) -> list[str]:
+    """Names of the columns of dates in their order: pairs of counts by their common name, and timestamps."""
+    from ..files.arrow_columns import find_dates
+
+    names = [name.removesuffix("_whole_s") for name in schema.names if not name.endswith("_fraction_s")]
+    found = []
+    for name in dict.fromkeys(names):
+        pair = f"{name}_whole_s" in schema.names and f"{name}_fraction_s" in schema.names
+        if pair or str(schema.field(name).type).startswith("timestamp"):
+            found.append(find_dates(schema, name).name)
+    return found
+
+
+def _not_twice(given: str | None, gave: str) -> None:
+    from ..errors import InvalidInput
+
+    if given == gave:
+        raise InvalidInput(f"--input-column and --output-column are both {gave!r}: name two different columns")

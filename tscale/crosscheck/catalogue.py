@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import NamedTuple
+from typing import Final, NamedTuple
 
 import numpy as np
 
@@ -22,6 +22,10 @@ from .sky import sky_signatures
 __all__ = ["Columns", "catalogue", "columns"]
 
 
+_SAME_S: Final = 1e-12
+"""Below which a constant put in last is the same as on the way."""
+
+
 class Columns(NamedTuple):
     """Signatures that do something at the instants at hand, as a design matrix."""
 
@@ -36,7 +40,8 @@ class Columns(NamedTuple):
 
 def catalogue(path: Path) -> list[Signature]:
     """Every signature for a chain."""
-    found = [*face_signatures(path), *coordinate_time_signatures(path), *_plain(path)]
+    found = [*face_signatures(path), *coordinate_time_signatures(path)]
+    found += [*(signature.last for signature in found if signature.constant), *_plain(path)]
     number = wavefront_step_number(path)
     if number is not None:
         front = Front(path, number)
@@ -73,7 +78,10 @@ def _plain(path: Path) -> list[Signature]:
 
 
 def columns(path: Path, signatures: Sequence[Signature], least_s: float) -> Columns:
-    """Evaluate signatures; one that reaches `least_s` nowhere says nothing and is set aside."""
+    """Evaluate signatures; one that reaches `least_s` nowhere says nothing and is set aside.
+
+    One that is put in last is left out where that makes no difference.
+    """
     kept, values, idle, unknown = [], [], [], []
     for signature in signatures:
         try:
@@ -82,6 +90,8 @@ def columns(path: Path, signatures: Sequence[Signature], least_s: float) -> Colu
             unknown.append((signature.name, str(error)))
             continue
         biggest = max(map(abs, signature.allowed)) if signature.allowed else 1.0
+        if signature.last_of and float(np.max(np.abs(value * (path.gain(signature.station) - 1.0)))) <= _SAME_S:
+            continue
         if float(np.max(np.abs(value), initial=0.0)) * biggest <= least_s:
             idle.append(signature.name)
             continue

@@ -43,6 +43,7 @@ def face_signatures(path: Path) -> Iterator[Signature]:
                 lambda a, b: np.full(b.shape, -_GPS_S),
                 number,
                 (1.0, -1.0),
+                constant=True,
             )
         elif names == {"TAI", "TT"}:
             yield Signature(
@@ -51,6 +52,7 @@ def face_signatures(path: Path) -> Iterator[Signature]:
                 lambda a, b: np.full(b.shape, -_TT_MINUS_TAI_S),
                 number,
                 (1.0, -1.0),
+                constant=True,
             )
             yield Signature(
                 "TT(BIPM) in place of TT(TAI)",
@@ -59,6 +61,7 @@ def face_signatures(path: Path) -> Iterator[Signature]:
                 number,
                 (1.0, -1.0),
                 spread=0.02,
+                constant=True,
             )
         elif "TAI" in names and any(name.startswith("TT(") for name in names):
             yield Signature(
@@ -89,11 +92,18 @@ def face_signatures(path: Path) -> Iterator[Signature]:
         lambda a, b: np.full(b.shape, DAY_S / 2),
         0,
         (1.0, -1.0),
+        constant=True,
     )
     yield Signature(
-        "whole days", "dates counted from another day", lambda a, b: np.full(b.shape, float(DAY_S)), 0, (1.0, -1.0)
+        "whole days",
+        "dates counted from another day",
+        lambda a, b: np.full(b.shape, float(DAY_S)),
+        0,
+        (1.0, -1.0),
+        constant=True,
     )
-    if not any({s.start.scale.name, s.end.scale.name} == {"UTC", "TAI"} for s in path.steps):
+    leapt = any({s.start.scale.name, s.end.scale.name} == {"UTC", "TAI"} for s in path.steps)
+    if not leapt:
         yield Signature(
             "whole seconds",
             "a whole number of seconds at the start",
@@ -101,15 +111,14 @@ def face_signatures(path: Path) -> Iterator[Signature]:
             0,
             _whole_numbers(),
         )
-    if path.steps and path.steps[-1].start.place != path.steps[-1].end.place:
-        yield Signature(
-            "whole seconds in the result",
-            "a whole number of seconds put in after the wavefront",
-            lambda a, b: np.ones(b.shape),
-            len(path.steps),
-            _whole_numbers(),
-            at_node=True,
-        )
+    yield Signature(
+        "whole seconds in the result",
+        "a whole number of seconds put in last",
+        lambda a, b: np.ones(b.shape),
+        0,
+        _whole_numbers(),
+        last_of="whole leap seconds" if leapt else "whole seconds",
+    )
     for kind, station, words in ((start, 0, "at the start"), (end, len(path.steps), "in the result")):
         if kind.utc_labels:
             yield Signature(
@@ -139,13 +148,18 @@ def _leap_signatures(path: Path, number: int, leaps: LeapSeconds) -> Iterator[Si
         return leaps.tai_minus_utc(utc(a, b).pair)
 
     yield Signature(
-        "all leap seconds left out", "UTC taken for TAI (37 s since 2017)", lambda a, b: -tai_minus_utc(a, b), number
+        "all leap seconds left out",
+        "UTC taken for TAI (37 s since 2017)",
+        lambda a, b: -tai_minus_utc(a, b),
+        number,
+        constant=True,
     )
     yield Signature(
         "leap seconds with the wrong sign",
         "TAI - UTC subtracted in place of added",
         lambda a, b: -2.0 * tai_minus_utc(a, b),
         number,
+        constant=True,
     )
     yield Signature(
         "whole leap seconds",
@@ -164,6 +178,7 @@ def _leap_signatures(path: Path, number: int, leaps: LeapSeconds) -> Iterator[Si
             bound(_missing, (inside[at],)),
             number,
             (1.0, -1.0),
+            constant=True,
         )
         if at < len(inside) - 1:
             yield Signature(
@@ -171,6 +186,7 @@ def _leap_signatures(path: Path, number: int, leaps: LeapSeconds) -> Iterator[Si
                 "a leap-second table that ends too soon",
                 bound(_missing, tuple(inside[at:])),
                 number,
+                constant=True,
             )
 
 

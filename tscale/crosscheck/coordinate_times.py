@@ -106,6 +106,7 @@ def _epochs(number: int, names: set[str]) -> Iterator[Signature]:
             lambda a, b: np.full(b.shape, -TDB0_S),
             number,
             (1.0, -1.0),
+            constant=True,
         )
     if names == {"TT", "TCG"}:
         rate, label, sign = float(L_G), "L_G", 1.0
@@ -122,6 +123,7 @@ def _epochs(number: int, names: set[str]) -> Iterator[Signature]:
         lambda a, b: np.full(b.shape, late),
         number,
         (1.0, -1.0),
+        constant=True,
     )
     recent = sign * rate * (_T0[0] + float(_T0[1]))
     yield Signature(
@@ -130,6 +132,7 @@ def _epochs(number: int, names: set[str]) -> Iterator[Signature]:
         lambda a, b: np.full(b.shape, float(recent)),
         number,
         (1.0, -1.0),
+        constant=True,
     )
 
 

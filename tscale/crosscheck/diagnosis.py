@@ -147,7 +147,7 @@ class Diagnosis:
         changed = False
         for k, amplitude in members:
             signature = self.columns.signatures[k]
-            if signature.allowed is None or (amplitude == 1.0 and k not in self._bent_once):
+            if signature.allowed is None or signature.last_of or (amplitude == 1.0 and k not in self._bent_once):
                 continue
             if abs(amplitude) * float(np.max(np.abs(self.columns.values[:, k]))) > LINEAR_S:
                 self._bent_once.add(k)
@@ -286,20 +286,14 @@ class Diagnosis:
             if not self.columns.signatures[k].named:
                 plain = plain + a * self.columns.values[:, k]
                 continue
-            signature = self.columns.signatures[k]
+            told = self.columns.signatures[k]
             amplitude, sigma = self._estimate(problem, members, i)
             size = rms(members[i][1] * self.columns.values[rows, k])
-            causes.append(
-                (
-                    signature.name,
-                    amplitude,
-                    sigma,
-                    signature.unit,
-                    signature.description,
-                    size,
-                    self._alternatives(problem, members, i),
-                )
-            )
+            others = self._alternatives(problem, members, i)
+            if told.last_of in others:  # which of the two lies nearer is chance: they go by the name of the first
+                others = tuple(told.name if name == told.last_of else name for name in others)
+                told = next(s for s in self.columns.signatures if s.name == told.last_of)
+            causes.append((told.name, amplitude, sigma, told.unit, told.description, size, others))
         for grid in grids(self.theirs, self.path.end, self.leaps)[:1]:
             rounding = self._rounding(members, left, rows, grid)
             if rounding is not None:

@@ -38,7 +38,11 @@ class Cause(NamedTuple):
     @property
     def label(self) -> str:
         """The name, with those that cannot be told from it."""
-        return " or ".join((self.name, *self.alternatives))
+        last = f"{self.name} in the result"
+        if last not in self.alternatives:
+            return " or ".join((self.name, *self.alternatives))
+        others = [name for name in self.alternatives if name != last]
+        return " or ".join((f"{self.name}, on the way or in the result", *others))
 
 
 @dataclass(frozen=True, eq=False)
@@ -100,7 +104,8 @@ class Explanation:
         return {
             "agrees": "no cause found: what is there is noise",
             "explained": "what is left is noise",
-            "unexplained": f"unexplained: nothing in the catalogue makes {' and '.join(self.leftovers)}",
+            "unexplained": "unexplained: no mistakes of the catalogue, alone or together, bring this down to noise; "
+            f"left is {' and '.join(self.leftovers)}",
         }[self.verdict]
 
     def table(self) -> str:

@@ -99,6 +99,10 @@ class Path:
         """What the chain gives."""
         return self.stations[-1]
 
+    def gain(self, station: int) -> FloatArray:
+        """Seconds of the result for 1 s at a node, by the rates of the steps behind it."""
+        return self._gains[station]
+
     def run(self, mistakes: Sequence[tuple[Signature, float]]) -> Instants:
         """What the chain gives with mistakes in it, each with its amplitude, in every effect on each other."""
         return self._walk(mistakes)[-1]
@@ -106,6 +110,9 @@ class Path:
     def column(self, signature: Signature) -> FloatArray:
         """Seconds that one mistake of amplitude 1 alone adds to the results."""
         at = signature.station
+        if signature.last_of:
+            added = self._last_s(self.stations, signature, 1.0)
+            return np.array(np.broadcast_to(added, self.t.shape))
         before, after = self.stations[max(at - 1, 0)], self.stations[at]
         if at == 0 or signature.at_node or is_onward(self.steps[at - 1]):
             added = np.asarray(signature.effect(before, after), dtype=np.float64)
@@ -113,7 +120,17 @@ class Path:
                 return np.asarray(np.broadcast_to(added, self.t.shape) * self._gains[at])
         return self.run([(signature, 1.0)]).minus(self.end)
 
+    def _last_s(self, stations: Sequence[Instants], signature: Signature, amplitude: float) -> FloatArray:
+        """What a mistake that is put in last adds: it is worked out at its own step."""
+        at = signature.station
+        before, after = stations[max(at - 1, 0)], stations[at]
+        if at == 0 or signature.at_node or is_onward(self.steps[at - 1]):
+            return signature.added_s(before, after, amplitude)
+        return -signature.added_s(after, before, amplitude)
+
     def _walk(self, mistakes: Sequence[tuple[Signature, float]]) -> list[Instants]:
+        last = [(s, a) for s, a in mistakes if s.last_of]
+        mistakes = [(s, a) for s, a in mistakes if not s.last_of]
         with gathered_extrapolations(repeats=True):
             now = self.t
             for signature, amplitude in mistakes:
@@ -127,6 +144,8 @@ class Path:
                     if signature.at_node:
                         now = now.shifted(signature.added_s(stations[-1], now, amplitude))
                 stations.append(now)
+        if last:
+            stations[-1] = stations[-1].shifted(sum(self._last_s(stations, s, a) for s, a in last))
         stations[-1] = stations[-1].at(self.chain.end.place or stations[-1].place)
         return stations
 

@@ -14,6 +14,7 @@ and Chen 2008, Biometrika 95, 759), a whole number out of N another 2 ln(N/2).
 from __future__ import annotations
 
 import math
+from bisect import bisect_left
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Final
@@ -89,7 +90,11 @@ class Problem:
         signature = self.signatures[column]
         if signature.allowed is None:
             return amplitude
-        allowed = min(signature.allowed, key=lambda value: abs(value - amplitude))
+        few = signature.allowed
+        if len(few) > 2:
+            at = bisect_left(few, amplitude)
+            few = few[max(at - 1, 0) : at + 1]
+        allowed = few[0] if len(few) == 1 or abs(few[0] - amplitude) <= abs(few[1] - amplitude) else few[1]
         if signature.spread:
             return allowed * min(max(amplitude / allowed, 1.0 - signature.spread), 1.0 + signature.spread)
         return allowed
@@ -156,15 +161,14 @@ def search(problem: Problem, held: Sequence[tuple[int, float]] = (), most: int =
     """
     start = problem.fitted(tuple((column, 0.0) for column, _ in held))
     levels: list[list[Found]] = [[start]]
+    fitted = {k for k, signature in enumerate(problem.signatures) if signature.allowed is None}
     for width in _WIDTHS[:most]:
         grown: dict[frozenset[tuple[int, float]], tuple[float, Found, int, float]] = {}
         for parent in levels[-1]:
             taken = frozenset(column for column, _ in parent.members)
+            kept = [(k, 0.0 if k in fitted else a) for k, a in parent.members[len(held) :]]
             for squares, column, amplitude in _grown(problem, parent, taken):
-                key = frozenset(
-                    (k, 0.0 if problem.signatures[k].allowed is None else a)
-                    for k, a in (*parent.members[len(held) :], (column, amplitude))
-                )
+                key = frozenset((*kept, (column, 0.0 if column in fitted else amplitude)))
                 if key not in grown or squares < grown[key][0]:
                     grown[key] = (squares, parent, column, amplitude)
         best = sorted(grown.values(), key=lambda item: item[0])[: max(1, width if len(levels) == 1 else min(width, 8))]

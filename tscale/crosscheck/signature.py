@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any, TypeAlias
 
 import numpy as np
@@ -38,7 +38,7 @@ class Signature:
         Number of the node at which it is added: 0 is the start of the chain, i the end of its step i.
     allowed : tuple of float, or None
         Amplitudes that the mistake can have: (1,) for one that is made or not, (1, -1) for one of either sign, whole
-        numbers for something counted. None: any.
+        numbers for something counted, in ascending order. None: any.
     spread : float
         Of a mistake with a single size that is known only so far: largest deviation of the amplitude from 1.
     unit : str
@@ -54,6 +54,10 @@ class Signature:
     change, joined : callable, optional
         For mistakes in the pieces that one step is made of, such as source and site: what an amplitude makes of the
         pieces, and what several changes in them add together, which is not the sum of what each adds alone.
+    constant : bool
+        Another program may as well put it in last: `last` is then a signature too.
+    last_of : str
+        Of one that is worked out at its station but put into the result: the name of the same put in at the station.
     """
 
     name: str
@@ -69,12 +73,25 @@ class Signature:
     named: bool = True
     change: Callable[[Any, float], Any] | None = None
     joined: Callable[[Instants, Sequence[tuple[Callable[[Any, float], Any], float]]], FloatArray] | None = None
+    constant: bool = False
+    last_of: str = ""
 
     def added_s(self, before: Instants, after: Instants, amplitude: float) -> FloatArray:
         """Seconds added for an amplitude."""
         if self.exact is not None:
             return self.exact(before, after, amplitude)
         return amplitude * np.asarray(self.effect(before, after), dtype=np.float64)
+
+    @property
+    def last(self) -> Signature:
+        """The same, put into the result after all other steps."""
+        return replace(
+            self,
+            name=f"{self.name} in the result",
+            description=f"{self.description}; put in last",
+            constant=False,
+            last_of=self.name,
+        )
 
     @property
     def free(self) -> bool:
