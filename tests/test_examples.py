@@ -44,7 +44,7 @@ def test_a_cluster_gives_the_bytes_of_one_process(tmp_path: Path) -> None:
 
 
 def test_compare_clocks(tmp_path: Path) -> None:
-    text = output("compare_clocks.py", tmp_path, "--plot", "flight.png")
+    text = output("walk_clocks.py", tmp_path, "--plot", "flight.png")
     assert "and the ridge is 580.20 m above the bay, u = 0.05 m" in text
     # IS-GPS-200: -4.4647e-10. arXiv 2406.16147: 56.0256 us a day.
     assert "set it to -4.4647e-10" in text

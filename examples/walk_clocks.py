@@ -4,7 +4,7 @@ Two optical clocks, on the Kestrel Ridge and at the Tern Bay below, are compared
 frequency becomes one of height. Then a clock flies round the world, one goes to orbit, and one to the Moon. Run from
 anywhere; `--plot` draws the flight::
 
-    python examples/compare_clocks.py [--plot flight.png]
+    python examples/walk_clocks.py [--plot flight.png]
 
 The command line gives the same with a budget of uncertainty; see `tscale clock --help`.
 """
