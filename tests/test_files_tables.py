@@ -16,6 +16,8 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
+from astropy.table import Table
+from astropy.time import Time
 from hypothesis import given
 from hypothesis import strategies as st
 
@@ -413,3 +415,16 @@ def test_without_pyarrow_the_message_names_the_extra() -> None:
     """
     done = subprocess.run([sys.executable, "-c", textwrap.dedent(code)], capture_output=True, text=True, check=True)
     assert "pip install 'tscale[tables]'" in done.stdout
+
+
+def test_astropy_reads_the_same_dates_out_of_a_table(tmp_path: Path) -> None:
+    t = events(200)
+    convert_table(CHAIN, save(date_columns("time", t), tmp_path / "in.parquet"), tmp_path / "out.parquet", result="tdb")
+    found = Table.read(tmp_path / "out.parquet", format="parquet")
+    days = found["tdb_whole_s"] // 86400, found["tdb_whole_s"] % 86400 + found["tdb_fraction_s"]
+    read = Time(2451545.0 + np.asarray(days[0]), np.asarray(days[1]) / 86400.0, format="jd", scale="tdb")
+    theirs = tscale.interop.from_astropy(read, place="GEOCENTER")
+    assert np.max(np.abs(theirs - CHAIN(t))) < 1e-11  # s: a day in one float64
+    # And by its own way from UTC to TDB at the geocentre, whose analytic series is good to 13 ns.
+    own = Time(*(2400000.5 + t.to_mjd()[0], t.to_mjd()[1]), format="jd", scale="utc").tdb
+    assert np.max(np.abs((own - read).sec)) < 2e-8
