@@ -32,8 +32,8 @@ def alarms(evaluated: Columns, rho: float, trials: int) -> int:
 
 @pytest.mark.parametrize("rho", [0.0, 0.5])
 def test_rate_of_false_alarms(evaluated: Columns, rho: float) -> None:
-    # Stated: below 1e-3. Of 60 series one may be named: the chance of two at that rate is 0.2 %. Measured with 1000
-    # series each: none of white noise, and none of noise of first order with 0.5, 0.8 and 0.95.
+    # Stated: below 1e-3. Of 60 series one may be named: the chance of two at that rate is 0.2 %. Measured with 600
+    # series each: none of white noise, none of noise of first order with 0.5 and 0.8, one with 0.95.
     assert FALSE_ALARM == 1e-3
     assert alarms(evaluated, rho, 60) <= 1
 
