@@ -34,10 +34,11 @@ Layouts of dates: iso is ISO 8601 with up to 18 decimals; mjd and jd are decimal
 digit, with a UTC day that ends with a leap second 86401 s long; seconds counts from 2000-01-01T12:00:00 of the scale;
 spreadsheet is ISO 8601 as ="...", which spreadsheet programs leave alone.
 
---sigma adds `sigma NODE (s)` and `status NODE` (in a table `NODE_sigma_s` and `NODE_status`). The status names the worst that the result rests on: Earth orientation
-that was measured, predicted, or held past the end of its table; then, with + between, `clock predicted` past the
-comparisons of a log that the project predicts, and `expired` where UTC is past the expiry of the leap seconds; none
-where nothing of this matters. Notes on it end the summary, or go to the error stream with --quiet.
+--sigma adds `sigma NODE (s)` and `status NODE` (in a table `NODE_sigma_s` and `NODE_status`). The status names the
+worst that the result rests on: Earth orientation that was measured, predicted, or held past the end of its table; then,
+with + between, `clock predicted` past the comparisons of a log that the project predicts, and `expired` where UTC is
+past the expiry of the leap seconds; none where nothing of this matters. Notes on it end the summary, or go to the error
+stream with --quiet.
 
 The summary goes to the standard output, or to the error stream where the rows go there. --project FILE names a TOML
 file with what many commands share; names of files in it are meant from its own folder:
